@@ -1,0 +1,160 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"strings"
+	"time"
+
+	"holdfast/design"
+	"holdfast/design/brief"
+	"holdfast/design/datasheet"
+	"holdfast/design/replay"
+	"holdfast/hardware"
+)
+
+const datasheetFile = "datasheet.html"
+
+// designPulse designs into a part folder, replays there, writes the datasheet
+// and only then gives the folder its name.
+func designPulse(c *call) (int, error) {
+	f := c.flags()
+	out := f.String("out", "", "the pulse folder to make; default: the brief's name, here")
+	force := f.Bool("force", false, "keep an existing folder as NAME.before-N")
+	operands, err := c.parse(f, 1, 1)
+	if err != nil {
+		return exitBadInput, err
+	}
+	b, p, d, err := brief.LoadAll(operands[0])
+	if err != nil {
+		return exitBadInput, err
+	}
+	in := design.Inputs{Brief: b, Profile: p, Device: d, Version: version}
+	sources, err := design.ReadSources(in)
+	if err != nil {
+		return exitBadInput, err
+	}
+	if *out == "" {
+		*out = folderName(b.Name)
+	}
+	stage, err := hardware.NewStaging(*out, *force)
+	if err != nil {
+		return exitBadInput, err
+	}
+	defer stage.Discard()
+	if b.Defaulted {
+		fmt.Fprintln(c.stdout, "The brief names no [[error]]: held against detuning, amplitude and any static error.")
+	}
+
+	show := newProgress(c.stderr)
+	pulse, err := design.Run(c.ctx, in, show.report)
+	show.end()
+	if err != nil {
+		return exitBadInput, fmt.Errorf("%s: %w", b.File, err)
+	}
+	// From here on the work is short, and an interrupt must not lose it.
+	ctx := context.WithoutCancel(c.ctx)
+	if err := pulse.Write(stage.Dir(), sources); err != nil {
+		return exitBadInput, err
+	}
+	folder, err := replay.Open(stage.Dir())
+	if err != nil {
+		return exitBadInput, fmt.Errorf("replay refuses what design wrote, a fault of the program: %w", err)
+	}
+	verdict, err := replay.Judge(ctx, folder)
+	if err != nil {
+		return exitBadInput, err
+	}
+	sheet, err := newSheet(ctx, in, &pulse.Record, folder, verdict)
+	if err != nil {
+		return exitBadInput, err
+	}
+	if err := writeSheet(filepath.Join(stage.Dir(), datasheetFile), sheet); err != nil {
+		return exitBadInput, err
+	}
+	if err := stage.Commit(); err != nil {
+		return exitBadInput, err
+	}
+	if err := datasheet.Text(c.stdout, sheet); err != nil {
+		return exitBadInput, err
+	}
+	fmt.Fprintf(c.stdout, "\nsearch: %s\n", pulse.Summary())
+	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
+	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
+	return pulseStatus(pulse.Status, verdict), nil
+}
+
+func pulseStatus(s design.Status, v *replay.Verdict) int {
+	switch {
+	case s == design.Interrupted:
+		return exitInterrupted
+	case s != design.Found || !v.Met():
+		return exitMissed
+	}
+	return exitMet
+}
+
+func writeSheet(path string, s *datasheet.Sheet) error {
+	out, err := os.OpenFile(path, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
+	if err != nil {
+		return err
+	}
+	return errors.Join(datasheet.Write(out, s), out.Close())
+}
+
+// folderName makes a folder's name of a pulse's: separators and leading dots
+// would lead elsewhere.
+func folderName(name string) string {
+	name = strings.Map(func(r rune) rune {
+		if r == '/' || r == '\\' || r < ' ' {
+			return '-'
+		}
+		return r
+	}, name)
+	if name = strings.TrimLeft(name, "."); name == "" {
+		return "pulse"
+	}
+	return name
+}
+
+// progress shows one line on a terminal and keeps quiet elsewhere.
+type progress struct {
+	w     io.Writer
+	on    bool
+	begun time.Time
+	wide  int
+}
+
+func newProgress(w io.Writer) *progress {
+	return &progress{w: w, on: terminal(w), begun: time.Now()}
+}
+
+func (p *progress) report(r design.Progress) {
+	if !p.on {
+		return
+	}
+	line := ""
+	switch r.Stage {
+	case "search":
+		line = fmt.Sprintf("search: start %d of up to %d, %d at a zero, best miss %.2g", r.Done, r.Of, r.Successes, r.Best)
+		if r.Done == 0 {
+			line = fmt.Sprintf("search: up to %d starts, at most about %s", r.Of, r.Expected.Round(time.Second/10))
+		}
+	default:
+		line = fmt.Sprintf("%s: %d of %d", r.Stage, r.Done, r.Of)
+	}
+	line += fmt.Sprintf(", %s", time.Since(p.begun).Round(time.Second/10))
+	pad := max(0, p.wide-len(line))
+	p.wide = len(line)
+	fmt.Fprintf(p.w, "\r%s%s", line, strings.Repeat(" ", pad))
+}
+
+func (p *progress) end() {
+	if p.on && p.wide > 0 {
+		fmt.Fprintf(p.w, "\r%s\r", strings.Repeat(" ", p.wide))
+	}
+}

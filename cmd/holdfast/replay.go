@@ -1,0 +1,72 @@
+package main
+
+import (
+	"fmt"
+	"path/filepath"
+
+	"holdfast/design"
+	"holdfast/design/brief"
+	"holdfast/design/datasheet"
+	"holdfast/design/device"
+	"holdfast/design/replay"
+	"holdfast/hardware"
+)
+
+// replayPulse judges a pulse folder from what stands in it.
+func replayPulse(c *call) (int, error) {
+	f := c.flags()
+	page := f.String("datasheet", "", "also write a new datasheet to this file")
+	operands, err := c.parse(f, 1, 1)
+	if err != nil {
+		return exitBadInput, err
+	}
+	dir := operands[0]
+	folder, err := replay.Open(dir)
+	if err != nil {
+		return exitBadInput, err
+	}
+	verdict, err := replay.Judge(c.ctx, folder)
+	if err != nil {
+		if c.ctx.Err() != nil {
+			return exitInterrupted, fmt.Errorf("%s: interrupted", dir)
+		}
+		return exitBadInput, fmt.Errorf("%s: %w", dir, err)
+	}
+	record, err := design.ReadRecord(dir)
+	if err != nil {
+		return exitBadInput, err
+	}
+	in, err := folderInputs(dir)
+	if err != nil {
+		return exitBadInput, err
+	}
+	sheet, err := newSheet(c.ctx, in, record, folder, verdict)
+	if err != nil {
+		return exitBadInput, err
+	}
+	if *page != "" {
+		if err := writeSheet(*page, sheet); err != nil {
+			return exitBadInput, err
+		}
+	}
+	if err := datasheet.Text(c.stdout, sheet); err != nil {
+		return exitBadInput, err
+	}
+	if record.Pulse.Status != string(design.Found) || !verdict.Met() {
+		return exitMissed, nil
+	}
+	return exitMet, nil
+}
+
+// folderInputs loads the copies of the inputs that a pulse folder keeps.
+func folderInputs(dir string) (in design.Inputs, err error) {
+	at := func(name string) string { return filepath.Join(dir, "inputs", name) }
+	if in.Brief, err = brief.Load(at("brief.toml")); err != nil {
+		return in, err
+	}
+	if in.Profile, err = hardware.Load(at("profile.toml")); err != nil {
+		return in, err
+	}
+	in.Device, err = device.Load(at("device.toml"))
+	return in, err
+}

@@ -1,0 +1,17 @@
+// Package brief reads what is wanted of a gate: the target, the span, what may go wrong and what is required.
+//
+// It sits at the entrance of the design: Load reads one brief, LoadAll the brief with the hardware profile and the device that it
+// names, checked against each other. Packages design and design/replay go on from there. It computes nothing but the target.
+//
+// # Sizes of errors
+//
+// A size is the rotation frequency that the error causes: "1 MHz" turns a spin once a microsecond. So an error of size f adds, in
+// rad/ns,
+//
+//	detuning       2 pi f Z/2
+//	operator "X"   2 pi f X/2, and so for "Y" and "Z"
+//	matrix M       2 pi f M, M as written
+//	any            2 pi f n.(X,Y,Z)/2 for a unit vector n
+//
+// and an amplitude error of size s multiplies what the channel's line delivers by 1 + s.
+package brief

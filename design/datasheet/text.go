@@ -1,0 +1,137 @@
+package datasheet
+
+import (
+	"fmt"
+	"io"
+	"math"
+	"strings"
+	"unicode/utf8"
+)
+
+// Text writes a short summary for a terminal, about 25 lines, in the words and
+// figures of the page. It fails when the sheet carries no verdict or w fails.
+func Text(w io.Writer, s *Sheet) error {
+	if s == nil || s.Verdict == nil {
+		return errNoVerdict
+	}
+	v := s.Verdict
+	var b strings.Builder
+	line := func(format string, args ...any) { fmt.Fprintf(&b, format+"\n", args...) }
+
+	name := clean(s.Name)
+	if name == "" {
+		name = "a pulse without a name"
+	}
+	line("%s", name)
+	line("%s.", s.sentence())
+	answer := "MET. "
+	if !v.Met() {
+		answer = "MISSED. "
+	}
+	line("%s", answer+verdictSentence(v))
+	for _, r := range reasons(v) {
+		line("  %s", hyphens(r))
+	}
+	if st := clean(s.Status); st != "" {
+		line("%s", st)
+	}
+
+	if len(v.Requirements) > 0 {
+		rows := [][]string{{"requirement", "found", "required", ""}}
+		for _, r := range v.Requirements {
+			found, allowed := requirementText(r)
+			met := "met"
+			if !r.Met {
+				met = "MISSED"
+			}
+			rows = append(rows, []string{clean(r.Name), found, allowed, met})
+		}
+		table(&b, rows)
+	}
+
+	if len(v.Errors) > 0 {
+		head := []string{"error", "susceptibility", "withstands"}
+		for _, r := range s.Rivals {
+			head = append(head, clean(r.Name))
+		}
+		rows := [][]string{head}
+		for _, e := range v.Errors {
+			name := clean(e.Name)
+			if e.Held {
+				name += " (held)"
+			}
+			row := []string{name, figure(e.Susceptibility), margin(e)}
+			for _, r := range s.Rivals {
+				cell := "-"
+				if re, ok := find(r.Errors, e); ok {
+					cell = margin(re)
+				}
+				row = append(row, cell)
+			}
+			rows = append(rows, row)
+		}
+		table(&b, rows)
+	}
+
+	for _, e := range v.Errors {
+		if e.WorstDirection != "" {
+			line("  of %s, %s survives most: %s", clean(e.Name), clean(e.WorstDirection), figure(e.WorstSusceptibility))
+		}
+	}
+
+	b.WriteByte('\n')
+	line("infidelity %s settled, %s in the window", figure(v.Settled.Infidelity), figure(v.Window.Infidelity))
+	tail := figure(v.TailAngle)
+	if finite(v.TailAngle) && math.Abs(v.TailAngle) >= tiny {
+		tail += " rad"
+	}
+	line("ring-out turns %s after the window; two without a gap lose %s", tail, figure(v.Pair.Infidelity))
+	if v.Decoherence > 0 {
+		line("decoherence adds %s, whatever the pulse", figure(v.Decoherence))
+	}
+	if l, ok := tightest(v.Limits); ok {
+		line("tightest limit: %s, %s, %s free", clean(l.Channel), clean(string(l.Reading.Limit)), percent(l.Headroom))
+	}
+	for _, r := range s.Rivals {
+		if r.BreaksRingOut {
+			line("the %s breaks the ring-out limit (%s of full scale)", clean(r.Name), percent(r.RingOut))
+		}
+	}
+	for _, e := range v.Errors {
+		if w := s.weaker(e); w != "" {
+			line("%s", w)
+		}
+	}
+	for _, warning := range v.Warnings {
+		line("warning: %s", clean(warning))
+	}
+	_, err := io.WriteString(w, b.String())
+	return err
+}
+
+// hyphens is the inverse of typographic, for terminals.
+func hyphens(s string) string {
+	return strings.NewReplacer("−", "-", string(noBreak), " ").Replace(s)
+}
+
+// table writes rows in aligned columns after an empty line; the first row is
+// its head.
+func table(b *strings.Builder, rows [][]string) {
+	var width []int
+	for _, r := range rows {
+		for i, c := range r {
+			if i == len(width) {
+				width = append(width, 0)
+			}
+			width[i] = max(width[i], utf8.RuneCountInString(c))
+		}
+	}
+	b.WriteByte('\n')
+	for _, r := range rows {
+		var l strings.Builder
+		for i, c := range r {
+			l.WriteString("  " + c + strings.Repeat(" ", width[i]-utf8.RuneCountInString(c)))
+		}
+		b.WriteString(strings.TrimRight(l.String(), " ") + "\n")
+	}
+}

@@ -1,0 +1,456 @@
+package datasheet
+
+import (
+	"fmt"
+	"html/template"
+	"math"
+	"strings"
+
+	"holdfast/design/replay"
+)
+
+// A view is what the page's template prints: text that is ready to be escaped,
+// and drawings.
+type view struct {
+	Style template.CSS
+
+	Name, Sentence, Status string
+	Met                    bool
+	Verdict                string   // the answer in one sentence
+	Reasons                []string // why not
+	Plate                  []plate
+	Blade                  template.HTML
+
+	Requirements []requirement
+	Warnings     []string
+	Agreement    []string
+	Differences  []replay.Difference
+
+	Played, Arriving         figureView
+	Spectrum, After          figureView
+	Margins                  []figureView
+	MarginNote, MarginKey    string
+	Errors                   []errorRow
+	RivalNames               []string
+	Weaker, Worst            []string
+	Rivals                   []rivalRow
+	RivalShapes              figureView
+	Between                  []Row
+	BetweenNote              string
+	Limits                   []limitRow
+	BringUp                  []bringUp
+	BringUpNote              string
+	Line                     []string
+	Facts                    []facts
+	CoefficientsI            string
+	CoefficientsQ            string
+	Cautions                 []string
+	Decoherence, FullScaleMV string
+}
+
+type plate struct{ Name, Value, Note string }
+
+type requirement struct {
+	Name, Found, Allowed string
+	Met                  bool
+}
+
+type figureView struct {
+	Title, Note  string
+	Wide, Narrow template.HTML
+}
+
+type errorRow struct {
+	Name, Kind string
+	Held       bool
+	Cells      []errorCell // this pulse first, then the rivals
+}
+
+type errorCell struct{ Susceptibility, Margin string }
+
+type rivalRow struct {
+	Name, Span, Infidelity, Decoherence, Pair, RingOut string
+	Breaks                                             bool
+}
+
+type limitRow struct {
+	Channel, Limit, Found, Allowed, Headroom string
+	Bar                                      string // width of the used part, 0 to 100; empty for none
+	OK                                       bool
+}
+
+type bringUp struct {
+	Title, Setting string
+	Figure         figureView
+	Blocks         [][]population
+}
+
+type population struct{ Value, One string }
+
+type facts struct {
+	Title string
+	Rows  []Row
+	Mono  bool
+}
+
+func newView(s *Sheet) *view {
+	v := s.Verdict
+	view := &view{
+		Style:    template.CSS(pageStyle),
+		Name:     clean(s.Name),
+		Sentence: s.sentence(),
+		Status:   clean(s.Status),
+		Met:      v.Met(),
+		Verdict:  verdictSentence(v),
+		Reasons:  reasons(v),
+		Plate:    s.plate(),
+		Blade:    s.blade(),
+		Line:     typographicAll(cleanAll(s.LineFacts)),
+		Cautions: typographicAll(cleanAll(s.Cautions)),
+		Warnings: typographicAll(cleanAll(v.Warnings)),
+	}
+	if view.Name == "" {
+		view.Name = "a pulse without a name"
+	}
+	for _, r := range v.Requirements {
+		found, allowed := requirementText(r)
+		view.Requirements = append(view.Requirements, requirement{clean(r.Name), typographic(found), typographic(allowed), r.Met})
+	}
+	view.Agreement = agreement(v)
+	for _, d := range v.Inputs {
+		view.Differences = append(view.Differences, replay.Difference{Key: clean(d.Key), Recorded: clean(d.Recorded), Rebuilt: clean(d.Rebuilt)})
+	}
+	if v.Decoherence > 0 && finite(v.Decoherence) {
+		view.Decoherence = s.decoherenceSentence()
+	}
+	if positive(s.FullScaleLevel) {
+		view.FullScaleMV = digits(s.FullScaleLevel, 3) + " V"
+	}
+	s.drawings(view)
+	s.errors(view)
+	s.rivals(view)
+	s.between(view)
+	for _, l := range v.Limits {
+		view.Limits = append(view.Limits, newLimitRow(l))
+	}
+	s.bringUp(view)
+	s.provenance(view)
+	return view
+}
+
+// sentence says what the pulse is.
+func (s *Sheet) sentence() string {
+	var parts []string
+	if t := clean(s.Target); t != "" {
+		parts = append(parts, t)
+	}
+	if positive(s.Span) {
+		parts = append(parts, digits(s.Span, 6)+" ns")
+	}
+	return strings.Join(append(parts, "held against "+s.heldText()), ", ")
+}
+
+func (s *Sheet) heldText() string {
+	if len(s.Held) == 0 {
+		return "nothing"
+	}
+	return list(cleanAll(s.Held))
+}
+
+func (s *Sheet) endsText() string {
+	switch s.ends() {
+	case "window":
+		return "in the window: drive before it and after it is left out"
+	case "settled":
+		return "settled: all that still arrives after the window is counted"
+	}
+	return clean(s.ends())
+}
+
+func verdictSentence(v *replay.Verdict) string {
+	switch {
+	case !v.Met():
+		return "It does not meet its requirements."
+	case len(v.Requirements) == 0:
+		return "Nothing was required of it; every limit of the instrument is kept."
+	}
+	return "It meets its requirements, and every limit of the instrument is kept."
+}
+
+// reasons lists what keeps a verdict from being met.
+func reasons(v *replay.Verdict) []string {
+	var out []string
+	for _, r := range v.Requirements {
+		if !r.Met {
+			found, allowed := requirementText(r)
+			out = append(out, fmt.Sprintf("%s: found %s, required %s", clean(r.Name), found, allowed))
+		}
+	}
+	for _, l := range v.Limits {
+		if !l.OK {
+			out = append(out, fmt.Sprintf("%s, %s: %s where %s is allowed", clean(l.Channel), clean(string(l.Reading.Limit)),
+				withUnit(digits(l.Found, 5), clean(l.Unit)), withUnit(digits(l.Allowed, 5), clean(l.Unit))))
+		}
+	}
+	if !v.Agreement.OK {
+		out = append(out, "replay does not agree with the record in the folder")
+	}
+	if n := len(v.Inputs); n > 0 {
+		out = append(out, fmt.Sprintf("the model in the folder is not the one that its inputs give (%d of its numbers differ)", n))
+	}
+	for i := range out {
+		out[i] = typographic(out[i])
+	}
+	return out
+}
+
+// requirementText says what was found and what is allowed.
+func requirementText(r replay.Requirement) (found, allowed string) {
+	unit := clean(r.Unit)
+	if r.Margin {
+		found = withUnit("±"+digits(r.Found, 3), unit)
+		switch {
+		case math.IsInf(r.Found, 1):
+			found = "all that was tried"
+		case math.IsNaN(r.Found):
+			found = notComputed
+		case r.Found == 0:
+			found = "nothing"
+		}
+		return found, withUnit("at least ±"+digits(r.Allowed, 3), unit)
+	}
+	return withUnit(figure(r.Found), unit), withUnit("at most "+digits(r.Allowed, 3), unit)
+}
+
+// plate returns the figures of the head block. A nominal infidelity never
+// stands there alone: what it withstands and what a pair loses stand beside it.
+func (s *Sheet) plate() []plate {
+	v := s.Verdict
+	var out []plate
+	add := func(name, value, note string) {
+		out = append(out, plate{name, typographic(value), typographic(note)})
+	}
+	note := "without any error"
+	if r := s.required(); r > 0 {
+		note += ", required at most " + digits(r, 3)
+	}
+	switch s.ends() {
+	case "settled":
+		note += ", settled"
+	case "window":
+		note += ", in the window"
+	}
+	add("infidelity", figure(v.Required().Infidelity), note)
+	var held *replay.Error
+	for i, e := range v.Errors {
+		if e.Held {
+			add("withstands", margin(e), clean(e.Name))
+			if held == nil || e.Susceptibility > held.Susceptibility {
+				held = &v.Errors[i]
+			}
+		}
+	}
+	if held == nil { // a nominal figure alone would flatter
+		for _, e := range v.Errors[:min(2, len(v.Errors))] {
+			add("withstands", margin(e), clean(e.Name))
+		}
+	} else {
+		add("susceptibility", figure(held.Susceptibility), "share of "+clean(held.Name)+" that survives; 1 = all")
+	}
+	add("pair without a gap", figure(v.Pair.Infidelity), "infidelity of two in a row, worst of four phases")
+	if v.Decoherence > 0 {
+		add("decoherence adds", figure(v.Decoherence), "whatever the pulse, for this span")
+	}
+	if l, ok := tightest(v.Limits); ok {
+		add("tightest limit", percent(l.Headroom)+" free", clean(string(l.Reading.Limit)))
+	}
+	return out
+}
+
+func tightest(limits []replay.Limit) (replay.Limit, bool) {
+	best := -1
+	for i, l := range limits {
+		if !finite(l.Headroom) || !positive(l.Allowed) { // a guard sample is zero or it is not
+			continue
+		}
+		if best < 0 || l.Headroom < limits[best].Headroom {
+			best = i
+		}
+	}
+	if best < 0 {
+		return replay.Limit{}, false
+	}
+	return limits[best], true
+}
+
+func agreement(v *replay.Verdict) []string {
+	a := v.Agreement
+	if !a.OK {
+		return []string{typographic(fmt.Sprintf("Replay does not agree with the record: infidelity differs by %s, susceptibility by %s, tail angle by %s rad. Do not play this pulse before that is explained.",
+			figure(a.Infidelity), figure(a.Susceptibility), figure(a.TailAngle)))}
+	}
+	return []string{"Every figure here was computed by replay from the integer codes in the folder, by other means than the design's. It agrees with the record within 1e-9 in infidelity, 1e-5 in susceptibility and 1e-4 rad in tail angle."}
+}
+
+func (s *Sheet) decoherenceSentence() string {
+	v := s.Verdict
+	text := "Decoherence adds " + figure(v.Decoherence)
+	var of []string
+	if positive(s.T1) {
+		of = append(of, "T1 "+digits(s.T1/1e3, 4)+" µs")
+	}
+	if positive(s.T2) {
+		of = append(of, "T2 "+digits(s.T2/1e3, 4)+" µs")
+	}
+	if len(of) > 0 {
+		text += " (" + list(of) + ")"
+	}
+	text += " to every coherent infidelity here, T/6 (1/T1 + 2/T2) whatever the pulse: " + figure(v.Required().Infidelity+v.Decoherence) + " in all without any other error."
+	if r := s.required(); r > 0 && v.Decoherence > r {
+		text += " That alone is more than the " + digits(r, 3) + " required, which is judged on the coherent figure."
+	}
+	return typographic(text)
+}
+
+func newLimitRow(l replay.Limit) limitRow {
+	unit := clean(l.Unit)
+	r := limitRow{
+		Channel:  clean(l.Channel),
+		Limit:    clean(string(l.Reading.Limit)),
+		Found:    typographic(withUnit(digits(l.Found, 5), unit)),
+		Allowed:  typographic(withUnit(digits(l.Allowed, 5), unit)),
+		Headroom: typographic(percent(l.Headroom)),
+		OK:       l.OK,
+	}
+	if math.IsInf(l.Allowed, 1) {
+		r.Allowed = "no limit"
+	}
+	switch {
+	case !finite(l.Headroom):
+		r.Headroom = "–"
+	case l.Allowed == 0:
+		r.Headroom = "kept"
+	default:
+		r.Bar = digits(100*math.Max(0, math.Min(1, 1-l.Headroom)), 3)
+	}
+	return r
+}
+
+func (s *Sheet) between(view *view) {
+	v := s.Verdict
+	add := func(name, value string) {
+		view.Between = append(view.Between, Row{name, typographic(value)})
+	}
+	add("infidelity, settled", figure(v.Settled.Infidelity))
+	add("infidelity, in the window alone", figure(v.Window.Infidelity))
+	if l := v.Required().Leakage; l != 0 {
+		add("leakage", figure(l))
+	}
+	angle := figure(v.TailAngle)
+	if finite(v.TailAngle) && math.Abs(v.TailAngle) >= tiny {
+		angle += " rad (" + digits(v.TailAngle*180/math.Pi, 3) + " deg)"
+	}
+	add("angle that the ring-out still turns", angle)
+	pair := figure(v.Pair.Infidelity)
+	if finite(v.Pair.Phase) {
+		pair += " (second pulse at " + digits(v.Pair.Phase, 3) + " deg)"
+	}
+	add("two without a gap, worst of four phases", pair)
+	single := v.Required().Infidelity
+	text := "Two of these pulses without a gap, the second turned by the worst of four phases, miss the square of their target by " + figure(v.Pair.Infidelity)
+	switch {
+	case !finite(single) || !finite(v.Pair.Infidelity):
+	case v.Pair.Infidelity > 3*math.Max(single, tiny):
+		text += ", more than the figure of a single gate tells, because what still rings from the first is there when the second begins: " +
+			"quote this figure for sequences, or leave a gap after which the ring-out has gone."
+	default:
+		text += ": what the first leaves behind does not spoil the second more than its own figure tells."
+	}
+	if strings.HasSuffix(text, figure(v.Pair.Infidelity)) {
+		text += "."
+	}
+	view.BetweenNote = typographic(text)
+}
+
+func (s *Sheet) provenance(view *view) {
+	add := func(title string, mono bool, rows []Row) {
+		if len(rows) == 0 {
+			return
+		}
+		f := facts{Title: title, Mono: mono}
+		for _, r := range rows {
+			f.Rows = append(f.Rows, Row{clean(r.Name), typographic(clean(r.Value))})
+		}
+		view.Facts = append(view.Facts, f)
+	}
+	var wave []Row
+	text := func(name, value string) {
+		if value != "" {
+			wave = append(wave, Row{name, value})
+		}
+	}
+	number := func(name string, v float64, unit string) {
+		if positive(v) {
+			wave = append(wave, Row{name, digits(v, 5) + " " + unit})
+		}
+	}
+	text("instrument", s.Instrument)
+	text("channel", s.Channel)
+	if n := len(s.Samples); n > 0 {
+		text("samples", fmt.Sprintf("%d", n))
+	}
+	number("sample period", s.SamplePeriod, "ns")
+	if s.Bits > 0 {
+		text("converter", fmt.Sprintf("%d bit", s.Bits))
+	}
+	number("full scale", s.FullScale, "MHz steady Rabi frequency")
+	number("level at full scale", s.FullScaleLevel, "V")
+	if positive(s.Band) {
+		text("band", "±"+digits(1e3*s.Band, 4)+" MHz about the carrier")
+	}
+	if s.GuardLead > 0 || s.GuardTrail > 0 {
+		text("guard samples", fmt.Sprintf("%d before, %d after", s.GuardLead, s.GuardTrail))
+	}
+	number("window begins", s.WindowStart, "ns after sample 0")
+	text("judged", s.endsText())
+	add("Waveform", false, wave)
+	add("Line", false, s.LineFigures)
+	add("Basis", false, s.Basis)
+	add("Search", false, s.Search)
+	add("Provenance", false, s.Provenance)
+	add("Files", true, s.Files)
+	view.CoefficientsI = coefficients(s.CoefficientsI)
+	view.CoefficientsQ = coefficients(s.CoefficientsQ)
+}
+
+// coefficients prints numbers to six digits; the record has them whole.
+func coefficients(c []float64) string {
+	const most = 512
+	var b strings.Builder
+	for i, v := range c {
+		if i == most {
+			fmt.Fprintf(&b, "  … and %d more, in the record", len(c)-most)
+			break
+		}
+		if i > 0 {
+			b.WriteString("  ")
+		}
+		b.WriteString(digits(v, 6))
+	}
+	return typographic(b.String())
+}
+
+func typographicAll(s []string) []string {
+	for i := range s {
+		s[i] = typographic(s[i])
+	}
+	return s
+}
+
+func cleanAll(s []string) []string {
+	var out []string
+	for _, t := range s {
+		out = append(out, clean(t))
+	}
+	return out
+}

@@ -1,0 +1,374 @@
+package design
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"runtime"
+	"sync"
+	"time"
+
+	"holdfast/design/brief"
+	"holdfast/design/device"
+	"holdfast/design/dynamics"
+	"holdfast/design/robust"
+	"holdfast/design/solve"
+	"holdfast/hardware"
+)
+
+// Inputs are what a design starts from, checked against each other
+// (brief.LoadAll does it).
+type Inputs struct {
+	Brief   *brief.Brief
+	Profile *hardware.Profile
+	Device  *device.Device
+	Version string // of the program, for the record
+}
+
+// Status says how a design ended.
+type Status string
+
+// The ways.
+const (
+	Found       Status = "found"
+	NotFound    Status = "not found: the best miss"
+	Interrupted Status = "interrupted: the best so far"
+)
+
+// Progress is what a run tells while it works.
+type Progress struct {
+	Stage     string        // "search", "refine"
+	Done, Of  int           // starts, or candidates
+	Successes int           // starts that ended at a zero
+	Best      float64       // smallest sum of squared residuals so far
+	Expected  time.Duration // before the first start: what the whole search may take at most, roughly
+}
+
+// A Pulse is a finished design.
+type Pulse struct {
+	Status  Status
+	Record  Record
+	Exact   []complex128 // samples before rounding, share of full scale
+	Codes   []int16      // I0 Q0 I1 Q1 ...
+	Channel int          // of the profile
+	inputs  Inputs
+}
+
+// What the finish of a design spends. Budgets count iterations, never seconds.
+const (
+	candidates   = 8   // successes that are refined
+	firstRefine  = 50  // iterations for each
+	finalists    = 2   // that are refined further
+	secondRefine = 150 // iterations for each
+	refineWeight = 1   // of the finite errors beside the first order
+	refineKappa  = 1
+	refineStalls = 12
+)
+
+// Run designs the pulse. It uses all processors; its result depends on the
+// inputs alone. When ctx is cancelled it returns the best so far with status
+// Interrupted. progress, unless nil, is called from one goroutine at a time.
+func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error) {
+	p, err := newTask(in)
+	if err != nil {
+		return nil, err
+	}
+	if progress == nil {
+		progress = func(Progress) {}
+	}
+	out := p.find(ctx, in.Brief, progress)
+	return p.finish(in, out)
+}
+
+// newTask readies the problem of the brief.
+func newTask(in Inputs) (*problem, error) {
+	channel, operators, err := drive(in)
+	if err != nil {
+		return nil, err
+	}
+	n := int(math.Round(in.Brief.Span / in.Profile.SamplePeriod))
+	full := in.Profile.Channels[channel].FullScale
+	s := robust.Spin{Static: scale(pauli(in.Device.Static()), 2)}
+	for k, op := range operators {
+		s.Axes[k] = scale(pauli(op), 2*full)
+	}
+	turn := in.Brief.Target
+	target := dynamics.Vec{turn.Axis[0] * turn.Angle, turn.Axis[1] * turn.Angle, turn.Axis[2] * turn.Angle}
+	s.Target = dynamics.Turn(target)
+	if s.Held, err = classes(in.Brief.Errors); err != nil {
+		return nil, err
+	}
+	q, err := newProblem(in.Profile, channel, n, in.Brief.Basis.Family, in.Brief.Basis.Coefficients, s, target, in.Brief.Ends == brief.Settled)
+	if err != nil {
+		return nil, err
+	}
+	q.seed, q.starts = in.Brief.Seed, in.Brief.Starts
+	return q, nil
+}
+
+// drive finds the channel that drives the target's site, and what its
+// quadratures do there.
+func drive(in Inputs) (channel int, operators [2]device.Matrix, err error) {
+	for i, d := range in.Device.Drives {
+		if d.Site != in.Brief.Target.Site {
+			continue
+		}
+		channel, ok := in.Profile.Channel(d.Channel)
+		if !ok {
+			return 0, operators, fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, d.Channel)
+		}
+		return channel, in.Device.Operators(i, string(in.Profile.Channels[channel].Mixing)), nil
+	}
+	return 0, operators, fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
+}
+
+// classes turns the brief's errors into those of package robust.
+func classes(list []brief.Error) ([]robust.Class, error) {
+	var held []robust.Class
+	statics := 0
+	for _, e := range list {
+		c := robust.Class{Name: e.Name, Weight: e.Weight, Size: e.Size}
+		switch e.Kind {
+		case brief.Static:
+			c.Kind, c.Vector = robust.Static, pauli(e.Operator)
+			// the field that an operator of that size adds: H = F·σ/2
+			c.Size = 2 * e.Size * length(c.Vector)
+			statics++
+		case brief.Amplitude:
+			c.Kind = robust.Amplitude
+		case brief.Any:
+			c.Kind = robust.Any
+		default:
+			return nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
+		}
+		held = append(held, c)
+	}
+	return held, nil
+}
+
+// pauli returns v with v·σ the traceless part of a 2x2 Hermitian matrix.
+func pauli(m device.Matrix) dynamics.Vec {
+	return dynamics.Vec{
+		real(m.At(0, 1)+m.At(1, 0)) / 2,
+		real(complex(0, 1)*(m.At(0, 1)-m.At(1, 0))) / 2,
+		real(m.At(0, 0)-m.At(1, 1)) / 2,
+	}
+}
+
+func scale(v dynamics.Vec, f float64) dynamics.Vec {
+	return dynamics.Vec{f * v[0], f * v[1], f * v[2]}
+}
+
+// An outcome is what the search and the refinement leave.
+type outcome struct {
+	c           []float64
+	miss        float64
+	status      Status
+	winner      int
+	tried       int
+	successes   int
+	evaluations int
+	refined     bool
+}
+
+// find searches from many starts, refines the lowest-numbered successes and
+// keeps the best of them.
+func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progress)) outcome {
+	want := 1
+	refine := b.Refine && len(q.spin.Held) > 0
+	if refine {
+		want = candidates
+	}
+	workers := runtime.GOMAXPROCS(0)
+	progress(Progress{Stage: "search", Of: q.starts, Expected: q.expected() * time.Duration(q.starts) / time.Duration(workers)})
+	list := solve.Search(ctx, q.starts, want, workers, q.solve, func(done, won int, best float64) {
+		progress(Progress{Stage: "search", Done: done, Of: q.starts, Successes: won, Best: best})
+	})
+	out := outcome{tried: len(list), status: Interrupted}
+	if len(list) == 0 { // interrupted before the first start: its playable beginning
+		out.c = q.start(0).c
+		out.miss = math.Inf(1)
+		return out
+	}
+	var won []solve.Numbered
+	for _, r := range list {
+		out.evaluations += r.Evaluations
+		if r.Status == solve.Converged {
+			won = append(won, r)
+		}
+	}
+	out.successes = len(won)
+	if len(won) == 0 {
+		best := solve.Best(list)
+		out.c, out.miss, out.winner = best.C, best.Miss, best.Start
+		if ctx.Err() == nil {
+			out.status = NotFound
+		}
+		return out
+	}
+	if !refine {
+		won = won[:1]
+	}
+	pool := q.refine(ctx, won, refine, progress)
+	best := pool[0]
+	for _, c := range pool {
+		out.evaluations += c.evaluations
+		if c.better(best) {
+			best = c
+		}
+	}
+	out.c, out.miss, out.winner, out.refined = best.c, best.miss, best.start, refine
+	if ctx.Err() == nil {
+		out.status = Found
+		if !best.zero {
+			out.status = NotFound
+		}
+	}
+	return out
+}
+
+// expected is a rough upper bound of the time of one start: that of its
+// evaluations, were they all used. It is shown, and nothing depends on it.
+func (q *problem) expected() time.Duration {
+	g := q.gate(false, 0)
+	c := q.start(0).c
+	r, jac := make([]float64, g.Rows()), make([]float64, g.Rows()*g.Dim())
+	begun := time.Now()
+	g.Residuals(c, r)
+	g.Jacobian(jac)
+	return 300 * time.Since(begun)
+}
+
+// solve runs one start on the coarse grid.
+func (q *problem) solve(ctx context.Context, number int) solve.Result {
+	st := q.start(number)
+	p := q.residuals(q.gate(false, 0))
+	spent := 0
+	if st.loose {
+		r := solve.GaussNewton(ctx, p, q.loose, st.c, solve.Options{Kappa: st.kappa})
+		spent = r.Evaluations
+		st.c = r.C
+		q.silence(st.c)
+		q.shrink(st.c, 0.9)
+	}
+	r := solve.GaussNewton(ctx, p, q.set, st.c, solve.Options{Kappa: st.kappa})
+	r.Evaluations += spent
+	return r
+}
+
+// A candidate is a success on its way to the finish.
+type candidate struct {
+	start       int
+	c           []float64 // last point at which the first order vanished
+	wide        []float64 // last point of the refinement
+	miss        float64   // on the fine grid
+	zero        bool      // polished to a zero on the fine grid
+	loss        float64   // of the finite errors after the polish
+	evaluations int
+}
+
+func (c candidate) better(d candidate) bool {
+	if c.zero != d.zero {
+		return c.zero
+	}
+	return c.loss < d.loss
+}
+
+// refine polishes every success on the fine grid and, if wanted, first lowers
+// its finite errors: all of them a little, the best few for longer.
+func (q *problem) refine(ctx context.Context, won []solve.Numbered, wanted bool, progress func(Progress)) []candidate {
+	pool := make([]candidate, len(won))
+	for i, r := range won {
+		pool[i] = candidate{start: r.Start, wide: r.C}
+	}
+	rounds := []int{0}
+	if wanted {
+		rounds = []int{firstRefine, secondRefine}
+	}
+	left := pool
+	for round, iterations := range rounds {
+		if round > 0 {
+			sortByLoss(pool)
+			left = pool[:min(finalists, len(pool))]
+		}
+		var mu sync.Mutex
+		done := 0
+		each(len(left), func(i int) {
+			q.improve(ctx, &left[i], iterations)
+			mu.Lock()
+			done++
+			progress(Progress{Stage: "refine", Done: done, Of: len(left), Successes: len(won), Best: left[i].loss})
+			mu.Unlock()
+		})
+	}
+	return pool
+}
+
+// sortByLoss puts the best first; equals keep their order.
+func sortByLoss(pool []candidate) {
+	for i := range pool {
+		for k := i; k > 0 && pool[k].better(pool[k-1]); k-- {
+			pool[k], pool[k-1] = pool[k-1], pool[k]
+		}
+	}
+}
+
+// improve takes a candidate some iterations further and polishes it. A polish
+// that does not end at a zero, or ends at a worse one, is dropped.
+func (q *problem) improve(ctx context.Context, c *candidate, iterations int) {
+	if iterations > 0 {
+		r := solve.GaussNewton(ctx, q.residuals(q.gate(false, refineWeight)), q.set, c.wide,
+			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: iterations, Stalls: refineStalls})
+		c.wide = r.C
+		c.evaluations += r.Evaluations
+	}
+	// the polish is short and ends what was begun, even when interrupted
+	r := solve.GaussNewton(context.WithoutCancel(ctx), q.residuals(q.gate(true, 0)), q.set, c.wide, solve.Options{Iterations: 100})
+	c.evaluations += r.Evaluations
+	next := candidate{zero: r.Status == solve.Converged, loss: q.loss(r.C)}
+	if c.c == nil || next.better(*c) {
+		c.c, c.miss, c.zero, c.loss = r.C, r.Miss, next.zero, next.loss
+	}
+}
+
+// loss is the mean infidelity over the finite errors of every held class, on
+// the fine grid, summed over the classes.
+func (q *problem) loss(c []float64) float64 {
+	g := q.gate(true, 0)
+	u := q.controls(q.sampled(c))
+	sum := 0.0
+	for _, class := range q.spin.Held {
+		sum += g.MeanInfidelity(u, class)
+	}
+	return sum
+}
+
+// controls returns what arrives at the nodes of the fine grid, I then Q.
+func (q *problem) controls(x []complex128) []float64 { return q.fine.controls(q, x) }
+
+func (a *axis) controls(q *problem, x []complex128) []float64 {
+	v := a.field(q.profile.Channels[q.channel].Line, x, q.profile.SamplePeriod, nil)
+	u := make([]float64, 2*len(v))
+	for i, z := range v {
+		u[i], u[len(v)+i] = real(z), imag(z)
+	}
+	return u
+}
+
+// each calls f for 0 .. n-1 on all processors.
+func each(n int, f func(i int)) {
+	var wg sync.WaitGroup
+	next := make(chan int)
+	for range min(n, runtime.GOMAXPROCS(0)) {
+		wg.Go(func() {
+			for i := range next {
+				f(i)
+			}
+		})
+	}
+	for i := range n {
+		next <- i
+	}
+	close(next)
+	wg.Wait()
+}

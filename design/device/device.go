@@ -1,0 +1,173 @@
+package device
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"holdfast/hardware/quantity"
+)
+
+// Device is what is driven, as its file describes it.
+type Device struct {
+	File   string // as the caller of Load named it
+	Name   string
+	Sites  []Site
+	Drives []Drive
+}
+
+// Site is one spin.
+type Site struct {
+	Name      string
+	Levels    int     // 2 in this version
+	Zero      string  // Lower or Upper: which of the two energies |0> has
+	Frequency float64 // of the transition, GHz, cyclic; 0 when not stated
+	T1, T2    float64 // ns; 0 when not stated; T2 <= 2 T1 where both are
+	Detuning  float64 // static, of the transition from the frame of the drive, rad/ns: H0 = Detuning Z/2
+}
+
+// The energies that |0> may have.
+const (
+	Lower = "lower"
+	Upper = "upper"
+)
+
+// Drive says which channel of the hardware profile drives which site.
+type Drive struct {
+	Site, Channel string
+	Line          int // of the channel's key in the device file, for messages
+}
+
+// The ranges of a site's figures, in the units of quantity.Parse.
+const (
+	lowestFrequency, highestFrequency = 1e-9, 1e4 // 1 Hz to 10 THz
+	shortestLife, longestLife         = 1, 1e15   // 1 ns to 1e6 s
+	largestDetuning                   = 1         // 1 GHz
+	mostEntries                       = 64        // of one list, before the loader looks at it
+)
+
+// oneSpin says what this version leaves out.
+const oneSpin = "this version plays one spin"
+
+// Load reads a device file. Errors are an *quantity.Error: one sentence with file, line and key.
+//
+//	format = 1
+//	name = "..."
+//	[[site]]
+//	name = "q1"
+//	levels = 2                # default 2
+//	zero = "lower"            # or "upper": which energy |0> has; default "lower"
+//	frequency = "5.1 GHz"     # optional
+//	detuning = "0 Hz"         # static; default 0
+//	T1 = "80 us"              # optional
+//	T2 = "60 us"              # optional; at most 2 T1
+//	[[drive]]
+//	site = "q1"
+//	channel = "q1 drive"      # a channel of the hardware profile
+func Load(path string) (*Device, error) {
+	doc, err := quantity.ReadFile(path)
+	if err != nil {
+		return nil, err
+	}
+	return read(doc)
+}
+
+// read makes the device of a document.
+func read(doc *quantity.Document) (*Device, error) {
+	root := doc.Root()
+	root.Int("format", 1, 1)
+	d := &Device{File: doc.File(), Name: root.Text("name")}
+	for i, t := range root.Tables("site", mostEntries) {
+		d.Sites = append(d.Sites, readSite(t))
+		if i == 1 {
+			t.Fail("", "found a second site; allowed: one [[site]] (%s)", oneSpin)
+		}
+	}
+	if len(d.Sites) == 0 {
+		root.Fail("site", "found none; allowed: one [[site]] (%s)", oneSpin)
+	}
+	for i, t := range root.Tables("drive", mostEntries) {
+		d.Drives = append(d.Drives, readDrive(t, d.Sites))
+		if i == 1 {
+			t.Fail("", "found a second drive; allowed: one [[drive]] (%s)", oneSpin)
+		}
+	}
+	if len(d.Drives) == 0 {
+		root.Fail("drive", "found none; allowed: one [[drive]], which names the site and the channel that drives it (%s)", oneSpin)
+	}
+	if err := doc.Err(); err != nil {
+		return nil, err
+	}
+	return d, nil
+}
+
+func readSite(t *quantity.Table) Site {
+	s := Site{
+		Name:      t.Text("name"),
+		Levels:    t.Int("levels", 2, 16, 2),
+		Zero:      t.Choice("zero", []string{Lower, Upper}, Lower),
+		Frequency: t.Quantity("frequency", quantity.Frequency, lowestFrequency, highestFrequency, 0),
+		T1:        t.Quantity("T1", quantity.Time, shortestLife, longestLife, 0),
+		T2:        t.Quantity("T2", quantity.Time, shortestLife, longestLife, 0),
+		Detuning:  2 * math.Pi * t.Quantity("detuning", quantity.Frequency, -largestDetuning, largestDetuning, 0),
+	}
+	if s.Levels > 2 {
+		t.Fail("levels", "found %d; allowed: 2 (%s)", s.Levels, oneSpin)
+	}
+	if s.T1 > 0 && s.T2 > 2*s.T1 {
+		t.Fail("T2", "found %s; allowed: at most twice T1, %s", quantity.Format(s.T2, quantity.Time), quantity.Format(2*s.T1, quantity.Time))
+	}
+	return s
+}
+
+func readDrive(t *quantity.Table, sites []Site) Drive {
+	d := Drive{Site: t.Text("site"), Channel: t.Text("channel"), Line: t.Line("channel")}
+	var names []string
+	for _, s := range sites {
+		if s.Name == d.Site {
+			return d
+		}
+		names = append(names, fmt.Sprintf("%q", s.Name))
+	}
+	if len(names) > 0 {
+		t.Fail("site", "found %q; allowed: a site of this device, %s", d.Site, strings.Join(names, ", "))
+	}
+	return d
+}
+
+// Dim gives the dimension of the device's space, the product of the levels of its sites.
+func (d *Device) Dim() int {
+	dim := 1
+	for _, s := range d.Sites {
+		dim *= s.Levels
+	}
+	return dim
+}
+
+// Static gives the Hamiltonian without drives and errors, rad/ns: Detuning Z/2 of the one site.
+func (d *Device) Static() Matrix {
+	z, _ := Operator("Z")
+	return z.Scale(complex(d.Sites[0].Detuning/2, 0))
+}
+
+// Operators gives what the two quadratures of drive number drive multiply, so that H += u_I ops[0] + u_Q ops[1]: X/2, and Y/2 with a
+// sign. Mixing is that of its channel in the hardware profile.
+//
+// With +Y/2, u = u_I + i u_Q multiplies |1><0|/2. If |0> is the lower state that raises the energy by w and goes with e^{-iwt}: the carrier
+// is Re[u e^{-iwt}] = I cos wt + Q sin wt. If |0> is the upper one it goes with e^{+iwt}, and the carrier is I cos wt - Q sin wt. With the
+// other mixing the field turns the other way, and Q acts by -Y/2.
+func (d *Device) Operators(drive int, mixing string) [2]Matrix {
+	x, _ := Operator("X")
+	y, _ := Operator("Y")
+	zero := Lower
+	for _, s := range d.Sites {
+		if s.Name == d.Drives[drive].Site {
+			zero = s.Zero
+		}
+	}
+	sign := complex128(-1)
+	if (mixing == "I cos + Q sin") == (zero == Lower) {
+		sign = 1
+	}
+	return [2]Matrix{x.Scale(0.5), y.Scale(sign * 0.5)}
+}

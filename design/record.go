@@ -1,0 +1,206 @@
+package design
+
+import (
+	"bytes"
+	"fmt"
+	"io"
+	"math"
+	"path/filepath"
+
+	"github.com/BurntSushi/toml"
+
+	"holdfast/hardware"
+)
+
+// A Record is pulse.toml: what was wanted, how the pulse was found, what it
+// claims, and the [model] from which an outsider recomputes it. Numbers in
+// [model] and [claim] are plain and carry their unit in the key's name.
+type Record struct {
+	Format      int             `toml:"format"`
+	Pulse       PulseFacts      `toml:"pulse"`
+	Basis       BasisFacts      `toml:"basis"`
+	Search      SearchFacts     `toml:"search"`
+	Require     RequireFacts    `toml:"require"`
+	Decoherence *DecayFacts     `toml:"decoherence,omitempty"`
+	Provenance  ProvenanceFacts `toml:"provenance"`
+	Claim       Claim           `toml:"claim"`
+	Model       Model           `toml:"model"`
+	Headroom    []Headroom      `toml:"headroom"`
+	Files       []File          `toml:"file"`
+}
+
+// PulseFacts say what the pulse is.
+type PulseFacts struct {
+	Name   string   `toml:"name"`
+	Target string   `toml:"target"` // "X90 on q1"
+	Span   string   `toml:"span"`
+	Held   []string `toml:"held"` // names of the errors it is held against
+	// HeldByDefault is true when the brief named no error.
+	HeldByDefault bool   `toml:"held_by_default"`
+	Status        string `toml:"status"` // a Status in words
+}
+
+// BasisFacts give the coefficients: samples = basis times coefficients.
+type BasisFacts struct {
+	Family  string    `toml:"family"`
+	PerQuad int       `toml:"coefficients_per_quadrature"`
+	Band    string    `toml:"band,omitempty"`
+	I       []float64 `toml:"i"`
+	Q       []float64 `toml:"q"`
+}
+
+// SearchFacts tell how the coefficients were found.
+type SearchFacts struct {
+	Seed        uint64  `toml:"seed"`
+	Starts      int     `toml:"starts_allowed"`
+	Tried       int     `toml:"starts_tried"`
+	Successes   int     `toml:"successes"`
+	Winner      int     `toml:"winning_start"`
+	Evaluations int     `toml:"evaluations"`
+	Equations   int     `toml:"equations"`
+	Refined     bool    `toml:"refined"`
+	Miss        float64 `toml:"sum_of_squared_residuals"`
+	Before      float64 `toml:"infidelity_before_rounding"`
+}
+
+// RequireFacts are the brief's [require].
+type RequireFacts struct {
+	Infidelity     float64       `toml:"infidelity"`
+	Susceptibility float64       `toml:"susceptibility"`
+	Margins        []MarginFacts `toml:"margin,omitempty"`
+}
+
+// MarginFacts are one [[require.margin]]; one of the sizes is zero and absent.
+type MarginFacts struct {
+	Error string  `toml:"error"`
+	Rate  float64 `toml:"size_rad_per_ns,omitzero"`
+	Share float64 `toml:"size_share,omitzero"`
+}
+
+// DecayFacts are the device's times; absent where not stated.
+type DecayFacts struct {
+	T1 float64 `toml:"t1_ns,omitzero"`
+	T2 float64 `toml:"t2_ns,omitzero"`
+}
+
+// ProvenanceFacts say what made the pulse, without date, host or path.
+type ProvenanceFacts struct {
+	Program    string `toml:"program"`
+	Version    string `toml:"version"`
+	Instrument string `toml:"instrument"`
+	Device     string `toml:"device"`
+	Site       string `toml:"site"`
+	Channel    string `toml:"channel"`
+}
+
+// Claim is what the record says of the rounded codes.
+type Claim struct {
+	Infidelity          float64 `toml:"infidelity"`
+	InfidelityOtherEnds float64 `toml:"infidelity_other_ends"`
+	Leakage             float64 `toml:"leakage"`
+	TailAngle           float64 `toml:"tail_angle_rad"`
+}
+
+// Headroom is one limit of the instrument on the rounded codes.
+type Headroom struct {
+	Channel string  `toml:"channel"`
+	Limit   string  `toml:"limit"`
+	Unit    string  `toml:"unit"`
+	Found   float64 `toml:"found"`
+	Allowed float64 `toml:"allowed"`
+	Share   float64 `toml:"headroom"`
+	Kept    bool    `toml:"kept"`
+}
+
+// File is the hash of one file of the folder.
+type File struct {
+	Name   string `toml:"name"`
+	SHA256 string `toml:"sha256"`
+}
+
+// Complex is [re, im] in the record.
+type Complex [2]float64
+
+// Model is [model], which an outsider reads.
+type Model struct {
+	SamplePeriod float64        `toml:"sample_period_ns"`
+	Samples      int            `toml:"samples"`
+	Bits         int            `toml:"bits"`
+	Ends         string         `toml:"ends"`
+	WindowStart  float64        `toml:"window_start_ns"`
+	Dim          int            `toml:"dim"`
+	CodeSpace    []int          `toml:"code_space"`
+	Static       [][]Complex    `toml:"static_rad_per_ns"`
+	Target       [][]Complex    `toml:"target"`
+	FreeZBefore  []float64      `toml:"free_z_before"`
+	FreeZAfter   []float64      `toml:"free_z_after"`
+	Channels     []ModelChannel `toml:"channel"`
+	Errors       []ModelError   `toml:"error"`
+}
+
+// ModelChannel is one [[model.channel]]. A limit that the instrument does not
+// have is nil and absent.
+type ModelChannel struct {
+	Name       string        `toml:"name"`
+	Kind       string        `toml:"kind"`
+	Codes      string        `toml:"codes"`
+	Exact      string        `toml:"samples_before_rounding"`
+	FullScale  float64       `toml:"full_scale_rad_per_ns"`
+	Delay      float64       `toml:"delay_ns"`
+	Direct     Complex       `toml:"direct"`
+	Poles      []Complex     `toml:"poles_per_ns"`
+	Powers     []int         `toml:"powers"`
+	Residues   []Complex     `toml:"residues"`
+	Operators  [][][]Complex `toml:"operators"`
+	MaxShare   float64       `toml:"max_share"`
+	MaxSlew    *float64      `toml:"max_slew_per_sample,omitempty"`
+	GuardLead  int           `toml:"guard_lead"`
+	GuardTrail int           `toml:"guard_trail"`
+	RingOut    *float64      `toml:"ring_out_share,omitempty"`
+}
+
+// ModelError is one [[model.error]].
+type ModelError struct {
+	Name           string      `toml:"name"`
+	Held           bool        `toml:"held"`
+	Kind           string      `toml:"kind"`
+	Operator       [][]Complex `toml:"operator,omitempty"`
+	Channels       []string    `toml:"channels,omitempty"`
+	Susceptibility float64     `toml:"susceptibility"`
+}
+
+// finite returns nil for a limit that is not there.
+func finite(v float64) *float64 {
+	if math.IsInf(v, 0) {
+		return nil
+	}
+	return &v
+}
+
+const recordHead = `# The record of one pulse, written by holdfast. [model] and the waveform files are all that is needed to
+# recompute the gate: times in ns, rates in rad/ns, matrices as rows of [re, im].
+`
+
+// Encode writes the record as TOML.
+func (r *Record) Encode(w io.Writer) error {
+	var b bytes.Buffer
+	b.WriteString(recordHead)
+	e := toml.NewEncoder(&b)
+	e.Indent = ""
+	if err := e.Encode(r); err != nil {
+		return fmt.Errorf("%s: %w", hardware.RecordName, err)
+	}
+	_, err := w.Write(b.Bytes())
+	return err
+}
+
+// ReadRecord reads what a pulse folder's record tells of the design. It does not
+// judge it: replay.Open checks the record strictly, and comes first.
+func ReadRecord(dir string) (*Record, error) {
+	path := filepath.Join(dir, hardware.RecordName)
+	r := new(Record)
+	if _, err := toml.DecodeFile(path, r); err != nil {
+		return nil, fmt.Errorf("%s: %w", path, err)
+	}
+	return r, nil
+}

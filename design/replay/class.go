@@ -1,0 +1,717 @@
+package replay
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"math/cmplx"
+	"slices"
+	"strings"
+
+	"gonum.org/v1/gonum/mat"
+)
+
+const (
+	perMHz     = 2 * math.Pi * 1e-3 // rad/ns
+	perPercent = 0.01
+
+	searchEnd = 50.0 // MHz or %: how far margins are searched
+)
+
+// A study is an error class while it is judged.
+type study struct {
+	class Class
+	one   *probed   // static and amplitude
+	all   []*probed // any: along an orthogonal basis of the traceless operators
+	sides []*probed // any: the fixed directions besides the basis
+}
+
+// A probed is a probe with what was found along it. Classes that mean the same error share one.
+type probed struct {
+	*probe
+	unit      float64 // lambda for 1 MHz or 1 %
+	strength  float64 // sqrt(T int |V|^2 dt) of the whole V: how far lambda = 1 turns at most
+	onCode    float64 // the same of V cut to the code space and made traceless there
+	left      []complex128
+	low, high float64
+}
+
+// classes gives the model's error classes and, for one spin, those that are always judged where the record has none of
+// the name: detuning, amplitude, X, Y, Z.
+func (m *Model) classes() []Class {
+	list := append([]Class(nil), m.Errors...)
+	if m.Dim != 2 {
+		return list
+	}
+	half := [][]complex128{{0, 0.5, 0.5, 0}, {0, -0.5i, 0.5i, 0}, {0.5, 0, 0, -0.5}}
+	for _, c := range []Class{
+		{Name: "detuning", Kind: "static", Operator: half[2]},
+		{Name: "amplitude", Kind: "amplitude"},
+		{Name: "X", Kind: "static", Operator: half[0]},
+		{Name: "Y", Kind: "static", Operator: half[1]},
+		{Name: "Z", Kind: "static", Operator: half[2]},
+	} {
+		if !slices.ContainsFunc(list, func(o Class) bool { return o.Name == c.Name }) {
+			list = append(list, c)
+		}
+	}
+	return list
+}
+
+// basis gives the d^2-1 traceless operators that span all static errors, each with the Frobenius norm of a spin's Z/2 for
+// every two levels, sqrt(d)/2, and their names: products of Pauli operators, halved, where the levels are those of spins,
+// and otherwise real and imaginary parts of the transitions and differences of populations.
+func basis(n int) (ops [][]complex128, names []string) {
+	if n&(n-1) == 0 {
+		pauli := map[byte][4]complex128{'1': {1, 0, 0, 1}, 'X': {0, 1, 1, 0}, 'Y': {0, -1i, 1i, 0}, 'Z': {1, 0, 0, -1}}
+		names = []string{""}
+		for size := 1; size < n; size *= 2 {
+			var longer []string
+			for _, s := range names {
+				for _, c := range "1XYZ" {
+					longer = append(longer, s+string(c))
+				}
+			}
+			names = longer
+		}
+		names = names[1:] // without the identity
+		for _, name := range names {
+			op := make([]complex128, n*n)
+			for i := range n {
+				for j := range n {
+					v := complex(0.5, 0)
+					for s := range len(name) {
+						shift := len(name) - 1 - s
+						v *= pauli[name[s]][2*(i>>shift&1)+j>>shift&1]
+					}
+					op[i*n+j] = v
+				}
+			}
+			ops = append(ops, op)
+		}
+		return ops, names
+	}
+	f := complex(math.Sqrt(float64(n))/2, 0)
+	for i := range n {
+		for j := i + 1; j < n; j++ {
+			re, im := make([]complex128, n*n), make([]complex128, n*n)
+			re[i*n+j], re[j*n+i] = f/math.Sqrt2, f/math.Sqrt2
+			im[i*n+j], im[j*n+i] = -1i*f/math.Sqrt2, 1i*f/math.Sqrt2
+			ops = append(ops, re, im)
+			names = append(names, fmt.Sprintf("Re %d-%d", i, j), fmt.Sprintf("Im %d-%d", i, j))
+		}
+	}
+	for k := 1; k < n; k++ { // diag(1, ..., 1, -k, 0, ...)
+		op := make([]complex128, n*n)
+		g := f / complex(math.Sqrt(float64(k*(k+1))), 0)
+		for i := range k {
+			op[i*n+i] = g
+		}
+		op[k*n+k] = -complex(float64(k), 0) * g
+		ops = append(ops, op)
+		names = append(names, fmt.Sprintf("level %d", k))
+	}
+	return ops, names
+}
+
+// errors judges every error class for the required ends. Margins are where threshold is first broken. Curves run over
+// the values of the error of the same name in like, or, without, over a range of their own.
+func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([]Error, error) {
+	var shared []*probed
+	find := func(p *probe) *probed {
+		for _, o := range shared {
+			if o.same(p) {
+				return o
+			}
+		}
+		o := &probed{probe: p, unit: perMHz}
+		if p.static == nil {
+			o.unit = perPercent
+		}
+		e.weigh(o)
+		shared = append(shared, o)
+		return o
+	}
+	var studies []study
+	ops, names := [][]complex128(nil), []string(nil)
+	for _, c := range e.m.classes() {
+		s := study{class: c}
+		switch c.Kind {
+		case "static":
+			s.one = find(newStatic(c.Operator, e.dim))
+		case "amplitude":
+			s.one = find(e.newAmplitude(c.Channels))
+		case "any":
+			if ops == nil {
+				ops, names = basis(e.dim)
+			}
+			for _, op := range ops {
+				s.all = append(s.all, find(newStatic(op, e.dim)))
+			}
+			if e.dim == 2 {
+				// With the axes these are the fourteen directions from a cube's middle to its faces and corners, up to sign.
+				for i := range 4 {
+					y, z := float64(1-2*(i&1)), float64(1-i&2)
+					op := make([]complex128, 4)
+					for k := range op {
+						op[k] = (ops[0][k] + complex(y, 0)*ops[1][k] + complex(z, 0)*ops[2][k]) / complex(math.Sqrt(3), 0)
+					}
+					o := &probed{probe: newStatic(op, 2), unit: perMHz}
+					e.weigh(o)
+					s.sides = append(s.sides, o)
+				}
+			}
+		}
+		studies = append(studies, s)
+	}
+	if err := e.differentiate(ctx, shared); err != nil {
+		return nil, err
+	}
+	nominal, err := e.nominal(ctx)
+	if err != nil {
+		return nil, err
+	}
+	if err := e.search(ctx, shared, nominal, threshold, searchEnd); err != nil {
+		return nil, err
+	}
+	var list []Error
+	for _, s := range studies {
+		r := Error{Name: s.class.Name, Kind: s.class.Kind, Held: s.class.Held, Unit: "MHz"}
+		if s.class.Kind == "amplitude" {
+			r.Unit = "%"
+		}
+		if s.one != nil {
+			r.Susceptibility = s.one.share()
+			r.Low, r.High = s.one.low, s.one.high
+		} else {
+			e.rms(&r, s.all, names)
+			end := searchEnd
+			for _, o := range s.all {
+				end = math.Min(end, math.Min(-o.low, o.high))
+			}
+			r.High = end
+			if end > 0 {
+				if err := e.search(ctx, s.sides, nominal, threshold, end); err != nil {
+					return nil, err
+				}
+				for _, o := range s.sides {
+					r.High = math.Min(r.High, math.Min(-o.low, o.high))
+				}
+				if r.High >= searchEnd {
+					r.High = math.Inf(1)
+				}
+			}
+			r.Low = -r.High
+		}
+		if r.Low == 0 {
+			r.Low = 0 // not -0
+		}
+		values := e.curveValues(&r, like)
+		if r.Curve, err = e.curve(ctx, &s, values); err != nil {
+			return nil, err
+		}
+		list = append(list, r)
+	}
+	return list, nil
+}
+
+func (e *engine) nominal(ctx context.Context) (float64, error) {
+	var f [1]float64
+	err := e.infidelities(ctx, []gate{{}}, f[:])
+	return f[0], err
+}
+
+// weigh fills the strengths of a probe.
+func (e *engine) weigh(o *probed) {
+	n, d := e.dim, len(e.m.CodeSpace)
+	block := make([]complex128, d*d)
+	if o.static != nil {
+		o.strength = e.span * frobenius(o.static)
+		cut(block, o.static, n, e.m.CodeSpace)
+		o.onCode = e.span * frobenius(block)
+		return
+	}
+	// sqrt(T int |sum u_k H_k|^2 dt), the integral of the product of two Taylor polynomials term by term.
+	var whole, onCode float64
+	p := e.plans[0]
+	for k, a := range e.controls {
+		for l, b := range e.controls {
+			if !o.amplitude[a.channel] || !o.amplitude[b.channel] || l < k {
+				continue
+			}
+			other := make([]complex128, d*d)
+			cut(block, a.op, n, e.m.CodeSpace)
+			cut(other, b.op, n, e.m.CodeSpace)
+			gw, gc := inner(a.op, b.op), inner(block, other)
+			if gw == 0 && gc == 0 {
+				continue
+			}
+			if l > k {
+				gw, gc = 2*gw, 2*gc
+			}
+			sum := 0.0
+			for _, st := range p.steps {
+				ua := p.numbers[st.at+k*st.order : st.at+(k+1)*st.order]
+				ub := p.numbers[st.at+l*st.order : st.at+(l+1)*st.order]
+				for i, v := range ua {
+					if v == 0 {
+						continue
+					}
+					for j, w := range ub {
+						sum += st.s * v * w / float64(i+j+1)
+					}
+				}
+			}
+			whole += gw * sum
+			onCode += gc * sum
+		}
+	}
+	o.strength = math.Sqrt(e.span * math.Max(0, whole))
+	o.onCode = math.Sqrt(e.span * math.Max(0, onCode))
+}
+
+// share is the susceptibility along one probe.
+func (o *probed) share() float64 {
+	if o.onCode == 0 {
+		return 0
+	}
+	return frobenius(o.left) / o.onCode
+}
+
+const (
+	// differenceAngle is the largest angle, in rad, by which an error turns the device in a difference. Central differences
+	// at 1, 1/2 and 1/4 of it, extrapolated twice, leave an error under (1/8)^2 angle^6/7!, 3e-12, and gates good to 1e-14
+	// leave about as much.
+	differenceAngle = 0.1
+	differences     = 3
+)
+
+// differentiate finds what first order leaves of every probe: i U(0)' dU/dlambda for the required ends, cut to the code
+// space and traceless there.
+func (e *engine) differentiate(ctx context.Context, list []*probed) error {
+	n, d := e.dim, len(e.m.CodeSpace)
+	const each = 2 * differences
+	size := n * n
+	// Groups keep the memory of many levels in bounds.
+	group := max(1, 8_000_000/(each*size))
+	var origin []complex128
+	if err := e.run(ctx, []gate{{}}, func(l *labour, _ int, u []complex128) {
+		origin = append([]complex128(nil), e.ended(l, u)...)
+	}); err != nil {
+		return err
+	}
+	for first := 0; first < len(list); first += group {
+		part := list[first:min(first+group, len(list))]
+		results := make([]complex128, len(part)*each*size)
+		gates := make([]gate, 0, len(part)*each)
+		for _, o := range part {
+			for r := range differences {
+				lambda := e.smallest(o) / float64(int(1)<<r)
+				gates = append(gates, gate{o.probe, lambda}, gate{o.probe, -lambda})
+			}
+		}
+		if err := e.run(ctx, gates, func(l *labour, i int, u []complex128) {
+			copy(results[i*size:(i+1)*size], e.ended(l, u))
+		}); err != nil {
+			return err
+		}
+		slope, left := make([]complex128, size), make([]complex128, size)
+		for i, o := range part {
+			var table [differences][]complex128
+			for r := range differences {
+				at := (i*each + 2*r) * size
+				up, down := results[at:at+size], results[at+size:at+2*size]
+				f := complex(1/(2*gates[i*each+2*r].lambda), 0)
+				for k := range up {
+					up[k] = f * (up[k] - down[k])
+				}
+				table[r] = up
+			}
+			power := 1.0
+			for level := 1; level < differences; level++ { // Richardson: errors in even powers of the step
+				power *= 4
+				for r := differences - 1; r >= level; r-- {
+					for k := range slope {
+						table[r][k] += (table[r][k] - table[r-1][k]) / complex(power-1, 0)
+					}
+				}
+			}
+			copy(slope, table[differences-1])
+			mulAdjointLeft(left, origin, slope, n)
+			for k := range left {
+				left[k] *= 1i
+			}
+			o.left = make([]complex128, d*d)
+			cut(o.left, left, n, e.m.CodeSpace)
+		}
+	}
+	return nil
+}
+
+// smallest gives the lambda of the widest difference along a probe.
+func (e *engine) smallest(o *probed) float64 {
+	if o.strength == 0 {
+		return differenceAngle
+	}
+	return differenceAngle / o.strength
+}
+
+// rms fills the susceptibility of a whole class and the direction that survives most.
+func (e *engine) rms(r *Error, all []*probed, names []string) {
+	sum, d := 0.0, len(e.m.CodeSpace)
+	for _, o := range all {
+		f := frobenius(o.left)
+		sum += f * f
+	}
+	// The cut, traceless parts of the basis make up every operator of the code space, d^2-1 in number, each
+	// as strong as one of the basis.
+	one := all[0].strength
+	r.Susceptibility = math.Sqrt(sum/float64(d*d-1)) / one
+	if len(all) > 255 {
+		return // 16 levels: beyond that nobody reads a direction, and the decomposition takes long
+	}
+	// What is left of error sum v_i B_i is sum v_i left_i: the columns, real and imaginary parts one above the other.
+	rows := 2 * d * d
+	a := mat.NewDense(max(rows, len(all)), len(all), nil)
+	for j, o := range all {
+		for i, z := range o.left {
+			a.Set(2*i, j, real(z)/one)
+			a.Set(2*i+1, j, imag(z)/one)
+		}
+	}
+	var svd mat.SVD
+	if !svd.Factorize(a, mat.SVDThin) {
+		return
+	}
+	var v mat.Dense
+	svd.VTo(&v)
+	r.WorstSusceptibility = svd.Values(nil)[0]
+	r.Direction = make([]float64, len(all))
+	for j := range all {
+		r.Direction[j] = v.At(j, 0)
+	}
+	r.WorstDirection = words(r.Direction, names)
+}
+
+// words says a direction as "0.83 X + 0.41 Y", the first of its largest components positive; r is turned to that sign.
+func words(r []float64, names []string) string {
+	most := 0.0
+	for _, v := range r {
+		most = math.Max(most, math.Abs(v))
+	}
+	sign := 1.0
+	for _, v := range r {
+		if math.Abs(v) > 0.99*most {
+			sign = math.Copysign(1, v)
+			break
+		}
+	}
+	var b strings.Builder
+	said := 0
+	for i := range r {
+		r[i] *= sign
+		if math.Abs(r[i]) < 0.005 {
+			continue
+		}
+		if said++; said > 6 {
+			b.WriteString(" + ...")
+			break
+		}
+		switch {
+		case b.Len() == 0 && r[i] < 0:
+			b.WriteString("-")
+		case b.Len() > 0 && r[i] < 0:
+			b.WriteString(" - ")
+		case b.Len() > 0:
+			b.WriteString(" + ")
+		}
+		fmt.Fprintf(&b, "%.2f %s", math.Abs(r[i]), names[i])
+	}
+	return b.String()
+}
+
+// searchGrid gives the sizes, in the probe's unit, at which a margin is looked for, up to end: a geometric grid from 0.1
+// that never strides over more than an eighth of a turn that the error causes at most, and no more than some hundred points.
+func (o *probed) searchGrid(end float64) []float64 {
+	eighth := math.Inf(1)
+	if s := o.strength * o.unit; s > 0 {
+		eighth = math.Pi / 4 / (math.Sqrt2 * s)
+	}
+	x := math.Min(0.1, eighth/4)
+	var grid []float64
+	for x < end {
+		grid = append(grid, x)
+		if len(grid) < 100 {
+			x += math.Min(0.3*x, eighth)
+		} else {
+			x *= 1.3
+		}
+	}
+	return append(grid, end)
+}
+
+// A crossing looks along one probe in one direction for the first size at which the infidelity exceeds the
+// threshold.
+type crossing struct {
+	o         *probed
+	sign      float64
+	threshold float64
+	grid      []float64
+	at        int // next of the grid
+	lo, hi    float64
+	flo, fhi  float64 // log(infidelity/threshold)
+	wlo, whi  float64 // the same, as regula falsi weighs them
+	tries     int
+	ask       float64 // the size that is to be tried next
+	done      bool
+	found     float64
+}
+
+func (c *crossing) level(f float64) float64 {
+	l := math.Log(f / c.threshold)
+	if math.IsNaN(l) {
+		return 700
+	}
+	return math.Max(-700, math.Min(700, l))
+}
+
+func (c *crossing) finish(x float64) { c.done, c.found = true, x }
+
+// learn takes the infidelity at size ask and chooses the next size, or finishes.
+func (c *crossing) learn(f float64) {
+	l := c.level(f)
+	x := c.ask
+	switch {
+	case c.hi == 0 && l <= 0: // still held: on along the grid
+		c.lo, c.flo = x, l
+		if c.at++; c.at == len(c.grid) {
+			c.finish(math.Inf(1))
+			return
+		}
+		c.ask = c.grid[c.at]
+		return
+	case c.hi == 0:
+		c.hi, c.fhi, c.whi = x, l, l
+		c.wlo = c.flo
+	case l <= 0:
+		c.lo, c.flo, c.wlo = x, l, l
+		c.whi *= 0.5
+	default:
+		c.hi, c.fhi, c.whi = x, l, l
+		c.wlo *= 0.5
+	}
+	if c.lo == 0 { // broken at the first size already: look under it
+		if c.hi < 1e-9 {
+			c.finish(c.hi)
+			return
+		}
+		c.ask = c.hi / 8
+		return
+	}
+	// Regula falsi on the logarithms of both, where power laws are straight, with halved weights (Illinois), and a
+	// bisection now and then for the rest.
+	if c.tries++; c.hi-c.lo <= 1e-9*c.hi || math.Abs(l) < 1e-9 || c.tries > 80 {
+		c.finish(x)
+		return
+	}
+	a, b := math.Log(c.lo), math.Log(c.hi)
+	y := (a + b) / 2
+	if c.tries%4 != 0 {
+		y = (a*c.whi - b*c.wlo) / (c.whi - c.wlo)
+	}
+	c.ask = math.Exp(y)
+	if !(c.ask > c.lo && c.ask < c.hi) {
+		c.ask = (c.lo + c.hi) / 2
+	}
+	if !(c.ask > c.lo && c.ask < c.hi) {
+		c.finish(c.hi)
+	}
+}
+
+// search finds the margins of all probes up to end, in their units, all of them one step at a time.
+func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold, end float64) error {
+	if !(nominal <= threshold) {
+		for _, o := range list {
+			o.low, o.high = 0, 0
+		}
+		return nil
+	}
+	sides := make([]crossing, 0, 2*len(list))
+	for _, o := range list {
+		grid := o.searchGrid(end)
+		for _, sign := range []float64{-1, 1} {
+			c := crossing{o: o, sign: sign, threshold: threshold, grid: grid, ask: grid[0]}
+			c.flo = c.level(nominal)
+			sides = append(sides, c)
+		}
+	}
+	gates, open, found := make([]gate, 0, len(sides)), make([]int, 0, len(sides)), make([]float64, len(sides))
+	for {
+		gates, open = gates[:0], open[:0]
+		for i := range sides {
+			if c := &sides[i]; !c.done {
+				gates = append(gates, gate{c.o.probe, c.sign * c.ask * c.o.unit})
+				open = append(open, i)
+			}
+		}
+		if len(gates) == 0 {
+			break
+		}
+		if err := e.infidelities(ctx, gates, found); err != nil {
+			return err
+		}
+		for k, i := range open {
+			sides[i].learn(found[k])
+		}
+	}
+	for i, o := range list {
+		o.low, o.high = -sides[2*i].found, sides[2*i+1].found
+	}
+	return nil
+}
+
+// curveValues chooses where the curve of an error is drawn: 61 values both ways, or 31 sizes for a class without a sign,
+// to the round number that lies half as far again as the margin.
+func (e *engine) curveValues(r *Error, like []Error) []float64 {
+	for _, o := range like {
+		if o.Name == r.Name {
+			values := make([]float64, len(o.Curve))
+			for i, p := range o.Curve {
+				values[i] = p.Value
+			}
+			return values
+		}
+	}
+	widest := math.Max(-r.Low, r.High)
+	end := searchEnd
+	if widest == 0 {
+		end = 5 // nothing is withstood: show the surroundings
+	} else {
+		for _, round := range []float64{20, 10, 5, 2, 1, 0.5, 0.2, 0.1} {
+			if round >= 1.5*widest {
+				end = round
+			}
+		}
+	}
+	var values []float64
+	for i := -30; i <= 30; i++ {
+		if i >= 0 || r.Kind != "any" {
+			values = append(values, end*float64(i)/30)
+		}
+	}
+	return values
+}
+
+// curve gives the infidelity at the values; for kind any the worst over the fixed directions.
+func (e *engine) curve(ctx context.Context, s *study, values []float64) ([]Point, error) {
+	var gates []gate
+	if s.one != nil {
+		for _, v := range values {
+			gates = append(gates, gate{s.one.probe, v * s.one.unit})
+		}
+	} else {
+		for _, v := range values {
+			for _, list := range [][]*probed{s.all, s.sides} {
+				for _, o := range list {
+					gates = append(gates, gate{o.probe, v * o.unit})
+					if v != 0 {
+						gates = append(gates, gate{o.probe, -v * o.unit})
+					}
+				}
+			}
+		}
+	}
+	found := make([]float64, len(gates))
+	if err := e.infidelities(ctx, gates, found); err != nil {
+		return nil, err
+	}
+	points := make([]Point, len(values))
+	at := 0
+	for i, v := range values {
+		n := 1
+		if s.one == nil {
+			n = len(s.all) + len(s.sides)
+			if v != 0 {
+				n *= 2
+			}
+		}
+		points[i] = Point{Value: v, Infidelity: slices.Max(found[at : at+n])}
+		at += n
+	}
+	return points, nil
+}
+
+// turn finds the diagonal generator G of the frame's rotation: the one for which exp(-i phi G) H exp(i phi G) is what H becomes
+// when every quadrature channel's samples are multiplied by e^(i phi), that is
+//
+//	[G, O_I] = i O_Q  and  [G, O_Q] = -i O_I
+//
+// for every quadrature channel and [G, O] = 0 for the static part and every baseband channel. For a spin it is Z/2 or -Z/2, as the
+// mixer's sign has it.
+func (e *engine) turn() ([]float64, error) {
+	n := e.dim
+	g, known := make([]float64, n), make([]bool, n)
+	type need struct {
+		op, want []complex128 // [G, op] = i want
+		sign     complex128
+	}
+	var needs []need
+	zero := make([]complex128, n*n)
+	needs = append(needs, need{e.static, zero, 1})
+	for c := range e.m.Channels {
+		var ops [][]complex128
+		for _, k := range e.controls {
+			if k.channel == c {
+				ops = append(ops, k.op)
+			}
+		}
+		if e.turned[c] {
+			needs = append(needs, need{ops[0], ops[1], 1}, need{ops[1], ops[0], -1})
+		} else {
+			needs = append(needs, need{ops[0], zero, 1})
+		}
+	}
+	// Differences of G along the transitions, one connected part after another.
+	for first := range n {
+		if known[first] {
+			continue
+		}
+		known[first] = true
+		for queue := []int{first}; len(queue) > 0; queue = queue[1:] {
+			a := queue[0]
+			for b := range n {
+				if known[b] {
+					continue
+				}
+				for _, q := range needs {
+					if v := q.op[a*n+b]; cmplx.Abs(v) > 1e-9 {
+						g[b] = g[a] - real(1i*q.sign*q.want[a*n+b]/v)
+						known[b] = true
+						queue = append(queue, b)
+						break
+					}
+				}
+			}
+		}
+	}
+	mean := 0.0
+	for _, v := range g {
+		mean += v / float64(n)
+	}
+	for i := range g {
+		g[i] -= mean
+	}
+	for _, q := range needs {
+		for a := range n {
+			for b := range n {
+				if cmplx.Abs(complex(g[a]-g[b], 0)*q.op[a*n+b]-1i*q.sign*q.want[a*n+b]) > 1e-9 {
+					return nil, errNoTurn
+				}
+			}
+		}
+	}
+	return g, nil
+}
+
+var errNoTurn = errors.New("no rotation of the frame turns the drive's phase in this model: pulses back to back are judged at one phase only")

@@ -1,0 +1,272 @@
+package replay
+
+import (
+	"context"
+	"math"
+	"strings"
+	"testing"
+)
+
+// segment is a part of a composite pulse, in degrees.
+type segment struct{ angle, phase float64 }
+
+// composite plays segments at the full Rabi frequency pi/30 rad/ns, ten samples of 1 ns for 60 degrees, through a line
+// that lets everything through.
+func composite(segments []segment) *Model {
+	var x []complex128
+	for _, s := range segments {
+		for range int(math.Round(s.angle / 6)) {
+			x = append(x, complex(math.Cos(s.phase*math.Pi/180), math.Sin(s.phase*math.Pi/180)))
+		}
+	}
+	m := spinModel(1, rotation(math.Pi, 0), x)
+	m.Channels[0].FullScale = math.Pi / 30
+	return m
+}
+
+var (
+	bb1Phase = math.Acos(-0.25) * 180 / math.Pi // acos(-theta/4 pi), theta = pi
+
+	plain       = []segment{{180, 0}}
+	corpse      = []segment{{420, 0}, {300, 180}, {60, 0}}
+	shortCorpse = []segment{{60, 180}, {300, 0}, {60, 180}}
+	scrofulous  = []segment{{180, 60}, {180, -60}, {180, 60}}
+	bb1         = []segment{{180, bb1Phase}, {360, 3 * bb1Phase}, {180, bb1Phase}, {180, 0}}
+)
+
+// Leading coefficients of the infidelity of composite pi pulses, infidelity = coefficient x error^power: angles
+// from Cummins, Llewellyn, Jones 2003, Phys. Rev. A 67, 042308 and Wimperis 1994, J. Magn. Reson. A 109, 221 (from memory), coefficients by
+// independent computation in 40 digits, not this project's code.
+func TestCompositePulses(t *testing.T) {
+	for _, c := range []struct {
+		name      string
+		segments  []segment
+		amplitude float64
+		power     float64
+		size      float64 // where the leading term rules, and the digits that it then has
+		digits    float64
+		detuning  float64
+		power2    float64
+		size2     float64
+		digits2   float64
+	}{
+		{"plain", plain, math.Pi * math.Pi / 6, 2, 1e-4, 1e-6, 2. / 3, 2, 1e-4, 1e-6},
+		{"CORPSE", corpse, math.Pi * math.Pi / 6, 2, 1e-4, 1e-6, 0.0043338, 4, 1e-4, 5e-5},
+		{"short CORPSE", shortCorpse, math.Pi * math.Pi / 6, 2, 1e-4, 1e-6, 1.8181, 4, 1e-3, 1e-4},
+		{"SCROFULOUS", scrofulous, 3.0440, 4, 1e-3, 1e-4, 2.6667, 2, 1e-4, 1e-4},
+		{"BB1", bb1, 6.2590, 6, 5e-3, 2e-3, 2. / 3, 2, 1e-4, 1e-6},
+	} {
+		e := newTestEngine(t, composite(c.segments))
+		found := make([]float64, 5)
+		rate := e.m.Channels[0].FullScale
+		z, a := newStatic(halfZ, 2), e.newAmplitude(nil)
+		if err := e.infidelities(context.Background(), []gate{{}, {a, c.size}, {a, -c.size}, {z, c.size2 * rate}, {z, -c.size2 * rate}}, found); err != nil {
+			t.Fatal(err)
+		}
+		if !(found[0] <= 1e-26) {
+			t.Errorf("%s: infidelity %.3g without error", c.name, found[0])
+		}
+		got := (found[1] + found[2]) / 2 / math.Pow(c.size, c.power)
+		if !(math.Abs(got/c.amplitude-1) <= c.digits) {
+			t.Errorf("%s: amplitude coefficient %.6g, want %.6g", c.name, got, c.amplitude)
+		}
+		got = (found[3] + found[4]) / 2 / math.Pow(c.size2, c.power2)
+		if !(math.Abs(got/c.detuning-1) <= c.digits2) {
+			t.Errorf("%s: detuning coefficient %.6g, want %.6g", c.name, got, c.detuning)
+		}
+	}
+}
+
+func judged(t testing.TB, m *Model, threshold float64) map[string]Error {
+	t.Helper()
+	list, err := m.Curves(context.Background(), threshold, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	byName := map[string]Error{}
+	for _, e := range list {
+		byName[e.Name] = e
+	}
+	return byName
+}
+
+// What survives: a square pi pulse turns Z and Y once over half a circle, of which 2/pi is left, and leaves X and its own
+// amplitude error whole. Frame potential of a square pi pulse 2 + 8/pi^2 (closed form), so that with PHYSICS' equal form
+// 3 s^2 + 1 = 2 + 8/pi^2. Short CORPSE cancels detuning, and so does CORPSE, to first order (Cummins, Llewellyn, Jones 2003).
+func TestSusceptibility(t *testing.T) {
+	m := composite(plain)
+	m.Errors = []Class{{Name: "any static error", Kind: "any", Held: true}}
+	got := judged(t, m, 1e-4)
+	for name, want := range map[string]float64{
+		"X": 1, "Y": 2 / math.Pi, "Z": 2 / math.Pi, "detuning": 2 / math.Pi, "amplitude": 1,
+		"any static error": math.Sqrt((1 + 8/(math.Pi*math.Pi)) / 3),
+	} {
+		if !(math.Abs(got[name].Susceptibility-want) <= 1e-11) {
+			t.Errorf("square pulse, %s: susceptibility off by %.2g", name, got[name].Susceptibility-want)
+		}
+	}
+	any := got["any static error"]
+	if any.WorstDirection != "1.00 X" || !(math.Abs(any.WorstSusceptibility-1) <= 1e-11) {
+		t.Errorf("worst direction %q, %.12g", any.WorstDirection, any.WorstSusceptibility)
+	}
+	for name, segments := range map[string][]segment{"CORPSE": corpse, "short CORPSE": shortCorpse} {
+		e := judged(t, composite(segments), 1e-4)
+		if !(e["detuning"].Susceptibility <= 1e-11) {
+			t.Errorf("%s: susceptibility to detuning %.3g", name, e["detuning"].Susceptibility)
+		}
+	}
+	if e := judged(t, composite(bb1), 1e-4); !(e["amplitude"].Susceptibility <= 1e-11) {
+		t.Errorf("BB1: susceptibility to amplitude %.3g", e["amplitude"].Susceptibility)
+	}
+}
+
+// Margins of the square pi pulse in closed form: an amplitude error eps leaves 1 - F = (2/3) sin^2(pi eps/2), an X error of rate d the same
+// with eps = d/O, and detuning is broken where the Rabi formula says.
+func TestMargins(t *testing.T) {
+	m := composite(plain)
+	const threshold = 1e-4
+	m.Errors = []Class{{Name: "any", Kind: "any"}}
+	got := judged(t, m, threshold)
+	eps := 2 / math.Pi * math.Asin(math.Sqrt(1.5*threshold))
+	rate := m.Channels[0].FullScale / perMHz
+	check := func(name string, low, high float64) {
+		t.Helper()
+		e := got[name]
+		if !(math.Abs(e.Low-low) <= 1e-7*math.Abs(low)) || !(math.Abs(e.High-high) <= 1e-7*high) {
+			t.Errorf("%s: margins %.9g and %.9g, want %.9g and %.9g", name, e.Low, e.High, low, high)
+		}
+	}
+	check("amplitude", -100*eps, 100*eps)
+	check("X", -rate*eps, rate*eps)
+	check("any", -rate*eps, rate*eps)
+	// Detuning f = D/O: Tr(X U)/2 = sin(pi w/2)/w with w^2 = 1 + f^2; average infidelity (2/3)(1 - that^2). By bisection.
+	lo, hi := 0.0, 0.1
+	for range 60 {
+		f := (lo + hi) / 2
+		w := math.Hypot(1, f)
+		s := math.Sin(math.Pi*w/2) / w
+		if 2./3*(1-s*s) > threshold {
+			hi = f
+		} else {
+			lo = f
+		}
+	}
+	check("detuning", -rate*lo, rate*lo)
+	check("Z", -rate*lo, rate*lo)
+	// Broken without any error, and never broken.
+	m.Target = rotation(1, 0)
+	if e := judged(t, m, threshold)["X"]; e.Low != 0 || e.High != 0 {
+		t.Errorf("margins %g, %g of a wrong gate", e.Low, e.High)
+	}
+	m.Target = rotation(math.Pi, 0)
+	if e := judged(t, m, 1)["X"]; !math.IsInf(e.Low, -1) || !math.IsInf(e.High, 1) {
+		t.Errorf("margins %g, %g where nothing is required", e.Low, e.High)
+	}
+	for _, e := range got {
+		for _, p := range e.Curve {
+			if e.Name == "amplitude" {
+				want := 2. / 3 * math.Pow(math.Sin(math.Pi/2*p.Value/100), 2)
+				if !(math.Abs(p.Infidelity-want) <= 1e-12) {
+					t.Errorf("amplitude curve at %g %%: %.12g, want %.12g", p.Value, p.Infidelity, want)
+				}
+			}
+			if e.Name == "any" && p.Value < 0 {
+				t.Errorf("a negative size of any error")
+			}
+		}
+		if len(e.Curve) < 31 {
+			t.Errorf("%s: %d points", e.Name, len(e.Curve))
+		}
+	}
+}
+
+// The first of several crossings: near a full turn the infidelity of a pulse returns to nothing.
+func TestFirstCrossing(t *testing.T) {
+	x := make([]complex128, 200) // 200 ns of nothing, the target being nothing: X of 5 MHz turns once
+	m := spinModel(1, []complex128{1, 0, 0, 1}, x)
+	e := judged(t, m, 1e-2)["X"]
+	want := 2 * math.Asin(math.Sqrt(1.5e-2)) / 200 / perMHz // (2/3) sin^2(angle/2) = 1e-2
+	if !(math.Abs(e.High-want) <= 1e-7*want) {
+		t.Errorf("margin %.9g, want %.9g", e.High, want)
+	}
+	if s := e.Susceptibility; !(math.Abs(s-1) <= 1e-11) {
+		t.Errorf("susceptibility %.12g of doing nothing", s)
+	}
+	if a := judged(t, m, 1e-2)["amplitude"]; a.Susceptibility != 0 || !math.IsInf(a.High, 1) {
+		t.Errorf("amplitude error of silence: %g, margin %g", a.Susceptibility, a.High)
+	}
+}
+
+// Curves of another model over the same values.
+func TestCurvesAlike(t *testing.T) {
+	m := composite(plain)
+	first := judged(t, m, 1e-4)
+	rival := m.WithSamples(40, composite(plain).Channels[0].Samples)
+	list, err := rival.Curves(context.Background(), 1e-4, []Error{first["X"], first["amplitude"]})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, e := range list {
+		want := first[e.Name].Curve
+		if e.Name != "X" && e.Name != "amplitude" {
+			continue
+		}
+		if len(e.Curve) != len(want) {
+			t.Fatalf("%s: %d points, want %d", e.Name, len(e.Curve), len(want))
+		}
+		for i, p := range e.Curve {
+			if p.Value != want[i].Value {
+				t.Errorf("%s: value %g, want %g", e.Name, p.Value, want[i].Value)
+			}
+		}
+	}
+}
+
+// A basis of static errors is orthogonal, traceless, Hermitian and of the strength of a spin's Z/2.
+func TestBasis(t *testing.T) {
+	for _, n := range []int{2, 3, 4, 5} {
+		ops, names := basis(n)
+		if len(ops) != n*n-1 || len(names) != n*n-1 {
+			t.Fatalf("%d levels: %d operators", n, len(ops))
+		}
+		for i, a := range ops {
+			if what := notHermitian(a, n); what != "" {
+				t.Errorf("%d levels, %s: %s", n, names[i], what)
+			}
+			if tr := inner(a, func() []complex128 { one := make([]complex128, n*n); setIdentity(one, n); return one }()); !(math.Abs(tr) <= 1e-14) {
+				t.Errorf("%d levels, %s: trace %g", n, names[i], tr)
+			}
+			for j, b := range ops {
+				want := 0.0
+				if i == j {
+					want = float64(n) / 4
+				}
+				if got := inner(a, b); !(math.Abs(got-want) <= 1e-14) {
+					t.Errorf("%d levels: %s . %s = %g, want %g", n, names[i], names[j], got, want)
+				}
+			}
+		}
+	}
+	if ops, names := basis(2); names[0] != "X" || names[1] != "Y" || names[2] != "Z" || distance(ops[1], halfY) != 0 {
+		t.Errorf("a spin's basis is %v", names)
+	}
+}
+
+func TestWords(t *testing.T) {
+	names := []string{"X", "Y", "Z"}
+	for _, c := range []struct {
+		r    []float64
+		want string
+	}{
+		{[]float64{0.83, 0.41, 0}, "0.83 X + 0.41 Y"},
+		{[]float64{-0.8, 0.6, 0.001}, "0.80 X - 0.60 Y"},
+		{[]float64{0.1, 0, -0.99}, "-0.10 X + 0.99 Z"},
+	} {
+		if got := words(c.r, names); got != c.want {
+			t.Errorf("%q, want %q", got, c.want)
+		}
+	}
+	if got := words([]float64{.4, .4, .4, .4, .4, .4, .4}, strings.Split("abcdefg", "")); !strings.HasSuffix(got, " + ...") {
+		t.Errorf("a long direction reads %q", got)
+	}
+}

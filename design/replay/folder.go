@@ -1,0 +1,330 @@
+package replay
+
+import (
+	"errors"
+	"fmt"
+	"math"
+	"os"
+	"path/filepath"
+	"strings"
+
+	"holdfast/hardware"
+	"holdfast/hardware/quantity"
+)
+
+// A Folder is a pulse folder, read and checked: every file is what the record's hashes say.
+type Folder struct {
+	Dir    string
+	Name   string // of the pulse
+	Model  *Model
+	Claim  Claim
+	T1, T2 float64 // ns; 0 when the record states none
+
+	Require Require
+}
+
+// A Claim is what the record says of its rounded codes. What the record leaves out is NaN.
+type Claim struct {
+	Infidelity          float64 // for the stated ends
+	InfidelityOtherEnds float64
+	Leakage             float64
+	TailAngle           float64 // rad
+}
+
+// Require is what the record says the brief requires.
+type Require struct {
+	Infidelity     float64
+	Susceptibility float64 // of every held class
+	Margins        []Margin
+}
+
+// A Margin is a size of one error that must be withstood, either sign.
+type Margin struct {
+	Error string
+	Size  float64 // rad/ns, or a share where Share is true
+	Share bool
+}
+
+// The names of the three files that a pulse was designed from, below inputs/.
+const (
+	profileFile = "inputs/profile.toml"
+	deviceFile  = "inputs/device.toml"
+	briefFile   = "inputs/brief.toml"
+)
+
+// Open reads a pulse folder: the record strictly, every listed file against its hash, the codes, and everything against
+// everything. An error is one sentence with the file and, in the record, line and key. Unknown keys are refused where they could
+// change a figure ([model], [claim], [require], [decoherence], [[file]]); what the design tells of itself elsewhere is not read.
+func Open(dir string) (*Folder, error) {
+	info, err := os.Stat(dir)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", dir, cause(err))
+	}
+	if !info.IsDir() {
+		return nil, fmt.Errorf("%s: not a folder; replay reads a pulse folder", dir)
+	}
+	path := filepath.Join(dir, hardware.RecordName)
+	doc, err := quantity.ReadFile(path)
+	if err != nil {
+		return nil, err
+	}
+	f := &Folder{Dir: dir}
+	if f.Name, err = pulseName(path); err != nil {
+		return nil, err
+	}
+	root := doc.Root()
+	root.Int("format", 1, 1)
+	for _, key := range []string{"pulse", "basis", "search", "headroom", "provenance"} {
+		root.Has(key)
+	}
+	var list hardware.Manifest
+	for _, t := range root.Tables("file", 1000) {
+		list = append(list, hardware.FileHash{Name: t.Text("name"), SHA256: t.Text("sha256")})
+	}
+	f.readRequire(root.Table("require"))
+	if root.Has("decoherence") {
+		t := root.Table("decoherence")
+		f.T1 = t.Number("t1_ns", 1e-3, 1e18, 0)
+		f.T2 = t.Number("t2_ns", 1e-3, 1e18, 0)
+	}
+	claim := root.Table("claim")
+	nan := math.NaN()
+	f.Claim = Claim{
+		Infidelity:          claim.Number("infidelity", 0, 1),
+		InfidelityOtherEnds: claim.Number("infidelity_other_ends", 0, 1, nan),
+		Leakage:             claim.Number("leakage", 0, 1, nan),
+		TailAngle:           claim.Number("tail_angle_rad", 0, 1e6, nan),
+	}
+	m, codes, exact := readModel(root.Table("model"))
+	f.Model = m
+	if err := doc.Err(); err != nil {
+		return nil, err
+	}
+	if len(list) == 0 {
+		return nil, &quantity.Error{File: path, Key: "file", Found: "nothing", Allowed: "[[file]] with name and sha256 for every other file of the folder"}
+	}
+	if err := list.Verify(dir); err != nil {
+		return nil, err
+	}
+	needed := []string{profileFile, deviceFile, briefFile}
+	for c := range m.Channels {
+		needed = append(needed, codes[c])
+		if exact[c] != "" {
+			needed = append(needed, exact[c])
+		}
+	}
+	for _, name := range needed {
+		if !list.Has(name) {
+			return nil, &quantity.Error{File: path, Key: "file", Found: fmt.Sprintf("no hash of %.80q", name), Allowed: "[[file]] with name and sha256 for every other file of the folder"}
+		}
+	}
+	for c := range m.Channels {
+		if err := m.Channels[c].load(dir, codes[c], exact[c], m.Samples, m.Bits); err != nil {
+			return nil, err
+		}
+	}
+	if fault := m.validate(); fault != nil { // the samples; all else has been validated with line numbers
+		return nil, &quantity.Error{File: path, Key: "model." + fault.key, Found: fault.found, Allowed: fault.allowed}
+	}
+	return f, nil
+}
+
+// pulseName reads what the record calls the pulse, without minding what else [pulse] holds.
+func pulseName(path string) (string, error) {
+	doc, err := quantity.ReadFile(path)
+	if err != nil {
+		return "", err
+	}
+	root := doc.Root()
+	if !root.Has("pulse") {
+		return "", &quantity.Error{File: path, Key: "pulse", Found: "nothing", Allowed: "a table [pulse] with the pulse's name"}
+	}
+	name := root.Table("pulse").Text("name")
+	if e := (*quantity.Error)(nil); errors.As(doc.Err(), &e) && strings.HasPrefix(e.Key, "pulse") && e.Found != "an unknown key" {
+		return "", e
+	}
+	return name, nil
+}
+
+func (f *Folder) readRequire(t *quantity.Table) {
+	f.Require.Infidelity = t.Number("infidelity", 1e-15, 1)
+	f.Require.Susceptibility = t.Number("susceptibility", 1e-15, 1)
+	for _, m := range t.Tables("margin", 64) {
+		r := Margin{Error: m.Text("error")}
+		switch rate, share := m.Has("size_rad_per_ns"), m.Has("size_share"); {
+		case rate && share:
+			m.Fail("size_share", "found beside size_rad_per_ns; allowed: one of the two")
+		case share:
+			r.Size, r.Share = m.Number("size_share", 1e-12, 1), true
+		default:
+			r.Size = m.Number("size_rad_per_ns", 1e-12, 1e6)
+		}
+		f.Require.Margins = append(f.Require.Margins, r)
+	}
+}
+
+// whole reads a whole number of an array of numbers.
+func wholes(t *quantity.Table, key string, most int, lo, hi float64) []int {
+	numbers := t.Numbers(key, most, lo, hi)
+	list := make([]int, 0, len(numbers))
+	for _, v := range numbers {
+		if v != math.Trunc(v) {
+			t.Fail(key, "found %v; allowed: whole numbers", v)
+			return nil
+		}
+		list = append(list, int(v))
+	}
+	return list
+}
+
+func flat(rows [][]complex128) []complex128 {
+	var m []complex128
+	for _, row := range rows {
+		m = append(m, row...)
+	}
+	return m
+}
+
+// readModel reads [model] and gives the names of the waveform files of each channel, before rounding "" where there is none.
+// Whatever makes no sense is recorded as a mistake with its line.
+func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
+	m = &Model{
+		SamplePeriod: t.Number("sample_period_ns", 1e-6, 1e6),
+		Samples:      t.Int("samples", 1, maxSamples),
+		Bits:         t.Int("bits", 2, 16),
+		Ends:         t.Choice("ends", []string{"settled", "window"}),
+		WindowStart:  t.Number("window_start_ns", -1e9, 1e9),
+		Dim:          t.Int("dim", 2, maxDim),
+	}
+	m.CodeSpace = wholes(t, "code_space", maxDim, 0, maxDim-1)
+	m.Static = flat(t.Matrix("static_rad_per_ns", maxDim))
+	m.Target = flat(t.Matrix("target", maxDim))
+	for _, z := range []struct {
+		key string
+		dst *[]float64
+	}{{"free_z_before", &m.FreeZBefore}, {"free_z_after", &m.FreeZAfter}} {
+		if t.Has(z.key) {
+			*z.dst = t.Numbers(z.key, 6, -1e6, 1e6)
+		}
+	}
+	inf := math.Inf(1)
+	channels := t.Tables("channel", maxChannels)
+	for _, ct := range channels {
+		c := Channel{
+			Name:       ct.Text("name"),
+			Kind:       ct.Choice("kind", []string{"quadrature", "baseband"}),
+			FullScale:  ct.Number("full_scale_rad_per_ns", 1e-12, 1e4),
+			Delay:      ct.Number("delay_ns", -1e9, 1e9),
+			Poles:      ct.Complexes("poles_per_ns", maxPoles),
+			Powers:     wholes(ct, "powers", maxPoles, 1, maxPower),
+			Residues:   ct.Complexes("residues", maxPoles),
+			MaxShare:   ct.Number("max_share", 1e-12, 1, inf),
+			MaxSlew:    ct.Number("max_slew_per_sample", 1e-12, 2, inf),
+			GuardLead:  ct.Int("guard_lead", 0, maxSamples, 0),
+			GuardTrail: ct.Int("guard_trail", 0, maxSamples, 0),
+			RingOut:    ct.Number("ring_out_share", 1e-12, 1e6, inf),
+			Samples:    make([]complex128, m.Samples), // until the codes are read
+		}
+		direct := ct.Numbers("direct", 2, -1e9, 1e9)
+		if len(direct) == 2 {
+			c.Direct = complex(direct[0], direct[1])
+		} else if direct != nil {
+			ct.Fail("direct", "found %d numbers; allowed: [re, im]", len(direct))
+		}
+		for _, op := range ct.Matrices("operators", 2, maxDim) {
+			c.Operators = append(c.Operators, flat(op))
+		}
+		codes = append(codes, ct.Text("codes"))
+		exact = append(exact, ct.Text("samples_before_rounding", ""))
+		m.Channels = append(m.Channels, c)
+	}
+	classes := t.Tables("error", maxErrors)
+	for _, et := range classes {
+		c := Class{
+			Name: et.Text("name"),
+			Held: et.Bool("held", false),
+			Kind: et.Choice("kind", []string{"static", "amplitude", "any"}, ""), // validate misses it; nothing else is then asked for
+		}
+		if c.claimed = et.Has("susceptibility"); c.claimed {
+			c.Susceptibility = et.Number("susceptibility", 0, 1e6)
+		}
+		if c.Kind == "static" {
+			c.Operator = flat(et.Matrix("operator", maxDim))
+		}
+		if c.Kind == "amplitude" && et.Has("channels") {
+			c.Channels = et.Texts("channels", maxChannels)
+		}
+		m.Errors = append(m.Errors, c)
+	}
+	if fault := m.validate(); fault != nil {
+		// Where the key stands; element numbers are not keys.
+		at, key := t, fault.key
+		for prefix, list := range map[string][]*quantity.Table{"channel[": channels, "error[": classes} {
+			if rest, ok := strings.CutPrefix(key, prefix); ok {
+				number, name, _ := strings.Cut(rest, "].")
+				for i := range list {
+					if number == fmt.Sprint(i) {
+						at, key = list[i], name
+					}
+				}
+			}
+		}
+		key, _, _ = strings.Cut(key, "[")
+		at.Fail(key, "found %s; allowed: %s", fault.found, fault.allowed)
+	}
+	return m, codes, exact
+}
+
+// load reads the channel's waveform files.
+func (c *Channel) load(dir, codes, exact string, samples, bits int) error {
+	columns := len(c.Operators)
+	path := filepath.Join(dir, filepath.FromSlash(codes))
+	raw, _, err := hardware.ReadNPY[int16](path, samples, columns)
+	if err != nil {
+		return err
+	}
+	full := 1 << (bits - 1)
+	for k, v := range raw {
+		if int(v) < -full || int(v) >= full {
+			return fmt.Errorf("%s: sample %d has code %d; a converter of %d bit has %d to %d", path, k/columns, v, bits, -full, full-1)
+		}
+	}
+	c.Codes = raw
+	c.Samples = pairUp(raw, columns, 1/float64(full))
+	if exact == "" {
+		return nil
+	}
+	path = filepath.Join(dir, filepath.FromSlash(exact))
+	before, _, err := hardware.ReadNPY[float64](path, samples, columns)
+	if err != nil {
+		return err
+	}
+	for k, v := range before {
+		if !(math.Abs(v) <= 1e6) {
+			return fmt.Errorf("%s: sample %d is %v; allowed: shares of full scale", path, k/columns, v)
+		}
+	}
+	c.Exact = pairUp(before, columns, 1)
+	return nil
+}
+
+// pairUp makes x_I + i x_Q, or x, of rows of one or two numbers.
+func pairUp[T int16 | float64](raw []T, columns int, unit float64) []complex128 {
+	x := make([]complex128, len(raw)/columns)
+	for k := range x {
+		im := 0.0
+		if columns == 2 {
+			im = float64(raw[2*k+1]) * unit
+		}
+		x[k] = complex(float64(raw[columns*k])*unit, im)
+	}
+	return x
+}
+
+// cause drops the operation and the path from a file error.
+func cause(err error) error {
+	if pe := (*os.PathError)(nil); errors.As(err, &pe) {
+		return pe.Err
+	}
+	return err
+}

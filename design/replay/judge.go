@@ -1,0 +1,200 @@
+package replay
+
+import (
+	"context"
+	"fmt"
+	"math"
+)
+
+// How far a verdict may lie from the record's claim, both on the rounded codes.
+const (
+	infidelityAgreement     = 1e-9
+	susceptibilityAgreement = 1e-5
+	tailAgreement           = 1e-4 // rad
+)
+
+// Figures recomputes the gate itself: its figures for settled and for window ends, and the angle in rad that the ring-out turns
+// after the window.
+func (m *Model) Figures(ctx context.Context) (settled, window Figures, tail float64, err error) {
+	e, err := newEngine(ctx, m)
+	if err != nil {
+		return Figures{}, Figures{}, 0, err
+	}
+	return e.both(ctx)
+}
+
+func (e *engine) both(ctx context.Context) (settled, window Figures, tail float64, err error) {
+	err = e.run(ctx, []gate{{}}, func(l *labour, _ int, u []complex128) {
+		window = e.figures(l, u)
+		settled = e.figures(l, e.settle(l, u))
+	})
+	return settled, window, angle(e.post, e.dim), err
+}
+
+// Pair plays the pulse twice without a gap. The error errNoTurn among others says why only one phase, or none, could be judged;
+// Judge turns it into a warning.
+func (m *Model) Pair(ctx context.Context) (Pair, error) {
+	e, err := newEngine(ctx, m)
+	if err != nil {
+		return Pair{}, err
+	}
+	p, err := e.pair(ctx)
+	if err == errNoTurn {
+		err = nil
+	}
+	return p, err
+}
+
+// Curves judges the model's error classes as Judge does, margins against the given infidelity, and draws the curve of each over
+// the same values as the error of that name in like; so a rival's curves overlay those of a verdict. A nil like lets each
+// curve choose its own range.
+func (m *Model) Curves(ctx context.Context, infidelity float64, like []Error) ([]Error, error) {
+	e, err := newEngine(ctx, m)
+	if err != nil {
+		return nil, err
+	}
+	return e.errors(ctx, infidelity, like)
+}
+
+// Judge recomputes everything that the verdict tells. The only errors are those of the context and of lines that cannot be integrated; what
+// is wrong with the pulse stands in the verdict.
+func Judge(ctx context.Context, f *Folder) (*Verdict, error) {
+	v, err := f.Model.judge(ctx, f.Require.Infidelity)
+	if err != nil {
+		return nil, err
+	}
+	v.Name = f.Name
+	v.Decoherence = Decoherence(f.Model.Span(), f.T1, f.T2)
+	v.agree(f)
+	if v.Inputs, err = f.differences(); err != nil {
+		return nil, err
+	}
+	v.require(f.Require)
+	return v, nil
+}
+
+// Judge recomputes what can be told of a model alone: no agreement, inputs, requirements or decoherence. Margins are
+// against the given infidelity.
+func (m *Model) Judge(ctx context.Context, infidelity float64) (*Verdict, error) {
+	return m.judge(ctx, infidelity)
+}
+
+func (m *Model) judge(ctx context.Context, infidelity float64) (*Verdict, error) {
+	e, err := newEngine(ctx, m)
+	if err != nil {
+		return nil, err
+	}
+	v := &Verdict{Ends: m.Ends}
+	if v.Settled, v.Window, v.TailAngle, err = e.both(ctx); err != nil {
+		return nil, err
+	}
+	if e.left > settledAngle {
+		v.Warnings = append(v.Warnings, fmt.Sprintf("The lines had not settled when the integration was ended: up to %.2g rad were still to come.", e.left))
+	}
+	if v.Pair, err = e.pair(ctx); err == errNoTurn || err == errNoFrame {
+		v.Warnings = append(v.Warnings, sentence(err))
+	} else if err != nil {
+		return nil, err
+	}
+	if v.Limits, err = m.Limits(ctx); err != nil {
+		return nil, err
+	}
+	if v.Errors, err = e.errors(ctx, infidelity, nil); err != nil {
+		return nil, err
+	}
+	if v.BringUp, err = e.bringUp(ctx); err != nil {
+		return nil, err
+	}
+	worst := 0.0
+	if err := e.run(ctx, []gate{{}}, func(_ *labour, _ int, u []complex128) { worst = defect(u, e.dim) }); err != nil {
+		return nil, err
+	}
+	if !(worst <= 1e-11) {
+		v.Warnings = append(v.Warnings, fmt.Sprintf("The integration has lost unitarity by %.2g.", worst))
+	}
+	return v, nil
+}
+
+// sentence makes a warning of an error.
+func sentence(err error) string {
+	s := err.Error()
+	return string(s[0]-'a'+'A') + s[1:] + "."
+}
+
+// Decoherence is what relaxation adds to every coherent infidelity of a spin to first order, T/6 (1/T1 + 2/T2) = T/(3 T1) +
+// T/(3 T_phi) (common practice; exact for an idle spin to first order), for a span T and times in ns. Where only T1 is stated, T2 is taken as
+// 2 T1, the longest that it can be; where only T2 is, T1 as endless. Without either it is zero.
+func Decoherence(span, t1, t2 float64) float64 {
+	sum := 0.0
+	if t1 > 0 {
+		sum += 1 / t1
+		if t2 <= 0 {
+			t2 = 2 * t1
+		}
+	}
+	if t2 > 0 {
+		sum += 2 / t2
+	}
+	return span / 6 * sum
+}
+
+// agree compares the verdict with the record's claim.
+func (v *Verdict) agree(f *Folder) {
+	a := &v.Agreement
+	apart := func(worst *float64, found, claimed float64) {
+		if !math.IsNaN(claimed) {
+			*worst = math.Max(*worst, math.Abs(found-claimed))
+		}
+	}
+	stated, other := v.Settled, v.Window
+	if v.Ends == "window" {
+		stated, other = other, stated
+	}
+	apart(&a.Infidelity, stated.Infidelity, f.Claim.Infidelity)
+	apart(&a.Infidelity, other.Infidelity, f.Claim.InfidelityOtherEnds)
+	apart(&a.Infidelity, stated.Leakage, f.Claim.Leakage)
+	apart(&a.TailAngle, v.TailAngle, f.Claim.TailAngle)
+	for _, c := range f.Model.Errors {
+		for _, e := range v.Errors {
+			if c.claimed && e.Name == c.Name {
+				apart(&a.Susceptibility, e.Susceptibility, c.Susceptibility)
+			}
+		}
+	}
+	a.OK = a.Infidelity <= infidelityAgreement && a.Susceptibility <= susceptibilityAgreement && a.TailAngle <= tailAgreement
+}
+
+// require judges the brief's requirements as the record has them.
+func (v *Verdict) require(r Require) {
+	below := func(name string, found, allowed float64) {
+		v.Requirements = append(v.Requirements, Requirement{Name: name, Found: found, Allowed: allowed, Met: found <= allowed})
+	}
+	below("infidelity", v.Required().Infidelity, r.Infidelity)
+	for _, e := range v.Errors {
+		if e.Held {
+			below("susceptibility to "+e.Name, e.Susceptibility, r.Susceptibility)
+		}
+	}
+	for _, m := range r.Margins {
+		q := Requirement{Name: "margin against " + m.Error, Unit: "MHz", Margin: true, Allowed: m.Size / perMHz}
+		if m.Share {
+			q.Unit, q.Allowed = "%", m.Size/perPercent
+		}
+		known := false
+		for _, e := range v.Errors {
+			if e.Name == m.Error && e.Unit == q.Unit {
+				known = true
+				q.Found = math.Min(-e.Low, e.High)
+			}
+		}
+		if !known {
+			v.Warnings = append(v.Warnings, fmt.Sprintf("A margin is required against %q, and no such error was judged.", m.Error))
+		}
+		if q.Allowed > searchEnd {
+			v.Warnings = append(v.Warnings, fmt.Sprintf("A margin of %.6g %s is required against %s; margins are searched up to %g %s.", q.Allowed, q.Unit, m.Error, searchEnd, q.Unit))
+		}
+		// A margin is found by a root search good to 1e-9.
+		q.Met = known && q.Found >= q.Allowed*(1-1e-8)
+		v.Requirements = append(v.Requirements, q)
+	}
+}

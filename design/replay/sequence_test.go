@@ -1,0 +1,182 @@
+package replay
+
+import (
+	"context"
+	"math"
+	"math/cmplx"
+	"testing"
+)
+
+// join plays samples one after another, each list times its phase.
+func join(x []complex128, turns ...complex128) []complex128 {
+	var y []complex128
+	for _, f := range turns {
+		for _, v := range x {
+			y = append(y, f*v)
+		}
+	}
+	return y
+}
+
+// The pair as one long pulse against the square of the target.
+func TestPair(t *testing.T) {
+	ctx := context.Background()
+	m := rackB(cosine(24, 32))
+	m.Channels[0].Poles[2] = -0.1
+	got, err := m.Pair(ctx)
+	if err != nil {
+		t.Fatal(err)
+	}
+	worst := Pair{Infidelity: -1}
+	for quarter := range 4 {
+		phi := float64(quarter) * math.Pi / 2
+		long := m.WithSamples(64, join(m.Channels[0].Samples, 1, cmplx.Rect(1, phi)))
+		long.Target = product(rotation(math.Pi/2, phi), rotation(math.Pi/2, 0))
+		f, _, _, err := long.Figures(ctx)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if f.Infidelity > worst.Infidelity {
+			worst = Pair{f.Infidelity, 90 * float64(quarter)}
+		}
+	}
+	if !(math.Abs(got.Infidelity/worst.Infidelity-1) <= 1e-6) || got.Phase != worst.Phase {
+		t.Errorf("pair %v, want %v", got, worst)
+	}
+	if !(worst.Infidelity > 1e-5) {
+		t.Errorf("the pair shows no memory: %g", worst.Infidelity)
+	}
+}
+
+// Without memory the pair and the repeats are exact, whichever way the mixer turns, with free frames and with a detuning of the frame.
+func TestSequencesWithoutMemory(t *testing.T) {
+	ctx := context.Background()
+	for _, c := range []struct {
+		name          string
+		minusY        bool
+		before, after float64
+	}{{"plain", false, 0, 0}, {"other mixing", true, 0, 0}, {"frames", false, 0.4, -1.1}, {"frames, other mixing", true, 0.4, 0.3}} {
+		x := join([]complex128{cmplx.Rect(0.5, 0.7)}, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1)
+		m := spinModel(1, nil, x)
+		phase := 0.7
+		if c.minusY {
+			minus := make([]complex128, 4)
+			for i, v := range halfY {
+				minus[i] = -v
+			}
+			m.Channels[0].Operators = [][]complex128{halfX, minus}
+			phase = -0.7
+		}
+		m.Channels[0].FullScale = math.Pi / 10 // half of it for 10 ns: a quarter turn
+		m.FreeZBefore, m.FreeZAfter = []float64{c.before}, []float64{c.after}
+		m.Target = product(rotationZ(c.after), product(rotation(math.Pi/2, phase), rotationZ(c.before)))
+		f, w, _, err := m.Figures(ctx)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !(f.Infidelity <= 1e-26) || !(w.Infidelity <= 1e-26) {
+			t.Errorf("%s: infidelity %.2g settled, %.2g in the window", c.name, f.Infidelity, w.Infidelity)
+		}
+		p, err := m.Pair(ctx)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !(p.Infidelity <= 1e-25) {
+			t.Errorf("%s: pair %v", c.name, p)
+		}
+		e := newTestEngine(t, m)
+		b, err := e.bringUp(ctx)
+		if err != nil {
+			t.Fatal(err)
+		}
+		total := []complex128{1, 0, 0, 1}
+		if len(b.Repeats) != 32 {
+			t.Fatalf("%s: %d repeats", c.name, len(b.Repeats))
+		}
+		for n, got := range b.Repeats {
+			total = product(m.Target, total)
+			if want := square(total[2]); !(math.Abs(got.One-want) <= 1e-12) || got.Value != float64(n+1) {
+				t.Errorf("%s: %d repeats give %.12g, want %.12g", c.name, n+1, got.One, want)
+			}
+		}
+	}
+}
+
+func rotationZ(a float64) []complex128 {
+	return []complex128{cmplx.Rect(1, -a/2), 0, 0, cmplx.Rect(1, a/2)}
+}
+
+// Populations with memory: repeats as one long pulse, amplitude and detuning by the closed form of a square pulse.
+func TestBringUp(t *testing.T) {
+	ctx := context.Background()
+	m := rackB(cosine(12, 16))
+	for _, ends := range []string{"settled", "window"} {
+		for _, early := range []float64{0, 2} {
+			m.Ends, m.WindowStart = ends, 3.2+early
+			b, err := newTestEngine(t, m).bringUp(ctx)
+			if err != nil {
+				t.Fatal(err)
+			}
+			for _, n := range []int{1, 2, 7, 32} {
+				turns := make([]complex128, n)
+				for i := range turns {
+					turns[i] = 1
+				}
+				long := m.WithSamples(16*n, join(m.Channels[0].Samples, turns...))
+				e := newTestEngine(t, long)
+				u := evolve(t, e, nil, 0)
+				want := square(e.ended(e.labours[0], u)[2])
+				if got := b.Repeats[n-1]; !(math.Abs(got.One-want) <= 1e-11) {
+					t.Errorf("%s, %g ns early: %d repeats give %.12g, want %.12g", ends, early, n, got.One, want)
+				}
+			}
+		}
+	}
+	b, err := newTestEngine(t, composite(plain)).bringUp(ctx)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, p := range b.Amplitude {
+		if want := math.Pow(math.Sin(math.Pi/2*p.Value), 2); !(math.Abs(p.One-want) <= 1e-12) {
+			t.Errorf("amplitude %g: %.12g, want %.12g", p.Value, p.One, want)
+		}
+	}
+	if n := len(b.Amplitude); n != 21 || b.Amplitude[0].Value != 0.9 || b.Amplitude[20].Value != 1.1 {
+		t.Errorf("amplitude table of %d", n)
+	}
+	for _, p := range b.Detuning {
+		w := math.Hypot(math.Pi/30, 2*math.Pi*1e-3*p.Value)
+		if want := math.Pow(math.Pi/30/w*math.Sin(w*15), 2); !(math.Abs(p.One-want) <= 1e-12) {
+			t.Errorf("detuning %g MHz: %.12g, want %.12g", p.Value, p.One, want)
+		}
+	}
+	if n := len(b.Detuning); n != 41 || b.Detuning[0].Value != -5 || b.Detuning[40].Value != 5 {
+		t.Errorf("detuning table of %d", n)
+	}
+}
+
+// A static part that no turn of the frame leaves alone: one phase, and a warning.
+func TestNoTurn(t *testing.T) {
+	m := rackB(cosine(24, 32))
+	m.Static = []complex128{0, 0.001, 0.001, 0}
+	v, err := m.Judge(context.Background(), 1e-4)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(v.Warnings) != 1 || v.Pair.Phase != 0 || !(v.Pair.Infidelity > 0) {
+		t.Errorf("warnings %q, pair %v", v.Warnings, v.Pair)
+	}
+	m.FreeZAfter = []float64{0.3}
+	if v, err = m.Judge(context.Background(), 1e-4); err != nil || len(v.Warnings) != 1 {
+		t.Errorf("free frames: %v, warnings %q", err, v.Warnings)
+	}
+	// A ladder turns by its number of quanta.
+	s := complex(math.Sqrt2/2, 0)
+	m = rackB(cosine(24, 32))
+	m.Dim, m.Static = 3, []complex128{0, 0, 0, 0, 0, 0, 0, 0, -1}
+	m.Channels[0].Operators = [][]complex128{{0, 0.5, 0, 0.5, 0, s, 0, s, 0}, {0, -0.5i, 0, 0.5i, 0, -1i * s, 0, 1i * s, 0}}
+	g, err := newTestEngine(t, m).turn()
+	if err != nil || !(math.Abs(g[0]-1) <= 1e-12) || !(math.Abs(g[1]) <= 1e-12) || !(math.Abs(g[2]+1) <= 1e-12) {
+		t.Errorf("a ladder turns by %v, %v", g, err)
+	}
+}

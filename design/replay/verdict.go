@@ -1,0 +1,158 @@
+package replay
+
+import "holdfast/hardware"
+
+// A Verdict is what replay found in a pulse folder. Every figure is computed
+// from the integer codes of the folder and the numbers of its [model], never
+// from the design path. Times are in ns, angles in rad, rates in rad/ns unless
+// a field says otherwise; infidelity is the average gate infidelity on the code
+// space.
+type Verdict struct {
+	Name string // of the pulse
+	Ends string // "settled" or "window": which ends the pulse was designed for and is required to meet
+
+	Settled Figures // integrated on until the angle still to come is under 1e-6 rad
+	Window  Figures // drive before the start and after the end of the window ignored
+
+	TailAngle float64 // rad that the ring-out still turns after the window
+	Pair      Pair    // the same pulse twice, back to back
+
+	// Decoherence is T/6 (1/T1 + 2/T2), to be added to every coherent figure;
+	// zero when the device states neither time.
+	Decoherence float64
+
+	Limits []Limit // of the instrument, recomputed from the codes
+	Errors []Error // declared errors first, then detuning, amplitude, X, Y, Z where undeclared
+
+	// BringUp tells what a bench should read with this pulse.
+	BringUp BringUp
+
+	Agreement Agreement    // with the record's [claim]
+	Inputs    []Difference // between [model] and the model rebuilt from inputs/; empty when they agree
+
+	Requirements []Requirement // of the brief, judged here
+	Warnings     []string      // true but doubtful: one sentence each
+}
+
+// Met reports whether every requirement, every limit and the agreement with the
+// record hold.
+func (v *Verdict) Met() bool {
+	for _, r := range v.Requirements {
+		if !r.Met {
+			return false
+		}
+	}
+	for _, l := range v.Limits {
+		if !l.OK {
+			return false
+		}
+	}
+	return v.Agreement.OK && len(v.Inputs) == 0
+}
+
+// Required returns the figures for the ends that the brief asks for.
+func (v *Verdict) Required() Figures {
+	if v.Ends == "window" {
+		return v.Window
+	}
+	return v.Settled
+}
+
+// Figures are those of one gate.
+type Figures struct {
+	Infidelity float64 // average gate infidelity
+	Leakage    float64
+}
+
+// Pair is the gate played twice without a gap against the square of its
+// target: what one pulse's ring-out does to the next, beyond what the record
+// of a single gate can show. The second pulse is turned by each of four phases
+// (0, 90, 180, 270 degrees) and the worst is kept.
+type Pair struct {
+	Infidelity float64
+	Phase      float64 // degrees, of the worst
+}
+
+// Limit is one reading of one channel against the instrument.
+type Limit struct {
+	Channel string
+	hardware.Reading
+}
+
+// Error is what replay found about one error class.
+type Error struct {
+	Name string
+	Held bool
+	Kind string // "static", "amplitude" or "any"
+	Unit string // of Low, High and Curve's Value: "MHz" or "%"
+
+	// Susceptibility is the share of the error that survives the gate, rms over
+	// the class, 0 to 1, from Richardson-extrapolated differences of exact gates.
+	Susceptibility float64
+
+	// Low and High are the error sizes, negative and positive, at which the
+	// required infidelity is first broken, found by root search; -Inf and +Inf
+	// when it holds to the end of the searched range, 0 when it is broken
+	// without any error. For "any" the margin is over the direction found worst
+	// of a fixed set (for a spin the axes, both ways, and the eight directions
+	// between them) and Low = -High; a size f means f times a rotation of one turn
+	// a microsecond for 1 MHz about that direction.
+	Low, High float64
+
+	// WorstDirection says which error of the class survives most, such as
+	// "0.83 X + 0.41 Y", and WorstSusceptibility how much of it. Kind "any" only.
+	WorstDirection      string
+	WorstSusceptibility float64
+	Direction           []float64 // the same direction as numbers, of length 1: along X, Y, Z for one spin
+
+	// Curve is the infidelity for the required ends against the size of the
+	// error. For "any" sizes have no sign, and each point is the worst over the
+	// fixed set.
+	Curve []Point
+}
+
+// Point is one point of a margin curve.
+type Point struct {
+	Value      float64 // in the Error's Unit
+	Infidelity float64
+}
+
+// BringUp lists the populations of |1> that this pulse gives from |0>, with
+// the required ends, so that a bench can see that the right pulse plays.
+type BringUp struct {
+	Amplitude []Population // Value: amplitude scale, 0.9 to 1.1
+	Detuning  []Population // Value: detuning in MHz, -5 to 5
+	Repeats   []Population // Value: number of pulses back to back, 1 to 32
+}
+
+// Population is the probability of |1> at one setting.
+type Population struct {
+	Value float64
+	One   float64 // 0 to 1
+}
+
+// Agreement compares the verdict with the record's [claim], both on the rounded
+// codes.
+type Agreement struct {
+	Infidelity     float64 // largest absolute difference over settled and window
+	Susceptibility float64 // largest absolute difference over the errors
+	TailAngle      float64 // rad
+	OK             bool    // within 1e-9, 1e-5 and 1e-4 rad
+}
+
+// Difference is one number of [model] that inputs/ do not bear out.
+type Difference struct {
+	Key      string // of [model]
+	Recorded string
+	Rebuilt  string
+}
+
+// Requirement is one line of the brief's [require].
+type Requirement struct {
+	Name    string // such as "infidelity" or "margin against detuning"
+	Unit    string // "" for plain numbers
+	Found   float64
+	Allowed float64 // an upper limit, except for margins, where it is a lower one
+	Margin  bool
+	Met     bool
+}

@@ -1,0 +1,364 @@
+package replay
+
+import (
+	"context"
+	"math"
+	"math/cmplx"
+)
+
+// A chain is one entry r/(s-p)^m of a line:
+//
+//	z_1' = p z_1 + x,  z_k' = p z_k + z_(k-1),  u = r z_m
+//
+// A pole that is fast against the sample period would lose digits near its equilibrium z_k = x/(-p)^k, so its chain keeps the
+// distance from there instead (settling), and the equilibrium goes into the input's direct share.
+type chain struct {
+	p, r     complex128
+	settling bool
+	z        []complex128
+}
+
+func (c *chain) equilibrium(k int) complex128 { // of z_(k+1) for x = 1
+	e := complex(1, 0)
+	for range k + 1 {
+		e /= -c.p
+	}
+	return e
+}
+
+// input tells the chain that x has jumped.
+func (c *chain) input(from, to complex128) {
+	if !c.settling {
+		return
+	}
+	e := (from - to) / -c.p
+	for k := range c.z {
+		c.z[k] += e
+		e /= -c.p
+	}
+}
+
+// series adds the first len(dst) Taylor coefficients of r z_m over a step of s ns to dst, scaled to the step: u(t0 + y s) is the
+// sum of dst[n] y^n. cur is scratch for a chain.
+func (c *chain) series(x complex128, s float64, dst, cur []complex128) {
+	m := len(c.z)
+	cur = cur[:m]
+	copy(cur, c.z)
+	ps := c.p * complex(s, 0)
+	for n := range dst {
+		dst[n] += c.r * cur[m-1]
+		f := complex(1/float64(n+1), 0)
+		for k := m - 1; k > 0; k-- {
+			cur[k] = f * (ps*cur[k] + complex(s, 0)*cur[k-1])
+		}
+		cur[0] *= ps
+		if n == 0 && !c.settling {
+			cur[0] += complex(s, 0) * x
+		}
+		cur[0] *= f
+	}
+}
+
+// advance moves the chain on by s ns, in steps of its own that are short against the pole, each a Taylor series
+// to the end of double precision.
+func (c *chain) advance(x complex128, s float64, cur, sum []complex128) {
+	if c.settling {
+		if -real(c.p)*s > 1500 || c.peak() < 1e-40 { // e^-1500 is far under the least number, whatever the power
+			clear(c.z)
+			return
+		}
+		x = 0
+	}
+	m := len(c.z)
+	cur, sum = cur[:m], sum[:m]
+	steps := math.Ceil(cmplx.Abs(c.p) * s)
+	if steps < 1 {
+		steps = 1
+	}
+	h := s / steps
+	ph, hc := c.p*complex(h, 0), complex(h, 0)
+	for range int(steps) {
+		copy(cur, c.z)
+		copy(sum, c.z)
+		for n := 0; n < 24; n++ { // 1/24! is 1.6e-24; the chain's terms die like those of its pole
+			f := complex(1/float64(n+1), 0)
+			for k := m - 1; k > 0; k-- {
+				cur[k] = f * (ph*cur[k] + hc*cur[k-1])
+				sum[k] += cur[k]
+			}
+			cur[0] *= ph
+			if n == 0 {
+				cur[0] += hc * x
+			}
+			cur[0] *= f
+			sum[0] += cur[0]
+		}
+		copy(c.z, sum)
+	}
+}
+
+// left bounds the integral of |r z_m| over all times to come when the input is zero.
+func (c *chain) left() float64 {
+	s, a := 0.0, 1.0
+	for k := len(c.z) - 1; k >= 0; k-- {
+		a /= -real(c.p)
+		s += cmplx.Abs(c.z[k]) * a
+	}
+	return s * cmplx.Abs(c.r)
+}
+
+// peak bounds |r z_m| at all times to come when the input is zero.
+func (c *chain) peak() float64 {
+	// |t^j/j! e^(pt)| is largest at t = j/|Re p|: (j/e|Re p|)^j / j!
+	s, top := 0.0, 1.0
+	for j := range len(c.z) {
+		if j > 0 {
+			top = math.Pow(float64(j)/(math.E*-real(c.p)), float64(j)) / math.Gamma(float64(j+1))
+		}
+		s += cmplx.Abs(c.z[len(c.z)-1-j]) * top
+	}
+	return s * cmplx.Abs(c.r)
+}
+
+// A lineState is one channel's line while it is played.
+type lineState struct {
+	chains []chain
+	x      complex128 // the sample that is held now
+	next   int        // index of the next sample to arrive
+	static complex128 // direct share of u per x, with the equilibria of settling chains
+}
+
+// A walker carries the lines of all channels through a sequence of pulses and writes plans of what arrives: steps in
+// time with the Taylor coefficients of every control. The sequence is the model's pulse, once for each element of turns, its samples
+// times that element.
+type walker struct {
+	e     *engine
+	t     float64 // ns
+	turns []complex128
+	lines []lineState
+	step  float64 // ns, that fitted last
+
+	buf        []complex128 // Taylor coefficients of one line
+	ctl        []float64    // and of every control, seriesLength each
+	cur, sum   []complex128
+	norms, maj []float64
+}
+
+func (e *engine) newWalker(turns ...complex128) *walker {
+	w := &walker{
+		e: e, turns: turns, t: e.start, step: e.m.SamplePeriod,
+		lines: make([]lineState, len(e.m.Channels)),
+		buf:   make([]complex128, seriesLength), ctl: make([]float64, seriesLength*len(e.controls)),
+		cur: make([]complex128, maxPower), sum: make([]complex128, maxPower),
+		norms: make([]float64, seriesLength), maj: make([]float64, seriesLength),
+	}
+	for c := range e.m.Channels {
+		ch := &e.m.Channels[c]
+		w.t = math.Min(w.t, ch.Delay)
+		l := &w.lines[c]
+		l.static = ch.Direct
+		for i, p := range ch.Poles {
+			cn := chain{p: p, r: ch.Residues[i], z: make([]complex128, ch.Powers[i])}
+			cn.settling = cmplx.Abs(p)*e.m.SamplePeriod > 1
+			if cn.settling {
+				l.static += cn.r * cn.equilibrium(ch.Powers[i]-1)
+			}
+			l.chains = append(l.chains, cn)
+		}
+	}
+	return w
+}
+
+// fork gives an independent walker at the same instant, of which the sequence ends after the first n pulses.
+func (w *walker) fork(n int) *walker {
+	o := w.e.newWalker(w.turns[:n]...)
+	o.t, o.step = w.t, w.step
+	for c := range w.lines {
+		o.lines[c].x, o.lines[c].next = w.lines[c].x, w.lines[c].next
+		for i := range w.lines[c].chains {
+			copy(o.lines[c].chains[i].z, w.lines[c].chains[i].z)
+		}
+	}
+	return o
+}
+
+// arrival is when sample k of the sequence arrives on channel c, ns.
+func (w *walker) arrival(c, k int) float64 {
+	return w.e.m.Channels[c].Delay + float64(k)*w.e.m.SamplePeriod
+}
+
+// sample is what is held from the arrival of sample k on channel c; zero after the sequence.
+func (w *walker) sample(c, k int) complex128 {
+	n := w.e.m.Samples
+	if k/n >= len(w.turns) {
+		return 0
+	}
+	x := w.e.m.Channels[c].Samples[k%n]
+	if w.e.turned[c] {
+		x *= w.turns[k/n]
+	}
+	return x
+}
+
+// take loads every sample that has arrived.
+func (w *walker) take() {
+	slack := 1e-9 * w.e.m.SamplePeriod // edges of two channels this close are one
+	for c := range w.lines {
+		l := &w.lines[c]
+		for l.next <= len(w.turns)*w.e.m.Samples && w.arrival(c, l.next) <= w.t+slack {
+			x := w.sample(c, l.next)
+			for i := range l.chains {
+				l.chains[i].input(l.x, x)
+			}
+			l.x = x
+			l.next++
+		}
+	}
+}
+
+// edge is the next arrival of a sample, or +Inf; the end of the sequence counts as one of zero.
+func (w *walker) edge() float64 {
+	t := math.Inf(1)
+	for c := range w.lines {
+		if k := w.lines[c].next; k <= len(w.turns)*w.e.m.Samples {
+			t = math.Min(t, w.arrival(c, k))
+		}
+	}
+	return t
+}
+
+// to walks on to time t, ns, and appends the steps to p, good for errors up to reach. What arrives at t itself is not
+// taken yet.
+func (w *walker) to(ctx context.Context, t float64, r reach, p *plan) error {
+	slack := 1e-9 * w.e.m.SamplePeriod
+	for w.t < t-slack {
+		w.take()
+		end := math.Min(t, w.edge())
+		if end > t-slack {
+			end = t
+		}
+		for w.t < end {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			parts := math.Ceil((end-w.t)/w.step - 1e-6)
+			if parts < 1 {
+				parts = 1
+			}
+			if err := w.stride((end-w.t)/parts, r, p); err != nil {
+				return err
+			}
+			if end-w.t < slack {
+				w.t = end
+			}
+		}
+		w.t = end
+	}
+	w.t = t
+	return nil
+}
+
+// settle walks on until less than settledAngle is still to come, or the budget of steps is spent, and says how much is left, in rad.
+func (w *walker) settle(ctx context.Context, p *plan) (left float64, err error) {
+	for {
+		w.take()
+		edge := w.edge()
+		if math.IsInf(edge, 1) {
+			break
+		}
+		if err := w.to(ctx, edge, reach{}, p); err != nil {
+			return 0, err
+		}
+	}
+	for first := len(p.steps); ; {
+		left = w.left()
+		if left <= settledAngle || len(p.steps)-first > settleBudget {
+			return left, nil
+		}
+		if err := ctx.Err(); err != nil {
+			return 0, err
+		}
+		if err := w.stride(w.step, reach{}, p); err != nil {
+			return 0, err
+		}
+	}
+}
+
+// left bounds the angle in rad by which what is stored in the lines can still turn the device: the widest spread of
+// eigenvalues times the integral of |u|.
+func (w *walker) left() float64 {
+	a := 0.0
+	for c := range w.lines {
+		u := 0.0
+		for i := range w.lines[c].chains {
+			u += w.lines[c].chains[i].left()
+		}
+		norm := 0.0
+		for _, k := range w.e.controls {
+			if k.channel == c {
+				norm = math.Max(norm, k.norm)
+			}
+		}
+		a += 2 * norm * u * w.e.m.Channels[c].FullScale
+	}
+	return a
+}
+
+// series fills ctl with the Taylor coefficients of every control over a step of s ns from now, scaled to the step.
+func (w *walker) series(s float64) {
+	for c := range w.lines {
+		l := &w.lines[c]
+		clear(w.buf)
+		w.buf[0] = l.static * l.x
+		for i := range l.chains {
+			l.chains[i].series(l.x, s, w.buf, w.cur)
+		}
+		for k, ctl := range w.e.controls {
+			if ctl.channel != c {
+				continue
+			}
+			dst := w.ctl[k*seriesLength : (k+1)*seriesLength]
+			f := w.e.m.Channels[c].FullScale
+			for n, v := range w.buf {
+				if ctl.quadrature == 0 {
+					dst[n] = f * real(v)
+				} else {
+					dst[n] = f * imag(v)
+				}
+			}
+		}
+	}
+}
+
+// stride finds a step of at most s ns that the bound of the remainder allows, appends it to p and moves the lines on.
+func (w *walker) stride(s float64, r reach, p *plan) error {
+	w.series(s)
+	order := w.order(s, r)
+	for order > goodOrder {
+		if order <= maxOrder {
+			s *= 0.8
+		} else {
+			s *= 0.5
+		}
+		if !(s > 1e-12*w.e.m.SamplePeriod) {
+			return errTooFast
+		}
+		w.step = s
+		w.series(s)
+		order = w.order(s, r)
+	}
+	if err := p.append(s, order, w.ctl); err != nil {
+		return err
+	}
+	for c := range w.lines {
+		l := &w.lines[c]
+		for i := range l.chains {
+			l.chains[i].advance(l.x, s, w.cur, w.sum)
+		}
+	}
+	w.t += s
+	if order < goodOrder/2 {
+		w.step = 1.25 * math.Max(s, w.step)
+	}
+	return nil
+}

@@ -1,0 +1,111 @@
+package robust
+
+import (
+	"fmt"
+	"math"
+
+	"holdfast/design/dynamics"
+)
+
+// Kind tells the sorts of errors apart.
+type Kind int
+
+// The sorts.
+const (
+	Static    Kind = iota // H += λ V·σ, V constant
+	Amplitude             // what arrives at the device is scaled by 1+λ
+	Any                   // every static error: all three directions
+)
+
+// A Class is a set of errors to be held against.
+type Class struct {
+	Name   string
+	Kind   Kind
+	Vector dynamics.Vec // kind Static: V, any length but zero
+	Weight float64      // of its residuals; the gate itself has 1
+	// Size is the largest error that the refinement looks at: the length of the
+	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or the share of the
+	// amplitude. Zero keeps the class out of the refinement.
+	Size float64
+}
+
+// member is one finite error of an ensemble.
+type member struct {
+	offset dynamics.Vec // rad/ns
+	scale  float64
+}
+
+// ensemble returns the finite errors of a class: both signs of its size, or for
+// Any one of each opposite pair of Directions, as what is left once the first
+// order vanishes is even in the error.
+func (c Class) ensemble() []member {
+	if c.Size == 0 {
+		return nil
+	}
+	switch c.Kind {
+	case Static:
+		v := unit(c.Vector)
+		return []member{{scaled(v, c.Size), 1}, {scaled(v, -c.Size), 1}}
+	case Amplitude:
+		return []member{{scale: 1 + c.Size}, {scale: 1 - c.Size}}
+	}
+	var list []member
+	for _, d := range half() {
+		list = append(list, member{scaled(d, c.Size), 1})
+	}
+	return list
+}
+
+// Directions returns 14 unit vectors spread over the sphere: the six along the
+// axes and the eight along the diagonals, each followed by its opposite.
+func Directions() []dynamics.Vec {
+	var list []dynamics.Vec
+	for _, v := range half() {
+		list = append(list, v, scaled(v, -1))
+	}
+	return list
+}
+
+func half() []dynamics.Vec {
+	r := 1 / math.Sqrt(3)
+	return []dynamics.Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}, {r, r, r}, {r, r, -r}, {r, -r, r}, {r, -r, -r}}
+}
+
+func unit(v dynamics.Vec) dynamics.Vec {
+	return scaled(v, 1/math.Sqrt(v[0]*v[0]+v[1]*v[1]+v[2]*v[2]))
+}
+
+func scaled(v dynamics.Vec, f float64) dynamics.Vec {
+	return dynamics.Vec{f * v[0], f * v[1], f * v[2]}
+}
+
+// WorstDirection names the static error of M that survives most: the largest
+// singular value of M/T and its right singular vector in words, such as
+// "0.83 X + 0.41 Y". Shares under 0.05 are left out.
+func inWords(v dynamics.Vec) string {
+	lead := 0
+	for i := range v {
+		if math.Abs(v[i]) > math.Abs(v[lead]) {
+			lead = i
+		}
+	}
+	if v[lead] < 0 {
+		v = scaled(v, -1)
+	}
+	text := ""
+	for i, x := range v {
+		if math.Abs(x) < 0.05 {
+			continue
+		}
+		switch {
+		case text == "" && x < 0:
+			text = "-"
+		case text != "" && x < 0:
+			text += " - "
+		case text != "":
+			text += " + "
+		}
+		text += fmt.Sprintf("%.2f %c", math.Abs(x), "XYZ"[i])
+	}
+	return text
+}

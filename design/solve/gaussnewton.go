@@ -1,0 +1,260 @@
+package solve
+
+import (
+	"context"
+	"math"
+
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/lapack/lapack64"
+)
+
+// A Problem is a vector of residuals over coefficients.
+type Problem struct {
+	Dim  int // coefficients
+	Rows int // residuals
+	// Residuals stores the residuals at c in r. It is never called with a c
+	// outside the set.
+	Residuals func(c, r []float64)
+	// Jacobian stores the Jacobian at the c of the last call of Residuals in jac,
+	// row by row (Rows x Dim).
+	Jacobian func(jac []float64)
+}
+
+// Status says why a solve ended.
+type Status int
+
+// The reasons.
+const (
+	Converged   Status = iota // |r|² fell below the tolerance
+	Stalled                   // a local minimum: no gain although the barrier was lowered again and again
+	Exhausted                 // the budget of iterations was used up
+	Interrupted               // the context was cancelled
+)
+
+func (s Status) String() string {
+	return [...]string{"converged", "stalled at a miss", "iteration limit", "interrupted"}[s]
+}
+
+// Options of one solve. A zero field means its default.
+type Options struct {
+	Kappa      float64 // bound on µ: κ|r|²/constraints; default 5
+	Tolerance  float64 // on |r|²; default 1e-13; negative: never converged, go on until it stalls
+	Iterations int     // default 400
+	Stalls     int     // gains under 1e-3 in a row of lowered barriers before Stalled; default 15
+}
+
+func (o Options) filled() Options {
+	if o.Kappa == 0 {
+		o.Kappa = 5
+	}
+	if o.Tolerance == 0 {
+		o.Tolerance = 1e-13
+	}
+	if o.Iterations == 0 {
+		o.Iterations = 400
+	}
+	if o.Stalls == 0 {
+		o.Stalls = 15
+	}
+	return o
+}
+
+// A Result is the best point of a solve, strictly inside the set.
+type Result struct {
+	C           []float64
+	Miss        float64 // |r|²
+	Status      Status
+	Iterations  int
+	Evaluations int // of the residuals; the Jacobian is formed at accepted points only
+}
+
+const (
+	armijo        = 1e-4
+	nearBoundary  = 0.95  // of the way to the boundary, at most
+	maxDamping    = 1e10  // λ at which a step so short is a miss
+	halvings      = 6     // of a step, before the damping is raised
+	landingMiss   = 1e-2  // |r|² under which a landing is tried
+	landingGain   = 0.1   // of |r|², at most, or the landing is not taken
+	landingMetric = 1e-3  // weight of the barrier's metric in a landing, times |r|²/constraints
+	landingWait   = 3     // iterations after a failed landing before the next
+	tinyDiagonal  = 1e-14 // of the trace, added to the normal matrix: the barrier's condition reaches 1e17
+)
+
+// GaussNewton runs the iteration of the package comment from c, which must lie
+// strictly inside the set (Gauge < 1); it panics when it does not, a mistake of
+// the caller. It is deterministic.
+var Trace = false
+
+func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options) Result {
+	if math.IsInf(s.barrier(c0), 1) {
+		panic("solve: start outside the set")
+	}
+	o = o.filled()
+	n, m := p.Dim, p.Rows
+	var (
+		c     = append([]float64(nil), c0...)
+		trial = make([]float64, n)
+		step  = make([]float64, n)
+		r     = make([]float64, m)
+		rt    = make([]float64, m)
+		jac   = make([]float64, m*n)
+		g     = make([]float64, n)
+		jr    = make([]float64, n)
+		gb    = make([]float64, n)
+		hb    = make([]float64, n*n)
+		norm  = make([]float64, n*n)
+		jj    = make([]float64, n*n)
+	)
+	ncon := float64(max(1, s.Constraints()))
+	p.Residuals(c, r)
+	p.Jacobian(jac)
+	res := Result{Evaluations: 1}
+	miss := sumSquares(r)
+	mu := o.Kappa * miss / ncon
+	lambda := 1e-2
+	phi := s.barrier(c)
+	stalls, wait := 0, 0
+	status := Exhausted
+	fresh := true // r, jac belong to a new c: normal matrices must be formed
+	for res.Iterations = 0; res.Iterations < o.Iterations; res.Iterations++ {
+		if miss < o.Tolerance {
+			status = Converged
+			break
+		}
+		if ctx.Err() != nil {
+			status = Interrupted
+			break
+		}
+		if fresh {
+			s.derivatives(c, gb, hb)
+			J := blas64.General{Rows: m, Cols: n, Stride: n, Data: jac}
+			blas64.Syrk(blas.Trans, 1, J, 0, blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: jj})
+			blas64.Gemv(blas.Trans, 1, J, blas64.Vector{N: m, Inc: 1, Data: r}, 0, blas64.Vector{N: n, Inc: 1, Data: jr})
+			fresh = false
+		}
+		// Landing: near a zero the shortest step to it, in the barrier's metric,
+		// converges quadratically where the centring below would keep the
+		// convergence linear. It is taken when it fits and gains.
+		if wait--; wait < 0 && miss < landingMiss && descend(step, jr, jj, hb, norm, landingMetric*miss/ncon, n) &&
+			nearBoundary*s.reach(c, step) >= 1 {
+			for i := range trial {
+				trial[i] = c[i] + step[i]
+			}
+			p.Residuals(trial, rt)
+			res.Evaluations++
+			if newMiss := sumSquares(rt); newMiss < landingGain*miss {
+				c, trial = trial, c
+				r, rt = rt, r
+				miss, phi = newMiss, s.barrier(c)
+				p.Jacobian(jac)
+				fresh = true
+				wait = 0
+				continue
+			}
+			wait = landingWait
+		}
+		mu = math.Min(mu, o.Kappa*miss/ncon)
+		for i := range g {
+			g[i] = jr[i] + mu*gb[i]
+		}
+		if !descend(step, g, jj, hb, norm, mu+lambda*miss, n) {
+			lambda *= 4
+			continue
+		}
+		slope := 0.0
+		for i := range g {
+			slope += g[i] * step[i]
+		}
+		merit := miss/2 + mu*phi
+		t := math.Min(1, nearBoundary*s.reach(c, step))
+		t0 := t
+		accepted := false
+		var newMiss, newPhi float64
+		for range halvings {
+			for i := range trial {
+				trial[i] = c[i] + t*step[i]
+			}
+			if newPhi = s.barrier(trial); !math.IsInf(newPhi, 1) {
+				p.Residuals(trial, rt)
+				res.Evaluations++
+				newMiss = sumSquares(rt)
+				if newMiss/2+mu*newPhi <= merit+armijo*t*slope {
+					accepted = true
+					break
+				}
+			}
+			t /= 2
+		}
+		if !accepted {
+			lambda *= 4
+			if lambda > maxDamping {
+				status = Stalled
+				break
+			}
+			continue
+		}
+		if o.Tolerance < 0 && Trace {
+			println(res.Iterations, res.Evaluations, miss*1e6, mu*1e12, lambda, t0, t, newMiss*1e6, phi)
+		}
+		gain := (merit - newMiss/2 - mu*newPhi) / math.Max(math.Abs(miss/2), 1e-300)
+		c, trial = trial, c
+		miss, phi = newMiss, newPhi
+		r, rt = rt, r
+		p.Jacobian(jac)
+		fresh = true
+		if t > 0.5 {
+			lambda = math.Max(lambda/4, 1e-12)
+		} else if t < 0.3*t0 {
+			lambda *= 4
+		}
+		if gain < 1e-3 {
+			mu *= 0.2
+			if stalls++; stalls >= o.Stalls {
+				status = Stalled
+				res.Iterations++
+				break
+			}
+		}
+	}
+	if miss < o.Tolerance {
+		status = Converged
+	}
+	res.C, res.Miss, res.Status = c, miss, status
+	return res
+}
+
+// descend solves (jj + f hb) step = -g, forming the matrix in norm; false when
+// it is not positive definite.
+func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
+	trace := 0.0
+	for i := range n {
+		for k := i; k < n; k++ {
+			norm[i*n+k] = jj[i*n+k] + f*hb[i*n+k]
+		}
+		trace += norm[i*n+i]
+	}
+	if !(trace < math.MaxFloat64) {
+		return false
+	}
+	for i := range n {
+		norm[i*n+i] += tinyDiagonal * trace
+	}
+	tri, ok := lapack64.Potrf(blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: norm})
+	if !ok {
+		return false
+	}
+	for i := range g {
+		step[i] = -g[i]
+	}
+	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
+	return true
+}
+
+func sumSquares(r []float64) float64 {
+	s := 0.0
+	for _, v := range r {
+		s += v * v
+	}
+	return s
+}

@@ -1,0 +1,97 @@
+package design
+
+import (
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"strings"
+
+	"holdfast/hardware"
+)
+
+// inputFiles are the copies of what a pulse was designed from, below inputs/.
+var inputFiles = [3]string{"profile.toml", "device.toml", "brief.toml"}
+
+// Sources are the bytes of the three input files.
+type Sources struct{ Profile, Device, Brief []byte }
+
+// ReadSources reads the three files that the inputs were loaded from.
+func ReadSources(in Inputs) (s Sources, err error) {
+	for _, f := range []struct {
+		dst  *[]byte
+		path string
+	}{{&s.Profile, in.Profile.File}, {&s.Device, in.Device.File}, {&s.Brief, in.Brief.File}} {
+		if *f.dst, err = os.ReadFile(f.path); err != nil {
+			return s, err
+		}
+	}
+	return s, nil
+}
+
+// Write fills dir, an empty folder, with the pulse: the waveform files, inputs/
+// and, last, pulse.toml with the hashes of all others. It completes the record.
+func (p *Pulse) Write(dir string, s Sources) error {
+	ch := p.Record.Model.Channels[0]
+	if err := os.Mkdir(filepath.Join(dir, "inputs"), 0o777); err != nil {
+		return err
+	}
+	for i, data := range [][]byte{s.Profile, s.Device, s.Brief} {
+		if err := os.WriteFile(filepath.Join(dir, "inputs", inputFiles[i]), data, 0o666); err != nil {
+			return err
+		}
+	}
+	n := len(p.Exact)
+	if err := hardware.WriteNPY(filepath.Join(dir, ch.Codes), n, 2, p.Codes); err != nil {
+		return err
+	}
+	exact := make([]float64, 0, 2*n)
+	for _, x := range p.Exact {
+		exact = append(exact, real(x), imag(x))
+	}
+	if err := hardware.WriteNPY(filepath.Join(dir, ch.Exact), n, 2, exact); err != nil {
+		return err
+	}
+	names, err := hardware.ListFiles(dir)
+	if err != nil {
+		return err
+	}
+	list, err := hardware.HashFiles(dir, names)
+	if err != nil {
+		return err
+	}
+	p.Record.Files = nil
+	for _, f := range list {
+		p.Record.Files = append(p.Record.Files, File(f))
+	}
+	out, err := os.OpenFile(filepath.Join(dir, hardware.RecordName), os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
+	if err != nil {
+		return err
+	}
+	if err := errors.Join(p.Record.Encode(out), out.Close()); err != nil {
+		return fmt.Errorf("%s: %w", hardware.RecordName, err)
+	}
+	return nil
+}
+
+// fileStem makes a file name of a channel's: letters and digits stay, runs of
+// everything else become one hyphen.
+func fileStem(name string) string {
+	var b strings.Builder
+	gap := false
+	for _, r := range name {
+		if r >= 'a' && r <= 'z' || r >= 'A' && r <= 'Z' || r >= '0' && r <= '9' || r == '_' {
+			if gap && b.Len() > 0 {
+				b.WriteByte('-')
+			}
+			b.WriteRune(r)
+			gap = false
+		} else {
+			gap = true
+		}
+	}
+	if b.Len() == 0 {
+		return "channel"
+	}
+	return b.String()
+}
