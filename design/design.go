@@ -54,16 +54,28 @@ type Pulse struct {
 	inputs  Inputs
 }
 
-// What the finish of a design spends. Budgets count iterations, never seconds.
+// What the finish of a design spends: successes are refined against finite
+// errors, all of them in two short stages, of which the first looks at larger
+// errors and so leaves shallow basins, then the best few for longer. Budgets
+// count iterations, never seconds.
 const (
-	candidates   = 8   // successes that are refined
-	firstRefine  = 50  // iterations for each
-	finalists    = 2   // that are refined further
-	secondRefine = 150 // iterations for each
-	refineWeight = 1   // of the finite errors beside the first order
+	candidates   = 12
+	finalists    = 3
+	refineWeight = 1 // of the finite errors beside the first order
 	refineKappa  = 1
 	refineStalls = 12
 )
+
+// A stage is some iterations of the refinement at stretched errors.
+type stage struct {
+	stretch    float64
+	iterations int
+}
+
+var rounds = [2][]stage{
+	{{3, 40}, {1, 30}},
+	{{1, 600}},
+}
 
 // Run designs the pulse. It uses all processors; its result depends on the
 // inputs alone. When ctx is cancelled it returns the best so far with status
@@ -230,7 +242,7 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 // expected is a rough upper bound of the time of one start: that of its
 // evaluations, were they all used. It is shown, and nothing depends on it.
 func (q *problem) expected() time.Duration {
-	g := q.gate(false, 0)
+	g := q.gate(false)
 	c := q.start(0).c
 	r, jac := make([]float64, g.Rows()), make([]float64, g.Rows()*g.Dim())
 	begun := time.Now()
@@ -242,7 +254,7 @@ func (q *problem) expected() time.Duration {
 // solve runs one start on the coarse grid.
 func (q *problem) solve(ctx context.Context, number int) solve.Result {
 	st := q.start(number)
-	p := q.residuals(q.gate(false, 0))
+	p := q.residuals(q.gate(false))
 	spent := 0
 	if st.loose {
 		r := solve.GaussNewton(ctx, p, q.loose, st.c, solve.Options{Kappa: st.kappa})
@@ -281,12 +293,12 @@ func (q *problem) refine(ctx context.Context, won []solve.Numbered, wanted bool,
 	for i, r := range won {
 		pool[i] = candidate{start: r.Start, wide: r.C}
 	}
-	rounds := []int{0}
-	if wanted {
-		rounds = []int{firstRefine, secondRefine}
+	plan := rounds[:]
+	if !wanted {
+		plan = [][]stage{nil}
 	}
 	left := pool
-	for round, iterations := range rounds {
+	for round, stages := range plan {
 		if round > 0 {
 			sortByLoss(pool)
 			left = pool[:min(finalists, len(pool))]
@@ -294,7 +306,7 @@ func (q *problem) refine(ctx context.Context, won []solve.Numbered, wanted bool,
 		var mu sync.Mutex
 		done := 0
 		each(len(left), func(i int) {
-			q.improve(ctx, &left[i], iterations)
+			q.improve(ctx, &left[i], stages)
 			mu.Lock()
 			done++
 			progress(Progress{Stage: "refine", Done: done, Of: len(left), Successes: len(won), Best: left[i].loss})
@@ -313,17 +325,17 @@ func sortByLoss(pool []candidate) {
 	}
 }
 
-// improve takes a candidate some iterations further and polishes it. A polish
+// improve takes a candidate through stages of the refinement and polishes it. A polish
 // that does not end at a zero, or ends at a worse one, is dropped.
-func (q *problem) improve(ctx context.Context, c *candidate, iterations int) {
-	if iterations > 0 {
-		r := solve.GaussNewton(ctx, q.residuals(q.gate(false, refineWeight)), q.set, c.wide,
-			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: iterations, Stalls: refineStalls})
+func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
+	for _, s := range stages {
+		r := solve.GaussNewton(ctx, q.residuals(q.finite(s.stretch)), q.set, c.wide,
+			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: s.iterations, Stalls: refineStalls})
 		c.wide = r.C
 		c.evaluations += r.Evaluations
 	}
 	// the polish is short and ends what was begun, even when interrupted
-	r := solve.GaussNewton(context.WithoutCancel(ctx), q.residuals(q.gate(true, 0)), q.set, c.wide, solve.Options{Iterations: 100})
+	r := solve.GaussNewton(context.WithoutCancel(ctx), q.residuals(q.gate(true)), q.set, c.wide, solve.Options{Iterations: 100})
 	c.evaluations += r.Evaluations
 	next := candidate{zero: r.Status == solve.Converged, loss: q.loss(r.C)}
 	if c.c == nil || next.better(*c) {
@@ -334,7 +346,7 @@ func (q *problem) improve(ctx context.Context, c *candidate, iterations int) {
 // loss is the mean infidelity over the finite errors of every held class, on
 // the fine grid, summed over the classes.
 func (q *problem) loss(c []float64) float64 {
-	g := q.gate(true, 0)
+	g := q.gate(true)
 	u := q.controls(q.sampled(c))
 	sum := 0.0
 	for _, class := range q.spin.Held {

@@ -44,7 +44,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		Basis: BasisFacts{Family: q.basis.Family, PerQuad: n, I: out.c[:n], Q: out.c[n:]},
 		Search: SearchFacts{
 			Seed: b.Seed, Starts: b.Starts, Tried: out.tried, Successes: out.successes, Winner: out.winner,
-			Evaluations: out.evaluations, Equations: q.gate(false, 0).Rows(), Refined: out.refined, Miss: out.miss,
+			Evaluations: out.evaluations, Equations: q.gate(false).Rows(), Refined: out.refined, Miss: out.miss,
 		},
 		Require: RequireFacts{Infidelity: b.Require.Infidelity, Susceptibility: b.Require.Susceptibility},
 		Provenance: ProvenanceFacts{

@@ -177,38 +177,48 @@ type start struct {
 	loose bool
 }
 
-// start draws the numbered start: Gaussian coefficients without ringing, mostly
-// at 0.3 to 0.9 of the boundary. Some lie close to it, some have the area of the
-// target angle plus or minus a turn, some first take a way through a looser
-// ring-out limit: rare basins are reached so.
+// ways lists how the starts are drawn, in turn. Most of what is found at the
+// shortest spans, and the best of what is found at long ones, has the area of the
+// target's angle plus whole turns, so that most starts have it too.
+var ways = [...]struct {
+	area  bool // the area of the target's angle plus turns
+	turns float64
+	reach float64 // of the boundary; 0: drawn from 0.3 to 0.9
+	loose bool    // by way of a looser ring-out limit
+}{
+	{},
+	{area: true, turns: 1},
+	{area: true, turns: 2},
+	{area: true},
+	{loose: true},
+	{area: true, turns: 1},
+	{area: true, turns: -1},
+	{reach: 0.97},
+	{area: true, turns: 2},
+	{area: true, turns: -2},
+}
+
+// start draws the numbered start: Gaussian coefficients that do not ring, in one
+// of the ways.
 func (q *problem) start(number int) start {
 	rng := rand.New(rand.NewPCG(q.seed, uint64(number)))
-	n := q.basis.Count
-	s := start{c: make([]float64, 2*n), kappa: [...]float64{5, 1, 20}[number%3]}
+	s := start{c: make([]float64, 2*q.basis.Count), kappa: [...]float64{5, 1, 20}[number%3]}
 	for i := range s.c {
 		s.c[i] = rng.NormFloat64()
 	}
+	way := ways[number%len(ways)]
 	reach := 0.3 + 0.6*rng.Float64()
-	turn := 0.0
-	switch number % 10 {
-	case 3:
-		s.loose = q.loose != nil
-	case 5:
-		turn = 2 * math.Pi
-	case 7:
-		reach = 0.97
-	case 8:
-		turn = -2 * math.Pi
-	case 9:
-		turn = 1e-300 // the area of the target itself
+	if way.reach > 0 {
+		reach = way.reach
 	}
+	s.loose = way.loose && q.loose != nil
 	q.silence(s.c)
 	g := q.set.Gauge(s.c)
 	for i := range s.c {
 		s.c[i] *= reach / g
 	}
-	if angle := length(q.target); turn != 0 && angle > 0 {
-		q.addArea(s.c, angle+turn, angle)
+	if angle := length(q.target); way.area && angle > 0 {
+		q.addArea(s.c, angle+2*math.Pi*way.turns, angle)
 		q.silence(s.c)
 		q.shrink(s.c, 0.9)
 	}
@@ -249,14 +259,26 @@ func (q *problem) addArea(c []float64, want, angle float64) {
 }
 
 // gate returns the residuals on the coarse or the fine grid.
-func (q *problem) gate(fine bool, refine float64) *robust.Gate {
+func (q *problem) gate(fine bool) *robust.Gate {
 	s := q.spin
 	if fine {
 		s.Grid = q.fine.Grid
-		return robust.NewGate(s, q.fineR, refine)
+		return robust.NewGate(s, q.fineR, 0)
 	}
 	s.Grid = q.coarse.Grid
-	return robust.NewGate(s, q.coarseR, refine)
+	return robust.NewGate(s, q.coarseR, 0)
+}
+
+// finite returns the residuals on the coarse grid with those of finite errors,
+// their sizes multiplied by stretch.
+func (q *problem) finite(stretch float64) *robust.Gate {
+	s := q.spin
+	s.Grid = q.coarse.Grid
+	s.Held = append([]robust.Class(nil), s.Held...)
+	for i := range s.Held {
+		s.Held[i].Size *= stretch
+	}
+	return robust.NewGate(s, q.coarseR, refineWeight)
 }
 
 // residuals makes the solver's problem of a gate.

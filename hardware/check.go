@@ -111,6 +111,9 @@ const (
 	// subdivision and divisions: each division makes what an interval can hide 64 times smaller, 2e-4 becomes 3e-15.
 	subdivision = 8
 	divisions   = 6
+	// leastGain: where v bends by no more than this share of the largest value, rounding is all that a division would find; on
+	// the flat of a slow tail every interval would be divided for nothing.
+	leastGain = 1e-13
 )
 
 // ringOut searches for the largest quadrature of what arrives after the span, in the first RingOut.Fast ns and later.
@@ -174,12 +177,17 @@ func (p *Profile) largest(c *Channel, x []complex128, times []float64, v []compl
 				for j := max(i, first+1); j <= min(i+1, first+cells-1); j++ {
 					bend = max(bend, math.Abs(part(v[j-1])-2*part(v[j])+part(v[j+1])))
 				}
-				if max(math.Abs(part(v[i])), math.Abs(part(v[i+1])))+bend/2 < most {
+				// A single interval has no second difference yet and is always divided.
+				higher := max(math.Abs(part(v[i])), math.Abs(part(v[i+1]))) + bend/2
+				if cells > 1 && (bend/2 <= leastGain*most || higher < most) {
 					continue
 				}
 				for j := range subdivision + 1 {
 					finer = append(finer, times[i]+(times[i+1]-times[i])*float64(j)/subdivision)
 				}
+			}
+			if len(finer) == 0 {
+				break
 			}
 			times, cells = finer, subdivision
 			v = p.arrive(c, x, times)

@@ -24,10 +24,10 @@ func LargestCode(bits int) int { return 1<<(bits-1) - 1 }
 // It never clamps: a sample that is not finite or whose code does not exist is an error.
 func Quantise(x complex128, bits int) (i, q int16, err error) {
 	if i, err = quantise(real(x), bits); err != nil {
-		return 0, 0, fmt.Errorf("I: %w", err)
+		return 0, 0, fmt.Errorf("quadrature I: %w", err)
 	}
 	if q, err = quantise(imag(x), bits); err != nil {
-		return 0, 0, fmt.Errorf("Q: %w", err)
+		return 0, 0, fmt.Errorf("quadrature Q: %w", err)
 	}
 	return i, q, nil
 }

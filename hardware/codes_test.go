@@ -79,7 +79,7 @@ func TestCodesThatDoNotExist(t *testing.T) {
 			t.Errorf("%v: %v, %v; needed: %s", test.codes, x, err, test.want)
 		}
 	}
-	want := "sample 1, Q: sample -1.5 of full scale has no code; allowed: -8192 to 8191 of 8192"
+	want := "sample 1, quadrature Q: sample -1.5 of full scale has no code; allowed: -8192 to 8191 of 8192"
 	if _, err := QuantiseAll([]complex128{0, -1.5i}, 14); err == nil || err.Error() != want {
 		t.Errorf("got %v; needed: %s", err, want)
 	}

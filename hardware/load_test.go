@@ -230,7 +230,8 @@ func TestLoadRefuses(t *testing.T) {
 		}
 	}
 	for file, want := range map[string]string{
-		"":                          `p.toml:1: format: found nothing; allowed: 1, and nothing else`,
+		"": `p.toml:1: format: found nothing; allowed: 1, and nothing else`,
+		"format = 1\n[instrument]\nname = \"a\"\nsample_rate = \"1 GS/s\"\nresolution = \"14 bit\"\n": `p.toml:1: channel: found no channel; allowed: 1 to 64, each [[channel]]`,
 		"format = 1\n[instrument\n": `p.toml:2: `,
 		"\xff\xfe":                  `p.toml:1: `,
 	} {

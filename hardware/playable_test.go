@@ -177,6 +177,9 @@ func climb(s *Set, x []complex128, g []complex128) []complex128 {
 		if !(size > 1e-9*start) {
 			break
 		}
+		for k := range d {
+			d[k] /= complex(size, 0)
+		}
 		far, stop := reach(s, x, d)
 		for k := range x {
 			x[k] += complex(far, 0) * d[k]
@@ -591,6 +594,36 @@ func TestIdealSetHasNoRows(t *testing.T) {
 	p.Channels[0].RingOut = RingOut{Limit: 1e-3}
 	if s, err := p.Playable(0, 8); err != nil || len(s.Rows) != 0 {
 		t.Errorf("straight through: %+v, %v", s, err)
+	}
+}
+
+// The search in time ends where nothing bends: long after a pulse, and on a tail that does not change in double precision.
+// Without a bound on the work this takes hours.
+func TestRingOutOfAFlatTail(t *testing.T) {
+	p := rackB(t)
+	x := make([]complex128, maxSamples)
+	x[3] = 0.1
+	if list, err := p.CheckSamples(0, x); err != nil || !Kept(list) {
+		t.Errorf("%v, %v", list, err)
+	}
+	bessel, err := filter.Bessel(4, 0.2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	tail, err := filter.Tails([]filter.Tail{{Amplitude: 0.4, Time: 1e9}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if p.Channels[0].Line, err = filter.Cascade(bessel, tail); err != nil {
+		t.Fatal(err)
+	}
+	list, err := p.CheckSamples(0, x[:64])
+	if err != nil {
+		t.Fatal(err)
+	}
+	// One sample of 0.1 leaves 0.4 x 0.1 x 1 ns/1 s behind; filter joins sections to 1e-10 of the response, here far better.
+	if got := list[len(list)-1].Found; !(math.Abs(got-4e-11) <= 1e-16) {
+		t.Errorf("the tail is %g; by hand 4e-11", got)
 	}
 }
 

@@ -50,6 +50,7 @@ func main() {
 // be printed in one line.
 type verb struct {
 	name, operands, short string
+	flags                 string // as the usage line shows them
 	run                   func(c *call) (int, error)
 }
 
@@ -57,12 +58,12 @@ type verb struct {
 // is one of them.
 func verbs() []verb {
 	return []verb{
-		{"start", "DIR", "write a commented profile, device and brief into a new folder", start},
-		{"check", "FILE...", "read profiles, devices, briefs and say what they mean", check},
-		{"design", "BRIEF", "design a pulse and write its folder with a datasheet", designPulse},
-		{"replay", "PULSE", "recompute a pulse folder by other means and judge it", replayPulse},
-		{"help", "[VERB | TOPIC]", "explain a verb, or one of: profile, device, brief, pulse", help},
-		{"version", "", "print the version", printVersion},
+		{"start", "DIR", "write a commented profile, device and brief into a new folder", "", start},
+		{"check", "FILE...", "read profiles, devices, briefs and say what they mean", "", check},
+		{"design", "BRIEF", "design a pulse and write its folder with a datasheet", "[-out FOLDER] [-force]", designPulse},
+		{"replay", "PULSE", "recompute a pulse folder by other means and judge it", "[-datasheet FILE]", replayPulse},
+		{"help", "[VERB | TOPIC]", "explain a verb, or one of: profile, device, brief, pulse", "", help},
+		{"version", "", "print the version", "", printVersion},
 	}
 }
 

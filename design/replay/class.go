@@ -368,9 +368,6 @@ func (e *engine) rms(r *Error, all []*probed, names []string) {
 	// as strong as one of the basis.
 	one := all[0].strength
 	r.Susceptibility = math.Sqrt(sum/float64(d*d-1)) / one
-	if len(all) > 255 {
-		return // 16 levels: beyond that nobody reads a direction, and the decomposition takes long
-	}
 	// What is left of error sum v_i B_i is sum v_i left_i: the columns, real and imaginary parts one above the other.
 	rows := 2 * d * d
 	a := mat.NewDense(max(rows, len(all)), len(all), nil)

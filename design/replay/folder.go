@@ -215,15 +215,18 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 			Kind:       ct.Choice("kind", []string{"quadrature", "baseband"}),
 			FullScale:  ct.Number("full_scale_rad_per_ns", 1e-12, 1e4),
 			Delay:      ct.Number("delay_ns", -1e9, 1e9),
-			Poles:      ct.Complexes("poles_per_ns", maxPoles),
-			Powers:     wholes(ct, "powers", maxPoles, 1, maxPower),
-			Residues:   ct.Complexes("residues", maxPoles),
 			MaxShare:   ct.Number("max_share", 1e-12, 1, inf),
 			MaxSlew:    ct.Number("max_slew_per_sample", 1e-12, 2, inf),
 			GuardLead:  ct.Int("guard_lead", 0, maxSamples, 0),
 			GuardTrail: ct.Int("guard_trail", 0, maxSamples, 0),
 			RingOut:    ct.Number("ring_out_share", 1e-12, 1e6, inf),
 			Samples:    make([]complex128, m.Samples), // until the codes are read
+		}
+		// A line without poles may leave out all three lists.
+		if poles, powers, residues := ct.Has("poles_per_ns"), ct.Has("powers"), ct.Has("residues"); poles || powers || residues {
+			c.Poles = ct.Complexes("poles_per_ns", maxPoles)
+			c.Powers = wholes(ct, "powers", maxPoles, 1, maxPower)
+			c.Residues = ct.Complexes("residues", maxPoles)
 		}
 		direct := ct.Numbers("direct", 2, -1e9, 1e9)
 		if len(direct) == 2 {

@@ -329,3 +329,22 @@ func TestDecoherence(t *testing.T) {
 		t.Errorf("64 ns: %g", got)
 	}
 }
+
+// Numbers that are allowed one by one and absurd together end with a sentence.
+func TestAbsurdModels(t *testing.T) {
+	for name, change := range map[string]func(m *Model){
+		"a pole that rings for ever":    func(m *Model) { m.Channels[0].Poles[2] = complex(-1e-14, 1e6) },
+		"a static part without measure": func(m *Model) { m.Static = []complex128{1e6, 0, 0, -1e6} },
+		"a period without measure":      func(m *Model) { m.SamplePeriod = 1e6 },
+		"a residue without measure":     func(m *Model) { m.Channels[0].Residues[0] = 1e9 },
+	} {
+		m := testModel()
+		change(m)
+		if err := m.Validate(); err != nil {
+			t.Fatal(name, err)
+		}
+		if _, err := m.Judge(context.Background(), 1e-4); err != errTooLong && err != errTooFast {
+			t.Errorf("%s: %v", name, err)
+		}
+	}
+}

@@ -84,7 +84,7 @@ func (m *Model) ringing(ctx context.Context, c int) (float64, error) {
 	}
 	w.take()
 	worst := 0.0
-	for steps := 0; steps < settleBudget; steps++ {
+	for w.count = 0; w.count < settleBudget; {
 		if err := ctx.Err(); err != nil {
 			return 0, err
 		}

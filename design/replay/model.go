@@ -14,6 +14,7 @@ const (
 	maxPoles    = 64 // entries of one line
 	maxPower    = 16
 	maxErrors   = 64
+	maxAnyDim   = 16 // levels of which all d^2-1 static errors are judged
 )
 
 // A Model is [model] of pulse.toml with the samples loaded: all that is needed to recompute the gate. Matrices are
@@ -220,6 +221,9 @@ func (m *Model) validate() *fault {
 				}
 			}
 		case "any":
+			if m.Dim > maxAnyDim {
+				return bad(key+"kind", fmt.Sprintf("%q with %d levels", e.Kind, m.Dim), fmt.Sprintf("up to %d levels", maxAnyDim))
+			}
 		default:
 			return bad(key+"kind", fmt.Sprintf("%q", e.Kind), `"static", "amplitude" or "any"`)
 		}

@@ -77,10 +77,18 @@ func (c *chain) advance(x complex128, s float64, cur, sum []complex128) {
 	}
 	h := s / steps
 	ph, hc := c.p*complex(h, 0), complex(h, 0)
+	// 1/24! is 1.6e-24, and a chain's terms die like those of its pole; a single state of a slow pole is done sooner.
+	terms := 24
+	if m == 1 {
+		terms = 1
+		for size := 1.0; size > 1e-19; terms++ { // |ph|^(n-1)/n!
+			size *= cmplx.Abs(ph) / float64(terms+1)
+		}
+	}
 	for range int(steps) {
 		copy(cur, c.z)
 		copy(sum, c.z)
-		for n := 0; n < 24; n++ { // 1/24! is 1.6e-24; the chain's terms die like those of its pole
+		for n := range terms {
 			f := complex(1/float64(n+1), 0)
 			for k := m - 1; k > 0; k-- {
 				cur[k] = f * (ph*cur[k] + hc*cur[k-1])
@@ -137,6 +145,7 @@ type walker struct {
 	turns []complex128
 	lines []lineState
 	step  float64 // ns, that fitted last
+	count int     // of steps so far
 
 	buf        []complex128 // Taylor coefficients of one line
 	ctl        []float64    // and of every control, seriesLength each
@@ -270,9 +279,9 @@ func (w *walker) settle(ctx context.Context, p *plan) (left float64, err error) 
 			return 0, err
 		}
 	}
-	for first := len(p.steps); ; {
+	for w.count = 0; ; {
 		left = w.left()
-		if left <= settledAngle || len(p.steps)-first > settleBudget {
+		if left <= settledAngle || w.count >= settleBudget {
 			return left, nil
 		}
 		if err := ctx.Err(); err != nil {
@@ -346,6 +355,9 @@ func (w *walker) stride(s float64, r reach, p *plan) error {
 		w.step = s
 		w.series(s)
 		order = w.order(s, r)
+	}
+	if w.count++; w.count > stridesBase+stridesPerSample*w.e.m.Samples*len(w.turns) {
+		return errTooLong
 	}
 	if err := p.append(s, order, w.ctl); err != nil {
 		return err

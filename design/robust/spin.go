@@ -54,6 +54,8 @@ type Gate struct {
 	finite  dynamics.Spin // gate only
 	combine [][]combination
 
+	re, im blas64.General // the response, N x nodes: products then run along the nodes
+
 	u    []float64
 	rows int
 	d    []float64 // derivatives by node: raw rows x 2 nodes
@@ -139,10 +141,25 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 	nodes := 2 * len(s.Grid.Steps)
 	rawRows := 3 + 3*len(g.nominal.Toggle) + 3*len(g.members)
 	g.u = make([]float64, 2*nodes)
+	g.re, g.im = transposed(r.Re, nodes, r.N), transposed(r.Im, nodes, r.N)
 	g.d = make([]float64, rawRows*2*nodes)
 	g.raw = make([]float64, rawRows*2*r.N)
 	g.k = make([][9]float64, 1+len(g.members))
 	return g
+}
+
+// transposed returns the transpose of a row-major matrix, empty for nil.
+func transposed(a []float64, rows, cols int) blas64.General {
+	if a == nil {
+		return blas64.General{}
+	}
+	t := blas64.General{Rows: cols, Cols: rows, Stride: rows, Data: make([]float64, len(a))}
+	for i := range rows {
+		for j := range cols {
+			t.Data[j*rows+i] = a[i*cols+j]
+		}
+	}
+	return t
 }
 
 // Clone returns a Gate with working memory of its own.
@@ -163,13 +180,11 @@ func (g *Gate) field(c []float64) {
 	cq := blas64.Vector{N: n, Inc: 1, Data: c[n : 2*n]}
 	ui := blas64.Vector{N: nodes, Inc: 1, Data: g.u[:nodes]}
 	uq := blas64.Vector{N: nodes, Inc: 1, Data: g.u[nodes:]}
-	re := blas64.General{Rows: nodes, Cols: n, Stride: n, Data: g.response.Re}
-	blas64.Gemv(blas.NoTrans, 1, re, ci, 0, ui)
-	blas64.Gemv(blas.NoTrans, 1, re, cq, 0, uq)
+	blas64.Gemv(blas.Trans, 1, g.re, ci, 0, ui)
+	blas64.Gemv(blas.Trans, 1, g.re, cq, 0, uq)
 	if g.response.Im != nil {
-		im := blas64.General{Rows: nodes, Cols: n, Stride: n, Data: g.response.Im}
-		blas64.Gemv(blas.NoTrans, -1, im, cq, 1, ui)
-		blas64.Gemv(blas.NoTrans, 1, im, ci, 1, uq)
+		blas64.Gemv(blas.Trans, -1, g.im, cq, 1, ui)
+		blas64.Gemv(blas.Trans, 1, g.im, ci, 1, uq)
 	}
 }
 
@@ -252,13 +267,11 @@ func (g *Gate) Jacobian(jac []float64) {
 	dq := blas64.General{Rows: rawRows, Cols: nodes, Stride: w, Data: g.d[nodes:]}
 	ji := blas64.General{Rows: rawRows, Cols: n, Stride: 2 * n, Data: g.raw}
 	jq := blas64.General{Rows: rawRows, Cols: n, Stride: 2 * n, Data: g.raw[n:]}
-	re := blas64.General{Rows: nodes, Cols: n, Stride: n, Data: g.response.Re}
-	blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, di, re, 0, ji)
-	blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, dq, re, 0, jq)
+	blas64.Gemm(blas.NoTrans, blas.Trans, 1, di, g.re, 0, ji)
+	blas64.Gemm(blas.NoTrans, blas.Trans, 1, dq, g.re, 0, jq)
 	if g.response.Im != nil {
-		im := blas64.General{Rows: nodes, Cols: n, Stride: n, Data: g.response.Im}
-		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, dq, im, 1, ji)
-		blas64.Gemm(blas.NoTrans, blas.NoTrans, -1, di, im, 1, jq)
+		blas64.Gemm(blas.NoTrans, blas.Trans, 1, dq, g.im, 1, ji)
+		blas64.Gemm(blas.NoTrans, blas.Trans, -1, di, g.im, 1, jq)
 	}
 
 	g.turnRows(jac, 0, 0, g.k[0], 1)

@@ -27,7 +27,7 @@ type Status int
 // The reasons.
 const (
 	Converged   Status = iota // |r|² fell below the tolerance
-	Stalled                   // a local minimum: no gain although the barrier was lowered again and again
+	Stalled                   // a local minimum: no gain although the barrier was lowered again and again, or no step left
 	Exhausted                 // the budget of iterations was used up
 	Interrupted               // the context was cancelled
 )
@@ -41,7 +41,7 @@ type Options struct {
 	Kappa      float64 // bound on µ: κ|r|²/constraints; default 5
 	Tolerance  float64 // on |r|²; default 1e-13; negative: never converged, go on until it stalls
 	Iterations int     // default 400
-	Stalls     int     // gains under 1e-3 in a row of lowered barriers before Stalled; default 15
+	Stalls     int     // steps that gain under 1e-3, each of which lowers the barrier, before Stalled; default 15
 }
 
 func (o Options) filled() Options {
@@ -63,7 +63,7 @@ func (o Options) filled() Options {
 // A Result is the best point of a solve, strictly inside the set.
 type Result struct {
 	C           []float64
-	Miss        float64 // |r|²
+	Miss        float64 // |r|² there
 	Status      Status
 	Iterations  int
 	Evaluations int // of the residuals; the Jacobian is formed at accepted points only
@@ -79,13 +79,14 @@ const (
 	landingMetric = 1e-3  // weight of the barrier's metric in a landing, times |r|²/constraints
 	landingWait   = 3     // iterations after a failed landing before the next
 	tinyDiagonal  = 1e-14 // of the trace, added to the normal matrix: the barrier's condition reaches 1e17
+	mostDiagonal  = 1e-8  // of the trace, when less leaves the normal matrix indefinite
 )
 
-// GaussNewton runs the iteration of the package comment from c, which must lie
+// GaussNewton runs the iteration of the package comment from c0, which must lie
 // strictly inside the set (Gauge < 1); it panics when it does not, a mistake of
-// the caller. It is deterministic.
-var Trace = false
-
+// the caller. It is deterministic. Points whose residuals are not finite are
+// never accepted: a start of that kind ends at once, Stalled with an infinite
+// Miss.
 func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options) Result {
 	if math.IsInf(s.barrier(c0), 1) {
 		panic("solve: start outside the set")
@@ -108,15 +109,25 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	)
 	ncon := float64(max(1, s.Constraints()))
 	p.Residuals(c, r)
+	res := Result{C: c, Miss: sumSquares(r), Status: Stalled, Evaluations: 1}
+	if math.IsInf(res.Miss, 1) {
+		return res
+	}
 	p.Jacobian(jac)
-	res := Result{Evaluations: 1}
-	miss := sumSquares(r)
+	miss, best := res.Miss, append([]float64(nil), c...)
 	mu := o.Kappa * miss / ncon
 	lambda := 1e-2
 	phi := s.barrier(c)
 	stalls, wait := 0, 0
 	status := Exhausted
 	fresh := true // r, jac belong to a new c: normal matrices must be formed
+	// The merit may fall while the miss rises, so the last point need not be the best.
+	keep := func() {
+		if miss <= res.Miss {
+			res.Miss = miss
+			copy(best, c)
+		}
+	}
 	for res.Iterations = 0; res.Iterations < o.Iterations; res.Iterations++ {
 		if miss < o.Tolerance {
 			status = Converged
@@ -141,16 +152,20 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			for i := range trial {
 				trial[i] = c[i] + step[i]
 			}
-			p.Residuals(trial, rt)
-			res.Evaluations++
-			if newMiss := sumSquares(rt); newMiss < landingGain*miss {
-				c, trial = trial, c
-				r, rt = rt, r
-				miss, phi = newMiss, s.barrier(c)
-				p.Jacobian(jac)
-				fresh = true
-				wait = 0
-				continue
+			// the barrier sees what reach cannot: a step that is not finite
+			if newPhi := s.barrier(trial); !math.IsInf(newPhi, 1) {
+				p.Residuals(trial, rt)
+				res.Evaluations++
+				if newMiss := sumSquares(rt); newMiss < landingGain*miss {
+					c, trial = trial, c
+					r, rt = rt, r
+					miss, phi = newMiss, newPhi
+					keep()
+					p.Jacobian(jac)
+					fresh = true
+					wait = 0
+					continue
+				}
 			}
 			wait = landingWait
 		}
@@ -159,7 +174,10 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			g[i] = jr[i] + mu*gb[i]
 		}
 		if !descend(step, g, jj, hb, norm, mu+lambda*miss, n) {
-			lambda *= 4
+			if lambda *= 4; lambda > maxDamping {
+				status = Stalled
+				break
+			}
 			continue
 		}
 		slope := 0.0
@@ -194,13 +212,11 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			}
 			continue
 		}
-		if o.Tolerance < 0 && Trace {
-			println(res.Iterations, res.Evaluations, miss*1e6, mu*1e12, lambda, t0, t, newMiss*1e6, phi)
-		}
 		gain := (merit - newMiss/2 - mu*newPhi) / math.Max(math.Abs(miss/2), 1e-300)
 		c, trial = trial, c
 		miss, phi = newMiss, newPhi
 		r, rt = rt, r
+		keep()
 		p.Jacobian(jac)
 		fresh = true
 		if t > 0.5 {
@@ -220,41 +236,47 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	if miss < o.Tolerance {
 		status = Converged
 	}
-	res.C, res.Miss, res.Status = c, miss, status
+	res.C, res.Status = best, status
 	return res
 }
 
 // descend solves (jj + f hb) step = -g, forming the matrix in norm; false when
-// it is not positive definite.
+// it is not finite or not positive definite. Where neither residuals nor limits
+// say anything, the least diagonal that makes it so keeps the step short.
 func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
-	trace := 0.0
-	for i := range n {
-		for k := i; k < n; k++ {
-			norm[i*n+k] = jj[i*n+k] + f*hb[i*n+k]
+	for share := tinyDiagonal; share <= mostDiagonal; share *= 100 {
+		trace := 0.0
+		for i := range n {
+			for k := i; k < n; k++ {
+				norm[i*n+k] = jj[i*n+k] + f*hb[i*n+k]
+			}
+			trace += norm[i*n+i]
 		}
-		trace += norm[i*n+i]
+		if !(trace < math.MaxFloat64) {
+			return false
+		}
+		for i := range n {
+			norm[i*n+i] += share * trace
+		}
+		if tri, ok := lapack64.Potrf(blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: norm}); ok {
+			for i := range g {
+				step[i] = -g[i]
+			}
+			lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
+			return true
+		}
 	}
-	if !(trace < math.MaxFloat64) {
-		return false
-	}
-	for i := range n {
-		norm[i*n+i] += tinyDiagonal * trace
-	}
-	tri, ok := lapack64.Potrf(blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: norm})
-	if !ok {
-		return false
-	}
-	for i := range g {
-		step[i] = -g[i]
-	}
-	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
-	return true
+	return false
 }
 
+// sumSquares returns |r|², +Inf when it is not a number.
 func sumSquares(r []float64) float64 {
 	s := 0.0
 	for _, v := range r {
 		s += v * v
+	}
+	if math.IsNaN(s) {
+		return math.Inf(1)
 	}
 	return s
 }

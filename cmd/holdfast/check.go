@@ -1,0 +1,369 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+	"io"
+	"math"
+	"math/cmplx"
+	"os"
+	"path/filepath"
+	"strings"
+
+	"holdfast/design/brief"
+	"holdfast/design/device"
+	"holdfast/hardware"
+	"holdfast/hardware/quantity"
+)
+
+// check reads every file strictly and says what it means. A file at fault costs
+// one line on stderr and the exit status; the others are read all the same.
+func check(c *call) (int, error) {
+	files, err := c.parse(c.flags(), 1, math.MaxInt)
+	if err != nil {
+		return exitBadInput, err
+	}
+	status := exitMet
+	for i, path := range files {
+		if i > 0 {
+			fmt.Fprintln(c.stdout)
+		}
+		if err := checkFile(c.stdout, path); err != nil {
+			fmt.Fprintf(c.stderr, "holdfast: %s\n", oneLine(err))
+			status = exitBadInput
+		}
+	}
+	return status, nil
+}
+
+// sort tells what a file describes.
+type sort string
+
+const (
+	profileSort sort = "profile"
+	deviceSort  sort = "device"
+	briefSort   sort = "brief"
+	pulseSort   sort = "pulse"
+)
+
+// checkFile describes one file on w.
+func checkFile(w io.Writer, path string) error {
+	kind, err := sortOf(path)
+	if err != nil {
+		return err
+	}
+	switch kind {
+	case profileSort:
+		p, err := hardware.Load(path)
+		if err != nil {
+			return err
+		}
+		return describeProfile(w, p)
+	case deviceSort:
+		d, err := device.Load(path)
+		if err != nil {
+			return err
+		}
+		describeDevice(w, d)
+		return nil
+	case briefSort:
+		b, p, d, err := brief.LoadAll(path)
+		if err != nil {
+			return inBrief(path, err)
+		}
+		return describeBrief(w, b, p, d)
+	}
+	return fmt.Errorf("%s: found a pulse's record; allowed: a profile, a device or a brief ('holdfast replay' takes the record's folder)", path)
+}
+
+// sortOf recognises a file by the tables that only its sort has.
+func sortOf(path string) (sort, error) {
+	if info, err := os.Stat(filepath.Join(path, hardware.RecordName)); err == nil && info.Mode().IsRegular() {
+		return "", fmt.Errorf("%s: found a pulse folder; allowed: a profile, a device or a brief ('holdfast replay' takes the folder)", path)
+	}
+	doc, err := quantity.ReadFile(path)
+	if err != nil {
+		return "", err
+	}
+	root := doc.Root()
+	for _, s := range []struct {
+		sort   sort
+		tables []string
+	}{
+		{pulseSort, []string{"model", "claim"}},
+		{profileSort, []string{"instrument", "channel"}},
+		{deviceSort, []string{"site", "drive"}},
+		{briefSort, []string{"target", "require", "error", "span"}},
+	} {
+		for _, name := range s.tables {
+			// a name in capitals tells the sort too: the loader then says how it is written
+			for _, spelt := range []string{name, strings.ToUpper(name), strings.ToUpper(name[:1]) + name[1:]} {
+				if root.Has(spelt) {
+					return s.sort, nil
+				}
+			}
+		}
+	}
+	return "", fmt.Errorf("%s: found none of the tables that tell what a file is; allowed: [instrument] in a profile, [[site]] in a device, [target] in a brief", path)
+}
+
+// inBrief says which brief led to the complaint when it is about another file.
+func inBrief(path string, err error) error {
+	if e := (*quantity.Error)(nil); errors.As(err, &e) && e.File == path {
+		return err
+	}
+	return fmt.Errorf("%s: what it names is at fault: %w", path, err)
+}
+
+// describeDevice says what is driven, and what waiting costs.
+func describeDevice(w io.Writer, d *device.Device) {
+	fmt.Fprintf(w, "%s: device %q\n", d.File, d.Name)
+	for _, s := range d.Sites {
+		list := []fact{
+			{"|0>", fmt.Sprintf("the %s of the two energies, and the +1 state of Z", s.Zero)},
+			{"transition", stated(s.Frequency, quantity.Frequency)},
+			{"detuning", quantity.Format(s.Detuning/(2*math.Pi), quantity.Frequency) + " of the transition from the frame of the drive, constant: it adds 2 pi f Z/2"},
+		}
+		for _, drive := range d.Drives {
+			if drive.Site == s.Name {
+				list = append(list, fact{"driven by", fmt.Sprintf("channel %q of the hardware profile", drive.Channel)})
+			}
+		}
+		list = append(list, fact{"T1", stated(s.T1, quantity.Time)}, fact{"T2", stated(s.T2, quantity.Time)})
+		if loss := decoherence(s, 100); loss > 0 {
+			list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: T/6 (1/T1 + 2/T2)", loss)})
+		} else {
+			list = append(list, fact{"decoherence", "is left out of every figure, as neither T1 nor T2 is stated"})
+		}
+		fmt.Fprintf(w, "\nsite %q, %d levels\n", s.Name, s.Levels)
+		printFacts(w, list)
+	}
+}
+
+// decoherence is what a gate of T ns loses: T/6 (1/T1 + 2/T2), with what is not
+// stated left out. It is the first order of the average infidelity of relaxation
+// and dephasing that act during any gate.
+func decoherence(s device.Site, T float64) float64 {
+	loss := 0.0
+	if s.T1 > 0 {
+		loss += T / 6 / s.T1
+	}
+	if s.T2 > 0 {
+		loss += T / 6 * 2 / s.T2
+	}
+	return loss
+}
+
+// stated formats a figure of which zero says that the file is silent.
+func stated(v float64, k quantity.Kind) string {
+	if v == 0 {
+		return "not stated"
+	}
+	return quantity.Format(v, k)
+}
+
+// describeBrief says what is wanted, and whether there is room for it.
+func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.Device) error {
+	site, channel, mixing := driven(b, p, d)
+	ch := &p.Channels[channel]
+	samples := int(math.Round(b.Span / p.SamplePeriod))
+	if _, err := p.Playable(channel, samples); err != nil {
+		return fmt.Errorf("%s: %w", b.File, err)
+	}
+	r, err := roomOf(b, p, channel, samples)
+	if err != nil {
+		return fmt.Errorf("%s: %w", b.File, err)
+	}
+	fmt.Fprintf(w, "%s: brief %q\n\n", b.File, b.Name)
+	list := []fact{
+		{"profile", fmt.Sprintf("%s, %q", p.File, p.Name)},
+		{"device", fmt.Sprintf("%s, %q", d.File, d.Name)},
+		{"target", fmt.Sprintf("%s on %s: %s", b.Target.Label, b.Target.Site, turn(b.Target))},
+		{"span", fmt.Sprintf("%s: %s in %s of %d; %d held at zero before and %d after, %d free",
+			quantity.Format(b.Span, quantity.Time), count(samples, "sample"), count(samples/p.Block, "block"), p.Block, ch.GuardLead, ch.GuardTrail, r.free)},
+		{"ends", endsInWords(b.Ends)},
+		{"held against", heldInWords(b)},
+		{"equations", r.String()},
+		{"requires", requiredInWords(b)},
+		{"search", searchInWords(b)},
+		{"drive", mixing},
+	}
+	if loss := decoherence(site, b.Span); loss > 0 {
+		list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity in this span, whatever the pulse", loss)})
+	}
+	printFacts(w, list)
+	var warn []string
+	if r.verdict != "" {
+		warn = append(warn, r.verdict)
+	}
+	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
+		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
+	}
+	if off := math.Abs(site.Frequency - ch.Carrier); site.Frequency > 0 && ch.Carrier > 0 {
+		stated := math.Abs(site.Detuning) / (2 * math.Pi)
+		if !(math.Abs(off-stated) <= 1e-6*site.Frequency) {
+			warn = append(warn, fmt.Sprintf("The transition, %s, lies %s from the carrier, %s, and the device states a detuning of %s: the pulse is designed for the detuning.",
+				quantity.Format(site.Frequency, quantity.Frequency), quantity.Format(off, quantity.Frequency), quantity.Format(ch.Carrier, quantity.Frequency), quantity.Format(stated, quantity.Frequency)))
+		}
+	}
+	printCautions(w, warn)
+	return nil
+}
+
+// driven finds the site of the target, the channel that drives it, and says what
+// its quadratures do there. brief.LoadAll has seen to it that both exist.
+func driven(b *brief.Brief, p *hardware.Profile, d *device.Device) (site device.Site, channel int, words string) {
+	for _, s := range d.Sites {
+		if s.Name == b.Target.Site {
+			site = s
+		}
+	}
+	for i, drive := range d.Drives {
+		if drive.Site != site.Name {
+			continue
+		}
+		channel, _ = p.Channel(drive.Channel)
+		ch := &p.Channels[channel]
+		sign, sense := "+", "+"
+		if imag(d.Operators(i, string(ch.Mixing))[1].At(0, 1)) > 0 { // +Y/2 has -i/2 there
+			sign = "-"
+		}
+		if site.Zero == device.Lower {
+			sense = "-"
+		}
+		words = fmt.Sprintf("%q mixes %s, and |0> of %s is the %s energy: I turns about +X and Q about %sY, in the frame that turns about %sZ with the carrier (%s)",
+			ch.Name, ch.Mixing, site.Name, site.Zero, sign, sense, carrier(ch))
+	}
+	return site, channel, words
+}
+
+func carrier(ch *hardware.Channel) string {
+	if ch.Carrier == 0 {
+		return "its frequency is not stated"
+	}
+	return quantity.Format(ch.Carrier, quantity.Frequency)
+}
+
+func turn(t brief.Target) string {
+	if t.Angle == 0 {
+		return "no turn"
+	}
+	return fmt.Sprintf("%s about (%.4g, %.4g, %.4g)", quantity.Format(t.Angle, quantity.Angle), t.Axis[0], t.Axis[1], t.Axis[2])
+}
+
+func endsInWords(ends string) string {
+	if ends == brief.Window {
+		return "window: what arrives after the span is left out of the gate"
+	}
+	return "settled: what still arrives after the span is part of the gate"
+}
+
+// sizeInWords gives the size of an error: a rotation frequency, or a share.
+func sizeInWords(kind string, size float64) string {
+	if kind == brief.Amplitude {
+		return quantity.Format(size, quantity.Ratio)
+	}
+	return quantity.Format(size/(2*math.Pi), quantity.Frequency)
+}
+
+func heldInWords(b *brief.Brief) string {
+	if len(b.Errors) == 0 {
+		return `nothing (hold = "nothing")`
+	}
+	var list []string
+	for _, e := range b.Errors {
+		s := fmt.Sprintf("%s up to %s", e.Name, sizeInWords(e.Kind, e.Size))
+		if e.Weight != 1 {
+			s += fmt.Sprintf(" with weight %.4g", e.Weight)
+		}
+		list = append(list, s)
+	}
+	words := strings.Join(list, ", ")
+	if b.Defaulted {
+		words += " (the brief names none, so these)"
+	}
+	return words
+}
+
+func requiredInWords(b *brief.Brief) string {
+	words := fmt.Sprintf("infidelity at most %.3g", b.Require.Infidelity)
+	if len(b.Errors) > 0 {
+		words += fmt.Sprintf(", susceptibility at most %.3g of each held error", b.Require.Susceptibility)
+	}
+	for _, m := range b.Require.Margins {
+		kind := brief.Static
+		if m.Error == "amplitude" {
+			kind = brief.Amplitude
+		}
+		for _, e := range b.Errors {
+			if e.Name == m.Error {
+				kind = e.Kind
+			}
+		}
+		words += fmt.Sprintf(", that infidelity up to ±%s of %s", sizeInWords(kind, m.Size), m.Error)
+	}
+	return words
+}
+
+func searchInWords(b *brief.Brief) string {
+	words := fmt.Sprintf("up to %s, seed %d", count(b.Starts, "start"), b.Seed)
+	switch {
+	case len(b.Errors) == 0:
+	case b.Refine:
+		words += ", refined for errors of the sizes above"
+	default:
+		words += ", not refined: held in first order only"
+	}
+	return words
+}
+
+// count writes a number with its noun.
+func count(n int, noun string) string {
+	if n == 1 {
+		return "1 " + noun
+	}
+	return fmt.Sprintf("%d %ss", n, noun)
+}
+
+// printFacts writes names and values in two columns.
+func printFacts(w io.Writer, list []fact) {
+	const widest = 110
+	names := 0
+	for _, f := range list {
+		names = max(names, len(f.Name))
+	}
+	for _, f := range list {
+		fmt.Fprintf(w, "  %-*s  %s\n", names, f.Name, wrap(f.Value, widest-names-4, names+4))
+	}
+}
+
+// printCautions writes one sentence a line.
+func printCautions(w io.Writer, list []string) {
+	for _, s := range list {
+		fmt.Fprintf(w, "  ! %s\n", wrap(s, 106, 4))
+	}
+}
+
+// wrap breaks text between words after width characters and indents what follows.
+func wrap(text string, width, indent int) string {
+	var b strings.Builder
+	col := 0
+	for i, word := range strings.Fields(text) {
+		n := len([]rune(word))
+		switch {
+		case i == 0:
+		case col+1+n > width:
+			b.WriteString("\n" + strings.Repeat(" ", indent))
+			col = 0
+		default:
+			b.WriteByte(' ')
+			col++
+		}
+		b.WriteString(word)
+		col += n
+	}
+	return b.String()
+}
+
+// steady is the line's gain for a steady input.
+func steady(ch *hardware.Channel) float64 { return cmplx.Abs(ch.Line.DC()) }

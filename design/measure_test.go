@@ -1,0 +1,196 @@
+//go:build measure
+
+package design_test
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+
+	"holdfast/design"
+	"holdfast/design/brief"
+	"holdfast/design/replay"
+)
+
+// The figures that DEVELOPERS.md quotes are printed by
+//
+//	go test -tags measure -run Measure -v -timeout 2h ./design
+//
+// Times are those of the machine at hand; everything else repeats.
+
+// wanted writes a brief on the demonstration rack and loads it.
+func wanted(t *testing.T, gate string, ns int, held []string, extra string) design.Inputs {
+	t.Helper()
+	dir, err := filepath.Abs("../testdata/skerry")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var b strings.Builder
+	fmt.Fprintf(&b, "format = 1\nname = \"m\"\nprofile = %q\ndevice = %q\nspan = \"%d ns\"\n", filepath.Join(dir, "rack-b.toml"), filepath.Join(dir, "skerry.toml"), ns)
+	if len(held) == 0 {
+		b.WriteString("hold = \"nothing\"\n")
+	}
+	fmt.Fprintf(&b, "%s\n[target]\nsite = \"q1\"\ngate = %q\n", extra, gate)
+	for _, h := range held {
+		fmt.Fprintf(&b, "[[error]]\n%s\n", h)
+	}
+	path := filepath.Join(t.TempDir(), "brief.toml")
+	if err := os.WriteFile(path, []byte(b.String()), 0o666); err != nil {
+		t.Fatal(err)
+	}
+	br, p, d, err := brief.LoadAll(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return design.Inputs{Brief: br, Profile: p, Device: d, Version: "measure"}
+}
+
+// judged designs, writes and replays, and returns the verdict of the samples
+// before rounding with what they were judged from.
+func judged(t *testing.T, in design.Inputs) (*design.Pulse, *replay.Folder, *replay.Verdict, time.Duration) {
+	t.Helper()
+	begun := time.Now()
+	p, err := design.Run(context.Background(), in, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	took := time.Since(begun)
+	src, err := design.ReadSources(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := t.TempDir()
+	if err := p.Write(dir, src); err != nil {
+		t.Fatal(err)
+	}
+	f, err := replay.Open(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	v, err := f.Model.BeforeRounding().Judge(context.Background(), 1e-4)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return p, f, v, took
+}
+
+const (
+	detuning  = `detuning = "q1"`
+	amplitude = `amplitude = "q1 drive"`
+	anyError  = `any = "all"`
+)
+
+var heldTable = []struct {
+	name      string
+	held      []string
+	x90, x180 int
+}{
+	{"nothing", nil, 40, 40},
+	{"detuning", []string{detuning}, 64, 64},
+	{"amplitude", []string{amplitude}, 56, 64},
+	{"detuning + amplitude", []string{detuning, amplitude}, 72, 72},
+	{"any static error", []string{anyError}, 96, 96},
+	{"any + amplitude", []string{anyError, amplitude}, 104, 112},
+}
+
+// TestMeasureTable designs both gates against every class at the shortest span
+// known and one block below it.
+func TestMeasureTable(t *testing.T) {
+	for _, gate := range []string{"X90", "X180"} {
+		for _, c := range heldTable {
+			ns := c.x90
+			if gate == "X180" {
+				ns = c.x180
+			}
+			p, _, v, took := judged(t, wanted(t, gate, ns, c.held, ""))
+			worst := 0.0
+			for _, e := range v.Errors {
+				if e.Held {
+					worst = math.Max(worst, e.Susceptibility)
+				}
+			}
+			fmt.Printf("%-4s %-21s %3d ns: %s; infidelity %.1e, worst held susceptibility %.1e; %v\n", gate, c.name, ns, p.Summary(), v.Settled.Infidelity, worst, took.Round(time.Millisecond))
+			if p.Status != design.Found || !(v.Settled.Infidelity <= 1e-7) || !(worst <= 1e-3) {
+				t.Errorf("%s %s at %d ns misses", gate, c.name, ns)
+			}
+			p, _, _, took = judged(t, wanted(t, gate, ns-8, c.held, ""))
+			fmt.Printf("%-4s %-21s %3d ns: %s; %v\n", gate, c.name, ns-8, p.Summary(), took.Round(time.Millisecond))
+		}
+	}
+}
+
+// TestMeasureBlocks follows the margin against any static error from block to
+// block.
+func TestMeasureBlocks(t *testing.T) {
+	last := 0.0
+	for ns := 96; ns <= 144; ns += 8 {
+		p, f, _, took := judged(t, wanted(t, "X90", ns, []string{anyError}, ""))
+		m := f.Model.BeforeRounding()
+		average, _ := finite(t, m, directions(), 1e-3)
+		random, worst := finite(t, m, randomDirections(2000), 1e-3)
+		fmt.Printf("X90 any %3d ns: 14 directions at 1 MHz: average %.2e; 2000 random: average %.2e, worst %.2e; %s; %v\n", ns, average, random, worst, p.Summary(), took.Round(time.Millisecond))
+		if last > 0 && !(average <= 1.1*last) {
+			t.Errorf("%d ns: %.2e after %.2e", ns, average, last)
+		}
+		last = average
+	}
+	_, f, _, _ := judged(t, wanted(t, "X90", 64, []string{detuning}, ""))
+	m := f.Model.BeforeRounding()
+	for _, mhz := range []float64{1, 3} {
+		a, w := finite(t, m, [][3]float64{{0, 0, 1}, {0, 0, -1}}, mhz*1e-3)
+		fmt.Printf("X90 detuning 64 ns at +-%v MHz: average %.2e, worst %.2e\n", mhz, a, w)
+	}
+}
+
+// finite returns the average and the worst settled infidelity over static errors
+// of field 2π f n·σ/2, f in GHz.
+func finite(t *testing.T, m *replay.Model, list [][3]float64, f float64) (average, worst float64) {
+	t.Helper()
+	fields := make([][]complex128, len(list))
+	for i, n := range list {
+		s := complex(math.Pi*f, 0)
+		x, y, z := complex(n[0], 0), complex(n[1], 0), complex(n[2], 0)
+		fields[i] = []complex128{s * z, s * (x - 1i*y), s * (x + 1i*y), -s * z}
+	}
+	got, err := m.Against(context.Background(), fields)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, v := range got {
+		average += v / float64(len(got))
+		worst = math.Max(worst, v)
+	}
+	return average, worst
+}
+
+func directions() [][3]float64 {
+	r := 1 / math.Sqrt(3)
+	list := [][3]float64{{1, 0, 0}, {-1, 0, 0}, {0, 1, 0}, {0, -1, 0}, {0, 0, 1}, {0, 0, -1}}
+	for i := range 8 {
+		v := [3]float64{r, r, r}
+		for k := range v {
+			if i>>k&1 == 1 {
+				v[k] = -r
+			}
+		}
+		list = append(list, v)
+	}
+	return list
+}
+
+func randomDirections(n int) [][3]float64 {
+	rng := rand.New(rand.NewPCG(7, 7))
+	var list [][3]float64
+	for range n {
+		v := [3]float64{rng.NormFloat64(), rng.NormFloat64(), rng.NormFloat64()}
+		l := math.Sqrt(v[0]*v[0] + v[1]*v[1] + v[2]*v[2])
+		list = append(list, [3]float64{v[0] / l, v[1] / l, v[2] / l})
+	}
+	return list
+}
