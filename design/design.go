@@ -74,7 +74,7 @@ type stage struct {
 
 var rounds = [2][]stage{
 	{{3, 40}, {1, 30}},
-	{{1, 600}},
+	{{1, 200}},
 }
 
 // Run designs the pulse. It uses all processors; its result depends on the

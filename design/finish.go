@@ -189,7 +189,7 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded []complex128) {
 	static := length(s.Static)
 	axes := map[string]axis{}
 	for _, ends := range []string{brief.Settled, brief.Window} {
-		axes[ends] = newAxis(ch.Line, q.samples, in.Profile.SamplePeriod, fineShare, ends == brief.Settled, full, static, q.after())
+		axes[ends] = newAxis(ch.Line, q.samples, in.Profile.SamplePeriod, claimShare, ends == brief.Settled, full, static, q.after())
 	}
 	other := brief.Window
 	if in.Brief.Ends == brief.Window {

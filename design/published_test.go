@@ -254,7 +254,7 @@ func TestPublishedShapes(t *testing.T) {
 				Axes:   [2]dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
 			}
 			// as claim does for a pulse of any length
-			a := newAxis(line, n, period, fineShare, true, w, length(s.Static), w)
+			a := newAxis(line, n, period, claimShare, true, w, length(s.Static), w)
 			s.Grid = a.Grid
 			q := &problem{profile: in.Profile}
 			r := robust.NewGate(s, robust.Response{}, 0).Unitary(a.controls(q, x)).Rotation()

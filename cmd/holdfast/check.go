@@ -36,37 +36,37 @@ func check(c *call) (int, error) {
 	return status, nil
 }
 
-// sort tells what a file describes.
-type sort string
+// fileKind tells what a file describes.
+type fileKind string
 
 const (
-	profileSort sort = "profile"
-	deviceSort  sort = "device"
-	briefSort   sort = "brief"
-	pulseSort   sort = "pulse"
+	profileKind fileKind = "profile"
+	deviceKind  fileKind = "device"
+	briefKind   fileKind = "brief"
+	pulseKind   fileKind = "pulse"
 )
 
 // checkFile describes one file on w.
 func checkFile(w io.Writer, path string) error {
-	kind, err := sortOf(path)
+	kind, err := kindOf(path)
 	if err != nil {
 		return err
 	}
 	switch kind {
-	case profileSort:
+	case profileKind:
 		p, err := hardware.Load(path)
 		if err != nil {
 			return err
 		}
 		return describeProfile(w, p)
-	case deviceSort:
+	case deviceKind:
 		d, err := device.Load(path)
 		if err != nil {
 			return err
 		}
 		describeDevice(w, d)
 		return nil
-	case briefSort:
+	case briefKind:
 		b, p, d, err := brief.LoadAll(path)
 		if err != nil {
 			return inBrief(path, err)
@@ -76,8 +76,8 @@ func checkFile(w io.Writer, path string) error {
 	return fmt.Errorf("%s: found a pulse's record; allowed: a profile, a device or a brief ('holdfast replay' takes the record's folder)", path)
 }
 
-// sortOf recognises a file by the tables that only its sort has.
-func sortOf(path string) (sort, error) {
+// kindOf recognises a file by the tables that only its kind has.
+func kindOf(path string) (fileKind, error) {
 	if info, err := os.Stat(filepath.Join(path, hardware.RecordName)); err == nil && info.Mode().IsRegular() {
 		return "", fmt.Errorf("%s: found a pulse folder; allowed: a profile, a device or a brief ('holdfast replay' takes the folder)", path)
 	}
@@ -87,19 +87,19 @@ func sortOf(path string) (sort, error) {
 	}
 	root := doc.Root()
 	for _, s := range []struct {
-		sort   sort
+		kind   fileKind
 		tables []string
 	}{
-		{pulseSort, []string{"model", "claim"}},
-		{profileSort, []string{"instrument", "channel"}},
-		{deviceSort, []string{"site", "drive"}},
-		{briefSort, []string{"target", "require", "error", "span"}},
+		{pulseKind, []string{"model", "claim"}},
+		{profileKind, []string{"instrument", "channel"}},
+		{deviceKind, []string{"site", "drive"}},
+		{briefKind, []string{"target", "require", "error", "span"}},
 	} {
 		for _, name := range s.tables {
-			// a name in capitals tells the sort too: the loader then says how it is written
+			// a name in capitals tells the kind too: the loader then says how it is written
 			for _, spelt := range []string{name, strings.ToUpper(name), strings.ToUpper(name[:1]) + name[1:]} {
 				if root.Has(spelt) {
-					return s.sort, nil
+					return s.kind, nil
 				}
 			}
 		}

@@ -113,7 +113,7 @@ or a file was changed since it was written; 3 interrupted.
 `
 }
 
-// A fileHelp explains a sort of file, key by key.
+// A fileHelp explains a kind of file, key by key.
 type fileHelp struct {
 	topic, head string
 	keys        []key

@@ -270,3 +270,27 @@ func TestWords(t *testing.T) {
 		t.Errorf("a long direction reads %q", got)
 	}
 }
+
+// Two channels that share the drive of a square pi pulse: together they are the one channel, and an error of one of them alone counts
+// half, of which all survives.
+func TestTwoChannels(t *testing.T) {
+	m := composite(plain)
+	const threshold = 1e-4
+	half := make([]complex128, m.Samples)
+	for k, x := range m.Channels[0].Samples {
+		half[k] = x / 2
+	}
+	second := m.Channels[0]
+	second.Name = "second"
+	m.Channels = append([]Channel{m.Channels[0]}, second)
+	m.Channels[0].Samples, m.Channels[1].Samples = half, half
+	m.Errors = []Class{{Name: "second only", Kind: "amplitude", Channels: []string{"second"}}}
+	got := judged(t, m, threshold)
+	eps := 200 / math.Pi * math.Asin(math.Sqrt(1.5*threshold))
+	for name, want := range map[string]float64{"amplitude": eps, "second only": 2 * eps} {
+		e := got[name]
+		if !(math.Abs(e.Susceptibility-1) <= 1e-11) || !(math.Abs(e.High/want-1) <= 1e-7) {
+			t.Errorf("%s: susceptibility %.12g, margin %.9g, want 1 and %.9g", name, e.Susceptibility, e.High, want)
+		}
+	}
+}

@@ -111,7 +111,7 @@ func TestBringUp(t *testing.T) {
 	ctx := context.Background()
 	m := rackB(cosine(12, 16))
 	for _, ends := range []string{"settled", "window"} {
-		for _, early := range []float64{0, 2} {
+		for _, early := range []float64{0, 2, -1.5} {
 			m.Ends, m.WindowStart = ends, 3.2+early
 			b, err := newTestEngine(t, m).bringUp(ctx)
 			if err != nil {

@@ -50,7 +50,7 @@ func (c Class) ensemble() []member {
 		return []member{{scale: 1 + c.Size}, {scale: 1 - c.Size}}
 	}
 	var list []member
-	for _, d := range half() {
+	for _, d := range Directions() {
 		list = append(list, member{scaled(d, c.Size), 1})
 	}
 	return list

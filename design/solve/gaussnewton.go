@@ -73,13 +73,13 @@ const (
 	armijo        = 1e-4
 	nearBoundary  = 0.95  // of the way to the boundary, at most
 	maxDamping    = 1e10  // λ at which a step so short is a miss
+	bendLimit     = 1e4   // growth of |r|² over one step beyond which its bend is not followed
 	halvings      = 6     // of a step, before the damping is raised
 	landingMiss   = 1e-2  // |r|² under which a landing is tried
 	landingGain   = 0.1   // of |r|², at most, or the landing is not taken
 	landingMetric = 1e-3  // weight of the barrier's metric in a landing, times |r|²/constraints
 	landingWait   = 3     // iterations after a failed landing before the next
 	tinyDiagonal  = 1e-14 // of the trace, added to the normal matrix: the barrier's condition reaches 1e17
-	mostDiagonal  = 1e-8  // of the trace, when less leaves the normal matrix indefinite
 )
 
 // GaussNewton runs the iteration of the package comment from c0, which must lie
@@ -97,6 +97,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		c     = append([]float64(nil), c0...)
 		trial = make([]float64, n)
 		step  = make([]float64, n)
+		bent  = make([]float64, n)
 		r     = make([]float64, m)
 		rt    = make([]float64, m)
 		jac   = make([]float64, m*n)
@@ -147,7 +148,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		// Landing: near a zero the shortest step to it, in the barrier's metric,
 		// converges quadratically where the centring below would keep the
 		// convergence linear. It is taken when it fits and gains.
-		if wait--; wait < 0 && miss < landingMiss && descend(step, jr, jj, hb, norm, landingMetric*miss/ncon, n) &&
+		if wait--; wait < 0 && o.Tolerance > 0 && miss < landingMiss && descend(step, jr, jj, hb, norm, landingMetric*miss/ncon, n) &&
 			nearBoundary*s.reach(c, step) >= 1 {
 			for i := range trial {
 				trial[i] = c[i] + step[i]
@@ -189,7 +190,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		t0 := t
 		accepted := false
 		var newMiss, newPhi float64
-		for range halvings {
+		for try := range halvings {
 			for i := range trial {
 				trial[i] = c[i] + t*step[i]
 			}
@@ -200,6 +201,23 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 				if newMiss/2+mu*newPhi <= merit+armijo*t*slope {
 					accepted = true
 					break
+				}
+				// The full step failed because the residuals bend away from their
+				// tangent: follow the bend once before shortening the step.
+				if try == 0 && newMiss < bendLimit*miss {
+					follow(bent, rt, r, jac, step, norm, t, m, n)
+					for i := range trial {
+						trial[i] += bent[i]
+					}
+					if newPhi = s.barrier(trial); !math.IsInf(newPhi, 1) {
+						p.Residuals(trial, rt)
+						res.Evaluations++
+						newMiss = sumSquares(rt)
+						if newMiss/2+mu*newPhi <= merit+armijo*t*slope {
+							accepted = true
+							break
+						}
+					}
 				}
 			}
 			t /= 2
@@ -240,33 +258,54 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	return res
 }
 
-// descend solves (jj + f hb) step = -g, forming the matrix in norm; false when
-// it is not finite or not positive definite. Where neither residuals nor limits
-// say anything, the least diagonal that makes it so keeps the step short.
-func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
-	for share := tinyDiagonal; share <= mostDiagonal; share *= 100 {
-		trace := 0.0
-		for i := range n {
-			for k := i; k < n; k++ {
-				norm[i*n+k] = jj[i*n+k] + f*hb[i*n+k]
-			}
-			trace += norm[i*n+i]
+// follow stores in bent the correction of a step of length t that failed: with the
+// part of the new residuals rt that the tangent does not explain,
+//
+//	N bent = -Jᵀ (rt - r - t J step),
+//
+// N the factorised normal matrix of the step (the second-order correction of
+// Nocedal and Wright 2006, section 18.3, applied to all residuals).
+func follow(bent, rt, r, jac, step, norm []float64, t float64, m, n int) {
+	clear(bent)
+	for i := range m {
+		row := jac[i*n : (i+1)*n]
+		e := rt[i] - r[i]
+		for k, v := range row {
+			e -= t * v * step[k]
 		}
-		if !(trace < math.MaxFloat64) {
-			return false
-		}
-		for i := range n {
-			norm[i*n+i] += share * trace
-		}
-		if tri, ok := lapack64.Potrf(blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: norm}); ok {
-			for i := range g {
-				step[i] = -g[i]
-			}
-			lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
-			return true
+		for k, v := range row {
+			bent[k] -= e * v
 		}
 	}
-	return false
+	tri := blas64.Triangular{Uplo: blas.Upper, Diag: blas.NonUnit, N: n, Stride: n, Data: norm}
+	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: bent})
+}
+
+// descend solves (jj + f hb) step = -g, forming the matrix in norm; false when
+// it is not finite or not positive definite.
+func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
+	trace := 0.0
+	for i := range n {
+		for k := i; k < n; k++ {
+			norm[i*n+k] = jj[i*n+k] + f*hb[i*n+k]
+		}
+		trace += norm[i*n+i]
+	}
+	if !(trace < math.MaxFloat64) {
+		return false
+	}
+	for i := range n {
+		norm[i*n+i] += tinyDiagonal * trace
+	}
+	tri, ok := lapack64.Potrf(blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: norm})
+	if !ok {
+		return false
+	}
+	for i := range g {
+		step[i] = -g[i]
+	}
+	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
+	return true
 }
 
 // sumSquares returns |r|², +Inf when it is not a number.

@@ -168,6 +168,15 @@ func TestZeros(t *testing.T) {
 		target := []float64{0.9999, -0.9999, 0.3}
 		wantAt(t, run(t, identity(target), box(3, 1), []float64{0, 0, 0}, Options{}), Converged, target, 1e-6)
 	})
+	t.Run("landing", func(t *testing.T) {
+		// Within reach of a zero the step to it is taken whole, though the barrier would
+		// rather stay in the middle.
+		res := run(t, identity([]float64{0.9, 0.05}), box(2, 1), []float64{0.85, 0}, Options{})
+		wantAt(t, res, Converged, []float64{0.9, 0.05}, 1e-6)
+		if res.Evaluations > 3 {
+			t.Errorf("%d evaluations", res.Evaluations)
+		}
+	})
 	t.Run("trigonometric", func(t *testing.T) {
 		// r_i = n - sum cos c_j + i (1 - cos c_i) - sin c_i: Moré, Garbow, Hillstrom
 		// 1981, ACM Trans. Math. Softw. 7, 17, problem 26; zero at the origin.
@@ -323,6 +332,22 @@ func TestRankDeficient(t *testing.T) {
 			if res.Status != Converged {
 				t.Errorf("%d rows, %d constraints: %v, miss %v", p.Rows, s.Constraints(), res.Status, res.Miss)
 			}
+		}
+	}
+	// Many coefficients that few equations leave free, and no limit at all: the
+	// normal matrix is singular to the last bit.
+	rng := rand.New(rand.NewPCG(4, 4))
+	for _, n := range []int{20, 60, 150} {
+		a, b := make([][]float64, 3), make([]float64, 3)
+		for i := range a {
+			for range n {
+				a[i] = append(a[i], rng.NormFloat64())
+			}
+			b[i] = rng.NormFloat64()
+		}
+		res := run(t, linear(a, b), in(n), make([]float64, n), Options{})
+		if res.Status != Converged || res.Evaluations > 30 {
+			t.Errorf("%d coefficients: %v, miss %v, %d evaluations", n, res.Status, res.Miss, res.Evaluations)
 		}
 	}
 	// Two that contradict each other: the best is half way.

@@ -164,8 +164,6 @@ func (s *Set) barrier(c []float64) float64 {
 
 // derivatives stores the barrier's gradient in g and the upper
 // triangle of its Hessian in h (row-major n x n) for c inside the set.
-func (s *Set) Bench(c, g, h []float64) { s.derivatives(c, g, h) }
-
 func (s *Set) derivatives(c, g, h []float64) {
 	clear(g)
 	clear(h)

@@ -189,7 +189,7 @@ func TestBarrierOfManyLimits(t *testing.T) {
 	for range n {
 		s.AddRow([]float64{1}, 1)
 	}
-	const c = 1 - 1e-9
+	c := 1 - 1e-9 // as a float64: a constant would be exact
 	want := -n * (math.Log(1-c) + math.Log(1+c))
 	if got := s.barrier([]float64{c}); !(math.Abs(got-want) <= 1e-12*want) {
 		t.Errorf("barrier %v, want %v", got, want)
@@ -230,17 +230,29 @@ func TestLoosened(t *testing.T) {
 			t.Errorf("gauge of the set that was loosened %v, want 0.9", got)
 		}
 	}
-	// what is added to one of the two does not show in the other
-	before := s.Rows()
-	l.AddRow([]float64{1, 0, 0, 0, 0}, 0.01)
-	l.AddDisc([]float64{1, 0, 0, 0, 0}, []float64{0, 1, 0, 0, 0}, 0.01)
-	s.AddRow([]float64{0, 1, 0, 0, 0}, 7)
-	if s.Rows() != before+1 || l.Rows() != before+1 {
-		t.Errorf("%d and %d rows, want %d each", s.Rows(), l.Rows(), before+1)
+	// Neither the loosening nor what is added later shows in the other set.
+	s = NewSet(2)
+	s.AddRow([]float64{1, 0}, 1)
+	s.AddRow([]float64{0, 1}, 1)
+	l = s.Loosened([]int{1}, 4)
+	l.AddRow([]float64{1, 1}, 0.1)
+	l.AddDisc([]float64{1, 0}, []float64{0, 1}, 0.1)
+	s.AddRow([]float64{1, -1}, 10)
+	for _, c := range []struct {
+		c     []float64
+		tight float64
+		loose float64
+	}{{[]float64{0.3, 0.3}, 0.3, 6}, {[]float64{0, 0.4}, 0.4, 4}, {[]float64{0.4, 0}, 0.4, 4}} {
+		if got := s.Gauge(c.c); !(math.Abs(got-c.tight) <= 1e-15) {
+			t.Errorf("gauge %v of the set that was loosened, want %v", got, c.tight)
+		}
+		if got := l.Gauge(c.c); !(math.Abs(got-c.loose) <= 1e-15) {
+			t.Errorf("gauge %v of the loosened set, want %v", got, c.loose)
+		}
 	}
-	c := inside(rng, d, 5, 0.9)
-	if got := s.Gauge(c); !(math.Abs(got-0.9) <= 1e-13) {
-		t.Errorf("a limit of the loosened set shows in the other: gauge %v", got)
+	l = s.Loosened([]int{0, 1, 2}, 4)
+	if got := l.Gauge([]float64{0, 0.4}); !(math.Abs(got-0.1) <= 1e-15) {
+		t.Errorf("gauge %v of the loosened set, want 0.1", got)
 	}
 }
 

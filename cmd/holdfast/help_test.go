@@ -1,0 +1,382 @@
+package main
+
+import (
+	"bytes"
+	"fmt"
+	"go/ast"
+	"go/parser"
+	"go/token"
+	"os"
+	"path/filepath"
+	"reflect"
+	"regexp"
+	"slices"
+	"strconv"
+	"strings"
+	"testing"
+
+	"github.com/BurntSushi/toml"
+
+	"holdfast/design"
+	"holdfast/design/brief"
+	"holdfast/design/device"
+	"holdfast/hardware"
+)
+
+// askedKeys gives the keys that the source of a loader asks its tables for: the first
+// argument of every accessor of quantity.Table that is a text, and the texts of oneOf.
+func askedKeys(t *testing.T, files ...string) map[string]bool {
+	t.Helper()
+	accessors := []string{"Has", "Table", "Tables", "Text", "Texts", "Choice", "Int", "Number", "Quantity", "Bool", "Numbers", "Complexes", "Matrix", "Matrices"}
+	keys := map[string]bool{}
+	for _, name := range files {
+		file, err := parser.ParseFile(token.NewFileSet(), name, nil, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		ast.Inspect(file, func(n ast.Node) bool {
+			call, ok := n.(*ast.CallExpr)
+			if !ok {
+				return true
+			}
+			var args []ast.Expr
+			switch f := call.Fun.(type) {
+			case *ast.SelectorExpr:
+				if slices.Contains(accessors, f.Sel.Name) && len(call.Args) > 0 {
+					args = call.Args[:1]
+				}
+			case *ast.Ident:
+				if f.Name == "oneOf" || f.Name == "wholes" {
+					args = call.Args[1:]
+				}
+			}
+			for _, a := range args {
+				if lit, ok := a.(*ast.BasicLit); ok && lit.Kind == token.STRING {
+					key, err := strconv.Unquote(lit.Value)
+					if err != nil {
+						t.Fatal(err)
+					}
+					keys[key] = true
+				}
+			}
+			return true
+		})
+	}
+	return keys
+}
+
+// named gives every part of the paths of the documented keys.
+func named(keys []key) map[string]bool {
+	names := map[string]bool{}
+	for _, k := range keys {
+		for part := range strings.SplitSeq(strings.ReplaceAll(k.path, "[]", ""), ".") {
+			names[part] = true
+		}
+	}
+	return names
+}
+
+// Whatever a loader reads is in the help, and nothing else is.
+func TestHelpHasEveryKey(t *testing.T) {
+	for topic, c := range map[string]struct {
+		keys  []key
+		files []string
+	}{
+		"profile": {profileKeys(), []string{"../../hardware/load.go"}},
+		"device":  {deviceKeys(), []string{"../../design/device/device.go"}},
+		"brief":   {briefKeys(), []string{"../../design/brief/brief.go", "../../design/brief/load.go"}},
+	} {
+		asked, documented := askedKeys(t, c.files...), named(c.keys)
+		if len(asked) < 10 {
+			t.Errorf("%s: only %d keys found in the loader", topic, len(asked))
+		}
+		for k := range asked {
+			if !documented[k] {
+				t.Errorf("help %s says nothing of %q", topic, k)
+			}
+		}
+		for k := range documented {
+			if !asked[k] {
+				t.Errorf("help %s explains %q, for which the loader does not ask", topic, k)
+			}
+		}
+	}
+	// The record: what design writes, and what replay reads of it.
+	written := map[string]bool{}
+	recordKeys(reflect.TypeFor[design.Record](), "", written)
+	documented := map[string]bool{}
+	for _, k := range pulseKeys() {
+		documented[k.path] = true
+		if !written[k.path] {
+			t.Errorf("help pulse explains %q, which design does not write", k.path)
+		}
+	}
+	for k := range written {
+		if !documented[k] {
+			t.Errorf("help pulse says nothing of %q", k)
+		}
+	}
+	names := named(pulseKeys())
+	for k := range askedKeys(t, "../../design/replay/folder.go") {
+		if !names[k] {
+			t.Errorf("help pulse says nothing of %q, which replay reads", k)
+		}
+	}
+}
+
+// recordKeys lists the paths of the record's keys.
+func recordKeys(t reflect.Type, at string, keys map[string]bool) {
+	for i := range t.NumField() {
+		f := t.Field(i)
+		tag, _, _ := strings.Cut(f.Tag.Get("toml"), ",")
+		path := strings.TrimPrefix(at+"."+tag, ".")
+		inner, list := f.Type, ""
+		if inner.Kind() == reflect.Pointer {
+			inner = inner.Elem()
+		}
+		if inner.Kind() == reflect.Slice && inner.Elem().Kind() == reflect.Struct {
+			inner, list = inner.Elem(), "[]"
+		}
+		if inner.Kind() == reflect.Struct {
+			recordKeys(inner, path+list, keys)
+			continue
+		}
+		keys[path] = true
+	}
+}
+
+// A document is a TOML file in the making.
+type document map[string]any
+
+// set puts the value, as TOML text, at a path of tables, where [] means the first of a list.
+func (d document) set(t *testing.T, path, text string) {
+	t.Helper()
+	var v struct{ Value any }
+	if _, err := toml.Decode("Value = "+text, &v); err != nil {
+		t.Fatalf("%s = %s: %v", path, text, err)
+	}
+	table, name := d.table(path)
+	table[name] = v.Value
+}
+
+func (d document) remove(path string) {
+	table, name := d.table(path)
+	delete(table, name)
+}
+
+// table finds the table of a path, made when missing, and the last name.
+func (d document) table(path string) (map[string]any, string) {
+	parts := strings.Split(path, ".")
+	at := map[string]any(d)
+	for _, part := range parts[:len(parts)-1] {
+		name, list := strings.CutSuffix(part, "[]")
+		if list {
+			if at[name] == nil {
+				at[name] = []map[string]any{{}}
+			}
+			at = at[name].([]map[string]any)[0]
+			continue
+		}
+		if at[name] == nil {
+			at[name] = map[string]any{}
+		}
+		at = at[name].(map[string]any)
+	}
+	return at, parts[len(parts)-1]
+}
+
+func (d document) save(t *testing.T, path string) {
+	t.Helper()
+	var b bytes.Buffer
+	if err := toml.NewEncoder(&b).Encode(map[string]any(d)); err != nil {
+		t.Fatal(err)
+	}
+	write(t, path, b.String())
+}
+
+// loaded prints what a loader makes of a file, without the places of its keys.
+func loaded(topic, path string) (string, error) {
+	var v any
+	var err error
+	switch topic {
+	case "profile":
+		v, err = hardware.Load(path)
+	case "device":
+		v, err = device.Load(path)
+	default:
+		v, err = brief.Load(path)
+	}
+	if err != nil {
+		return "", err
+	}
+	return placeOfKey.ReplaceAllString(fmt.Sprintf("%+v", v), ""), nil
+}
+
+var placeOfKey = regexp.MustCompile(`\b[Ll]ine:[0-9]+|lines:\{[^}]*\}`)
+
+// Every key of a profile, a device and a brief as the help shows it is taken; a value that
+// is not allowed gets a message with the range that the help gives; and leaving the key
+// out does what the help says.
+func TestHelpIsTrue(t *testing.T) {
+	dir := t.TempDir()
+	for topic, keys := range map[string][]key{"profile": profileKeys(), "device": deviceKeys(), "brief": briefKeys()} {
+		for _, k := range keys {
+			path := filepath.Join(dir, topic+".toml")
+			full := func() document {
+				d := document{}
+				for _, other := range keys {
+					if !rivalsOf(k.path)[other.path] {
+						d.set(t, other.path, other.example)
+					}
+				}
+				return d
+			}
+			d := full()
+			d.save(t, path)
+			if _, err := loaded(topic, path); err != nil {
+				t.Errorf("%s: the examples of the help are refused: %v", k.path, err)
+				continue
+			}
+			shown := strings.ReplaceAll(k.path, "[]", "[0]")
+			name := func(message string) bool {
+				return strings.Contains(message, ": "+shown+": ") || strings.Contains(message, ": "+strings.ReplaceAll(shown, "lowpass[0]", "lowpass")+": ")
+			}
+
+			// a value of the wrong type
+			d.set(t, k.path, "1979-05-27")
+			d.save(t, path)
+			_, err := loaded(topic, path)
+			limits := strings.ReplaceAll(k.limits, "half the sample rate", "500 MHz")
+			if err == nil || !name(err.Error()) || !strings.Contains(err.Error(), limits) {
+				t.Errorf("%s: the loader allows something else than %q: %v", k.path, limits, err)
+			}
+
+			// nothing
+			d = full()
+			d.remove(k.path)
+			d.save(t, path)
+			without, err := loaded(topic, path)
+			switch value := defaultOf(k); {
+			case k.absent == must || strings.HasPrefix(k.absent, "required"):
+				if err == nil || !name(err.Error()) {
+					t.Errorf("%s: not required: %v", k.path, err)
+				}
+			case alternatives[k.path]:
+				if err == nil {
+					t.Errorf("%s: left out without its alternative, and taken", k.path)
+				}
+			case err != nil:
+				t.Errorf("%s: required, and the help says %q", k.path, k.absent)
+			case value != "":
+				d.set(t, k.path, value)
+				d.save(t, path)
+				if with, err := loaded(topic, path); err != nil || with != without {
+					t.Errorf("%s = %s is not what its absence means: %v\n%s\n%s", k.path, value, err, with, without)
+				}
+			}
+		}
+	}
+}
+
+// alternatives are the keys of which one must stand there.
+var alternatives = map[string]bool{"target.gate": true, "target.axis": true, "target.matrix": true,
+	"error[].detuning": true, "error[].amplitude": true, "error[].operator": true, "error[].matrix": true, "error[].any": true}
+
+// rivalsOf gives the keys that may not stand beside one: those of the other alternatives.
+func rivalsOf(path string) map[string]bool {
+	not := map[string]bool{"hold": true}
+	target, kind := "target.gate", "error[].detuning"
+	switch {
+	case path == "hold":
+		not = map[string]bool{"error[].name": true, "error[].size": true, "error[].weight": true}
+		kind = ""
+	case path == "target.axis" || path == "target.angle":
+		target = "target.axis"
+	case path == "target.matrix":
+		target = path
+	case alternatives[path] && strings.HasPrefix(path, "error"):
+		kind = path
+	}
+	if kind == "error[].amplitude" {
+		not["error[].size"] = true // its example is a frequency
+	}
+	for k := range alternatives {
+		not[k] = k != target && k != kind
+	}
+	not["target.angle"] = target != "target.axis"
+	return not
+}
+
+// defaultOf gives the value that the help names for an absent key, empty when it is not a plain value.
+func defaultOf(k key) string {
+	switch k.absent {
+	case "one block": // of 8 samples in the example
+		return "8"
+	case "8 samples":
+		return `"8 ns"`
+	}
+	if strings.HasPrefix(k.path, "error[].") && (strings.HasSuffix(k.path, "name") || strings.HasSuffix(k.path, "size")) {
+		first := strings.FieldsFunc(k.absent, func(r rune) bool { return r == ',' || r == ';' })[0]
+		return first // those of a detuning
+	}
+	var v struct{ Value any }
+	text := k.absent
+	if strings.HasPrefix(k.example, `"`) && !strings.HasPrefix(text, `"`) {
+		text = `"` + text + `"`
+		if !regexp.MustCompile(`^"[0-9]`).MatchString(text) {
+			return ""
+		}
+	}
+	if _, err := toml.Decode("Value = "+text, &v); err != nil {
+		return ""
+	}
+	return text
+}
+
+// Each topic of the help is there, its lines fit a terminal, and -h shows the same.
+func TestHelp(t *testing.T) {
+	topics := []string{"profile", "device", "brief", "pulse"}
+	for _, v := range verbs() {
+		topics = append(topics, v.name)
+		_, a, _ := play("help", v.name)
+		if _, b, _ := play(v.name, "-h"); a != b {
+			t.Errorf("%s -h and help %s differ", v.name, v.name)
+		}
+		mustHave(t, "help", a, "Usage: holdfast "+v.name)
+	}
+	for _, topic := range topics {
+		status, stdout, stderr := play("help", topic)
+		if status != exitMet || stderr != "" {
+			t.Errorf("help %s: %d, %s", topic, status, stderr)
+		}
+		for line := range strings.Lines(stdout) {
+			if n := len([]rune(strings.TrimSuffix(line, "\n"))); n > 120 {
+				t.Errorf("help %s: a line of %d characters: %s", topic, n, line)
+			}
+			if strings.HasSuffix(line, " \n") {
+				t.Errorf("help %s: a space at the end of %q", topic, line)
+			}
+		}
+		if !strings.HasSuffix(stdout, "\n") {
+			t.Errorf("help %s does not end a line", topic)
+		}
+	}
+	_, stdout, _ := play("help")
+	for _, v := range verbs() {
+		mustHave(t, "help", stdout, "holdfast "+v.name)
+	}
+	for _, c := range []struct{ topic, flag string }{{"design", "-out"}, {"design", "-force"}, {"replay", "-datasheet"}} {
+		_, stdout, _ := play("help", c.topic)
+		mustHave(t, "help "+c.topic, stdout, c.flag)
+	}
+	// the flags in the source are the ones above
+	for file, want := range map[string]int{"design.go": 2, "replay.go": 1, "check.go": 0, "start.go": 0, "help.go": 0} {
+		source, err := os.ReadFile(file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if n := len(regexp.MustCompile(`\bf\.(String|Bool|Int|Duration|Float64|\w+Var)\("`).FindAll(source, -1)); n != want {
+			t.Errorf("%s defines %d flags; the help has %d", file, n, want)
+		}
+	}
+}
