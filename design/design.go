@@ -69,12 +69,13 @@ const (
 // A stage is some iterations of the refinement at stretched errors.
 type stage struct {
 	stretch    float64
+	oneSided   bool // of robust.Class
 	iterations int
 }
 
 var rounds = [2][]stage{
-	{{3, 40}, {1, 30}},
-	{{1, 200}},
+	{{3, true, 30}, {1, true, 20}},
+	{{1, false, 150}},
 }
 
 // Run designs the pulse. It uses all processors; its result depends on the
@@ -329,7 +330,7 @@ func sortByLoss(pool []candidate) {
 // that does not end at a zero, or ends at a worse one, is dropped.
 func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
 	for _, s := range stages {
-		r := solve.GaussNewton(ctx, q.residuals(q.finite(s.stretch)), q.set, c.wide,
+		r := solve.GaussNewton(ctx, q.residuals(q.finite(s)), q.set, c.wide,
 			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: s.iterations, Stalls: refineStalls})
 		c.wide = r.C
 		c.evaluations += r.Evaluations

@@ -110,10 +110,11 @@ func TestRoundedPulses(t *testing.T) {
 
 // A pulse for a line that is not there, played through the one that is: its record
 // promises what its sibling keeps, and replay exposes it. A prototype left 3e-4 to
-// 1.4e-3 in infidelity and 2e-2 to 3e-2 in susceptibility. The infidelity depends
-// on which pulse is found: it grows with the square of the angle that is turned in all, as the
-// line's slow tail takes a share of it (the refined pulses turn by a whole turn
-// more), and pulses that turn little hide it. The susceptibility shows in every one.
+// 1.4e-3 in infidelity and 2e-2 to 3e-2 in susceptibility. The infidelity depends on
+// which pulse is found: a line of unit gain leaves the area of the drive as it is, and
+// settled ends count all of it, so a pulse that turns nearly about one axis hides
+// the line (area 90 degrees: 1e-6), while the refined ones, which need both axes, do
+// not. The susceptibility shows in every one.
 func TestLineLeftOut(t *testing.T) {
 	with, without := rackInputs(t, true, heldDetuning), rackInputs(t, false, heldDetuning)
 	_, honest, v := designed(t, with)

@@ -269,14 +269,15 @@ func (q *problem) gate(fine bool) *robust.Gate {
 	return robust.NewGate(s, q.coarseR, 0)
 }
 
-// finite returns the residuals on the coarse grid with those of finite errors,
-// their sizes multiplied by stretch.
-func (q *problem) finite(stretch float64) *robust.Gate {
+// finite returns the residuals on the coarse grid with those of a stage's finite
+// errors.
+func (q *problem) finite(st stage) *robust.Gate {
 	s := q.spin
 	s.Grid = q.coarse.Grid
 	s.Held = append([]robust.Class(nil), s.Held...)
 	for i := range s.Held {
-		s.Held[i].Size *= stretch
+		s.Held[i].Size *= st.stretch
+		s.Held[i].OneSided = st.oneSided
 	}
 	return robust.NewGate(s, q.coarseR, refineWeight)
 }

@@ -303,8 +303,8 @@ const pulseHead = `A pulse is a folder:
   datasheet.html    for people
 
 Numbers in pulse.toml are plain, with the unit in the key's name or below; matrices are rows of [re, im]. The program
-writes it, and replay refuses a folder of which a file was changed. [model] and the waveform files are all that is needed
-to recompute the gate:
+writes it, and replay refuses a folder of which a file was changed. [model] and the waveform files are all that is
+needed to recompute the gate:
 
   dU/dt = -i H U,  H = static + sum over channels of full_scale (u_I operators[0] + u_Q operators[1]),
   u_I + i u_Q: what the held samples x = (I + i Q) / 2^(bits-1) become behind

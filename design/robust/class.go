@@ -27,6 +27,9 @@ type Class struct {
 	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or the share of the
 	// amplitude. Zero keeps the class out of the refinement.
 	Size float64
+	// OneSided leaves the opposite directions of kind Any out of the ensemble: half
+	// the work while the second order, which is even in the error, rules.
+	OneSided bool
 }
 
 // member is one finite error of an ensemble.
@@ -36,8 +39,7 @@ type member struct {
 }
 
 // ensemble returns the finite errors of a class: both signs of its size, or for
-// Any one of each opposite pair of Directions, as what is left once the first
-// order vanishes is even in the error.
+// Any its size along the Directions.
 func (c Class) ensemble() []member {
 	if c.Size == 0 {
 		return nil
@@ -49,8 +51,12 @@ func (c Class) ensemble() []member {
 	case Amplitude:
 		return []member{{scale: 1 + c.Size}, {scale: 1 - c.Size}}
 	}
+	along := Directions()
+	if c.OneSided {
+		along = half()
+	}
 	var list []member
-	for _, d := range Directions() {
+	for _, d := range along {
 		list = append(list, member{scaled(d, c.Size), 1})
 	}
 	return list
@@ -79,9 +85,9 @@ func scaled(v dynamics.Vec, f float64) dynamics.Vec {
 	return dynamics.Vec{f * v[0], f * v[1], f * v[2]}
 }
 
-// WorstDirection names the static error of M that survives most: the largest
-// singular value of M/T and its right singular vector in words, such as
-// "0.83 X + 0.41 Y". Shares under 0.05 are left out.
+// inWords writes a direction, which is as good as its opposite, such as
+// "0.83 X + 0.41 Y": the largest component is positive, those under 0.05 are
+// left out.
 func inWords(v dynamics.Vec) string {
 	lead := 0
 	for i := range v {

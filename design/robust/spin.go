@@ -52,7 +52,7 @@ type Gate struct {
 
 	nominal dynamics.Spin // with every toggled error
 	finite  dynamics.Spin // gate only
-	combine [][]combination
+	combine []triple
 
 	re, im blas64.General // the response, N x nodes: products then run along the nodes
 
@@ -71,8 +71,15 @@ type Response struct {
 	Re, Im []float64
 }
 
-// combination is one share of a toggled error in a residual triple.
-type combination struct {
+// triple says what three residuals are: a weight times an averaged toggled
+// error, put together from those that dynamics follows.
+type triple struct {
+	weight float64
+	parts  []part
+}
+
+// part is one toggled error and its factor in a triple.
+type part struct {
 	toggle int
 	factor float64
 }
@@ -107,17 +114,16 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 	}
 	amplitude := -1
 	for _, c := range s.Held {
-		w := c.Weight
 		switch {
 		case c.Kind == Any:
 			for i := range 3 {
-				g.combine = append(g.combine, []combination{{i, w / g.span}})
+				g.combine = append(g.combine, triple{c.Weight, []part{{i, 1 / g.span}}})
 			}
 		case c.Kind == Static && all:
 			v := unit(c.Vector)
-			g.combine = append(g.combine, []combination{{0, w * v[0] / g.span}, {1, w * v[1] / g.span}, {2, w * v[2] / g.span}})
+			g.combine = append(g.combine, triple{c.Weight, []part{{0, v[0] / g.span}, {1, v[1] / g.span}, {2, v[2] / g.span}}})
 		case c.Kind == Static:
-			g.combine = append(g.combine, []combination{{len(g.nominal.Held), w / g.span}})
+			g.combine = append(g.combine, triple{c.Weight, []part{{len(g.nominal.Held), 1 / g.span}}})
 			g.nominal.Held = append(g.nominal.Held, unit(c.Vector))
 		}
 	}
@@ -127,7 +133,7 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 				amplitude = len(g.nominal.Held)
 				g.nominal.Gains = [][]float64{{1, 1}}
 			}
-			g.combine = append(g.combine, []combination{{amplitude, c.Weight / (g.span * g.full)}})
+			g.combine = append(g.combine, triple{c.Weight, []part{{amplitude, 1 / (g.span * g.full)}}})
 		}
 	}
 	if refine > 0 {
@@ -216,15 +222,9 @@ func (g *Gate) Residuals(c, r []float64) {
 	m, g.k[0] = g.miss(g.nominal.Gate)
 	copy(r, m[:])
 	at := 3
-	for _, list := range g.combine {
-		var sum dynamics.Vec
-		for _, x := range list {
-			t := g.nominal.Toggle[x.toggle]
-			for i := range 3 {
-				sum[i] += x.factor * t[i]
-			}
-		}
-		copy(r[at:], sum[:])
+	for i := range g.combine {
+		e := scaled(g.averaged(i), g.combine[i].weight)
+		copy(r[at:], e[:])
 		at += 3
 	}
 	if len(g.members) == 0 {
@@ -243,6 +243,19 @@ func (g *Gate) Residuals(c, r []float64) {
 		row := first + 3*i
 		g.finite.Derive(e.scale, g.gateRows(row, nodes), nil)
 	}
+}
+
+// averaged returns the averaged toggled error of triple i of the last run,
+// without its weight.
+func (g *Gate) averaged(i int) dynamics.Vec {
+	var sum dynamics.Vec
+	for _, x := range g.combine[i].parts {
+		t := g.nominal.Toggle[x.toggle]
+		for k := range 3 {
+			sum[k] += x.factor * t[k]
+		}
+	}
+	return sum
 }
 
 func (g *Gate) gateRows(row, nodes int) [3][]float64 {
@@ -276,13 +289,14 @@ func (g *Gate) Jacobian(jac []float64) {
 
 	g.turnRows(jac, 0, 0, g.k[0], 1)
 	out := 3
-	for _, list := range g.combine {
+	for _, e := range g.combine {
 		dst := jac[out*2*n : (out+3)*2*n]
 		clear(dst)
-		for _, x := range list {
+		for _, x := range e.parts {
 			src := g.raw[(3+3*x.toggle)*2*n : (6+3*x.toggle)*2*n]
+			f := e.weight * x.factor
 			for i, v := range src {
-				dst[i] += x.factor * v
+				dst[i] += f * v
 			}
 		}
 		out += 3
@@ -335,30 +349,24 @@ func (g *Gate) Figures(u []float64) Figures {
 		case Any:
 			var m [9]float64
 			for col := range 3 {
-				t := g.nominal.Toggle[g.combine[at+col][0].toggle]
+				t := g.averaged(at + col)
 				for row := range 3 {
-					m[3*row+col] = t[row] / g.span
+					m[3*row+col] = t[row]
 				}
 			}
 			at += 3
 			share[i], worst[i] = universal(m)
 		case Static:
-			var sum dynamics.Vec
-			for _, x := range g.combine[at] {
-				t := g.nominal.Toggle[x.toggle]
-				for k := range 3 {
-					sum[k] += x.factor / c.Weight * t[k]
-				}
-			}
+			share[i] = norm(g.averaged(at))
 			at++
-			share[i] = norm(sum)
 		}
 	}
 	for i, c := range g.spec.Held {
 		if c.Kind == Amplitude {
-			t := g.nominal.Toggle[g.combine[at][0].toggle]
+			if p := g.power(u); p > 0 { // without a drive there is nothing to scale
+				share[i] = norm(g.averaged(at)) * g.full * math.Sqrt(g.span/p)
+			}
 			at++
-			share[i] = norm(t) / math.Sqrt(g.span*g.power(u))
 		}
 	}
 	f.Susceptibility, f.Worst = share, worst
@@ -410,15 +418,10 @@ func (g *Gate) Infidelity(u []float64, offset dynamics.Vec, scale float64) float
 // MeanInfidelity returns the mean average gate infidelity over the finite errors
 // of a class at its size, both signs of each.
 func (g *Gate) MeanInfidelity(u []float64, c Class) float64 {
+	c.OneSided = false
 	list := c.ensemble()
 	if len(list) == 0 {
 		return 0
-	}
-	if c.Kind == Any {
-		list = nil
-		for _, d := range Directions() {
-			list = append(list, member{scaled(d, c.Size), 1})
-		}
 	}
 	sum := 0.0
 	for _, e := range list {
