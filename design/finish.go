@@ -151,7 +151,8 @@ func half(name string) device.Matrix {
 	return op.Scale(0.5)
 }
 
-func pair(z complex128) Complex { return Complex{real(z), imag(z)} }
+// pair writes a complex number down; adding zero turns minus zero into zero.
+func pair(z complex128) Complex { return Complex{real(z) + 0, imag(z) + 0} }
 
 func rowsOf(m device.Matrix) [][]Complex {
 	rows := make([][]Complex, m.N)

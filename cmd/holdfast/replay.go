@@ -12,6 +12,10 @@ import (
 	"holdfast/hardware"
 )
 
+// mostDifferences is how many differences between record and inputs are told: a
+// few show what happened.
+const mostDifferences = 5
+
 // replayPulse judges a pulse folder from what stands in it.
 func replayPulse(c *call) (int, error) {
 	f := c.flags()
@@ -51,6 +55,13 @@ func replayPulse(c *call) (int, error) {
 	}
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
+	}
+	for i, d := range verdict.Inputs {
+		if i == mostDifferences {
+			fmt.Fprintf(c.stdout, "... and %d more\n", len(verdict.Inputs)-i)
+			break
+		}
+		fmt.Fprintf(c.stdout, "model.%s: the record says %s, inputs/ give %s\n", d.Key, d.Recorded, d.Rebuilt)
 	}
 	if record.Pulse.Status != string(design.Found) || !verdict.Met() {
 		return exitMissed, nil
