@@ -1,6 +1,6 @@
 //go:build measure
 
-package design_test
+package design
 
 import (
 	"context"
@@ -9,13 +9,15 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"runtime"
+	"slices"
 	"strings"
 	"testing"
 	"time"
 
-	"holdfast/design"
 	"holdfast/design/brief"
 	"holdfast/design/replay"
+	"holdfast/design/solve"
 )
 
 // The figures that DEVELOPERS.md quotes are printed by
@@ -25,7 +27,7 @@ import (
 // Times are those of the machine at hand; everything else repeats.
 
 // wanted writes a brief on the demonstration rack and loads it.
-func wanted(t *testing.T, gate string, ns int, held []string, extra string) design.Inputs {
+func wanted(t *testing.T, gate string, ns int, held []string, extra string) Inputs {
 	t.Helper()
 	dir, err := filepath.Abs("../testdata/skerry")
 	if err != nil {
@@ -48,20 +50,20 @@ func wanted(t *testing.T, gate string, ns int, held []string, extra string) desi
 	if err != nil {
 		t.Fatal(err)
 	}
-	return design.Inputs{Brief: br, Profile: p, Device: d, Version: "measure"}
+	return Inputs{Brief: br, Profile: p, Device: d, Version: "measure"}
 }
 
 // judged designs, writes and replays, and returns the verdict of the samples
 // before rounding with what they were judged from.
-func judged(t *testing.T, in design.Inputs) (*design.Pulse, *replay.Folder, *replay.Verdict, time.Duration) {
+func judged(t *testing.T, in Inputs) (*Pulse, *replay.Folder, *replay.Verdict, time.Duration) {
 	t.Helper()
 	begun := time.Now()
-	p, err := design.Run(context.Background(), in, nil)
+	p, err := Run(context.Background(), in, nil)
 	if err != nil {
 		t.Fatal(err)
 	}
 	took := time.Since(begun)
-	src, err := design.ReadSources(in)
+	src, err := ReadSources(in)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -116,11 +118,38 @@ func TestMeasureTable(t *testing.T) {
 				}
 			}
 			fmt.Printf("%-4s %-21s %3d ns: %s; infidelity %.1e, worst held susceptibility %.1e; %v\n", gate, c.name, ns, p.Summary(), v.Settled.Infidelity, worst, took.Round(time.Millisecond))
-			if p.Status != design.Found || !(v.Settled.Infidelity <= 1e-7) || !(worst <= 1e-3) {
+			if p.Status != Found || !(v.Settled.Infidelity <= 1e-7) || !(worst <= 1e-3) {
 				t.Errorf("%s %s at %d ns misses", gate, c.name, ns)
 			}
 			p, _, _, took = judged(t, wanted(t, gate, ns-8, c.held, ""))
 			fmt.Printf("%-4s %-21s %3d ns: %s; %v\n", gate, c.name, ns-8, p.Summary(), took.Round(time.Millisecond))
+		}
+	}
+}
+
+// TestMeasureShares counts the successes of 100 starts at each shortest span.
+func TestMeasureShares(t *testing.T) {
+	for _, gate := range []string{"X90", "X180"} {
+		for _, c := range heldTable {
+			ns := c.x90
+			if gate == "X180" {
+				ns = c.x180
+			}
+			q, err := newTask(wanted(t, gate, ns, c.held, ""))
+			if err != nil {
+				t.Fatal(err)
+			}
+			const starts = 100
+			begun := time.Now()
+			zeros, spent := 0, make([]int, starts)
+			list := solve.Search(context.Background(), starts, starts, runtime.GOMAXPROCS(0), q.solve, nil)
+			for i, r := range list {
+				if spent[i] = r.Evaluations; r.Status == solve.Converged {
+					zeros++
+				}
+			}
+			slices.Sort(spent)
+			fmt.Printf("%-4s %-21s %3d ns: %3d of %d starts at a zero, median %d evaluations; %v\n", gate, c.name, ns, zeros, starts, spent[starts/2], time.Since(begun).Round(time.Millisecond))
 		}
 	}
 }
@@ -132,8 +161,8 @@ func TestMeasureBlocks(t *testing.T) {
 	for ns := 96; ns <= 144; ns += 8 {
 		p, f, _, took := judged(t, wanted(t, "X90", ns, []string{anyError}, ""))
 		m := f.Model.BeforeRounding()
-		average, _ := finite(t, m, directions(), 1e-3)
-		random, worst := finite(t, m, randomDirections(2000), 1e-3)
+		average, _ := lossOver(t, m, directions(), 1e-3)
+		random, worst := lossOver(t, m, randomDirections(2000), 1e-3)
 		fmt.Printf("X90 any %3d ns: 14 directions at 1 MHz: average %.2e; 2000 random: average %.2e, worst %.2e; %s; %v\n", ns, average, random, worst, p.Summary(), took.Round(time.Millisecond))
 		if last > 0 && !(average <= 1.1*last) {
 			t.Errorf("%d ns: %.2e after %.2e", ns, average, last)
@@ -143,14 +172,14 @@ func TestMeasureBlocks(t *testing.T) {
 	_, f, _, _ := judged(t, wanted(t, "X90", 64, []string{detuning}, ""))
 	m := f.Model.BeforeRounding()
 	for _, mhz := range []float64{1, 3} {
-		a, w := finite(t, m, [][3]float64{{0, 0, 1}, {0, 0, -1}}, mhz*1e-3)
+		a, w := lossOver(t, m, [][3]float64{{0, 0, 1}, {0, 0, -1}}, mhz*1e-3)
 		fmt.Printf("X90 detuning 64 ns at +-%v MHz: average %.2e, worst %.2e\n", mhz, a, w)
 	}
 }
 
-// finite returns the average and the worst settled infidelity over static errors
+// lossOver returns the average and the worst settled infidelity over static errors
 // of field 2π f n·σ/2, f in GHz.
-func finite(t *testing.T, m *replay.Model, list [][3]float64, f float64) (average, worst float64) {
+func lossOver(t *testing.T, m *replay.Model, list [][3]float64, f float64) (average, worst float64) {
 	t.Helper()
 	fields := make([][]complex128, len(list))
 	for i, n := range list {

@@ -371,11 +371,15 @@ func TestHostileFolders(t *testing.T) {
 		{"inf in the claim", func(t *testing.T, p string) { change(t, record(p), "tail_angle_rad = ", "tail_angle_rad = inf # ") }, ": claim.tail_angle_rad: "},
 		{"huge count", func(t *testing.T, p string) { change(t, record(p), "samples = 40", "samples = 4000000000") }, ": model.samples: "},
 		{"other count", func(t *testing.T, p string) { change(t, record(p), "samples = 40", "samples = 48") }, "q1-drive.npy: "},
-		{"unstable line", func(t *testing.T, p string) { change(t, record(p), "[-0.03333333333333333, 0.0]", "[0.03333333333333333, 0.0]") }, ": model.channel[0].poles_per_ns"},
+		{"unstable line", func(t *testing.T, p string) {
+			change(t, record(p), "[-0.03333333333333333, 0.0]", "[0.03333333333333333, 0.0]")
+		}, ": model.channel[0].poles_per_ns"},
 		{"huge dimension", func(t *testing.T, p string) { change(t, record(p), "dim = 2", "dim = 100000") }, ": model.dim: "},
 		{"no name", func(t *testing.T, p string) { change(t, record(p), `name = "quick"`, "") }, "pulse.name"},
 		{"status of another type", func(t *testing.T, p string) { change(t, record(p), `status = "found"`, "status = 1") }, "pulse.toml"},
-		{"broken basis", func(t *testing.T, p string) { change(t, record(p), "coefficients_per_quadrature = 6", `coefficients_per_quadrature = "six"`) }, "pulse.toml"},
+		{"broken basis", func(t *testing.T, p string) {
+			change(t, record(p), "coefficients_per_quadrature = 6", `coefficients_per_quadrature = "six"`)
+		}, "pulse.toml"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			dir := t.TempDir()

@@ -307,3 +307,35 @@ func BenchmarkSpin(b *testing.B) {
 		})
 	}
 }
+
+func TestLandauZener(t *testing.T) {
+	// A level crossing swept at rate a, H = (a t Z + D X)/2: a spin that starts in one
+	// adiabatic state stays on its diabatic level with probability exp(-π D²/(2a))
+	// (Landau 1932, Phys. Z. Sowjetunion 2, 46; Zener 1932, Proc. R. Soc. A 137, 696).
+	// Between adiabatic states at ±T the sweep's ends disturb by D a/(a² T²)^{3/2}/2.
+	const T, n = 150.0, 60000
+	for _, c := range []struct{ a, D float64 }{{1, 0.5}, {1, 1}, {1, 1.6}, {2, 1}} {
+		steps := make([]float64, n)
+		u := make([]float64, 2*n)
+		for j := range steps {
+			steps[j] = 2 * T / n
+			for k, g := range GaussNodes {
+				u[2*j+k] = c.a * (-T + (float64(j)+g)*2*T/n)
+			}
+		}
+		s := &Spin{Static: Vec{c.D, 0, 0}, Axes: []Vec{{0, 0, 1}}, Steps: steps, Last: n}
+		s.Reset()
+		s.Run(u, Vec{}, 1)
+		// The Bloch vector of an adiabatic state is along the field, so the state
+		// left at the end follows the field at the start turned by R.
+		e := math.Hypot(c.D, c.a*T)
+		r := s.Gate.Rotation()
+		end := r.Apply(Vec{c.D / e, 0, -c.a * T / e})
+		// to change from the upper to the lower adiabatic state is to stay on the level
+		got := (1 - (end[0]*c.D+end[2]*c.a*T)/e) / 2
+		want := math.Exp(-math.Pi * c.D * c.D / (2 * c.a))
+		if tol := 4 * c.D / (c.a * c.a * T * T * T); !(math.Abs(got-want) <= tol) {
+			t.Errorf("a = %v, D = %v: %v, want %v to %.1g", c.a, c.D, got, want, tol)
+		}
+	}
+}

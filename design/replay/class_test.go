@@ -162,6 +162,9 @@ func TestMargins(t *testing.T) {
 	if e := judged(t, m, 1)["X"]; !math.IsInf(e.Low, -1) || !math.IsInf(e.High, 1) {
 		t.Errorf("margins %g, %g where nothing is required", e.Low, e.High)
 	}
+	if e := judged(t, m, 1)["any"]; !math.IsInf(e.Low, -1) || !math.IsInf(e.High, 1) {
+		t.Errorf("margins %g, %g against any error where nothing is required", e.Low, e.High)
+	}
 	for _, e := range got {
 		for _, p := range e.Curve {
 			if e.Name == "amplitude" {
@@ -191,6 +194,12 @@ func TestFirstCrossing(t *testing.T) {
 	}
 	if s := e.Susceptibility; !(math.Abs(s-1) <= 1e-11) {
 		t.Errorf("susceptibility %.12g of doing nothing", s)
+	}
+	// Held again from 3 to 7 MHz: a stride that is too long does not see the first crossing.
+	e = judged(t, m, 0.6)["X"]
+	want = 2 * math.Asin(math.Sqrt(0.9)) / 200 / perMHz
+	if !(math.Abs(e.High-want) <= 1e-7*want) {
+		t.Errorf("margin %.9g, want %.9g", e.High, want)
 	}
 	if a := judged(t, m, 1e-2)["amplitude"]; a.Susceptibility != 0 || !math.IsInf(a.High, 1) {
 		t.Errorf("amplitude error of silence: %g, margin %g", a.Susceptibility, a.High)
@@ -291,6 +300,31 @@ func TestTwoChannels(t *testing.T) {
 		e := got[name]
 		if !(math.Abs(e.Susceptibility-1) <= 1e-11) || !(math.Abs(e.High/want-1) <= 1e-7) {
 			t.Errorf("%s: susceptibility %.12g, margin %.9g, want 1 and %.9g", name, e.Susceptibility, e.High, want)
+		}
+	}
+}
+
+// A worst direction between the axes: the spin precesses about (1, 1, 1), five whole turns, and an error along it survives whole, one
+// along X to a third in its rotation.
+func TestWorstBetweenAxes(t *testing.T) {
+	m := spinModel(1, []complex128{1, 0, 0, 1}, make([]complex128, 200))
+	rate := complex(2*math.Pi*5/200/math.Sqrt(3), 0)
+	for i := range m.Static {
+		m.Static[i] = rate * (halfX[i] + halfY[i] + halfZ[i])
+	}
+	m.Errors = []Class{{Name: "any", Kind: "any"}}
+	got := judged(t, m, 1e-3)
+	want := 2 * math.Asin(math.Sqrt(1.5e-3)) / 200 / perMHz
+	any := got["any"]
+	if !(math.Abs(any.High-want) <= 1e-7*want) || any.Low != -any.High || !(got["X"].High > 1.5*want) {
+		t.Errorf("margin %.9g, want %.9g, along X %.9g", any.High, want, got["X"].High)
+	}
+	if any.WorstDirection != "0.58 X + 0.58 Y + 0.58 Z" || !(math.Abs(any.WorstSusceptibility-1) <= 1e-11) || !(math.Abs(any.Susceptibility-1/math.Sqrt(3)) <= 1e-11) {
+		t.Errorf("worst %q %.12g, rms %.12g", any.WorstDirection, any.WorstSusceptibility, any.Susceptibility)
+	}
+	for _, p := range any.Curve {
+		if s := 2. / 3 * math.Pow(math.Sin(p.Value*perMHz*100), 2); !(p.Infidelity >= s-1e-12) {
+			t.Errorf("curve at %g: %g is not the worst", p.Value, p.Infidelity)
 		}
 	}
 }

@@ -312,6 +312,8 @@ func TestGeneralKernel(t *testing.T) {
 	big.Channels = append([]Channel(nil), m.Channels...)
 	big.Channels[0].Operators = [][]complex128{grow(halfX), grow(halfY)}
 	big.Errors = []Class{{Name: "Z", Kind: "static", Operator: grow(halfZ)}, {Name: "amplitude", Kind: "amplitude"}}
+	// An energy that all code states share is no error.
+	big.Errors = append(big.Errors, Class{Name: "common", Kind: "static", Operator: []complex128{1, 0, 0, 0, -2, 0, 0, 0, 1}})
 	a, err := m.Judge(context.Background(), 1e-4)
 	if err != nil {
 		t.Fatal(err)
@@ -322,6 +324,9 @@ func TestGeneralKernel(t *testing.T) {
 	}
 	if d := math.Abs(a.Window.Infidelity - b.Window.Infidelity); !(d <= 1e-18) || b.Window.Leakage != 0 {
 		t.Errorf("a spectator level changes the infidelity by %.2g, leakage %.2g", d, b.Window.Leakage)
+	}
+	if c := b.Errors[2]; c.Name != "common" || c.Susceptibility != 0 || !math.IsInf(c.High, 1) {
+		t.Errorf("a common energy: susceptibility %g, margin %g", c.Susceptibility, c.High)
 	}
 	for _, ea := range a.Errors {
 		for _, eb := range b.Errors {

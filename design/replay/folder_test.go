@@ -112,6 +112,8 @@ func TestDisagreement(t *testing.T) {
 		"channel[0].residues[2]":           func(m *Model) { m.Channels[0].Residues[2] *= 1.01 },
 		"channel[0].max_slew_per_sample":   func(m *Model) { m.Channels[0].MaxSlew = math.Inf(1) },
 		"channel[0].guard_trail":           func(m *Model) { m.Channels[0].GuardTrail = 3 },
+		"channel[0].direct[0][0]":          func(m *Model) { m.Channels[0].Direct = 0.001 },
+		"bits":                             func(m *Model) { m.Bits = 12 },
 		"window_start_ns":                  func(m *Model) { m.WindowStart = 3 },
 		"ends":                             func(m *Model) { m.Ends = "window" },
 		"target[0][0]":                     func(m *Model) { m.Target = rotation(1.5, 0) },
@@ -261,6 +263,31 @@ func TestMalformedFolders(t *testing.T) {
 				t.Errorf("%s\nwant %s", got, c.want)
 			}
 		})
+	}
+}
+
+// Requirements by hand: upper limits, and margins to both sides, of known errors and unknown ones.
+func TestRequirements(t *testing.T) {
+	v := &Verdict{Ends: "window", Settled: Figures{Infidelity: 1}, Window: Figures{Infidelity: 1e-5}, Errors: []Error{
+		{Name: "detuning", Unit: "MHz", Low: -0.5, High: 2, Susceptibility: 0.3},
+		{Name: "any", Unit: "MHz", Held: true, Low: math.Inf(-1), High: math.Inf(1), Susceptibility: 2e-3},
+		{Name: "amplitude", Unit: "%", Low: -3, High: 1, Susceptibility: 1},
+	}}
+	v.require(Require{Infidelity: 1e-4, Susceptibility: 1e-3, Margins: []Margin{
+		{"detuning", 0.6 * perMHz, false}, {"detuning", 0.5 * perMHz, false}, {"amplitude", 0.01, true}, {"amplitude", 0.011, true},
+		{"any", 60 * perMHz, false}, {"amplitude", 1e-9, false}, {"Q", 1e-9, false},
+	}})
+	want := []bool{true, false, false, true, true, false, true, false, false}
+	if len(v.Requirements) != len(want) {
+		t.Fatalf("%d requirements", len(v.Requirements))
+	}
+	for i, r := range v.Requirements {
+		if r.Met != want[i] {
+			t.Errorf("requirement %d: %+v", i, r)
+		}
+	}
+	if len(v.Warnings) != 3 { // beyond what is searched, in the wrong unit, unknown
+		t.Errorf("warnings %q", v.Warnings)
 	}
 }
 

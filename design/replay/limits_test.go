@@ -50,7 +50,7 @@ func TestLimits(t *testing.T) {
 	}
 	broken(func(y []complex128) { y[1] = complex(0.2, 0.95) }, hardware.Amplitude)
 	broken(func(y []complex128) { y[0] = complex(0, 0.2501) }, hardware.Slew) // from zero
-	broken(func(y []complex128) { y[7] = 0.26 }, hardware.Slew)               // to zero
+	broken(func(y []complex128) { y[6], y[7] = 0.2, 0.4 }, hardware.Slew)     // to zero
 	broken(func(y []complex128) { y[4] = 1. / 8192 }, hardware.Guards)
 	broken(func(y []complex128) { y[2] = 1 }, hardware.LargestOne) // +1 has no code
 	broken(func(y []complex128) { y[2] = -8193. / 8192 }, hardware.LargestOne)
@@ -59,6 +59,10 @@ func TestLimits(t *testing.T) {
 	}
 	if r := reading(t, m.WithSamples(8, []complex128{0, 0, 0, 0.25}), hardware.Slew); !r.OK {
 		t.Errorf("a slew of just the limit: %+v", r)
+	}
+	m.Channels[0].GuardLead = 1
+	if r := reading(t, m, hardware.Guards); r.OK || r.Found != 0.2 || r.Headroom != 0 {
+		t.Errorf("a leading guard: %+v", r)
 	}
 	free := spinModel(1, rotation(1, 0), x)
 	list, err := free.Limits(context.Background())

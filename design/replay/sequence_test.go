@@ -27,6 +27,11 @@ func TestPair(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	window := *m
+	window.Ends = "window"
+	if same, err := window.Pair(ctx); err != nil || same != got {
+		t.Errorf("with window ends the pair is %v, %v; want %v", same, err, got)
+	}
 	worst := Pair{Infidelity: -1}
 	for quarter := range 4 {
 		phi := float64(quarter) * math.Pi / 2

@@ -1,0 +1,195 @@
+package main
+
+import (
+	"math"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"holdfast/design/device"
+)
+
+// The demonstration's profile, in words. The figures are calculated by hand where they are not those of the file: one code
+// of 14 bit is 2^-13; sinc(0.1) is 0.983632; 36 free samples of a 40 ns span carry floor(2*36*0.1)-1 = 6 coefficients.
+func TestCheckProfile(t *testing.T) {
+	dir := newLab(t)
+	path := filepath.Join(dir, "rack-b.toml")
+	status, stdout, stderr := play("check", path)
+	if status != exitMet || stderr != "" {
+		t.Fatalf("check: %d, %s", status, stderr)
+	}
+	mustHave(t, "check", stdout,
+		`hardware profile of "rack B, position 3"`, "1 GS/s", "each sample is held for 1 ns", "14 bit: one code (LSB) is 0.012207 %", "8 to 65536 samples in blocks of 8, 8 ns each",
+		"I multiplies the cosine of the carrier and Q minus its sine", "Q turns a spin about +Y when its |0> is the upper energy, about -Y when it is the lower", "the frame that turns with the carrier",
+		"40 MHz, once in 25 ns", "up to 95 %", "25 %/sample", "4 steps from zero", "100 MHz from the carrier; there holding the samples leaves 98.36 % (-0.143 dB)",
+		"0 samples at zero before the pulse and 4 after", "0.1 % of full scale may arrive", "Bessel low-pass of order 2", "tail of -1.5 %", "10-90 % transition: 1.7", "overshoot: ", "settles to 1 %: 13.", "settles to 0.1 %: 8", "corner (-3.01 dB): 19",
+		"window begins at the device 3.2 ns after the trigger", "0 ns of latency and 3.2 ns of pure delay",
+		"quarter turn in 10 ns and a half turn in 16 ns",
+		"playable in spans from 8 ns up", "40 ns 40 6 12 5 the gate alone", "64 ns 64 11 22 15 any static error and amplitude",
+		"500 mV", "burn and blind")
+	for l := range strings.Lines(stdout) {
+		if n := len([]rune(l)); n > 115 && !strings.Contains(l, dir) {
+			t.Errorf("a line of %d characters: %s", n, l)
+		}
+	}
+
+	// the other mixer turns Q the other way; limits that are not there are none
+	change(t, path, `mixing = "I cos - Q sin"`, `mixing = "I cos + Q sin"`)
+	change(t, path, "slew_limit", "# slew_limit")
+	change(t, path, "band", "# band")
+	change(t, path, "ring_out", "# ring_out")
+	change(t, path, "full_scale_level", "# full_scale_level")
+	change(t, path, `kind = "quadrature"`, "kind = \"quadrature\"\ncarrier = \"5.1 GHz\"\nlatency = \"100 ns\"")
+	status, stdout, stderr = play("check", path)
+	if status != exitMet || stderr != "" {
+		t.Fatalf("check: %d, %s", status, stderr)
+	}
+	mustHave(t, "check", stdout, "Q plus its sine", "about -Y when its |0> is the upper energy, about +Y when it is the lower", "(5.1 GHz)",
+		"slew no limit", "no limit below half the sample rate, 500 MHz", "no limit on what arrives", "103.2 ns after the trigger: 100 ns of latency", "does not state the level",
+		"8 ns 8 4 8 7 one named error") // 4 free samples, each a coefficient
+}
+
+// Channels of unlike delay stay apart, and check says by how much.
+func TestCheckStarts(t *testing.T) {
+	dir := newLab(t)
+	path := filepath.Join(dir, "rack-b.toml")
+	text := read(t, path)
+	_, channel, _ := strings.Cut(text, "\n[[channel]]")
+	channel = strings.NewReplacer(`"q1 drive"`, `"q2 drive"`, `"3.2 ns"`, `"5.7 ns"`).Replace(channel)
+	write(t, path, text+"\n[[channel]]"+channel)
+	status, stdout, stderr := play("check", path)
+	if status != exitMet || stderr != "" {
+		t.Fatalf("check: %d, %s", status, stderr)
+	}
+	mustHave(t, "check", stdout, "q1 drive begins 3.2 ns after the trigger, 0 ns after the earliest", "q2 drive begins 5.7 ns after the trigger, 2.5 ns after the earliest",
+		"up to 2.5 ns (2.5 samples) apart")
+}
+
+// 100 ns cost 100/6 (1/60000 + 2/40000) = 1.11e-3 with the demonstration's times.
+func TestCheckDevice(t *testing.T) {
+	dir := newLab(t)
+	path := filepath.Join(dir, "skerry.toml")
+	_, stdout, _ := play("check", path)
+	mustHave(t, "check", stdout, `device "Skerry"`, "the upper of the two energies", "5.1 GHz", "0 Hz of the transition", `channel "q1 drive"`, "60 us", "40 us", "adds 0.00111")
+	change(t, path, "T1 =", "# T1 =")
+	change(t, path, "T2 =", "# T2 =")
+	change(t, path, "frequency =", "# frequency =")
+	change(t, path, `zero = "upper"`, `zero = "lower"`)
+	_, stdout, _ = play("check", path)
+	mustHave(t, "check", stdout, "the lower of the two energies", "transition not stated", "T1 not stated", "left out of every figure")
+	if got, want := decoherence(device.Site{T1: 60000, T2: 40000}, 100), 100./6*(1./60000+2./40000); !(math.Abs(got-want) <= 1e-15) {
+		t.Errorf("decoherence %g, want %g", got, want)
+	}
+}
+
+func TestCheckBrief(t *testing.T) {
+	dir := newLab(t)
+	path := filepath.Join(dir, "x90.toml")
+	_, stdout, _ := play("check", path)
+	mustHave(t, "check", stdout, `brief "x90-any"`, "X90 on q1: 90 deg about (1, 0, 0)", "112 ns: 112 samples in 14 blocks of 8; 0 held at zero before and 4 after, 108 free",
+		"settled: ", "any static error up to 1 MHz", "12: 3 of the gate and 9 of the errors; against them 40 coefficients, 20 per quadrature",
+		"infidelity at most 1e-06", "of each held error, that infidelity up to ±", " kHz of detuning", "60 starts, seed 1",
+		`"q1 drive" mixes I cos - Q sin, and |0> of q1 is the upper energy: I turns about +X and Q about +Y, in the frame that turns about +Z`,
+		"adds 0.00124", "Decoherence alone costs 0.00124")
+
+	for _, c := range []struct {
+		name, text string
+		wanted     []string
+		not        string
+	}{
+		// 36 free samples: 12 coefficients. Named errors that repeat each other count once.
+		{"too few", "[[error]]\nany = \"all\"\n", []string{"12: 3 of the gate and 9 of the errors; against them 12 coefficients", "Too few coefficients: 12 equations and the ring-out limit want more than 16, and the span carries 12"}, ""},
+		{"hardly enough", "[[error]]\ndetuning = \"q1\"\n", []string{"6: 3 of the gate and 3 of the errors", "Hardly enough coefficients: 6 equations and the ring-out limit are easy with more than 12"}, ""},
+		{"repeated", "[[error]]\ndetuning = \"q1\"\n[[error]]\noperator = \"Z\"\n[[error]]\nany = \"all\"\n[[error]]\namplitude = \"q1 drive\"\nsize = \"2 %\"\nweight = 0.5\n",
+			[]string{"21: 3 of the gate and 18 of the errors, of which 6 repeat others", "Too few coefficients: 15 equations", "amplitude up to 2 % with weight 0.5"}, ""},
+		{"default", "", []string{"detuning up to 3 MHz, amplitude up to 3 %, any static error up to 1 MHz (the brief names none, so these)", "18: 3 of the gate and 15 of the errors, of which 3 repeat others"}, ""},
+		{"a margin of an amplitude", "[[error]]\namplitude = \"q1 drive\"\n[require]\n[[require.margin]]\nerror = \"amplitude\"\nsize = \"1 %\"\n", []string{"up to ±1 % of amplitude"}, ""},
+		{"samples", "[basis]\nfamily = \"samples\"\n", []string{"72 coefficients, 36 per quadrature, family samples"}, "coefficients:"},
+		{"own number", "[basis]\ncoefficients = 30\n", []string{"60 coefficients, 30 per quadrature, family slepian"}, "oo few"},
+	} {
+		path := filepath.Join(dir, "other.toml")
+		write(t, path, strings.Replace(quick, `hold = "nothing"`, "", 1)+c.text)
+		status, stdout, stderr := play("check", path)
+		if status != exitMet || stderr != "" {
+			t.Errorf("%s: %d, %s", c.name, status, stderr)
+			continue
+		}
+		mustHave(t, c.name, stdout, c.wanted...)
+		if c.not != "" && strings.Contains(stdout, c.not) {
+			t.Errorf("%s: says %q:\n%s", c.name, c.not, stdout)
+		}
+	}
+
+	// hold = "nothing", a carrier that is not the transition's, |0> below
+	change(t, filepath.Join(dir, "rack-b.toml"), `kind = "quadrature"`, "kind = \"quadrature\"\ncarrier = \"5 GHz\"")
+	change(t, filepath.Join(dir, "skerry.toml"), `zero = "upper"`, `zero = "lower"`)
+	_, stdout, _ = play("check", filepath.Join(dir, "quick.toml"))
+	mustHave(t, "check", stdout, `nothing (hold = "nothing")`, "3: 3 of the gate; against them 12 coefficients", "Q about -Y", "turns about -Z with the carrier (5 GHz)", "5.1 GHz, lies 100 MHz from the carrier, 5 GHz")
+}
+
+// A bad file does not keep check from the others.
+func TestCheckGoesOn(t *testing.T) {
+	dir := newLab(t)
+	at := func(name string) string { return filepath.Join(dir, name) }
+	write(t, at("what.toml"), "format = 1\ncolour = \"red\"\n")
+	write(t, at("capitals.toml"), "[Instrument]\nname = \"x\"\n")
+	write(t, at("lost.toml"), strings.Replace(quick, "skerry.toml", "gone.toml", 1))
+	status, stdout, stderr := play("check", at("what.toml"), at("skerry.toml"), at("none.toml"), at("lost.toml"), at("capitals.toml"), at("rack-b.toml"))
+	if status != exitBadInput {
+		t.Errorf("status %d", status)
+	}
+	mustHave(t, "check", stdout, `device "Skerry"`, "hardware profile")
+	lines := strings.Split(strings.TrimSuffix(stderr, "\n"), "\n")
+	if len(lines) != 4 {
+		t.Fatalf("%d lines on stderr: %s", len(lines), stderr)
+	}
+	for i, wanted := range [][]string{
+		{at("what.toml"), "[instrument] in a profile"},
+		{at("none.toml"), "no such file"},
+		{at("lost.toml"), "what it names is at fault", at("gone.toml"), "no such file"},
+		{at("capitals.toml"), "Instrument", "instrument"},
+	} {
+		for _, s := range wanted {
+			if !strings.HasPrefix(lines[i], "holdfast: "+wanted[0]) || !strings.Contains(lines[i], s) {
+				t.Errorf("line %d does not say %q: %s", i+1, s, lines[i])
+			}
+		}
+	}
+}
+
+// Every file of the demonstrations is in order.
+func TestCheckDemonstrations(t *testing.T) {
+	files, err := filepath.Glob(filepath.Join("..", "..", "testdata", "*", "*.toml"))
+	if err != nil || len(files) < 3 {
+		t.Fatalf("%d files: %v", len(files), err)
+	}
+	if status, stdout, stderr := play(append([]string{"check"}, files...)...); status != exitMet || stderr != "" {
+		t.Errorf("check: %d, %s", status, stderr)
+	} else if strings.Contains(stdout, "NaN") || strings.Contains(stdout, "Inf") {
+		t.Errorf("a figure that is none:\n%s", stdout)
+	}
+}
+
+func TestRank(t *testing.T) {
+	x, y, z := [3]float64{1}, [3]float64{0, 1}, [3]float64{0, 0, 1}
+	for _, c := range []struct {
+		list [][3]float64
+		want int
+	}{
+		{nil, 0}, {[][3]float64{z}, 1}, {[][3]float64{z, {0, 0, -0.5}}, 1}, {[][3]float64{x, {1, 1e-3}}, 2},
+		{[][3]float64{x, y, {1, 1}}, 2}, {[][3]float64{x, y, z, {1, 2, 3}}, 3}, {[][3]float64{{}, x}, 1},
+	} {
+		if got := rank(c.list); got != c.want {
+			t.Errorf("rank(%v) = %d, want %d", c.list, got, c.want)
+		}
+	}
+}
+
+func TestWrap(t *testing.T) {
+	if got, want := wrap("one two  three four", 8, 2), "one two\n  three\n  four"; got != want {
+		t.Errorf("%q, want %q", got, want)
+	}
+	if got := wrap("averylongword", 4, 2); got != "averylongword" {
+		t.Errorf("%q", got)
+	}
+}
