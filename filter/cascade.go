@@ -86,7 +86,7 @@ func Cascade(sections ...Line) (Line, error) {
 	l := product.line()
 	l.Delay = delay
 	if allReal {
-		l.mirror()
+		l.symmetrise()
 	}
 	if err := l.Check(); err != nil {
 		return Line{}, fmt.Errorf("filter: the sections cannot be joined into one line: %w", err)
@@ -336,8 +336,8 @@ func (s section) line() Line {
 	return l
 }
 
-// mirror makes a line that is real but for roundings exactly so.
-func (l *Line) mirror() {
+// symmetrise makes a line that is real but for roundings exactly so.
+func (l *Line) symmetrise() {
 	l.Direct = complex(real(l.Direct), 0)
 	for i, t := range l.Terms {
 		if imag(t.Pole) == 0 {

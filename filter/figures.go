@@ -42,37 +42,8 @@ func (l Line) StepFigures() StepFigures {
 	rise := func(t float64) float64 { return real(dev(t)) }
 	off := func(t float64) float64 { return cmplx.Abs(dev(t)) }
 
-	chains := l.chains()
-	var times []float64
-	total := 0.0 // bounds the deviation from the last time on
-	for t := 0.0; len(times) < figureSteps; {
-		times = append(times, t)
-		total = 0
-		fastest := 0.0
-		for i := range chains {
-			left := chains[i].tailBound(t) / cmplx.Abs(dc)
-			total += left
-			if left > alive {
-				fastest = max(fastest, cmplx.Abs(chains[i].pole))
-			}
-		}
-		if total <= 10*alive || fastest == 0 {
-			break
-		}
-		t += figureStep / fastest
-	}
-	// Extrema between two steps become nodes too, so that the passes below need
-	// look at nodes only.
-	nodes := times[:1:1]
-	for i := 1; i < len(times); i++ {
-		if i+1 < len(times) {
-			a, b, c := times[i-1], times[i], times[i+1]
-			x, y := peak(a, c, b, rise), peak(a, c, b, off)
-			nodes = append(nodes, min(x, y), max(x, y))
-		}
-		nodes = append(nodes, times[i])
-	}
-	slices.Sort(nodes)
+	times, total := l.search(cmplx.Abs(dc), math.Inf(1))
+	nodes := withPeaks(times, rise, off)
 
 	f := StepFigures{
 		Settling1pc:  lastOver(nodes, 0.01, off),
@@ -93,6 +64,80 @@ func (l Line) StepFigures() StepFigures {
 		f.TransitionTime = math.Inf(1)
 	}
 	return f
+}
+
+// search returns the times, from arrival on, at which to look at the step response,
+// up to the one at which every pole has died or the first at or past end. total
+// bounds the deviation from the steady value from the last of them on, as a share of scale.
+func (l Line) search(scale, end float64) (times []float64, total float64) {
+	chains := l.chains()
+	for t := 0.0; len(times) < figureSteps; {
+		times = append(times, t)
+		total = 0
+		fastest := 0.0
+		for i := range chains {
+			left := chains[i].tailBound(t) / scale
+			total += left
+			if left > alive {
+				fastest = max(fastest, cmplx.Abs(chains[i].pole))
+			}
+		}
+		if total <= 10*alive || fastest == 0 || t >= end {
+			break
+		}
+		t += figureStep / fastest
+	}
+	return times, total
+}
+
+// withPeaks returns the times with the extrema of the functions between two of them,
+// so that the passes that follow need look at nodes only.
+func withPeaks(times []float64, functions ...func(float64) float64) []float64 {
+	nodes := times[:1:1]
+	for i := 1; i < len(times); i++ {
+		if i+1 < len(times) {
+			for _, f := range functions {
+				nodes = append(nodes, peak(times[i-1], times[i+1], times[i], f))
+			}
+		}
+		nodes = append(nodes, times[i])
+	}
+	slices.Sort(nodes)
+	return nodes
+}
+
+// Droop returns by how much the step response has fallen t ns after arrival from its
+// largest size until then, as a share of that: for [ACCoupling] 1 - e^{-t/tau}, 1e-4
+// after 100 ns of a bias tee of 1 ms. It is 0 while the response still rises, 1 where it
+// crosses zero, and counts the fall after an overshoot too. It is 0 before arrival
+// and for a line that passes nothing, and NaN beyond the reach of the search, which ends
+// after 200 000 steps (see [Line.StepFigures]).
+func (l Line) Droop(t float64) float64 {
+	if !(t > 0) {
+		return 0
+	}
+	size := func(t float64) float64 { return cmplx.Abs(l.Step(t)) }
+	scale := cmplx.Abs(l.Direct)
+	for _, c := range l.chains() {
+		scale += c.tailBound(0)
+	}
+	if scale == 0 {
+		return 0
+	}
+	times, total := l.search(scale, t)
+	if last := times[len(times)-1]; last < t && total > 10*alive {
+		return math.NaN()
+	}
+	largest := size(t)
+	for _, at := range withPeaks(times, size) {
+		if at < t {
+			largest = max(largest, size(at))
+		}
+	}
+	if largest == 0 {
+		return 0
+	}
+	return 1 - size(t)/largest
 }
 
 // firstOver returns the first time at which f reaches level; +Inf if it never does.

@@ -196,6 +196,9 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	if r.verdict != "" {
 		warn = append(warn, r.verdict)
 	}
+	if n := b.Basis.Coefficients; n > 0 && n != r.perQuad {
+		warn = append(warn, fmt.Sprintf("basis.coefficients = %d has no effect: without a band below half the sample rate every free sample is a coefficient.", n))
+	}
 	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
 		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
 	}

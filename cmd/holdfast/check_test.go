@@ -123,6 +123,11 @@ func TestCheckBrief(t *testing.T) {
 	// hold = "nothing", a carrier that is not the transition's, |0> below
 	change(t, filepath.Join(dir, "rack-b.toml"), `kind = "quadrature"`, "kind = \"quadrature\"\ncarrier = \"5 GHz\"")
 	change(t, filepath.Join(dir, "skerry.toml"), `zero = "upper"`, `zero = "lower"`)
+	change(t, filepath.Join(dir, "rack-b.toml"), "band =", "# band =")
+	write(t, path, strings.Replace(read(t, path), "[target]", "basis = { coefficients = 5 }\n[target]", 1))
+	_, stdout, _ = play("check", path)
+	mustHave(t, "check", stdout, "108 per quadrature, family samples", "basis.coefficients = 5 has no effect")
+	change(t, filepath.Join(dir, "rack-b.toml"), "# band =", "band =")
 	_, stdout, _ = play("check", filepath.Join(dir, "quick.toml"))
 	mustHave(t, "check", stdout, `nothing (hold = "nothing")`, "3: 3 of the gate; against them 12 coefficients", "Q about -Y", "turns about -Z with the carrier (5 GHz)", "5.1 GHz, lies 100 MHz from the carrier, 5 GHz")
 }

@@ -82,7 +82,7 @@ func designPulse(c *call) (int, error) {
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
-	fmt.Fprintf(c.stdout, "\nsearch: %s\n", pulse.Summary())
+	fmt.Fprintf(c.stdout, "\nsearch:    %s\n", pulse.Summary())
 	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
 	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
 	return pulseStatus(pulse.Status, verdict), nil
@@ -142,16 +142,18 @@ func (p *progress) report(r design.Progress) {
 	case "search":
 		line = fmt.Sprintf("search: start %d of up to %d, %d at a zero, best miss %.2g", r.Done, r.Of, r.Successes, r.Best)
 		if r.Done == 0 {
-			line = fmt.Sprintf("search: up to %d starts, at most about %s", r.Of, r.Expected.Round(time.Second/10))
+			line = fmt.Sprintf("search: up to %d starts, at most about %s", r.Of, seconds(r.Expected))
 		}
 	default:
 		line = fmt.Sprintf("%s: %d of %d", r.Stage, r.Done, r.Of)
 	}
-	line += fmt.Sprintf(", %s", time.Since(p.begun).Round(time.Second/10))
+	line += ", " + seconds(time.Since(p.begun))
 	pad := max(0, p.wide-len(line))
 	p.wide = len(line)
 	fmt.Fprintf(p.w, "\r%s%s", line, strings.Repeat(" ", pad))
 }
+
+func seconds(d time.Duration) string { return fmt.Sprintf("%.1f s", d.Seconds()) }
 
 func (p *progress) end() {
 	if p.on && p.wide > 0 {

@@ -24,16 +24,6 @@ func change(t testing.TB, path, old, new string) int {
 	return 1 + strings.Count(before, "\n")
 }
 
-// line gives the number of the line of a file on which text stands first.
-func line(t testing.TB, path, text string) int {
-	t.Helper()
-	before, _, found := strings.Cut(read(t, path), text)
-	if !found {
-		t.Fatalf("%s has no %q", path, text)
-	}
-	return 1 + strings.Count(before, "\n")
-}
-
 // replaceFile puts something else in the place of a file.
 func replaceFile(t testing.TB, path string, data []byte) {
 	t.Helper()

@@ -31,8 +31,9 @@ func (e *engine) both(ctx context.Context) (settled, window Figures, tail float6
 	return settled, window, angle(e.post, e.dim), err
 }
 
-// Pair plays the pulse twice without a gap. The error errNoTurn among others says why only one phase, or none, could be judged;
-// Judge turns it into a warning.
+// Pair plays the pulse twice without a gap, always settled at the end. Where no rotation of the frame turns the drive's phase (a
+// static part along X, say) only one phase is judged, and Judge says so in a warning; where free Z angles are no such rotation there is
+// an error.
 func (m *Model) Pair(ctx context.Context) (Pair, error) {
 	e, err := newEngine(ctx, m)
 	if err != nil {
@@ -194,7 +195,7 @@ func (v *Verdict) require(r Require) {
 			v.Warnings = append(v.Warnings, fmt.Sprintf("A margin of %.6g %s is required against %s; margins are searched up to %g %s.", q.Allowed, q.Unit, m.Error, searchEnd, q.Unit))
 		}
 		// A margin is found by a root search good to 1e-9.
-		q.Met = known && q.Found >= q.Allowed*(1-1e-8)
+		q.Met = q.Found >= q.Allowed*(1-1e-8)
 		v.Requirements = append(v.Requirements, q)
 	}
 }

@@ -15,8 +15,8 @@ import (
 // stepTolerance; a step that would need more than goodOrder is shortened. The bound holds for every error up to the plan's
 // reach, so the steps do not depend on which errors are simulated together.
 const (
-	seriesLength  = 48
-	maxOrder      = 40
+	seriesLength  = 42
+	maxOrder      = 36
 	goodOrder     = 24         // flat within 3 % from 20 to 32 on a low-pass of a fifth of the sample rate, a tenth slower at 16
 	stepTolerance = 4e-16      // of the norm of U, per step: about 1e-13 over a gate of a hundred samples
 	maxNumbers    = 60_000_000 // coefficients of one plan, about half a gigabyte

@@ -114,7 +114,8 @@ func rotationZ(a float64) []complex128 {
 // Populations with memory: repeats as one long pulse, amplitude and detuning by the closed form of a square pulse.
 func TestBringUp(t *testing.T) {
 	ctx := context.Background()
-	m := rackB(cosine(12, 16))
+	m := rackB(cosine(16, 16))
+	m.Channels[0].GuardTrail = 0
 	for _, ends := range []string{"settled", "window"} {
 		for _, early := range []float64{0, 2, -1.5} {
 			m.Ends, m.WindowStart = ends, 3.2+early

@@ -46,7 +46,11 @@ func (c *chain) series(x complex128, s float64, dst, cur []complex128) {
 	copy(cur, c.z)
 	ps := c.p * complex(s, 0)
 	for n := range dst {
-		dst[n] += c.r * cur[m-1]
+		v := c.r * cur[m-1]
+		dst[n] += v
+		if m == 1 && n > 0 && math.Abs(real(v))+math.Abs(imag(v)) < 1e-30 && cmplx.Abs(ps) < 20 {
+			break // what follows is smaller still, and cannot grow back
+		}
 		f := complex(1/float64(n+1), 0)
 		for k := m - 1; k > 0; k-- {
 			cur[k] = f * (ps*cur[k] + complex(s, 0)*cur[k-1])

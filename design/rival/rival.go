@@ -44,8 +44,6 @@ func Make(p *hardware.Profile, channel int, angle, phase float64, judge Judge) (
 	}
 	area := angle / (ch.FullScale * p.SamplePeriod * gain)
 	phase -= cmplx.Phase(ch.Line.DC())
-	// A line overshoots or droops by a little; a step in one quadrature is at most
-	// the step of the envelope, whatever the phase.
 	var list []Rival
 	for _, f := range []struct {
 		name string
@@ -71,7 +69,7 @@ func Make(p *hardware.Profile, channel int, angle, phase float64, judge Judge) (
 			return nil, err
 		}
 		// the calibrated pulse may need a little more than the limits leave
-		if p.SamplePeriod > 0 && overdriven(best, amplitude, ch.SlewLimit) {
+		if overdriven(best, amplitude, ch.SlewLimit) {
 			continue
 		}
 		list = append(list, Rival{Name: f.name, Samples: best})

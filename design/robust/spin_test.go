@@ -32,6 +32,9 @@ var helds = []struct {
 	{"amplitude before detuning", []Class{amplitude, detuning}},
 	{"three vectors", []Class{static(1, 0, 0, 1), static(0, 0.1, 0.1, 1), static(-1, 2, 0, 1)}},
 	{"five vectors", []Class{static(1, 0, 0, 1), static(0, 0.1, 0.1, 1), static(-1, 2, 0, 1), static(3, 1, 1, 1), static(0, 0, -2, 1)}},
+	{"more vectors than dynamics toggles", []Class{static(1, 0, 0, 1), static(0, 0.1, 0.1, 1), static(-1, 2, 0, 1), static(3, 1, 1, 1), static(0, 0, -2, 1),
+		static(1, 2, 0, 1), static(0, 1, 0.1, 1), static(-1, 2, 5, 1), amplitude, static(3, -1, 1, 1)}},
+	{"one side", []Class{{Kind: Any, Weight: 1, Size: 0.01, OneSided: true}}},
 	{"weights", []Class{static(1, 2, 3, 0.25), {Kind: Amplitude, Weight: 7, Size: 0.05}, {Kind: Any, Weight: 1e-3, Size: 0.01}, static(0, 1, 0, 40)}},
 	{"two amplitudes", []Class{amplitude, {Kind: Amplitude, Weight: 2, Size: 0.1}}},
 	{"sizes of zero", []Class{{Kind: Any, Weight: 1}, {Kind: Amplitude, Weight: 1}, static(1, 1, 0, 1)}},
@@ -529,6 +532,49 @@ func TestWithoutDrive(t *testing.T) {
 	}
 	if !(math.Abs(f.Infidelity-2./3) <= 1e-14) { // the identity against X(π): 1 - (2 + 0)/6
 		t.Errorf("infidelity %v, want 2/3", f.Infidelity)
+	}
+}
+
+func TestSignOfTheTarget(t *testing.T) {
+	// A rotation has two quaternions: the residuals must not tell them apart.
+	rng := rand.New(rand.NewPCG(6, 5))
+	for range 20 {
+		s := stepwise(rng, spinOn(axes()[1], nil))
+		a := NewGate(s.spin, identity(s.spin.Grid), 0)
+		for i := range s.spin.Target {
+			s.spin.Target[i] *= -1
+		}
+		b := NewGate(s.spin, identity(s.spin.Grid), 0)
+		ra, rb := make([]float64, 3), make([]float64, 3)
+		a.Residuals(s.u, ra)
+		b.Residuals(s.u, rb)
+		if fmt.Sprint(ra) != fmt.Sprint(rb) {
+			t.Errorf("residuals %v, %v for the same target", ra, rb)
+		}
+	}
+}
+
+func TestEnsembles(t *testing.T) {
+	oneSided := anyStatic
+	oneSided.OneSided = true
+	for _, c := range []struct {
+		class Class
+		want  int
+	}{{detuning, 2}, {amplitude, 2}, {anyStatic, 14}, {oneSided, 7}, {Class{Kind: Any}, 0}} {
+		list := c.class.ensemble()
+		if len(list) != c.want {
+			t.Errorf("%+v: %d finite errors, want %d", c.class, len(list), c.want)
+		}
+		for i, e := range list {
+			if size := norm(e.offset) + math.Abs(e.scale-1); !(math.Abs(size-c.class.Size) <= 1e-15) {
+				t.Errorf("%+v: error %d has size %v", c.class, i, size)
+			}
+			for _, o := range list[:i] {
+				if e == o || c.class.OneSided && e.offset == scaled(o.offset, -1) {
+					t.Errorf("%+v: %v beside %v", c.class, e, o)
+				}
+			}
+		}
 	}
 }
 
