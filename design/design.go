@@ -60,7 +60,7 @@ type Pulse struct {
 // count iterations, never seconds.
 const (
 	candidates   = 12
-	finalists    = 3
+	finalists    = 2
 	refineWeight = 1 // of the finite errors beside the first order
 	refineKappa  = 1
 	refineStalls = 12

@@ -94,6 +94,9 @@ func (l Line) UnitGain() (Line, error) {
 	if dc == 0 {
 		return Line{}, errors.New("filter: the line has no steady gain to divide by; allowed: lines that pass the carrier")
 	}
+	if l.Real() {
+		dc = complex(real(dc), 0)
+	}
 	u := Line{Delay: l.Delay, Direct: l.Direct / dc, Terms: append([]Term(nil), l.Terms...)}
 	for i := range u.Terms {
 		u.Terms[i].Residue /= dc

@@ -4,9 +4,16 @@
 //
 // It stands between the samples (package shape makes them, package hardware
 // limits them) and the propagators, which ask a [Line] for the control field at
-// any time. It imports nothing else of this module. Start with a family
-// ([SinglePole], [Bessel], [Tails], [Delay]), join sections with [Cascade], and
-// use [Line.Held] and [Line.HeldTranspose].
+// any time. It imports nothing else of this module. Start with a family, join
+// sections with [Cascade], and use [Line.Held] and [Line.HeldTranspose]. What an
+// error of a line's parameter does to the field is again the field of a line.
+//
+//	low-pass            SinglePole, Bessel, Butterworth, CriticallyDamped, GaussianLike
+//	no steady gain      ACCoupling, HighPass
+//	settling, delay     Tails, Delay, Allpass, FractionalDelay
+//	complex baseband    Resonator, Resonance, Mirror, Line.UnitGain
+//	derivatives         Line.CornerSlope, Line.DelaySlope, TailSlopes, ResonatorSlopes,
+//	                    ResonanceSlopes, CascadeSlope, Sum
 //
 // # Units
 //

@@ -49,6 +49,14 @@ func rackB(t testing.TB) Line {
 	return cascade(t, must(t, d, err), bessel(t, 2, 0.2), tails(t, Tail{-0.015, 30}))
 }
 
+// line unwraps what a constructor returned: line(t)(Butterworth(4, 0.2)).
+func line(t testing.TB) func(Line, error) Line {
+	return func(l Line, err error) Line {
+		t.Helper()
+		return must(t, l, err)
+	}
+}
+
 // zoo is the set of lines that every identity is tested on.
 func zoo(t testing.TB) map[string]Line {
 	t.Helper()
@@ -67,6 +75,15 @@ func zoo(t testing.TB) map[string]Line {
 		"bessels near":      cascade(t, bessel(t, 5, 0.2), bessel(t, 3, 0.31), bessel(t, 5, 0.201)),
 		"bessel twice":      cascade(t, bessel(t, 4, 0.2), bessel(t, 4, 0.2), tails(t, Tail{0.02, 20})),
 		"nearly equal":      cascade(t, pole(t, 1), pole(t, 1.0001), pole(t, 1.01), tails(t, Tail{0.3, 1.001})),
+		"butterworth 8":     line(t)(Butterworth(8, 0.2)),
+		"damped 8":          line(t)(CriticallyDamped(8, 0.2)),
+		"gaussian 7":        line(t)(GaussianLike(7, 0.2)),
+		"allpass":           line(t)(FractionalDelay(0.7)),
+		"AC-coupled":        cascade(t, bessel(t, 2, 0.2), line(t)(ACCoupling(40))),
+		"corner slope":      line(t)(line(t)(Butterworth(3, 0.2)).CornerSlope()),
+		"delay slope":       line(t)(cascade(t, pole(t, 0.9), tails(t, Tail{-0.1, 30})).DelaySlope()),
+		"resonator":         line(t)(Resonator(-0.05, 0.2)),
+		"resonance":         cascade(t, bessel(t, 3, 0.3), line(t)(Resonance(0.04, 0.01, 0.3-0.1i))),
 		"asymmetric": {Delay: 2, Direct: 0.2 - 0.1i, Terms: []Term{
 			{-0.4 + 2i, 1, 0.1 + 0.3i}, {-0.4 + 2i, 3, -0.2 + 0.05i}, {-1.5 - 0.2i, 2, 0.7i}, {-0.01, 1, 0.002}}},
 		"high quality": {Terms: []Term{{-1e-3 + 2i, 1, 0.01}, {-1e-3 - 2i, 1, 0.01}, {-0.02 + 1i, 2, 0.001i}}},

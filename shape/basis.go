@@ -4,8 +4,11 @@ import "fmt"
 
 // Families of basis, as they stand in [Basis].Family.
 const (
-	FamilySlepian = "slepian"
-	FamilySamples = "samples"
+	FamilySlepian        = "slepian"
+	FamilyFourier        = "fourier"
+	FamilyTaperedFourier = "tapered-fourier"
+	FamilyBSpline        = "b-spline"
+	FamilySamples        = "samples"
 )
 
 // Limits of this package. A basis is stored whole, so that what bounds its
@@ -18,15 +21,18 @@ const (
 // A Basis maps coefficients to samples, x = B c.
 //
 // Its columns are orthonormal over the free samples and zero on the guards.
-// [Slepian] and [Samples] make it; it is not changed afterwards and may be
-// used by several goroutines at once.
+// [Slepian], [Fourier], [TaperedFourier], [BSpline] and [Samples] make it, and
+// [ZeroMean] takes the mean out of it; it is not changed afterwards and may be used by
+// several goroutines at once.
 type Basis struct {
 	Samples int       // rows: samples of the span, guards included
 	Count   int       // columns: coefficients
 	Columns []float64 // column-major: Columns[j*Samples+k] is sample k of column j
-	Family  string    // FamilySlepian or FamilySamples
+	Family  string    // one of the constants Family...
 	Lead    int       // guard samples before the free ones
 	Trail   int       // guard samples after them
+
+	ZeroMean bool // made by [ZeroMean]: every column sums to zero
 
 	unit bool // column j is 1 at sample Lead+j and 0 elsewhere
 }

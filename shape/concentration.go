@@ -37,10 +37,23 @@ const (
 
 // energy adds to dst[j] the energy of column j in lo <= |f| <= hi.
 func (b *Basis) energy(lo, hi float64, dst []float64) {
+	b.spectrum(lo, hi, func(weight float64, re, im []float64) {
+		for j := range dst {
+			dst[j] += weight * (re[j]*re[j] + im[j]*im[j])
+		}
+	})
+}
+
+// spectrum calls visit for the nodes of a quadrature over lo <= |f| <= hi, with
+// their weights and the transforms of all columns at positive f, whose phase
+// is that at the centre of the free samples; the weights count the negative f too.
+// What visit is given is valid during the call only.
+func (b *Basis) spectrum(lo, hi float64, visit func(weight float64, re, im []float64)) {
 	n := b.Samples - b.Lead - b.Trail
 	panels := int(math.Ceil((hi - lo) * float64(n) / panelCycles))
 	nodes, weights := legendre()
 	cos, sin := make([]float64, n), make([]float64, n)
+	re, im := make([]float64, b.Count), make([]float64, b.Count)
 	centre := float64(n-1) / 2
 	for panel := range panels {
 		width := (hi - lo) / float64(panels)
@@ -55,14 +68,15 @@ func (b *Basis) energy(lo, hi float64, dst []float64) {
 				lost := math.FMA(f, t, -cycles)
 				sin[k], cos[k] = math.Sincos(2 * math.Pi * (cycles - math.RoundToEven(cycles) + lost))
 			}
-			for j := range dst {
-				var re, im float64
+			for j := range re {
+				var x, y float64
 				for k, v := range b.free(j, n) {
-					re += v * cos[k]
-					im += v * sin[k]
+					x += v * cos[k]
+					y += v * sin[k]
 				}
-				dst[j] += weights[i] * width * (re*re + im*im) // width/2, twice for the negative frequencies
+				re[j], im[j] = x, y
 			}
+			visit(weights[i]*width, re, im) // width/2, twice for the negative frequencies
 		}
 	}
 }

@@ -69,11 +69,8 @@ func Slepian(samples, lead, trail int, bandTimesPeriod float64, count int) (*Bas
 	if err := checkBand(bandTimesPeriod); err != nil {
 		return nil, err
 	}
-	if count < 0 || count > free {
-		return nil, fmt.Errorf("shape: %d coefficients over %d free samples; allowed: 1 to %d, or 0 for the default", count, free, free)
-	}
-	if count == 0 {
-		count = DefaultCount(free, bandTimesPeriod)
+	if count, err = columnCount(count, free, DefaultCount(free, bandTimesPeriod)); err != nil {
+		return nil, err
 	}
 	if bandTimesPeriod == 0.5 && count == free {
 		return unitBasis(samples, lead, trail, count, FamilySlepian)
@@ -114,4 +111,15 @@ func checkBand(w float64) error {
 		return fmt.Errorf("shape: a band of %v cycles per sample; allowed: over 0, up to 0.5", w)
 	}
 	return nil
+}
+
+// columnCount is the count that the caller asked for, or the default for 0.
+func columnCount(count, free, usual int) (int, error) {
+	switch {
+	case count < 0 || count > free:
+		return 0, fmt.Errorf("shape: %d coefficients over %d free samples; allowed: 1 to %d, or 0 for the default", count, free, free)
+	case count == 0:
+		return usual, nil
+	}
+	return count, nil
 }

@@ -460,6 +460,7 @@ type crossing struct {
 	lo, hi    float64
 	flo, fhi  float64 // log(infidelity/threshold)
 	wlo, whi  float64 // the same, as regula falsi weighs them
+	side      int     // which end moved last
 	tries     int
 	ask       float64 // the size that is to be tried next
 	done      bool
@@ -494,10 +495,16 @@ func (c *crossing) learn(f float64) {
 		c.wlo = c.flo
 	case l <= 0:
 		c.lo, c.flo, c.wlo = x, l, l
-		c.whi *= 0.5
+		if c.side < 0 {
+			c.whi *= 0.5
+		}
+		c.side = -1
 	default:
 		c.hi, c.fhi, c.whi = x, l, l
-		c.wlo *= 0.5
+		if c.side > 0 {
+			c.wlo *= 0.5
+		}
+		c.side = 1
 	}
 	if c.lo == 0 { // broken at the first size already: look under it
 		if c.hi < 1e-9 {
@@ -507,7 +514,7 @@ func (c *crossing) learn(f float64) {
 		c.ask = c.hi / 8
 		return
 	}
-	// Regula falsi on the logarithms of both, where power laws are straight, with halved weights (Illinois), and a
+	// Regula falsi on the logarithms of both, where power laws are straight, the weight of an end that stays twice halved (Illinois), and a
 	// bisection now and then for the rest.
 	if c.tries++; c.hi-c.lo <= 1e-9*c.hi || math.Abs(l) < 1e-9 || c.tries > 80 {
 		c.finish(x)
@@ -515,7 +522,7 @@ func (c *crossing) learn(f float64) {
 	}
 	a, b := math.Log(c.lo), math.Log(c.hi)
 	y := (a + b) / 2
-	if c.tries%4 != 0 {
+	if c.tries%6 != 0 {
 		y = (a*c.whi - b*c.wlo) / (c.whi - c.wlo)
 	}
 	c.ask = math.Exp(y)
@@ -569,7 +576,7 @@ func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold,
 	return nil
 }
 
-// curveValues chooses where the curve of an error is drawn: 61 values both ways, or 31 sizes for a class without a sign,
+// curveValues chooses where the curve of an error is drawn: 61 values both ways, or 21 sizes for a class without a sign,
 // to the round number that lies half as far again as the margin.
 func (e *engine) curveValues(r *Error, like []Error) []float64 {
 	for _, o := range like {
@@ -592,11 +599,13 @@ func (e *engine) curveValues(r *Error, like []Error) []float64 {
 			}
 		}
 	}
+	lowest, highest := -30, 30
+	if r.Kind == "any" { // each of them takes as many gates as there are directions
+		lowest, highest = 0, 20
+	}
 	var values []float64
-	for i := -30; i <= 30; i++ {
-		if i >= 0 || r.Kind != "any" {
-			values = append(values, end*float64(i)/30)
-		}
+	for i := lowest; i <= highest; i++ {
+		values = append(values, end*float64(i)/float64(highest))
 	}
 	return values
 }

@@ -177,7 +177,7 @@ func TestMargins(t *testing.T) {
 				t.Errorf("a negative size of any error")
 			}
 		}
-		if len(e.Curve) < 31 {
+		if len(e.Curve) < 21 {
 			t.Errorf("%s: %d points", e.Name, len(e.Curve))
 		}
 	}

@@ -25,6 +25,7 @@ type engine struct {
 	start      float64 // of the window, ns
 	span       float64 // ns
 	controls   []control
+	axes       []axis // the controls' operators when there are two levels
 	static     []complex128
 	staticNorm float64
 	elements   sparse // of static
@@ -54,6 +55,9 @@ func newEngine(ctx context.Context, m *Model) (*engine, error) {
 			op = append([]complex128(nil), op...)
 			dropTrace(op, n)
 			e.controls = append(e.controls, control{c, q, op, operatorNorm(op, n), sparsely(op, n)})
+			if n == 2 {
+				e.axes = append(e.axes, axisOf(op))
+			}
 		}
 	}
 	for a := range n {

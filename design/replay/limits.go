@@ -71,7 +71,7 @@ func (m *Model) ringing(ctx context.Context, c int) (float64, error) {
 	ch := &one.Channels[0]
 	ch.FullScale, ch.Delay = 1, 0
 	one.WindowStart = 0
-	e := &engine{m: &one, dim: 2, turned: []bool{true}}
+	e := &engine{m: &one, turned: []bool{true}}
 	for q := range ch.Operators {
 		e.controls = append(e.controls, control{quadrature: q, norm: 1})
 	}

@@ -77,12 +77,7 @@ func (p *plan) append(s float64, order int, ctl []float64) error {
 func (w *walker) order(s float64, r reach) int {
 	h, m := w.norms, w.maj
 	clear(h)
-	for k := range w.e.controls {
-		f := w.e.controls[k].norm * (1 + r.amplitude) * s
-		for n, v := range w.ctl[k*seriesLength : (k+1)*seriesLength] {
-			h[n] += f * math.Abs(v)
-		}
-	}
+	w.bound(h, (1+r.amplitude)*s)
 	h[0] += (w.e.staticNorm + r.static) * s
 	// The last coefficients may all be too small to matter: leave them out of the sums.
 	last := seriesLength - 1
@@ -114,4 +109,27 @@ func (w *walker) order(s float64, r reach) int {
 		}
 	}
 	return 1
+}
+
+// bound adds to h, coefficient by coefficient, f times the sum over channels of a norm of what the channel adds to H: for two
+// levels the norm itself, half the length of the field, and otherwise the sum of both quadratures. The channels are not added up
+// before, for an amplitude error may be of one of two that cancel.
+func (w *walker) bound(h []float64, f float64) {
+	for k := 0; k < len(w.e.controls); k++ {
+		one := &w.e.controls[k]
+		u := w.ctl[k*seriesLength : (k+1)*seriesLength]
+		if w.e.dim == 2 && k+1 < len(w.e.controls) && w.e.controls[k+1].channel == one.channel {
+			a, b := w.e.axes[k], w.e.axes[k+1]
+			k++
+			v := w.ctl[k*seriesLength : (k+1)*seriesLength]
+			for n := range h {
+				cr, ci, z := u[n]*a.cr+v[n]*b.cr, u[n]*a.ci+v[n]*b.ci, u[n]*a.z+v[n]*b.z
+				h[n] += f * math.Sqrt(cr*cr+ci*ci+z*z)
+			}
+			continue
+		}
+		for n := range h {
+			h[n] += f * one.norm * math.Abs(u[n])
+		}
+	}
 }

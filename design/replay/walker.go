@@ -49,7 +49,7 @@ func (c *chain) series(x complex128, s float64, dst, cur []complex128) {
 		v := c.r * cur[m-1]
 		dst[n] += v
 		if m == 1 && n > 0 && math.Abs(real(v))+math.Abs(imag(v)) < 1e-30 && cmplx.Abs(ps) < 20 {
-			break // what follows is smaller still, and cannot grow back
+			break // what follows may grow by e^20, 5e8, and still adds nothing
 		}
 		f := complex(1/float64(n+1), 0)
 		for k := m - 1; k > 0; k-- {
