@@ -60,7 +60,7 @@ type Pulse struct {
 // count iterations, never seconds.
 const (
 	candidates   = 12
-	finalists    = 2
+	finalists    = 4
 	refineWeight = 1 // of the finite errors beside the first order
 	refineKappa  = 1
 	refineStalls = 12
@@ -255,18 +255,7 @@ func (q *problem) expected() time.Duration {
 // solve runs one start on the coarse grid.
 func (q *problem) solve(ctx context.Context, number int) solve.Result {
 	st := q.start(number)
-	p := q.residuals(q.gate(false))
-	spent := 0
-	if st.loose {
-		r := solve.GaussNewton(ctx, p, q.loose, st.c, solve.Options{Kappa: st.kappa})
-		spent = r.Evaluations
-		st.c = r.C
-		q.silence(st.c)
-		q.shrink(st.c, 0.9)
-	}
-	r := solve.GaussNewton(ctx, p, q.set, st.c, solve.Options{Kappa: st.kappa})
-	r.Evaluations += spent
-	return r
+	return solve.GaussNewton(ctx, q.residuals(q.gate(false)), q.set, st.c, solve.Options{Kappa: st.kappa})
 }
 
 // A candidate is a success on its way to the finish.

@@ -1,6 +1,7 @@
 package design
 
 import (
+	"fmt"
 	"math"
 	"math/rand/v2"
 
@@ -25,7 +26,6 @@ type problem struct {
 	basis *shape.Basis
 	limit *hardware.Set
 	set   *solve.Set
-	loose *solve.Set // ring-out limit times looseFactor
 	quiet *mat.Dense // orthonormal columns: the directions that ring out; nil without such a limit
 
 	coarse, fine   axis
@@ -37,7 +37,9 @@ type problem struct {
 	columns        [][]complex128
 }
 
-const looseFactor = 6
+// mostEntries bounds the response matrix of a problem, 64 MB, of which every
+// worker holds a copy: some 2000 samples at the demonstration's band.
+const mostEntries = 8 << 20
 
 // newProblem puts the rooms together for n samples.
 func newProblem(p *hardware.Profile, channel, n int, family string, count int, s robust.Spin, target dynamics.Vec, settled bool) (*problem, error) {
@@ -71,6 +73,10 @@ func newProblem(p *hardware.Profile, channel, n int, family string, count int, s
 	}
 	q.coarse = newAxis(ch.Line, n, h, stepShare, settled, full, static, q.after())
 	q.fine = newAxis(ch.Line, n, h, fineShare, settled, full, static, q.after())
+	if entries := 2 * len(q.fine.Steps) * q.basis.Count; entries > mostEntries {
+		return nil, fmt.Errorf("span: %d samples with %d coefficients per quadrature and %d steps are more than a search can hold; allowed: coefficients times steps up to %d: take a shorter span or a narrower band",
+			n, q.basis.Count, len(q.fine.Steps), mostEntries/2)
+	}
 	q.coarseR = q.coarse.response(ch.Line, q.columns, h)
 	q.fineR = q.fine.response(ch.Line, q.columns, h)
 	q.constrain()
@@ -101,8 +107,8 @@ func (q *problem) constrain() {
 		}
 		q.set.AddDisc(i, s, q.limit.Disc)
 	}
-	var ringing []int
-	var stack []float64
+	var ringing []float64 // the ring-out rows, one after the other
+	rows := 0
 	for _, row := range q.limit.Rows {
 		// w·x with x = B (c_I + i c_Q): real and imaginary part
 		re, im := make([]float64, 2*n), make([]float64, 2*n)
@@ -115,22 +121,20 @@ func (q *problem) constrain() {
 			im[j], im[n+j] = imag(w), real(w)
 		}
 		for _, a := range [][]float64{re, im} {
-			at := q.set.Rows()
 			q.set.AddRow(a, row.Bound)
-			if row.Limit != hardware.Slew && q.set.Rows() > at {
-				ringing = append(ringing, at)
+			if row.Limit != hardware.Slew {
+				rows++
 				for _, v := range a {
-					stack = append(stack, v/row.Bound)
+					ringing = append(ringing, v/row.Bound)
 				}
 			}
 		}
 	}
-	if len(ringing) == 0 {
+	if rows == 0 {
 		return
 	}
-	q.loose = q.set.Loosened(ringing, looseFactor)
 	var svd mat.SVD
-	if !svd.Factorize(mat.NewDense(len(ringing), 2*n, stack), mat.SVDThin) {
+	if !svd.Factorize(mat.NewDense(rows, 2*n, ringing), mat.SVDThin) {
 		return
 	}
 	values := svd.Values(nil)
@@ -174,7 +178,6 @@ func (q *problem) shrink(c []float64, g float64) {
 type start struct {
 	c     []float64
 	kappa float64
-	loose bool
 }
 
 // ways lists how the starts are drawn, in turn. Most of what is found at the
@@ -184,13 +187,12 @@ var ways = [...]struct {
 	area  bool // the area of the target's angle plus turns
 	turns float64
 	reach float64 // of the boundary; 0: drawn from 0.3 to 0.9
-	loose bool    // by way of a looser ring-out limit
 }{
 	{},
 	{area: true, turns: 1},
 	{area: true, turns: 2},
 	{area: true},
-	{loose: true},
+	{area: true},
 	{area: true, turns: 1},
 	{area: true, turns: -1},
 	{reach: 0.97},
@@ -211,7 +213,6 @@ func (q *problem) start(number int) start {
 	if way.reach > 0 {
 		reach = way.reach
 	}
-	s.loose = way.loose && q.loose != nil
 	q.silence(s.c)
 	g := q.set.Gauge(s.c)
 	for i := range s.c {

@@ -10,17 +10,21 @@ import (
 //
 // Two simple poles a distance d apart, in units of their decay rate, have
 // residues of size 1/d that nearly cancel, which costs the digits of 1/d; three
-// cost those of 1/d^2. Poles closer than mergeGap are therefore expanded about a
+// cost those of 1/d^2. Poles closer than a gap are therefore expanded about a
 // common centre c instead,
 //
 //	1/(s-p)^m = sum_k C(m+k-1, k) (p-c)^k / (s-c)^{m+k},
 //
 // a series in (p-c)/rate on and right of the imaginary axis, cut where its terms
-// fall under cutoff. Just beyond the gap a pair costs one digit and a half; just
-// within it the series needs about ten powers.
+// fall under cutoff. Just beyond the first gap a pair costs one digit and a half; just
+// within it the series needs about ten powers. Poles with powers cost more digits
+// beyond the gap: where too many are lost the wider gaps, whose series need some
+// twenty powers, are tried in turn.
 const (
-	mergeGap = 0.03
-	cutoff   = 1e-18
+	mergeGap  = 0.03
+	widerGap  = 0.1
+	widestGap = 0.25
+	cutoff    = 1e-18
 	// cascadeTolerance is the largest mismatch between the product of the
 	// sections' responses and the response of the result, as a share of the
 	// largest response, and the largest size of rounding errors that the terms
@@ -69,6 +73,22 @@ func Cascade(sections ...Line) (Line, error) {
 		l.Terms = append([]Term(nil), l.Terms...)
 		return l, nil
 	}
+	var first error
+	for _, gap := range [...]float64{mergeGap, widerGap, widestGap} {
+		l, err := join(sections, gap, allReal)
+		if err == nil {
+			l.Delay = delay
+			return l, nil
+		}
+		if first == nil {
+			first = err
+		}
+	}
+	return Line{}, first
+}
+
+// join is Cascade without the delays, with poles closer than gap merged.
+func join(sections []Line, gap float64, allReal bool) (Line, error) {
 	parts := make([]section, len(sections))
 	total := 0
 	for i, l := range sections {
@@ -78,13 +98,12 @@ func Cascade(sections ...Line) (Line, error) {
 	if total > MaxTerms/2 {
 		return Line{}, fmt.Errorf("filter: %d poles in a cascade; allowed: at most %d", total, MaxTerms/2)
 	}
-	merge(parts, allReal)
+	merge(parts, gap, allReal)
 	product := section{direct: 1}
 	for _, p := range parts {
 		product = multiply(product, p)
 	}
 	l := product.line()
-	l.Delay = delay
 	if allReal {
 		l.symmetrise()
 	}
@@ -108,10 +127,9 @@ func expand(l Line) section {
 	return s
 }
 
-// merge replaces poles of different sections that lie within mergeGap of each
-// other, directly or through others, by their common centre. A group whose series would
+// merge replaces poles of different sections that lie within gap of each other, directly or through others, by their common centre. A group whose series would
 // not converge within MaxPower powers is left as it is.
-func merge(parts []section, allReal bool) {
+func merge(parts []section, gap float64, allReal bool) {
 	type place struct{ part, pole int }
 	var poles []complex128 // distinct ones
 	var where [][]place
@@ -135,7 +153,7 @@ func merge(parts []section, allReal bool) {
 	for i, p := range poles {
 		for j, q := range poles[:i] {
 			alone := len(where[i]) == 1 && len(where[j]) == 1 && where[i][0].part == where[j][0].part
-			if !alone && cmplx.Abs(p-q) <= mergeGap*min(-real(p), -real(q)) {
+			if !alone && cmplx.Abs(p-q) <= gap*min(-real(p), -real(q)) {
 				from, to := group[i], group[j]
 				for k := range group {
 					if group[k] == from {

@@ -225,3 +225,36 @@ func TestMirroredGroup(t *testing.T) {
 		}
 	}
 }
+
+// Poles with powers beside other poles: what the narrow gap would lose, a wider one
+// keeps, with the response of the product at many frequencies.
+func TestWiderGaps(t *testing.T) {
+	wider := 0
+	for _, gap := range []float64{0.031, 0.045, 0.06, 0.09, 0.15} {
+		for _, n := range []int{4, 6, 8} {
+			sections := []Line{line(t)(CriticallyDamped(n, 0.2))}
+			rate := -real(sections[0].Terms[0].Pole)
+			sections = append(sections, pole(t, 1/(rate*(1+gap))), tails(t, Tail{0.1, 1 / (rate * (1 - gap))}))
+			l := cascade(t, sections...)
+			if _, err := join(sections, mergeGap, true); err != nil {
+				wider++
+			}
+			if !l.Real() {
+				t.Errorf("gap %g, order %d: not real", gap, n)
+			}
+			for w := 0.0; w < 20; w += 0.1 {
+				want := complex128(1)
+				for _, s := range sections {
+					want *= s.Response(w)
+				}
+				if d := cmplx.Abs(l.Response(w) - want); !(d <= cascadeTolerance) {
+					t.Fatalf("gap %g, order %d, w %g: off by %g", gap, n, w, d)
+				}
+			}
+		}
+	}
+	if wider < 5 {
+		t.Errorf("only %d cascades needed a wider gap", wider)
+	}
+	t.Logf("%d cascades needed a wider gap", wider)
+}

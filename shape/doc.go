@@ -4,8 +4,16 @@
 // It stands at the head of the chain from coefficients to gate. What it makes
 // is judged by package hardware (may the instrument play it?) and carried on
 // by package filter (what arrives at the device?); it imports neither. Use a
-// [Basis] to search for a pulse, and [RampedSquare], [RaisedCosine] and the
-// composite sequences ([CORPSE] and its companions) to compare with one.
+// [Basis] to search for a pulse, and [RampedSquare], [RaisedCosine], [Gaussian] with
+// its [DerivativeCorrection] and the composite sequences ([CORPSE] and its
+// companions) to compare with one.
+//
+// Of the bases, [Slepian] keeps most of its energy in the band for its number of
+// columns; [TaperedFourier] starts and ends most softly for the energy that
+// it leaks; [Fourier] is the simplest; [BSpline] is local in time until it is made
+// orthonormal, and leaks most; [Samples] is for instruments that limit nothing.
+// The figures stand with each. [ZeroMean] restricts any of them to sequences without a
+// mean, and [Basis.OutOfBand] is the energy outside the band as a limit.
 //
 // # Conventions
 //

@@ -48,7 +48,7 @@ func Fourier(samples, lead, trail int, bandTimesPeriod float64, count int) (*Bas
 // Not only the value but the slope is zero beside the free samples. That is what
 // it adds to [Fourier], measured at N = 108, W = 0.1 with the default counts and
 // normal coefficients: the steps from and to zero, as a share of the largest
-// sample, are 0.03 instead of 0.20 (median), so that a slew limit or a ring-out
+// sample, are 0.03 instead of 0.21 (median), so that a slew limit or a ring-out
 // limit leaves more of the shapes; the energy outside the band is 0.20 % instead of
 // 0.67 %, and falls with the sixth power of the frequency. With equal counts the two leak
 // alike (0.65 %). It is not a larger space: full-period sines and tapered cosines
@@ -59,12 +59,11 @@ func Fourier(samples, lead, trail int, bandTimesPeriod float64, count int) (*Bas
 // in frequency; at W = 0.5 it is N. Column j-1 is symmetric in time for odd j and antisymmetric for
 // even j, exactly, and starts positive.
 func TaperedFourier(samples, lead, trail int, bandTimesPeriod float64, count int) (*Basis, error) {
-	b, err := series(samples, lead, trail, bandTimesPeriod, count, 1, FamilyTaperedFourier, func(j, k, n int64) float64 {
+	return series(samples, lead, trail, bandTimesPeriod, count, 1, FamilyTaperedFourier, func(j, k, n int64) float64 {
 		a := (j + 1) * (k + 1)
 		cot := cosOfPi(k+1, n+1) / sinOfPi(k+1, n+1)
 		return sinOfPi(a, n+1)*cot - float64(j+1)*cosOfPi(a, n+1)
 	})
-	return b, err
 }
 
 // series makes a family from its unnormalised columns: element(j, k, N) for k

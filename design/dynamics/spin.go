@@ -15,46 +15,68 @@ type Spin struct {
 
 	// Held are the static errors whose toggled integrals are wanted: V = Held[i]·σ.
 	Held []Vec
-	// Gains are the control-borne errors: V(t) = sum_k Gains[i][k] u_k(t) Axes[k]·σ.
-	Gains [][]float64
+	// Borne are the control-borne errors: V(t) = sum_k v_k(t) Axes[k]·σ, with v
+	// laid out like the controls of Run. An amplitude error is the controls
+	// themselves; another one may be their derivative by a parameter of the line.
+	Borne [][]float64
 
 	// Results of Run.
 	Gate   Quat  // of the whole grid, first step to last
-	Toggle []Vec // ∫ Rᵀ V dt over the window for Held, then Gains, in the frame of the grid's start
+	Toggle []Vec // ∫ Rᵀ V dt over the window for Held, then Borne, in the frame of the grid's start
 
-	step []stepData
+	static vec
+	axes   []vec
+	held   []vec
+	step   []stepData
+	share  []share // empty without errors
 }
 
+// stepData is what Run leaves of a step for Derive.
 type stepData struct {
-	a, b       Vec             // fields at the nodes
-	d          Vec             // (√3/12) h² (b - a)
-	back       Mat             // Rᵀ before the step: from the step's frame to that of the grid's start
-	turn       turn            // of the step's rotation vector
-	own        [MaxToggles]Vec // the step's own share of Toggle, in the frame of the grid's start
-	mean, diff [MaxToggles]Vec // of the control-borne errors at the two nodes
+	a, b vec // fields at the nodes
+	back Mat // Rᵀ before the step: from the step's frame to that of the grid's start
+	arc
+}
+
+// share is what Run leaves of a step in which errors are toggled.
+type share struct {
+	own        [MaxToggles]vec // the step's own share of Toggle, in the frame of the grid's start
+	mean, diff [MaxToggles]vec // of the control-borne errors at the two nodes
 }
 
 // MaxToggles bounds the static and control-borne errors of one Spin together.
-const MaxToggles = 8
+const MaxToggles = 12
 
 const gauss = 0.14433756729740643 // √3/12
 
 // GaussNodes are the two Gauss-Legendre nodes of a step of unit length.
 var GaussNodes = [2]float64{0.5 - 0.28867513459481287, 0.5 + 0.28867513459481287}
 
-// Reset sizes the working memory for the exported fields. It panics when there
-// are more than MaxToggles errors or the window leaves the grid: both are
-// mistakes of the caller.
+// Reset takes the exported fields over and sizes the working memory. It panics
+// when there are more than MaxToggles errors or the window leaves the grid: both
+// are mistakes of the caller.
 func (s *Spin) Reset() {
-	n := len(s.Held) + len(s.Gains)
+	n := len(s.Held) + len(s.Borne)
 	if n > MaxToggles {
 		panic("dynamics: too many toggled errors for one Spin")
 	}
 	if s.First < 0 || s.Last > len(s.Steps) || s.First > s.Last {
 		panic("dynamics: window outside the grid")
 	}
+	s.static = s.Static.vec()
+	s.axes, s.held = nil, nil
+	for _, e := range s.Axes {
+		s.axes = append(s.axes, e.vec())
+	}
+	for _, v := range s.Held {
+		s.held = append(s.held, v.vec())
+	}
 	s.step = make([]stepData, len(s.Steps))
 	s.Toggle = make([]Vec, n)
+	s.share = nil
+	if n > 0 {
+		s.share = make([]share, len(s.Steps))
+	}
 }
 
 // Run propagates. The controls u run node by node for one control after the
@@ -64,196 +86,207 @@ func (s *Spin) Reset() {
 // for offset 0 and scale 1.
 func (s *Spin) Run(u []float64, offset Vec, scale float64) {
 	nodes := 2 * len(s.Steps)
-	q := One
-	nh := len(s.Held)
-	clear(s.Toggle)
+	q := quat{w: 1}
+	nh := len(s.held)
+	off := offset.vec()
+	var t turn
+	var sum [MaxToggles]vec
 	for j, h := range s.Steps {
 		st := &s.step[j]
-		a := s.Static
+		a := s.static
 		inside := j >= s.First && j < s.Last
 		gain := 1.0
 		if inside {
 			gain = scale
-			add(&a, offset)
+			a = a.add(off)
 		}
 		b := a
-		for k := range s.Axes {
-			e := &s.Axes[k]
-			ga, gb := gain*u[k*nodes+2*j], gain*u[k*nodes+2*j+1]
-			a[0] += ga * e[0]
-			a[1] += ga * e[1]
-			a[2] += ga * e[2]
-			b[0] += gb * e[0]
-			b[1] += gb * e[1]
-			b[2] += gb * e[2]
+		for k := range s.axes {
+			e := s.axes[k]
+			at := k*nodes + 2*j
+			a = a.plus(gain*u[at], e)
+			b = b.plus(gain*u[at+1], e)
 		}
 		g := gauss * h * h
-		c := cross(a, b)
-		w := Vec{h*(a[0]+b[0])/2 - g*c[0], h*(a[1]+b[1])/2 - g*c[1], h*(a[2]+b[2])/2 - g*c[2]}
+		w := a.add(b).times(h/2).plus(-g, a.cross(b))
 		st.a, st.b = a, b
-		st.d = Vec{g * (b[0] - a[0]), g * (b[1] - a[1]), g * (b[2] - a[2])}
-		st.back = q.Conj().Rotation()
-		t := &st.turn
-		next := t.begin(w)
-		if inside && len(s.Toggle) > 0 {
+		q.back(&st.back)
+		next := st.begin(w)
+		if inside && len(s.share) > 0 {
+			t.arc = st.arc
 			t.average()
-			t.half = bend(w, t.theta2, t.mu, t.nu)
-			for i, v := range s.Held {
-				st.own[i] = st.back.Apply(t.toggled(h, v, cross(st.d, v)))
-				add(&s.Toggle[i], st.own[i])
+			t.halfway()
+			d := b.plus(-1, a).times(g)
+			sh := &s.share[j]
+			for i, v := range s.held {
+				own := st.back.apply(t.toggled(h, v, d.cross(v)))
+				sh.own[i] = own
+				sum[i] = sum[i].add(own)
 			}
-			for i, gains := range s.Gains {
-				st.mean[i], st.diff[i] = s.borne(gains, u, j)
-				st.own[nh+i] = st.back.Apply(t.toggled(h, st.mean[i], st.bow(g, i)))
-				add(&s.Toggle[nh+i], st.own[nh+i])
+			for i, v := range s.Borne {
+				mean, diff := s.borne(v, j)
+				sh.mean[i], sh.diff[i] = mean, diff
+				own := st.back.apply(t.toggled(h, mean, st.bow(g, mean, diff)))
+				sh.own[nh+i] = own
+				sum[nh+i] = sum[nh+i].add(own)
 			}
 		}
-		q = next.Mul(q)
+		q = next.mul(q)
 	}
-	s.Gate = q
+	s.Gate = Quat{q.w, q.x, q.y, q.z}
+	for i := range s.Toggle {
+		s.Toggle[i] = sum[i].pub()
+	}
 }
 
-// borne returns the mean of a control-borne error over the two nodes and the
-// difference over step j, later minus earlier.
-func (s *Spin) borne(gains, u []float64, j int) (mean, diff Vec) {
+// borne returns the mean of a control-borne error over the two nodes of step j
+// and the difference, later minus earlier.
+func (s *Spin) borne(v []float64, j int) (mean, diff vec) {
 	nodes := 2 * len(s.Steps)
-	for k := range s.Axes {
-		e := &s.Axes[k]
-		ua, ub := u[k*nodes+2*j], u[k*nodes+2*j+1]
-		m, f := gains[k]*(ua+ub)/2, gains[k]*(ub-ua)
-		mean[0] += m * e[0]
-		mean[1] += m * e[1]
-		mean[2] += m * e[2]
-		diff[0] += f * e[0]
-		diff[1] += f * e[1]
-		diff[2] += f * e[2]
+	for k, e := range s.axes {
+		at := k*nodes + 2*j
+		va, vb := v[at], v[at+1]
+		mean = mean.plus((va+vb)/2, e)
+		diff = diff.plus(vb-va, e)
 	}
 	return mean, diff
 }
 
-// bow returns, for control-borne error i, what multiplies R(w/2)ᵀ in the
-// toggled integral of the step: d × mean - g (a+b)/2 × diff.
-func (st *stepData) bow(g float64, i int) Vec {
-	x := cross(st.d, st.mean[i])
-	f := Vec{g * (st.a[0] + st.b[0]) / 2, g * (st.a[1] + st.b[1]) / 2, g * (st.a[2] + st.b[2]) / 2}
-	y := cross(f, st.diff[i])
-	return Vec{x[0] - y[0], x[1] - y[1], x[2] - y[2]}
+// bow returns what multiplies R(w/2)ᵀ in the toggled integral of a control-borne
+// error over the step, d × mean - g (a+b)/2 × diff with d = g (b - a) and
+// g = (√3/12) h².
+func (st *stepData) bow(g float64, mean, diff vec) vec {
+	d := st.b.plus(-1, st.a)
+	f := st.a.add(st.b).times(0.5)
+	return d.cross(mean).plus(-1, f.cross(diff)).times(g)
 }
 
-// Derive fills the derivatives of the last Run with respect to every node
-// control (the scale of that Run must be passed again). Each row of gate and
-// toggle runs over the nodes and controls like u:
-//
-//	gate[i][k*nodes+node]      component i of the generator δ: U -> U exp(-i δ·σ/2), in the frame of the grid's start
-//	toggle[3e+i][k*nodes+node] derivative of component i of Toggle[e]
-//
-// toggle may be nil.
-func (s *Spin) Derive(scale float64, gate [3][]float64, toggle [][]float64) {
+// Slopes are the derivatives that Derive fills. Each row runs over the controls
+// and nodes like the controls of Run. Gate is always wanted; the others may be
+// nil.
+type Slopes struct {
+	Gate   [3][]float64 // of the generator δ: U -> U exp(-i δ·σ/2), in the frame of the grid's start
+	Toggle [][]float64  // row 3e+i: of component i of Toggle[e], by the controls
+	Direct [][]float64  // row 3b+i: of component i of the Toggle of Borne[b], by its v
+}
+
+// Derive fills the derivatives of the last Run, the scale of which must be
+// passed again.
+func (s *Spin) Derive(scale float64, d *Slopes) {
 	nodes := 2 * len(s.Steps)
-	nh, ne := len(s.Held), len(s.Toggle)
-	if toggle == nil {
+	nh, ne := len(s.held), len(s.Toggle)
+	if d.Toggle == nil {
 		ne = 0
 	}
-	var rest [MaxToggles]Vec                 // the shares of all later steps
+	var rest [MaxToggles]vec                 // the shares of all later steps
 	var byW, byD [MaxToggles]Mat             // derivatives of a share, by w (with the turn of all later steps) and by d
+	var t turn                               //
 	var toStart, halfToStart Mat             // Rᵀ G, Rᵀ R(w/2)ᵀ
 	for j := len(s.Steps) - 1; j >= 0; j-- { // backwards: rest grows
 		h := s.Steps[j]
 		st := &s.step[j]
-		t := &st.turn
+		t.arc = st.arc
 		g := gauss * h * h
 		inside := j >= s.First && j < s.Last
 		gain := 1.0
 		if inside {
 			gain = scale
 		}
-		if !inside || len(s.Toggle) == 0 {
-			t.average()
-		}
+		t.average()
 		toStart.mul(&st.back, &t.mean)
 		toggling := ne > 0 && j < s.Last
 		if toggling {
-			if inside {
-				t.slopes()
-				halfToStart.mul(&st.back, &t.half)
-			}
-			for i := range ne {
-				if !inside { // before the window: the whole integral turns
-					byW[i], byD[i] = Mat{}, Mat{}
-				} else {
-					var slope Mat
-					v := Vec{}
-					if i < nh {
-						v = s.Held[i]
-						t.slope(&slope, h, v, cross(st.d, v))
-					} else {
-						v = st.mean[i-nh]
-						t.slope(&slope, h, v, st.bow(g, i-nh))
-					}
-					byW[i].mul(&st.back, &slope)
-					// R(w/2)ᵀ (dd × v) = -R(w/2)ᵀ [v]x dd
-					m := Mat{0, v[2], -v[1], -v[2], 0, v[0], v[1], -v[0], 0}
-					byD[i].mul(&halfToStart, &m)
-				}
-				byW[i].addCross(rest[i], &toStart)
-			}
+			s.steps(j, h, g, inside, nh, ne, &t, &toStart, &halfToStart, &byW, &byD, &rest)
 		}
-		for node := range 2 {
-			other, sign := &st.b, -1.0
-			if node == 1 {
-				other, sign = &st.a, 1.0
-			}
-			for k := range s.Axes {
+		for k, e := range s.axes {
+			axis := e.times(gain)
+			for node := range 2 {
 				col := k*nodes + 2*j + node
-				e := s.Axes[k]
-				axis := Vec{gain * e[0], gain * e[1], gain * e[2]}
+				other, sign := st.b, -1.0
+				if node == 1 {
+					other, sign = st.a, 1.0
+				}
 				// w = h(a+b)/2 - g a×b, so da gives -g da×b and db gives +g db×a
-				c := cross(axis, *other)
 				gs := g * sign
-				dw := Vec{h/2*axis[0] + gs*c[0], h/2*axis[1] + gs*c[1], h/2*axis[2] + gs*c[2]}
-				delta := toStart.Apply(dw)
-				gate[0][col], gate[1][col], gate[2][col] = delta[0], delta[1], delta[2]
+				dw := axis.times(h/2).plus(gs, axis.cross(other))
+				delta := toStart.apply(dw)
+				d.Gate[0][col], d.Gate[1][col], d.Gate[2][col] = delta.x, delta.y, delta.z
 				if ne == 0 {
 					continue
 				}
 				if !toggling {
 					for r := range 3 * ne {
-						toggle[r][col] = 0
+						d.Toggle[r][col] = 0
 					}
+				} else {
+					dd := axis.times(gs)
+					for i := range ne {
+						p := byW[i].apply(dw).add(byD[i].apply(dd))
+						if i >= nh && inside {
+							// the field multiplies the error's difference, and moves
+							p = p.plus(-g/2, halfToStart.apply(axis.cross(s.share[j].diff[i-nh])))
+						}
+						d.Toggle[3*i][col], d.Toggle[3*i+1][col], d.Toggle[3*i+2][col] = p.x, p.y, p.z
+					}
+				}
+				if d.Direct == nil {
 					continue
 				}
-				dd := Vec{gs * axis[0], gs * axis[1], gs * axis[2]}
-				for i := range ne {
-					p, q := byW[i].Apply(dw), byD[i].Apply(dd)
-					if i >= nh && inside {
-						r := s.ownDrive(st, &toStart, &halfToStart, h, g, sign, i-nh, k, axis)
-						q[0], q[1], q[2] = q[0]+r[0], q[1]+r[1], q[2]+r[2]
-					}
-					toggle[3*i][col], toggle[3*i+1][col], toggle[3*i+2][col] = p[0]+q[0], p[1]+q[1], p[2]+q[2]
+				var p vec
+				if inside {
+					p = s.direct(st, &toStart, &halfToStart, h, g, sign, e)
+				}
+				for i := range s.Borne {
+					d.Direct[3*i][col], d.Direct[3*i+1][col], d.Direct[3*i+2][col] = p.x, p.y, p.z
 				}
 			}
 		}
 		if inside {
 			for i := range ne {
-				add(&rest[i], st.own[i])
+				rest[i] = rest[i].add(s.share[j].own[i])
 			}
 		}
 	}
 }
 
-// ownDrive is what the derivative of a control-borne error's share has beyond
-// that of a static one: the error itself moves with control k (its mean by
-// half, its difference by sign), and so does the field that multiplies its
-// difference.
-func (s *Spin) ownDrive(st *stepData, toStart, halfToStart *Mat, h, g, sign float64, i, k int, axis Vec) Vec {
-	gk := s.Gains[i][k]
-	e := s.Axes[k]
-	dm := Vec{gk * e[0] / 2, gk * e[1] / 2, gk * e[2] / 2}
-	df := Vec{g * sign * gk * e[0], g * sign * gk * e[1], g * sign * gk * e[2]}
-	field := Vec{(st.a[0] + st.b[0]) / 2, (st.a[1] + st.b[1]) / 2, (st.a[2] + st.b[2]) / 2}
-	half := Vec{g * axis[0] / 2, g * axis[1] / 2, g * axis[2] / 2}
-	x, y, z := cross(st.d, dm), cross(half, st.diff[i]), cross(field, df)
-	p := halfToStart.Apply(Vec{x[0] - y[0] - z[0], x[1] - y[1] - z[1], x[2] - y[2] - z[2]})
-	q := toStart.Apply(dm)
-	return Vec{p[0] + h*q[0], p[1] + h*q[1], p[2] + h*q[2]}
+// steps fills byW and byD for step j, and halfToStart when it is inside.
+func (s *Spin) steps(j int, h, g float64, inside bool, nh, ne int, t *turn, toStart, halfToStart *Mat, byW, byD *[MaxToggles]Mat, rest *[MaxToggles]vec) {
+	st := &s.step[j]
+	var slope Mat
+	if inside {
+		t.halfway()
+		t.slopes()
+		halfToStart.mul(&st.back, &t.half)
+	}
+	for i := range ne {
+		if !inside { // before the window: the whole integral turns
+			byW[i], byD[i] = Mat{}, Mat{}
+		} else {
+			var v, bow vec
+			if i < nh {
+				v = s.held[i]
+				bow = st.b.plus(-1, st.a).times(g).cross(v)
+			} else {
+				v = s.share[j].mean[i-nh]
+				bow = st.bow(g, v, s.share[j].diff[i-nh])
+			}
+			t.slope(&slope, h, v, bow)
+			byW[i].mul(&st.back, &slope)
+			// R(w/2)ᵀ (dd × v) = -R(w/2)ᵀ [v]x dd
+			m := Mat{0, v.z, -v.y, -v.z, 0, v.x, v.y, -v.x, 0}
+			byD[i].mul(halfToStart, &m)
+		}
+		byW[i].addCross(rest[i], toStart)
+	}
+}
+
+// direct is the derivative of a control-borne error's share by the error itself
+// at one node of a control with axis e: its mean moves by half of e, its
+// difference by sign e.
+func (s *Spin) direct(st *stepData, toStart, halfToStart *Mat, h, g, sign float64, e vec) vec {
+	half := e.times(0.5)
+	d := st.b.plus(-1, st.a)
+	f := st.a.add(st.b).times(0.5)
+	bow := d.cross(half).plus(-sign, f.cross(e)).times(g)
+	return halfToStart.apply(bow).plus(h, toStart.apply(half))
 }

@@ -28,9 +28,17 @@ func spinOn(steps []float64) *Spin {
 		Static: Vec{0.02, -0.01, 0.11},
 		Axes:   []Vec{{0.25, 0, 0.01}, {0.02, 0.24, 0}},
 		Steps:  steps, First: 0, Last: len(steps),
-		Held:  []Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}, {0.3, -0.5, 0.2}},
-		Gains: [][]float64{{1, 1}, {1, 0}},
+		Held: []Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}, {0.3, -0.5, 0.2}},
 	}
+	return s
+}
+
+// bear gives the spin two control-borne errors of the controls u: all of them, and
+// the first alone; and readies it.
+func bear(s *Spin, u []float64) *Spin {
+	first := make([]float64, len(u))
+	copy(first, u[:len(u)/2])
+	s.Borne = [][]float64{u, first}
 	s.Reset()
 	return s
 }
@@ -61,7 +69,7 @@ func slowSpin(n int, T float64, s *Spin) (Quat, []Vec) {
 				tog[i][c] += h * x[c]
 			}
 		}
-		for i, gains := range s.Gains {
+		for i, gains := range [][]float64{{1, 1}, {1, 0}} {
 			var v Vec
 			for k, e := range s.Axes {
 				for c := range 3 {
@@ -80,7 +88,7 @@ func slowSpin(n int, T float64, s *Spin) (Quat, []Vec) {
 
 func TestOrderFour(t *testing.T) {
 	const T = 12.0
-	ref := spinOn(make([]float64, 4))
+	ref := bear(spinOn(make([]float64, 4)), make([]float64, 16))
 	q1, t1 := slowSpin(20000, T, ref)
 	q2, t2 := slowSpin(40000, T, ref)
 	var gate Quat
@@ -96,7 +104,7 @@ func TestOrderFour(t *testing.T) {
 	var last [2]float64
 	for _, n := range []int{12, 24, 48, 96} {
 		u, steps := smooth(n, T)
-		s := spinOn(steps)
+		s := bear(spinOn(steps), u)
 		s.Run(u, Vec{}, 1)
 		var e [2]float64
 		for i := range gate {
@@ -123,9 +131,9 @@ func TestOrderFour(t *testing.T) {
 
 func fullTurn(w Vec) turn {
 	var t turn
-	t.begin(w)
+	t.begin(w.vec())
 	t.average()
-	t.half = bend(w, t.theta2, t.mu, t.nu)
+	t.halfway()
 	t.slopes()
 	return t
 }
@@ -159,14 +167,14 @@ func TestTurnSeries(t *testing.T) {
 		}
 		v, bow := Vec{0.3, 0.8, -0.2}, Vec{-0.5, 0.1, 0.9}
 		var slope Mat
-		tu.slope(&slope, 1.7, v, bow)
+		tu.slope(&slope, 1.7, v.vec(), bow.vec())
 		for i := range 3 {
 			const e = 1e-4
 			p, m := w, w
 			p[i] += e
 			m[i] -= e
 			tp, tm := fullTurn(p), fullTurn(m)
-			gp, gm := tp.toggled(1.7, v, bow), tm.toggled(1.7, v, bow)
+			gp, gm := tp.toggled(1.7, v.vec(), bow.vec()).pub(), tm.toggled(1.7, v.vec(), bow.vec()).pub()
 			for l := range 3 {
 				if want := (gp[l] - gm[l]) / (2 * e); !(math.Abs(slope[3*l+i]-want) <= 5e-9) {
 					t.Errorf("θ = %v: slope[%d][%d] = %v, want %v", th, l, i, slope[3*l+i], want)
@@ -191,20 +199,15 @@ func TestDerive(t *testing.T) {
 	}{{Vec{}, 1, true}, {Vec{0.01, -0.03, 0.02}, 1.05, false}} {
 		s := spinOn(steps)
 		s.First, s.Last = 1, 7
-		s.Reset()
+		bear(s, u)
+		alone := s.Borne[1] // a field of its own; Borne[0] is u itself
 		s.Run(u, c.offset, c.scale)
 		q0 := s.Gate
-		var gate [3][]float64
-		for i := range gate {
-			gate[i] = make([]float64, len(u))
+		d := slopes(s, len(u))
+		if !c.toggle {
+			d.Toggle, d.Direct = nil, nil
 		}
-		var tog [][]float64
-		if c.toggle {
-			for range 3 * len(s.Toggle) {
-				tog = append(tog, make([]float64, len(u)))
-			}
-		}
-		s.Derive(c.scale, gate, tog)
+		s.Derive(c.scale, d)
 		const e = 1e-5
 		worst := 0.0
 		for i := range u {
@@ -220,14 +223,30 @@ func TestDerive(t *testing.T) {
 			u[i] = x
 			for k := range 3 {
 				// exp(-i δ·σ/2) = 1 - i δ·σ/2: δ is twice the vector part
-				worst = math.Max(worst, math.Abs(gate[k][i]-(dp[k+1]-dm[k+1])/e))
+				worst = math.Max(worst, math.Abs(d.Gate[k][i]-(dp[k+1]-dm[k+1])/e))
 			}
-			if c.toggle {
-				for k := range s.Toggle {
-					for l := range 3 {
-						worst = math.Max(worst, math.Abs(tog[3*k+l][i]-(tp[k][l]-tm[k][l])/(2*e)))
+			if !c.toggle {
+				continue
+			}
+			for k := range s.Toggle {
+				for l := range 3 {
+					got := d.Toggle[3*k+l][i]
+					if k == len(s.Held) { // u moves the field and the error
+						got += d.Direct[l][i]
 					}
+					worst = math.Max(worst, math.Abs(got-(tp[k][l]-tm[k][l])/(2*e)))
 				}
+			}
+			y, last := alone[i], len(s.Toggle)-1
+			alone[i] = y + e
+			s.Run(u, c.offset, c.scale)
+			p := s.Toggle[last]
+			alone[i] = y - e
+			s.Run(u, c.offset, c.scale)
+			m := s.Toggle[last]
+			alone[i] = y
+			for l := range 3 {
+				worst = math.Max(worst, math.Abs(d.Direct[3+l][i]-(p[l]-m[l])/(2*e)))
 			}
 		}
 		if !(worst <= 2e-9) {
@@ -259,24 +278,28 @@ func TestRabi(t *testing.T) {
 
 func TestNoAllocation(t *testing.T) {
 	u, steps := smooth(40, 20)
-	s := spinOn(steps)
-	gate, tog := rows(s, len(u))
+	s := bear(spinOn(steps), u)
+	d := slopes(s, len(u))
 	if n := testing.AllocsPerRun(10, func() {
 		s.Run(u, Vec{}, 1)
-		s.Derive(1, gate, tog)
+		s.Derive(1, d)
 	}); n != 0 {
 		t.Errorf("%v allocations in Run and Derive", n)
 	}
 }
 
-func rows(s *Spin, n int) (gate [3][]float64, tog [][]float64) {
-	for i := range gate {
-		gate[i] = make([]float64, n)
+func slopes(s *Spin, n int) *Slopes {
+	d := &Slopes{}
+	for i := range d.Gate {
+		d.Gate[i] = make([]float64, n)
 	}
 	for range 3 * len(s.Toggle) {
-		tog = append(tog, make([]float64, n))
+		d.Toggle = append(d.Toggle, make([]float64, n))
 	}
-	return gate, tog
+	for range 3 * len(s.Borne) {
+		d.Direct = append(d.Direct, make([]float64, n))
+	}
+	return d
 }
 
 // BenchmarkSpin times a pulse of 96 samples, two steps a sample, as design runs
@@ -286,15 +309,15 @@ func BenchmarkSpin(b *testing.B) {
 	for _, c := range []struct {
 		name  string
 		held  []Vec
-		gains [][]float64
+		borne [][]float64
 	}{
 		{"none", nil, nil},
 		{"any", []Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}}, nil},
-		{"any+amplitude", []Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}}, [][]float64{{1, 1}}},
+		{"any+amplitude", []Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}}, [][]float64{u}},
 	} {
-		s := &Spin{Axes: []Vec{{0.25, 0, 0}, {0, 0.25, 0}}, Steps: steps, Last: len(steps), Held: c.held, Gains: c.gains}
+		s := &Spin{Axes: []Vec{{0.25, 0, 0}, {0, 0.25, 0}}, Steps: steps, Last: len(steps), Held: c.held, Borne: c.borne}
 		s.Reset()
-		gate, tog := rows(s, len(u))
+		d := slopes(s, len(u))
 		b.Run(fmt.Sprintf("%s/run", c.name), func(b *testing.B) {
 			for b.Loop() {
 				s.Run(u, Vec{}, 1)
@@ -302,7 +325,7 @@ func BenchmarkSpin(b *testing.B) {
 		})
 		b.Run(fmt.Sprintf("%s/derive", c.name), func(b *testing.B) {
 			for b.Loop() {
-				s.Derive(1, gate, tog)
+				s.Derive(1, d)
 			}
 		})
 	}

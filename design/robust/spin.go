@@ -58,9 +58,12 @@ type Gate struct {
 
 	u    []float64
 	rows int
-	d    []float64 // derivatives by node: raw rows x 2 nodes
+	d    []float64 // derivatives by node: raw rows x 2 nodes; slopes lie in it
 	raw  []float64 // by coefficient: raw rows x 2 n
 	k    [][9]float64
+
+	slopes       dynamics.Slopes
+	memberSlopes []dynamics.Slopes
 }
 
 // Response is what each coefficient of one quadrature gives at the grid's
@@ -131,7 +134,7 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 		if c.Kind == Amplitude {
 			if amplitude < 0 {
 				amplitude = len(g.nominal.Held)
-				g.nominal.Gains = [][]float64{{1, 1}}
+				g.nominal.Borne = make([][]float64, 1) // the controls themselves, see below
 			}
 			g.combine = append(g.combine, triple{c.Weight, []part{{amplitude, 1 / (g.span * g.full)}}})
 		}
@@ -141,14 +144,30 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 			g.members = append(g.members, c.ensemble()...)
 		}
 	}
+	nodes := 2 * len(s.Grid.Steps)
+	g.u = make([]float64, 2*nodes)
+	if amplitude >= 0 {
+		g.nominal.Borne[0] = g.u
+	}
 	g.nominal.Reset()
 	g.finite.Reset()
 	g.rows = 3 + 3*len(g.combine) + 3*len(g.members)
-	nodes := 2 * len(s.Grid.Steps)
 	rawRows := 3 + 3*len(g.nominal.Toggle) + 3*len(g.members)
-	g.u = make([]float64, 2*nodes)
 	g.re, g.im = transposed(r.Re, nodes, r.N), transposed(r.Im, nodes, r.N)
 	g.d = make([]float64, rawRows*2*nodes)
+	row := func(i int) []float64 { return g.d[i*2*nodes : (i+1)*2*nodes] }
+	gateRows := func(i int) [3][]float64 { return [3][]float64{row(i), row(i + 1), row(i + 2)} }
+	g.slopes.Gate = gateRows(0)
+	for i := range 3 * len(g.nominal.Toggle) {
+		g.slopes.Toggle = append(g.slopes.Toggle, row(3+i))
+	}
+	for range 3 * len(g.nominal.Borne) {
+		g.slopes.Direct = append(g.slopes.Direct, make([]float64, 2*nodes))
+	}
+	for i := range g.members {
+		first := 3 + 3*len(g.nominal.Toggle) + 3*i
+		g.memberSlopes = append(g.memberSlopes, dynamics.Slopes{Gate: gateRows(first)})
+	}
 	g.raw = make([]float64, rawRows*2*r.N)
 	g.k = make([][9]float64, 1+len(g.members))
 	return g
@@ -230,8 +249,6 @@ func (g *Gate) Residuals(c, r []float64) {
 	if len(g.members) == 0 {
 		return
 	}
-	nodes := len(g.u) / 2
-	first := 3 + 3*len(g.nominal.Toggle)
 	for i, e := range g.members {
 		g.finite.Run(g.u, e.offset, e.scale)
 		m, g.k[1+i] = g.miss(g.finite.Gate)
@@ -240,8 +257,7 @@ func (g *Gate) Residuals(c, r []float64) {
 		}
 		at += 3
 		// the derivatives by node are cheap while the steps are at hand
-		row := first + 3*i
-		g.finite.Derive(e.scale, g.gateRows(row, nodes), nil)
+		g.finite.Derive(e.scale, &g.memberSlopes[i])
 	}
 }
 
@@ -258,22 +274,20 @@ func (g *Gate) averaged(i int) dynamics.Vec {
 	return sum
 }
 
-func (g *Gate) gateRows(row, nodes int) [3][]float64 {
-	w := 2 * nodes
-	return [3][]float64{g.d[row*w : (row+1)*w], g.d[(row+1)*w : (row+2)*w], g.d[(row+2)*w : (row+3)*w]}
-}
-
 // Jacobian stores the derivatives at the c of the last call of Residuals in
 // jac, Rows x Dim.
 func (g *Gate) Jacobian(jac []float64) {
 	n, nodes := g.response.N, len(g.u)/2
 	w := 2 * nodes
 	nt := len(g.nominal.Toggle)
-	var toggles [3 * dynamics.MaxToggles][]float64
-	for i := range 3 * nt {
-		toggles[i] = g.d[(3+i)*w : (4+i)*w]
+	g.nominal.Derive(1, &g.slopes)
+	// an amplitude error is the controls themselves: both ways add up
+	for i, direct := range g.slopes.Direct {
+		row := g.slopes.Toggle[3*len(g.nominal.Held)+i]
+		for k, v := range direct {
+			row[k] += v
+		}
 	}
-	g.nominal.Derive(1, g.gateRows(0, nodes), toggles[:3*nt])
 
 	rawRows := len(g.d) / w
 	di := blas64.General{Rows: rawRows, Cols: nodes, Stride: w, Data: g.d}
@@ -337,7 +351,8 @@ type Worst struct {
 // Figures evaluates controls u given at the grid's nodes, I then Q, share of
 // full scale.
 func (g *Gate) Figures(u []float64) Figures {
-	g.nominal.Run(u, dynamics.Vec{}, 1)
+	copy(g.u, u) // of which amplitude errors are made
+	g.nominal.Run(g.u, dynamics.Vec{}, 1)
 	m, _ := g.miss(g.nominal.Gate)
 	f := Figures{Infidelity: 2. / 3 * (m[0]*m[0] + m[1]*m[1] + m[2]*m[2])}
 	at := 0

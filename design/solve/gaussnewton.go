@@ -278,7 +278,7 @@ func follow(bent, rt, r, jac, step, norm []float64, t float64, m, n int) {
 		}
 	}
 	tri := blas64.Triangular{Uplo: blas.Upper, Diag: blas.NonUnit, N: n, Stride: n, Data: norm}
-	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: bent})
+	substitute(tri, bent)
 }
 
 // descend solves (jj + f hb) step = -g, forming the matrix in norm; false when
@@ -304,11 +304,19 @@ func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
 	for i := range g {
 		step[i] = -g[i]
 	}
-	lapack64.Potrs(tri, blas64.General{Rows: n, Cols: 1, Stride: 1, Data: step})
+	substitute(tri, step)
 	return true
 }
 
 // sumSquares returns |r|², +Inf when it is not a number.
+// substitute solves RᵀR x = v in place. For one right-hand side two triangular
+// solves beat the library's routine for many.
+func substitute(r blas64.Triangular, v []float64) {
+	x := blas64.Vector{N: r.N, Inc: 1, Data: v}
+	blas64.Trsv(blas.Trans, r, x)
+	blas64.Trsv(blas.NoTrans, r, x)
+}
+
 func sumSquares(r []float64) float64 {
 	s := 0.0
 	for _, v := range r {

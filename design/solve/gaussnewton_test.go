@@ -528,6 +528,58 @@ func TestBestPointIsKept(t *testing.T) {
 	}
 }
 
+func TestFollow(t *testing.T) {
+	// The correction for the bend solves N b = -Jᵀ (rt - r - t J p), N the normal
+	// matrix of the step p; where the residuals are linear there is none.
+	rng := rand.New(rand.NewPCG(4, 5))
+	const n, m = 5, 3
+	draw := func(k int) []float64 {
+		v := make([]float64, k)
+		for i := range v {
+			v[i] = rng.NormFloat64()
+		}
+		return v
+	}
+	jac, r, rt, g, hb := draw(m*n), draw(m), draw(m), draw(n), make([]float64, n*n)
+	jj, full := make([]float64, n*n), make([]float64, n*n)
+	for i := range n {
+		hb[i*n+i] = 1 + rng.Float64()
+		for k := range n {
+			for row := range m {
+				jj[i*n+k] += jac[row*n+i] * jac[row*n+k]
+			}
+			full[i*n+k] = jj[i*n+k] + 0.3*hb[i*n+k]
+		}
+	}
+	step, norm, bent := make([]float64, n), make([]float64, n*n), draw(n)
+	if !descend(step, g, jj, hb, norm, 0.3, n) {
+		t.Fatal("not positive definite")
+	}
+	for i := range n {
+		if got := inner(full[i*n:(i+1)*n], step); !(math.Abs(got+g[i]) <= 1e-12) {
+			t.Errorf("N p = %v, want %v", got, -g[i])
+		}
+	}
+	const part = 0.7
+	follow(bent, rt, r, jac, step, norm, part, m, n)
+	for i := range n {
+		want := 0.0
+		for row := range m {
+			want -= jac[row*n+i] * (rt[row] - r[row] - part*inner(jac[row*n:(row+1)*n], step))
+		}
+		if got := inner(full[i*n:(i+1)*n], bent); !(math.Abs(got-want) <= 1e-12) {
+			t.Errorf("N b = %v, want %v", got, want)
+		}
+	}
+	for row := range m {
+		rt[row] = r[row] + part*inner(jac[row*n:(row+1)*n], step)
+	}
+	follow(bent, rt, r, jac, step, norm, part, m, n)
+	if !(math.Sqrt(inner(bent, bent)) <= 1e-14) {
+		t.Errorf("a bend of %v where there is none", bent)
+	}
+}
+
 func TestStartOutsidePanics(t *testing.T) {
 	for _, c0 := range [][]float64{{1, 0}, {0, -3}, {math.NaN(), 0}} {
 		func() {

@@ -41,24 +41,6 @@ func (s *Set) AddDisc(p, q []float64, radius float64) {
 	}
 }
 
-// Loosened returns the set with every row of the index list multiplied by
-// factor: the same point may then lie further out.
-func (s *Set) Loosened(rows []int, factor float64) *Set {
-	t := &Set{n: s.n, rows: append([]span(nil), s.rows...), discs: s.discs}
-	for _, i := range rows {
-		v := append([]float64(nil), t.rows[i].v...)
-		for k := range v {
-			v[k] /= factor
-		}
-		t.rows[i].v = v
-	}
-	return t
-}
-
-// Rows returns the number of rows added so far; the next AddRow of a row that
-// is not zero gets this index.
-func (s *Set) Rows() int { return len(s.rows) }
-
 func trim(a []float64, bound float64) span {
 	lo, hi := 0, len(a)
 	for lo < hi && a[lo] == 0 {

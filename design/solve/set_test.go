@@ -111,8 +111,8 @@ func TestSetAgainstDefinition(t *testing.T) {
 	for trial := range 60 {
 		n := 1 + rng.IntN(9)
 		s, d := randomSet(rng, n)
-		if got, want := s.Constraints(), 2*len(d.rows)+len(d.discs); got != want || s.Rows() != len(d.rows) || s.Dim() != n {
-			t.Fatalf("trial %d: %d constraints, want %d; %d rows, want %d; dimension %d, want %d", trial, got, want, s.Rows(), len(d.rows), s.Dim(), n)
+		if got, want := s.Constraints(), 2*len(d.rows)+len(d.discs); got != want || len(s.rows) != len(d.rows) || s.Dim() != n {
+			t.Fatalf("trial %d: %d constraints, want %d; %d rows, want %d; dimension %d, want %d", trial, got, want, len(s.rows), len(d.rows), s.Dim(), n)
 		}
 		for _, gauge := range []float64{0.01, 0.5, 0.999} {
 			c := inside(rng, d, n, gauge)
@@ -200,59 +200,14 @@ func TestZeroRowsAreLeftOut(t *testing.T) {
 	s := NewSet(3)
 	s.AddRow([]float64{0, 0, 0}, 1)
 	s.AddDisc([]float64{0, 0, 0}, []float64{0, 0, 0}, 1)
-	if s.Rows() != 0 || s.Constraints() != 0 {
-		t.Errorf("%d rows and %d constraints of zero vectors", s.Rows(), s.Constraints())
+	if len(s.rows) != 0 || s.Constraints() != 0 {
+		t.Errorf("%d rows and %d constraints of zero vectors", len(s.rows), s.Constraints())
 	}
 	if g := s.Gauge([]float64{5, 6, 7}); g != 0 {
 		t.Errorf("gauge %v in the whole space", g)
 	}
 	if r := s.reach([]float64{5, 6, 7}, []float64{1, 1, 1}); !math.IsInf(r, 1) {
 		t.Errorf("reach %v in the whole space", r)
-	}
-}
-
-func TestLoosened(t *testing.T) {
-	rng := rand.New(rand.NewPCG(3, 3))
-	s, d := randomSet(rng, 5)
-	loose := []int{0, 2, len(d.rows) - 1}
-	const factor = 6
-	l := s.Loosened(loose, factor)
-	e := dense{rows: append([][]float64(nil), d.rows...), discs: d.discs}
-	for _, i := range loose {
-		e.rows[i] = scaledBy(d.rows[i], 1./factor)
-	}
-	for range 20 {
-		c := inside(rng, d, 5, 0.9)
-		if got, want := l.Gauge(c), e.gauge(c); !(math.Abs(got-want) <= 1e-14) {
-			t.Errorf("gauge of the loosened set %v, want %v", got, want)
-		}
-		if got := s.Gauge(c); !(math.Abs(got-0.9) <= 1e-13) {
-			t.Errorf("gauge of the set that was loosened %v, want 0.9", got)
-		}
-	}
-	// Neither the loosening nor what is added later shows in the other set.
-	s = NewSet(2)
-	s.AddRow([]float64{1, 0}, 1)
-	s.AddRow([]float64{0, 1}, 1)
-	l = s.Loosened([]int{1}, 4)
-	l.AddRow([]float64{1, 1}, 0.1)
-	l.AddDisc([]float64{1, 0}, []float64{0, 1}, 0.1)
-	s.AddRow([]float64{1, -1}, 10)
-	for _, c := range []struct {
-		c     []float64
-		tight float64
-		loose float64
-	}{{[]float64{0.3, 0.3}, 0.3, 6}, {[]float64{0, 0.4}, 0.4, 4}, {[]float64{0.4, 0}, 0.4, 4}} {
-		if got := s.Gauge(c.c); !(math.Abs(got-c.tight) <= 1e-15) {
-			t.Errorf("gauge %v of the set that was loosened, want %v", got, c.tight)
-		}
-		if got := l.Gauge(c.c); !(math.Abs(got-c.loose) <= 1e-15) {
-			t.Errorf("gauge %v of the loosened set, want %v", got, c.loose)
-		}
-	}
-	l = s.Loosened([]int{0, 1, 2}, 4)
-	if got := l.Gauge([]float64{0, 0.4}); !(math.Abs(got-0.1) <= 1e-15) {
-		t.Errorf("gauge %v of the loosened set, want 0.1", got)
 	}
 }
 
