@@ -1,13 +1,16 @@
 package dynamics
 
 // A Spin is one spin driven by K controls on a fixed grid of steps. The field
-// at a node is Static + sum_k u_k Axes[k], in rad/ns.
+// at a node is
+//
+//	Static + sum_k ( u_k Axes[k] + u_k² Shifts[k] ),   rad/ns.
 //
 // The exported fields are set once; Reset sizes the working memory, after which
 // Run and Derive allocate nothing. A Spin serves one goroutine.
 type Spin struct {
 	Static Vec       // rad/ns
 	Axes   []Vec     // one per control, rad/ns per unit of control
+	Shifts []Vec     // what the square of a control adds, rad/ns; nil for none
 	Steps  []float64 // ns; nodes 2j and 2j+1 are the Gauss nodes of step j
 
 	// Errors act in the steps First <= j < Last, the gate's window.
@@ -15,9 +18,10 @@ type Spin struct {
 
 	// Held are the static errors whose toggled integrals are wanted: V = Held[i]·σ.
 	Held []Vec
-	// Borne are the control-borne errors: V(t) = sum_k v_k(t) Axes[k]·σ, with v
-	// laid out like the controls of Run. An amplitude error is the controls
-	// themselves; another one may be their derivative by a parameter of the line.
+	// Borne are the control-borne errors, V(t) = sum_k v_k(t) (Axes[k] + 2 u_k
+	// Shifts[k])·σ: what the field gains when the controls move along v, which is
+	// laid out like them. An amplitude error is the controls themselves; another
+	// one may be their derivative by a parameter of the line.
 	Borne [][]float64
 
 	// Results of Run.
@@ -26,6 +30,7 @@ type Spin struct {
 
 	static vec
 	axes   []vec
+	shifts []vec // 2 Shifts; nil for none
 	held   []vec
 	step   []stepData
 	share  []share // empty without errors
@@ -64,7 +69,10 @@ func (s *Spin) Reset() {
 		panic("dynamics: window outside the grid")
 	}
 	s.static = s.Static.vec()
-	s.axes, s.held = nil, nil
+	s.axes, s.shifts, s.held = nil, nil, nil
+	for _, e := range s.Shifts {
+		s.shifts = append(s.shifts, e.vec().times(2))
+	}
 	for _, e := range s.Axes {
 		s.axes = append(s.axes, e.vec())
 	}
@@ -80,11 +88,9 @@ func (s *Spin) Reset() {
 }
 
 // Run propagates. The controls u run node by node for one control after the
-// other, u[k*nodes+node] with nodes = 2 len(Steps); offset is added
-// to the static field and scale multiplies every control, both inside the
-// window only: the finite errors of an ensemble. Toggled integrals are meant
-// for offset 0 and scale 1.
-func (s *Spin) Run(u []float64, offset Vec, scale float64) {
+// other, u[k*nodes+node] with nodes = 2 len(Steps); offset is added to the static
+// field inside the window only: a finite error.
+func (s *Spin) Run(u []float64, offset Vec) {
 	nodes := 2 * len(s.Steps)
 	q := quat{w: 1}
 	nh := len(s.held)
@@ -95,17 +101,18 @@ func (s *Spin) Run(u []float64, offset Vec, scale float64) {
 		st := &s.step[j]
 		a := s.static
 		inside := j >= s.First && j < s.Last
-		gain := 1.0
 		if inside {
-			gain = scale
 			a = a.add(off)
 		}
 		b := a
-		for k := range s.axes {
-			e := s.axes[k]
+		for k, e := range s.axes {
 			at := k*nodes + 2*j
-			a = a.plus(gain*u[at], e)
-			b = b.plus(gain*u[at+1], e)
+			a = a.plus(u[at], e)
+			b = b.plus(u[at+1], e)
+			if s.shifts != nil {
+				a = a.plus(u[at]*u[at]/2, s.shifts[k])
+				b = b.plus(u[at+1]*u[at+1]/2, s.shifts[k])
+			}
 		}
 		g := gauss * h * h
 		w := a.add(b).times(h/2).plus(-g, a.cross(b))
@@ -124,7 +131,7 @@ func (s *Spin) Run(u []float64, offset Vec, scale float64) {
 				sum[i] = sum[i].add(own)
 			}
 			for i, v := range s.Borne {
-				mean, diff := s.borne(v, j)
+				mean, diff := s.borne(u, v, j)
 				sh.mean[i], sh.diff[i] = mean, diff
 				own := st.back.apply(t.toggled(h, mean, st.bow(g, mean, diff)))
 				sh.own[nh+i] = own
@@ -141,15 +148,19 @@ func (s *Spin) Run(u []float64, offset Vec, scale float64) {
 
 // borne returns the mean of a control-borne error over the two nodes of step j
 // and the difference, later minus earlier.
-func (s *Spin) borne(v []float64, j int) (mean, diff vec) {
+func (s *Spin) borne(u, v []float64, j int) (mean, diff vec) {
 	nodes := 2 * len(s.Steps)
+	var a, b vec
 	for k, e := range s.axes {
 		at := k*nodes + 2*j
-		va, vb := v[at], v[at+1]
-		mean = mean.plus((va+vb)/2, e)
-		diff = diff.plus(vb-va, e)
+		a = a.plus(v[at], e)
+		b = b.plus(v[at+1], e)
+		if s.shifts != nil {
+			a = a.plus(v[at]*u[at], s.shifts[k])
+			b = b.plus(v[at+1]*u[at+1], s.shifts[k])
+		}
 	}
-	return mean, diff
+	return a.add(b).times(0.5), b.plus(-1, a)
 }
 
 // bow returns what multiplies R(w/2)ᵀ in the toggled integral of a control-borne
@@ -170,9 +181,9 @@ type Slopes struct {
 	Direct [][]float64  // row 3b+i: of component i of the Toggle of Borne[b], by its v
 }
 
-// Derive fills the derivatives of the last Run, the scale of which must be
+// Derive fills the derivatives of the last Run, the controls of which must be
 // passed again.
-func (s *Spin) Derive(scale float64, d *Slopes) {
+func (s *Spin) Derive(u []float64, d *Slopes) {
 	nodes := 2 * len(s.Steps)
 	nh, ne := len(s.held), len(s.Toggle)
 	if d.Toggle == nil {
@@ -188,20 +199,19 @@ func (s *Spin) Derive(scale float64, d *Slopes) {
 		t.arc = st.arc
 		g := gauss * h * h
 		inside := j >= s.First && j < s.Last
-		gain := 1.0
-		if inside {
-			gain = scale
-		}
 		t.average()
 		toStart.mul(&st.back, &t.mean)
 		toggling := ne > 0 && j < s.Last
 		if toggling {
 			s.steps(j, h, g, inside, nh, ne, &t, &toStart, &halfToStart, &byW, &byD, &rest)
 		}
-		for k, e := range s.axes {
-			axis := e.times(gain)
+		for k := range s.axes {
 			for node := range 2 {
 				col := k*nodes + 2*j + node
+				axis := s.axes[k]
+				if s.shifts != nil {
+					axis = axis.plus(u[col], s.shifts[k])
+				}
 				other, sign := st.b, -1.0
 				if node == 1 {
 					other, sign = st.a, 1.0
@@ -225,6 +235,10 @@ func (s *Spin) Derive(scale float64, d *Slopes) {
 						if i >= nh && inside {
 							// the field multiplies the error's difference, and moves
 							p = p.plus(-g/2, halfToStart.apply(axis.cross(s.share[j].diff[i-nh])))
+							if s.shifts != nil { // and the error itself moves with the control
+								e := s.shifts[k].times(s.Borne[i-nh][col])
+								p = p.add(st.direct(&toStart, &halfToStart, h, g, sign, e))
+							}
 						}
 						d.Toggle[3*i][col], d.Toggle[3*i+1][col], d.Toggle[3*i+2][col] = p.x, p.y, p.z
 					}
@@ -234,7 +248,7 @@ func (s *Spin) Derive(scale float64, d *Slopes) {
 				}
 				var p vec
 				if inside {
-					p = s.direct(st, &toStart, &halfToStart, h, g, sign, e)
+					p = st.direct(&toStart, &halfToStart, h, g, sign, axis)
 				}
 				for i := range s.Borne {
 					d.Direct[3*i][col], d.Direct[3*i+1][col], d.Direct[3*i+2][col] = p.x, p.y, p.z
@@ -281,9 +295,9 @@ func (s *Spin) steps(j int, h, g float64, inside bool, nh, ne int, t *turn, toSt
 }
 
 // direct is the derivative of a control-borne error's share by the error itself
-// at one node of a control with axis e: its mean moves by half of e, its
+// at one node along e: its mean moves by half of e, its
 // difference by sign e.
-func (s *Spin) direct(st *stepData, toStart, halfToStart *Mat, h, g, sign float64, e vec) vec {
+func (st *stepData) direct(toStart, halfToStart *Mat, h, g, sign float64, e vec) vec {
 	half := e.times(0.5)
 	d := st.b.plus(-1, st.a)
 	f := st.a.add(st.b).times(0.5)

@@ -105,7 +105,7 @@ func TestOrderFour(t *testing.T) {
 	for _, n := range []int{12, 24, 48, 96} {
 		u, steps := smooth(n, T)
 		s := bear(spinOn(steps), u)
-		s.Run(u, Vec{}, 1)
+		s.Run(u, Vec{})
 		var e [2]float64
 		for i := range gate {
 			e[0] = math.Max(e[0], math.Abs(s.Gate[i]-gate[i]))
@@ -194,30 +194,30 @@ func TestDerive(t *testing.T) {
 	steps[7], steps[8] = 1.3, 0.2 // unequal steps outside the window
 	for _, c := range []struct {
 		offset Vec
-		scale  float64
+		shifts []Vec
 		toggle bool
-	}{{Vec{}, 1, true}, {Vec{0.01, -0.03, 0.02}, 1.05, false}} {
+	}{{Vec{}, nil, true}, {Vec{0.01, -0.03, 0.02}, nil, false}, {Vec{}, []Vec{{0, 0.01, 0.05}, {0.02, 0, -0.04}}, true}} {
 		s := spinOn(steps)
-		s.First, s.Last = 1, 7
+		s.First, s.Last, s.Shifts = 1, 7, c.shifts
 		bear(s, u)
 		alone := s.Borne[1] // a field of its own; Borne[0] is u itself
-		s.Run(u, c.offset, c.scale)
+		s.Run(u, c.offset)
 		q0 := s.Gate
 		d := slopes(s, len(u))
 		if !c.toggle {
 			d.Toggle, d.Direct = nil, nil
 		}
-		s.Derive(c.scale, d)
+		s.Derive(u, d)
 		const e = 1e-5
 		worst := 0.0
 		for i := range u {
 			x := u[i]
 			u[i] = x + e
-			s.Run(u, c.offset, c.scale)
+			s.Run(u, c.offset)
 			dp := q0.Conj().Mul(s.Gate)
 			tp := append([]Vec(nil), s.Toggle...)
 			u[i] = x - e
-			s.Run(u, c.offset, c.scale)
+			s.Run(u, c.offset)
 			dm := q0.Conj().Mul(s.Gate)
 			tm := append([]Vec(nil), s.Toggle...)
 			u[i] = x
@@ -239,10 +239,10 @@ func TestDerive(t *testing.T) {
 			}
 			y, last := alone[i], len(s.Toggle)-1
 			alone[i] = y + e
-			s.Run(u, c.offset, c.scale)
+			s.Run(u, c.offset)
 			p := s.Toggle[last]
 			alone[i] = y - e
-			s.Run(u, c.offset, c.scale)
+			s.Run(u, c.offset)
 			m := s.Toggle[last]
 			alone[i] = y
 			for l := range 3 {
@@ -250,7 +250,7 @@ func TestDerive(t *testing.T) {
 			}
 		}
 		if !(worst <= 2e-9) {
-			t.Errorf("scale %v: derivative off by %.3g", c.scale, worst)
+			t.Errorf("shifts %v: derivative off by %.3g", c.shifts, worst)
 		}
 	}
 }
@@ -268,7 +268,7 @@ func TestRabi(t *testing.T) {
 	}
 	s := &Spin{Static: Vec{0, 0, D}, Axes: []Vec{{O, 0, 0}}, Steps: steps, Last: 10}
 	s.Reset()
-	s.Run(u, Vec{}, 1)
+	s.Run(u, Vec{})
 	g := math.Hypot(O, D)
 	want := O * O / (g * g) * math.Pow(math.Sin(g*T/2), 2)
 	if got := s.Gate[1]*s.Gate[1] + s.Gate[2]*s.Gate[2]; !(math.Abs(got-want) <= 1e-14) {
@@ -281,8 +281,8 @@ func TestNoAllocation(t *testing.T) {
 	s := bear(spinOn(steps), u)
 	d := slopes(s, len(u))
 	if n := testing.AllocsPerRun(10, func() {
-		s.Run(u, Vec{}, 1)
-		s.Derive(1, d)
+		s.Run(u, Vec{})
+		s.Derive(u, d)
 	}); n != 0 {
 		t.Errorf("%v allocations in Run and Derive", n)
 	}
@@ -320,12 +320,12 @@ func BenchmarkSpin(b *testing.B) {
 		d := slopes(s, len(u))
 		b.Run(fmt.Sprintf("%s/run", c.name), func(b *testing.B) {
 			for b.Loop() {
-				s.Run(u, Vec{}, 1)
+				s.Run(u, Vec{})
 			}
 		})
 		b.Run(fmt.Sprintf("%s/derive", c.name), func(b *testing.B) {
 			for b.Loop() {
-				s.Derive(1, d)
+				s.Derive(u, d)
 			}
 		})
 	}
@@ -348,7 +348,7 @@ func TestLandauZener(t *testing.T) {
 		}
 		s := &Spin{Static: Vec{c.D, 0, 0}, Axes: []Vec{{0, 0, 1}}, Steps: steps, Last: n}
 		s.Reset()
-		s.Run(u, Vec{}, 1)
+		s.Run(u, Vec{})
 		// The Bloch vector of an adiabatic state is along the field, so the state
 		// left at the end follows the field at the start turned by R.
 		e := math.Hypot(c.D, c.a*T)

@@ -15,6 +15,8 @@ const (
 	Static    Kind = iota // H += λ V·σ, V constant
 	Amplitude             // what arrives at the device is scaled by 1+λ
 	Any                   // every static error: all three directions
+	Mixed                 // the controls u become u + λ Mix u: one quadrature, a skew angle, crosstalk
+	Line                  // a parameter of a line: the controls become u + λ v, v the response of a line of its own
 )
 
 // A Class is a set of errors to be held against.
@@ -22,20 +24,26 @@ type Class struct {
 	Name   string
 	Kind   Kind
 	Vector dynamics.Vec // kind Static: V, any length but zero
+	Mix    [][]float64  // kind Mixed: row by control that is moved, column by control that moves it
 	Weight float64      // of its residuals; the gate itself has 1
 	// Size is the largest error that the refinement looks at: the length of the
-	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or the share of the
-	// amplitude. Zero keeps the class out of the refinement.
+	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or λ for errors of
+	// the controls. Zero keeps the class out of the refinement.
 	Size float64
 	// OneSided leaves the opposite directions of kind Any out of the ensemble: half
 	// the work while the second order, which is even in the error, rules.
 	OneSided bool
 }
 
-// member is one finite error of an ensemble.
+// borne says whether an error of the kind rides on the controls.
+func (k Kind) borne() bool { return k == Amplitude || k == Mixed || k == Line }
+
+// member is one finite error of an ensemble: a field that is added, and a scale
+// or, for the other errors that ride on the controls, a λ.
 type member struct {
 	offset dynamics.Vec // rad/ns
 	scale  float64
+	lambda float64
 }
 
 // ensemble returns the finite errors of a class: both signs of its size, or for
@@ -47,9 +55,11 @@ func (c Class) ensemble() []member {
 	switch c.Kind {
 	case Static:
 		v := unit(c.Vector)
-		return []member{{scaled(v, c.Size), 1}, {scaled(v, -c.Size), 1}}
+		return []member{{offset: scaled(v, c.Size), scale: 1}, {offset: scaled(v, -c.Size), scale: 1}}
 	case Amplitude:
 		return []member{{scale: 1 + c.Size}, {scale: 1 - c.Size}}
+	case Mixed, Line:
+		return []member{{scale: 1, lambda: c.Size}, {scale: 1, lambda: -c.Size}}
 	}
 	along := Directions()
 	if c.OneSided {
@@ -57,7 +67,7 @@ func (c Class) ensemble() []member {
 	}
 	var list []member
 	for _, d := range along {
-		list = append(list, member{scaled(d, c.Size), 1})
+		list = append(list, member{offset: scaled(d, c.Size), scale: 1})
 	}
 	return list
 }

@@ -73,18 +73,39 @@ func randomResponse(rng *rand.Rand, g Grid, cell, mixing bool, n int) Response {
 		}
 		return a
 	}
-	r := Response{N: n, Re: fill()}
+	re := fill()
 	if mixing {
-		r.Im = fill()
+		return quadratures(n, re, fill())
 	}
-	return r
+	return quadratures(n, re, nil)
+}
+
+// quadratures is the response of one pair of quadratures; re and im have a row of
+// n coefficients for each node.
+func quadratures(n int, re, im []float64) Response {
+	return Response{Dim: 2 * n, Blocks: []Block{{N: n, Quadrature: true, Re: turned(re, n), Im: turned(im, n)}}}
+}
+
+// turned gives rows of nodes from rows of n coefficients.
+func turned(a []float64, n int) []float64 {
+	if a == nil {
+		return nil
+	}
+	nodes := len(a) / n
+	b := make([]float64, len(a))
+	for i := range nodes {
+		for j := range n {
+			b[j*nodes+i] = a[i*n+j]
+		}
+	}
+	return b
 }
 
 // target is a rotation with no special axis.
 var target = dynamics.Turn(dynamics.Vec{1.1, -0.4, 0.3})
 
 func spinOn(a axisKind, held []Class) Spin {
-	return Spin{Grid: a.grid, Static: a.static, Axes: [2]dynamics.Vec{{0.25, 0.01, 0}, {-0.02, 0.24, 0.01}}, Target: target, Held: held}
+	return Spin{Grid: a.grid, Static: a.static, Axes: []dynamics.Vec{{0.25, 0.01, 0}, {-0.02, 0.24, 0.01}}, Target: target, Held: held}
 }
 
 // TestJacobian compares every derivative with central differences of fourth
@@ -183,11 +204,11 @@ func stepwise(rng *rand.Rand, s Spin) slow {
 // coefficient per step.
 func identity(g Grid) Response {
 	n := len(g.Steps)
-	r := Response{N: n, Re: make([]float64, 2*n*n)}
+	re := make([]float64, 2*n*n)
 	for j := range n {
-		r.Re[(2*j)*n+j], r.Re[(2*j+1)*n+j] = 1, 1
+		re[(2*j)*n+j], re[(2*j+1)*n+j] = 1, 1
 	}
-	return r
+	return quadratures(n, re, nil)
 }
 
 func matrixOf(q dynamics.Quat) matrix {
@@ -205,7 +226,7 @@ func TestFiguresAgainstDefinition(t *testing.T) {
 			name := a.name + ", " + h.name
 			s := stepwise(rng, spinOn(a, h.held))
 			g := NewGate(s.spin, identity(a.grid), 0.5)
-			f := g.Figures(s.nodes())
+			f := g.Figures(s.nodes(), nil)
 			if want := infidelity(w, s.unitary([3]float64{}, 1)); !(math.Abs(f.Infidelity-want) <= tol) {
 				t.Errorf("%s: infidelity %v, want %v", name, f.Infidelity, want)
 			}
@@ -357,7 +378,6 @@ func TestMeanInfidelity(t *testing.T) {
 	rng := rand.New(rand.NewPCG(6, 3))
 	a := axes()[2]
 	s := stepwise(rng, spinOn(a, nil))
-	g := NewGate(s.spin, Response{}, 0)
 	w := matrixOf(target)
 	mean := func(list ...[4]float64) float64 {
 		sum := 0.0
@@ -392,10 +412,13 @@ func TestMeanInfidelity(t *testing.T) {
 		{oneSided, mean(sphere...)},
 		{Class{Kind: Any, Weight: 1}, 0},
 	} {
-		if got := g.MeanInfidelity(s.nodes(), c.class); !(math.Abs(got-c.want) <= 1e-13) {
+		s.spin.Held = []Class{detuning, c.class}
+		g := NewGate(s.spin, Response{}, 0)
+		if got := g.MeanInfidelity(s.nodes(), nil, 1); !(math.Abs(got-c.want) <= 1e-13) {
 			t.Errorf("%+v: %v, want %v", c.class, got, c.want)
 		}
 	}
+	g := NewGate(s.spin, Response{}, 0)
 	if got, want := infidelity(matrixOf(g.Unitary(s.nodes())), s.unitary([3]float64{}, 1)), 0.0; !(math.Abs(got-want) <= 1e-13) {
 		t.Errorf("the unitary misses the definition by %v", got)
 	}
@@ -404,7 +427,7 @@ func TestMeanInfidelity(t *testing.T) {
 // pulse is a drive of unit Rabi rate in segments of angle and phase, degrees,
 // cut into equal steps, perPi of them in 180 degrees.
 func pulse(perPi int, segments ...[2]float64) slow {
-	s := slow{spin: Spin{Axes: [2]dynamics.Vec{{1, 0, 0}, {0, 1, 0}}, Target: dynamics.Turn(dynamics.Vec{math.Pi, 0, 0})}}
+	s := slow{spin: Spin{Axes: []dynamics.Vec{{1, 0, 0}, {0, 1, 0}}, Target: dynamics.Turn(dynamics.Vec{math.Pi, 0, 0})}}
 	var q []float64
 	for _, g := range segments {
 		for range int(math.Round(g[0] / 180 * float64(perPi))) {
@@ -421,7 +444,7 @@ func pulse(perPi int, segments ...[2]float64) slow {
 func (s slow) figures(held ...Class) Figures {
 	spin := s.spin
 	spin.Held = held
-	return NewGate(spin, Response{}, 0).Figures(s.nodes())
+	return NewGate(spin, Response{}, 0).Figures(s.nodes(), nil)
 }
 
 var (
@@ -493,7 +516,7 @@ func TestSecondDifference(t *testing.T) {
 		s := stepwise(rng, spinOn(a, []Class{{Kind: Static, Vector: v, Weight: 1}, amplitude}))
 		s.spin.Target = NewGate(s.spin, Response{}, 0).Unitary(s.nodes())
 		g := NewGate(s.spin, Response{}, 0)
-		f := g.Figures(s.nodes())
+		f := g.Figures(s.nodes(), nil)
 		if !(f.Infidelity <= 1e-28) {
 			t.Fatalf("%s: the nominal gate misses itself by %v", a.name, f.Infidelity)
 		}
@@ -640,13 +663,13 @@ func big(held []Class, refine float64) (*Gate, []float64, []float64, []float64) 
 	}
 	grid.Last = 192
 	const n = 20
-	r := Response{N: n, Re: make([]float64, 384*n)}
+	re := make([]float64, 384*n)
 	for node := range 384 {
 		for j := range n {
-			r.Re[node*n+j] = math.Sin(math.Pi*float64(j+1)*(float64(node)+0.5)/384) / 8
+			re[node*n+j] = math.Sin(math.Pi*float64(j+1)*(float64(node)+0.5)/384) / 8
 		}
 	}
-	g := NewGate(Spin{Grid: grid, Axes: [2]dynamics.Vec{{0.25, 0, 0}, {0, 0.25, 0}}, Target: target, Held: held}, r, refine)
+	g := NewGate(Spin{Grid: grid, Axes: []dynamics.Vec{{0.25, 0, 0}, {0, 0.25, 0}}, Target: target, Held: held}, quadratures(n, re, nil), refine)
 	c := make([]float64, g.Dim())
 	for i := range c {
 		c[i] = math.Cos(float64(3 * i))

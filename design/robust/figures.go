@@ -1,0 +1,163 @@
+package robust
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/mat"
+
+	"holdfast/design/dynamics"
+)
+
+// Figures say what a gate is worth.
+type Figures struct {
+	Infidelity float64 // average gate infidelity, at the best free angles
+	// Before and After are these angles, rad; zero where not free.
+	Before, After float64
+	// Susceptibility of each held class of the Spin, in order.
+	Susceptibility []float64
+	Worst          []Worst // of each held class; the zero value for classes of one error
+}
+
+// Worst is the error of a class that survives most.
+type Worst struct {
+	Susceptibility float64
+	Direction      string // "0.83 X + 0.41 Y"
+}
+
+// load takes controls u given at the grid's nodes, one control after the other
+// in shares of full scale, and for every held class of kind Line its v.
+func (g *Gate) load(u []float64, v [][]float64) {
+	copy(g.u, u)
+	for i, c := range g.spec.Held {
+		switch c.Kind {
+		case Mixed:
+			g.mix(c.Mix, g.u, g.v[i])
+		case Line:
+			copy(g.v[i], v[i])
+		}
+	}
+}
+
+// Figures evaluates controls u and, by held class, the v of those of kind Line;
+// v may be nil when there are none.
+func (g *Gate) Figures(u []float64, v [][]float64) Figures {
+	g.load(u, v)
+	g.nominal.Run(g.u, dynamics.Vec{})
+	f := Figures{Infidelity: g.infidelity(g.nominal.Gate)}
+	if g.spec.FreeBefore || g.spec.FreeAfter {
+		f.Before, f.After = g.angles(g.after.Mul(g.nominal.Gate).Mul(g.before))
+	}
+	at := 0
+	// combine lists static classes before borne ones: walk them as NewGate did
+	share := make([]float64, len(g.spec.Held))
+	worst := make([]Worst, len(g.spec.Held))
+	for i, c := range g.spec.Held {
+		switch c.Kind {
+		case Any:
+			var m [9]float64
+			for col := range 3 {
+				t := g.averaged(at + col)
+				for row := range 3 {
+					m[3*row+col] = t[row]
+				}
+			}
+			at += 3
+			share[i], worst[i] = universal(m)
+		case Static:
+			share[i] = norm(g.averaged(at))
+			at++
+		}
+	}
+	for k, i := range g.borne {
+		t := g.nominal.Toggle[len(g.nominal.Held)+k]
+		if p := g.power(g.v[i]); p > 0 {
+			share[i] = norm(t) / math.Sqrt(g.span*p)
+		}
+	}
+	f.Susceptibility, f.Worst = share, worst
+	return f
+}
+
+// infidelity returns the average gate infidelity of the grid's gate.
+func (g *Gate) infidelity(q dynamics.Quat) float64 {
+	m, _ := g.miss(q)
+	return 2. / 3 * (m[0]*m[0] + m[1]*m[1] + m[2]*m[2])
+}
+
+// power returns ∫|F|² dt over the window, rad²/ns, of the field F that an error
+// riding on the controls as v adds per λ.
+func (g *Gate) power(v []float64) float64 {
+	sum := 0.0
+	for j := g.spec.Grid.First; j < g.spec.Grid.Last; j++ {
+		for node := 2 * j; node < 2*j+2; node++ {
+			var f dynamics.Vec
+			for k, e := range g.spec.Axes {
+				at := k*g.nodes + node
+				for i := range 3 {
+					f[i] += v[at] * e[i]
+					if g.spec.Shifts != nil {
+						f[i] += 2 * v[at] * g.u[at] * g.spec.Shifts[k][i]
+					}
+				}
+			}
+			sum += g.spec.Grid.Steps[j] / 2 * (f[0]*f[0] + f[1]*f[1] + f[2]*f[2])
+		}
+	}
+	return sum
+}
+
+// universal returns ||M||_F/√3 of the averaged map and its worst direction.
+func universal(m [9]float64) (float64, Worst) {
+	sum := 0.0
+	for _, v := range m {
+		sum += v * v
+	}
+	var svd mat.SVD
+	w := Worst{}
+	if svd.Factorize(mat.NewDense(3, 3, m[:]), mat.SVDFull) {
+		var v mat.Dense
+		svd.VTo(&v)
+		w.Susceptibility = svd.Values(nil)[0]
+		w.Direction = inWords(dynamics.Vec{v.At(0, 0), v.At(1, 0), v.At(2, 0)})
+	}
+	return math.Sqrt(sum / 3), w
+}
+
+// Infidelity returns the average gate infidelity of controls u with a static
+// error of field offset (rad/ns) and every control scaled, in the window only.
+func (g *Gate) Infidelity(u []float64, offset dynamics.Vec, scale float64) float64 {
+	copy(g.u, u)
+	return g.erring(member{offset: offset, scale: scale}, nil)
+}
+
+// erring returns the infidelity of the loaded controls with a finite error.
+func (g *Gate) erring(e member, v []float64) float64 {
+	g.err(e, v)
+	g.finite.Run(g.moved, e.offset)
+	return g.infidelity(g.finite.Gate)
+}
+
+// MeanInfidelity returns the mean average gate infidelity over the finite errors
+// of the numbered held class at its size, both signs of each; u and v as for
+// Figures.
+func (g *Gate) MeanInfidelity(u []float64, v [][]float64, class int) float64 {
+	g.load(u, v)
+	c := g.spec.Held[class]
+	c.OneSided = false
+	list := c.ensemble()
+	if len(list) == 0 {
+		return 0
+	}
+	sum := 0.0
+	for _, e := range list {
+		sum += g.erring(e, g.v[class])
+	}
+	return sum / float64(len(list))
+}
+
+// Unitary returns the gate of controls u given at the grid's nodes, in the frame
+// of the undriven device, without free angles.
+func (g *Gate) Unitary(u []float64) dynamics.Quat {
+	g.finite.Run(u, dynamics.Vec{})
+	return g.after.Mul(g.finite.Gate).Mul(g.before)
+}

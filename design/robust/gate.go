@@ -1,0 +1,553 @@
+package robust
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/blas64"
+
+	"holdfast/design/dynamics"
+)
+
+// A Grid is the time axis of one gate: steps in ns, those of the gate's window
+// (in which alone errors act) at First <= j < Last.
+type Grid struct {
+	Steps       []float64
+	First, Last int
+	// Lead and Trail, ns, are what of the grid lies before and after the window:
+	// the free evolution over them is taken out of the gate, whose frame is that of
+	// the undriven device.
+	Lead, Trail float64
+}
+
+// Window returns the length of the gate's window in ns.
+func (g Grid) Window() float64 {
+	t := 0.0
+	for _, h := range g.Steps[g.First:g.Last] {
+		t += h
+	}
+	return t
+}
+
+// Spin is the problem of one driven spin.
+type Spin struct {
+	Grid   Grid
+	Static dynamics.Vec   // H0 = Static·σ/2, rad/ns
+	Axes   []dynamics.Vec // of each control at full scale: H += share (Axes·σ)/2, rad/ns
+	Shifts []dynamics.Vec // what the square of each control's share adds, rad/ns; nil for none
+	Target dynamics.Quat
+	// FreeBefore and FreeAfter leave a rotation about Z on that side of the gate to
+	// the playback: the residuals are those at the best angles.
+	FreeBefore, FreeAfter bool
+	Held                  []Class
+}
+
+// A Block is the response of the controls to a group of coefficients at the
+// grid's nodes. Re and Im have a row of nodes for each of N coefficients. A block
+// of one control gives u = Re c with c = c[First:First+N]; one of two quadratures
+// gives u_I + i u_Q = (Re + i Im)(c_I + i c_Q) to Control and the next, c_I as
+// above and c_Q the N coefficients that follow. Im is nil for a line that does not
+// mix the quadratures.
+type Block struct {
+	First, N   int
+	Control    int
+	Quadrature bool
+	Re, Im     []float64
+}
+
+// Response is what each coefficient gives at the nodes.
+type Response struct {
+	Dim    int // coefficients in all
+	Blocks []Block
+	// Slopes give, for a held class of kind Line, its v; nil for the others.
+	Slopes [][]Block
+}
+
+// A Gate evaluates a Spin problem. It serves one goroutine; Clone makes more.
+type Gate struct {
+	spec     Spin
+	response Response
+	span     float64 // window, ns
+	before   dynamics.Quat
+	after    dynamics.Quat
+	full     float64 // full-scale rate that makes residuals of borne errors dimensionless, rad/ns
+	weight   float64 // of the members' residuals
+
+	nominal dynamics.Spin // with every toggled error
+	finite  dynamics.Spin // gate only
+	combine []triple
+	borne   []int // class of each borne error of nominal
+	members []placed
+	rows    int
+
+	nodes int
+	u     []float64   // controls, one after the other
+	moved []float64   // the same with a finite error
+	v     [][]float64 // of each class that is borne: what λ multiplies; u itself for an amplitude
+
+	d      []float64 // derivatives by node: raw rows x controls x nodes; the slopes lie in it
+	raw    []float64 // by coefficient: raw rows x Dim
+	frames []frame   // of the nominal gate, then of each member
+	slopes dynamics.Slopes
+	member []dynamics.Slopes
+}
+
+// placed is a member with the class that it comes from.
+type placed struct {
+	member
+	class int
+}
+
+// triple says what three residuals are: a weight times an averaged toggled
+// error, put together from those that dynamics follows.
+type triple struct {
+	weight float64
+	parts  []part
+}
+
+// part is one toggled error and its factor in a triple.
+type part struct {
+	toggle int
+	factor float64
+}
+
+// frame takes the generator δ of dynamics to the derivative of a gate residual.
+type frame [9]float64
+
+// NewGate prepares the residuals of the problem: the gate error (3), then for
+// every held class the time-averaged toggled error (3, or 9 for Any), static
+// classes before those that ride on the controls. With refine > 0, the gate errors
+// of the classes' ensembles (3 each) follow with that weight.
+func NewGate(s Spin, r Response, refine float64) *Gate {
+	g := &Gate{spec: s, response: r, weight: refine}
+	g.span = s.Grid.Window()
+	g.before = dynamics.Turn(scaled(s.Static, -s.Grid.Lead))
+	g.after = dynamics.Turn(scaled(s.Static, -s.Grid.Trail))
+	for _, a := range s.Axes {
+		g.full = math.Max(g.full, norm(a))
+	}
+	K := len(s.Axes)
+	g.nodes = 2 * len(s.Grid.Steps)
+	g.u, g.moved = make([]float64, K*g.nodes), make([]float64, K*g.nodes)
+	base := dynamics.Spin{Static: s.Static, Axes: s.Axes, Shifts: s.Shifts, Steps: s.Grid.Steps, First: s.Grid.First, Last: s.Grid.Last}
+	g.nominal, g.finite = base, base
+
+	statics, all := 0, false
+	for _, c := range s.Held {
+		switch c.Kind {
+		case Static:
+			statics++
+		case Any:
+			all = true
+		}
+	}
+	// Either each named static error is toggled by itself, or, when that is less
+	// work, the three directions are and the named ones combined from them.
+	all = all || statics > 3
+	if all {
+		g.nominal.Held = []dynamics.Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}}
+	}
+	for _, c := range s.Held {
+		switch {
+		case c.Kind == Any:
+			for i := range 3 {
+				g.combine = append(g.combine, triple{c.Weight, []part{{i, 1 / g.span}}})
+			}
+		case c.Kind == Static && all:
+			v := unit(c.Vector)
+			g.combine = append(g.combine, triple{c.Weight, []part{{0, v[0] / g.span}, {1, v[1] / g.span}, {2, v[2] / g.span}}})
+		case c.Kind == Static:
+			g.combine = append(g.combine, triple{c.Weight, []part{{len(g.nominal.Held), 1 / g.span}}})
+			g.nominal.Held = append(g.nominal.Held, unit(c.Vector))
+		}
+	}
+	g.v = make([][]float64, len(s.Held))
+	for i, c := range s.Held {
+		if !c.Kind.borne() {
+			continue
+		}
+		if g.v[i] = g.u; c.Kind != Amplitude {
+			g.v[i] = make([]float64, K*g.nodes)
+		}
+		g.combine = append(g.combine, triple{c.Weight, []part{{len(g.nominal.Held) + len(g.borne), 1 / (g.span * g.full)}}})
+		g.borne = append(g.borne, i)
+		g.nominal.Borne = append(g.nominal.Borne, g.v[i])
+	}
+	if refine > 0 {
+		for i, c := range s.Held {
+			for _, m := range c.ensemble() {
+				g.members = append(g.members, placed{m, i})
+			}
+		}
+	}
+	g.nominal.Reset()
+	g.finite.Reset()
+	g.rows = 3 + 3*len(g.combine) + 3*len(g.members)
+	g.frames = make([]frame, 1+len(g.members))
+
+	// Raw rows: nominal gate, toggled errors, members.
+	rawRows := 3 + 3*len(g.nominal.Toggle) + 3*len(g.members)
+	g.d = make([]float64, rawRows*K*g.nodes)
+	g.raw = make([]float64, rawRows*r.Dim)
+	row := func(i int) []float64 { return g.d[i*K*g.nodes : (i+1)*K*g.nodes] }
+	gateRows := func(i int) [3][]float64 { return [3][]float64{row(i), row(i + 1), row(i + 2)} }
+	g.slopes.Gate = gateRows(0)
+	for i := range 3 * len(g.nominal.Toggle) {
+		g.slopes.Toggle = append(g.slopes.Toggle, row(3+i))
+	}
+	if len(g.borne) > 0 {
+		direct := make([]float64, 3*len(g.borne)*K*g.nodes)
+		for i := range 3 * len(g.borne) {
+			g.slopes.Direct = append(g.slopes.Direct, direct[i*K*g.nodes:(i+1)*K*g.nodes])
+		}
+	}
+	for i := range g.members {
+		g.member = append(g.member, dynamics.Slopes{Gate: gateRows(g.memberRow(i))})
+	}
+	return g
+}
+
+// memberRow is the first raw row of a member.
+func (g *Gate) memberRow(i int) int { return 3 + 3*len(g.nominal.Toggle) + 3*i }
+
+// Clone returns a Gate with working memory of its own.
+func (g *Gate) Clone() *Gate { return NewGate(g.spec, g.response, g.weight) }
+
+// Rows returns the number of residuals, Dim the number of coefficients.
+func (g *Gate) Rows() int { return g.rows }
+
+// Dim returns the number of coefficients.
+func (g *Gate) Dim() int { return g.response.Dim }
+
+// apply adds what blocks give for the coefficients c to the controls in dst.
+func (g *Gate) apply(blocks []Block, c, dst []float64) {
+	for _, b := range blocks {
+		control := func(k int) blas64.Vector {
+			return blas64.Vector{N: g.nodes, Inc: 1, Data: dst[(b.Control+k)*g.nodes : (b.Control+k+1)*g.nodes]}
+		}
+		part := func(k int) blas64.Vector {
+			return blas64.Vector{N: b.N, Inc: 1, Data: c[b.First+k*b.N : b.First+(k+1)*b.N]}
+		}
+		re := blas64.General{Rows: b.N, Cols: g.nodes, Stride: g.nodes, Data: b.Re}
+		blas64.Gemv(blas.Trans, 1, re, part(0), 1, control(0))
+		if !b.Quadrature {
+			continue
+		}
+		blas64.Gemv(blas.Trans, 1, re, part(1), 1, control(1))
+		if b.Im != nil {
+			im := blas64.General{Rows: b.N, Cols: g.nodes, Stride: g.nodes, Data: b.Im}
+			blas64.Gemv(blas.Trans, -1, im, part(1), 1, control(0))
+			blas64.Gemv(blas.Trans, 1, im, part(0), 1, control(1))
+		}
+	}
+}
+
+// contract adds f times rows of derivatives by node, d of rows x controls x
+// nodes, taken from the nodes first <= node < last, to derivatives by coefficient.
+func (g *Gate) contract(blocks []Block, f float64, d []float64, rows, first, last int, raw []float64) {
+	w, n := len(g.spec.Axes)*g.nodes, last-first
+	if rows == 0 || n == 0 {
+		return
+	}
+	for _, b := range blocks {
+		control := func(k int) blas64.General {
+			return blas64.General{Rows: rows, Cols: n, Stride: w, Data: d[(b.Control+k)*g.nodes+first:]}
+		}
+		part := func(k int) blas64.General {
+			return blas64.General{Rows: rows, Cols: b.N, Stride: g.response.Dim, Data: raw[b.First+k*b.N:]}
+		}
+		re := blas64.General{Rows: b.N, Cols: n, Stride: g.nodes, Data: b.Re[first:]}
+		blas64.Gemm(blas.NoTrans, blas.Trans, f, control(0), re, 1, part(0))
+		if !b.Quadrature {
+			continue
+		}
+		blas64.Gemm(blas.NoTrans, blas.Trans, f, control(1), re, 1, part(1))
+		if b.Im != nil {
+			im := blas64.General{Rows: b.N, Cols: n, Stride: g.nodes, Data: b.Im[first:]}
+			blas64.Gemm(blas.NoTrans, blas.Trans, f, control(1), im, 1, part(0))
+			blas64.Gemm(blas.NoTrans, blas.Trans, -f, control(0), im, 1, part(1))
+		}
+	}
+}
+
+// mix stores Mix u in v, and unmix adds f Mixᵀ d to d for one row of
+// derivatives in the nodes first <= node < last.
+func (g *Gate) mix(mix [][]float64, u, v []float64) {
+	clear(v)
+	for k, row := range mix {
+		for l, m := range row {
+			if m == 0 {
+				continue
+			}
+			to, from := v[k*g.nodes:(k+1)*g.nodes], u[l*g.nodes:(l+1)*g.nodes]
+			for i, x := range from {
+				to[i] += m * x
+			}
+		}
+	}
+}
+
+func (g *Gate) unmix(mix [][]float64, f float64, from, to []float64, first, last int) {
+	for k, row := range mix {
+		for l, m := range row {
+			if m == 0 {
+				continue
+			}
+			a, b := from[k*g.nodes+first:k*g.nodes+last], to[l*g.nodes+first:l*g.nodes+last]
+			for i, x := range a {
+				b[i] += f * m * x
+			}
+		}
+	}
+}
+
+// controls fills u and every v for the coefficients.
+func (g *Gate) controls(c []float64) {
+	clear(g.u)
+	g.apply(g.response.Blocks, c, g.u)
+	for i, class := range g.spec.Held {
+		switch class.Kind {
+		case Mixed:
+			g.mix(class.Mix, g.u, g.v[i])
+		case Line:
+			clear(g.v[i])
+			g.apply(g.response.Slopes[i], c, g.v[i])
+		}
+	}
+}
+
+// inside returns the nodes of the window.
+func (g *Gate) inside() (first, last int) { return 2 * g.spec.Grid.First, 2 * g.spec.Grid.Last }
+
+// err stores the controls with a finite error in moved: in the window only.
+func (g *Gate) err(e member, v []float64) {
+	copy(g.moved, g.u)
+	first, last := g.inside()
+	for k := range g.spec.Axes {
+		row := g.moved[k*g.nodes+first : k*g.nodes+last]
+		if e.scale != 1 {
+			for i := range row {
+				row[i] *= e.scale
+			}
+		}
+		if e.lambda != 0 {
+			for i, x := range v[k*g.nodes+first : k*g.nodes+last] {
+				row[i] += e.lambda * x
+			}
+		}
+	}
+}
+
+// miss returns the vector part of the gate error, at the best free angles and
+// signed so that the scalar part is positive, and the frame of its derivative.
+func (g *Gate) miss(q dynamics.Quat) (m dynamics.Vec, k frame) {
+	left, right := g.after.Mul(q), g.before
+	if g.spec.FreeBefore || g.spec.FreeAfter {
+		before, after := g.angles(left.Mul(right))
+		left = dynamics.Turn(dynamics.Vec{0, 0, after}).Mul(left)
+		right = right.Mul(dynamics.Turn(dynamics.Vec{0, 0, before}))
+	}
+	right = right.Mul(g.spec.Target.Conj())
+	e := left.Mul(right)
+	sign := 1.0
+	if e[0] < 0 {
+		sign = -1
+	}
+	for i := range 3 {
+		var half dynamics.Quat
+		half[1+i] = sign / 2
+		d := left.Mul(half).Mul(right)
+		k[i], k[3+i], k[6+i] = d[1], d[2], d[3]
+	}
+	m = dynamics.Vec{sign * e[1], sign * e[2], sign * e[3]}
+	if g.spec.FreeBefore || g.spec.FreeAfter {
+		g.project(&k, e, sign)
+	}
+	return m, k
+}
+
+// angles returns the rotations about Z, before and after, that bring x closest
+// to the target. With x = (w, x, y, z), a turn by α after and β before rotates
+// (w, z) by (α+β)/2 and (x, y) by (α-β)/2, and the overlap with the target is the
+// sum of two cosines: closed forms for either side alone and for both.
+func (g *Gate) angles(x dynamics.Quat) (before, after float64) {
+	t := g.spec.Target
+	// overlap = A cos s + B sin s + C cos d + D sin d, s = (α+β)/2, d = (α-β)/2
+	A, B := x[0]*t[0]+x[3]*t[3], x[0]*t[3]-x[3]*t[0]
+	C, D := x[1]*t[1]+x[2]*t[2], x[1]*t[2]-x[2]*t[1]
+	switch {
+	case g.spec.FreeBefore && g.spec.FreeAfter:
+		s, d := math.Atan2(B, A), math.Atan2(D, C)
+		return s - d, s + d
+	case g.spec.FreeAfter: // s = d = α/2
+		return 0, 2 * math.Atan2(B+D, A+C)
+	}
+	return 2 * math.Atan2(B-D, A+C), 0 // s = -d = β/2
+}
+
+// project takes from the derivative what the free angles follow: at the best
+// angles the residual is orthogonal to its derivatives by them, and the angles
+// move so that it stays so (variable projection, Golub and Pereyra 1973, SIAM J.
+// Numer. Anal. 10, 413, with Kaufman's simplification, exact at a zero).
+func (g *Gate) project(k *frame, e dynamics.Quat, sign float64) {
+	var list []dynamics.Vec
+	z := dynamics.Quat{0, 0, 0, sign / 2}
+	if g.spec.FreeAfter {
+		d := z.Mul(e)
+		list = append(list, dynamics.Vec{d[1], d[2], d[3]})
+	}
+	if g.spec.FreeBefore {
+		d := e.Mul(g.spec.Target).Mul(z).Mul(g.spec.Target.Conj())
+		list = append(list, dynamics.Vec{d[1], d[2], d[3]})
+	}
+	var basis []dynamics.Vec
+	for _, v := range list {
+		for _, b := range basis {
+			f := v[0]*b[0] + v[1]*b[1] + v[2]*b[2]
+			v = dynamics.Vec{v[0] - f*b[0], v[1] - f*b[1], v[2] - f*b[2]}
+		}
+		if norm(v) > 1e-6 { // else the second angle does what the first does
+			basis = append(basis, unit(v))
+		}
+	}
+	for _, b := range basis {
+		for col := range 3 {
+			f := b[0]*k[col] + b[1]*k[3+col] + b[2]*k[6+col]
+			for row := range 3 {
+				k[3*row+col] -= f * b[row]
+			}
+		}
+	}
+}
+
+// Residuals stores the residuals at c in r, as solve.Problem asks.
+func (g *Gate) Residuals(c, r []float64) {
+	g.controls(c)
+	g.nominal.Run(g.u, dynamics.Vec{})
+	var m dynamics.Vec
+	m, g.frames[0] = g.miss(g.nominal.Gate)
+	copy(r, m[:])
+	at := 3
+	for i := range g.combine {
+		e := scaled(g.averaged(i), g.combine[i].weight)
+		copy(r[at:], e[:])
+		at += 3
+	}
+	for i, e := range g.members {
+		u := g.u
+		if e.scale != 1 || e.lambda != 0 {
+			g.err(e.member, g.v[e.class])
+			u = g.moved
+		}
+		g.finite.Run(u, e.offset)
+		m, g.frames[1+i] = g.miss(g.finite.Gate)
+		for k := range 3 {
+			r[at+k] = g.weight * m[k]
+		}
+		at += 3
+		// the derivatives by node are cheap while the steps are at hand
+		g.finite.Derive(u, &g.member[i])
+	}
+}
+
+// averaged returns the averaged toggled error of triple i of the last run,
+// without its weight.
+func (g *Gate) averaged(i int) dynamics.Vec {
+	var sum dynamics.Vec
+	for _, x := range g.combine[i].parts {
+		t := g.nominal.Toggle[x.toggle]
+		for k := range 3 {
+			sum[k] += x.factor * t[k]
+		}
+	}
+	return sum
+}
+
+// Jacobian stores the derivatives at the c of the last call of Residuals in
+// jac, Rows x Dim. It may be called once for each call of Residuals.
+func (g *Gate) Jacobian(jac []float64) {
+	n := g.response.Dim
+	w := len(g.spec.Axes) * g.nodes
+	nt, nh := len(g.nominal.Toggle), len(g.nominal.Held)
+	first, last := g.inside()
+	clear(g.raw)
+	g.nominal.Derive(g.u, &g.slopes)
+	// What an error that rides on the controls gains by itself, beside what the
+	// frame gives it: by the controls where it is made of them, else by its own line.
+	for i, class := range g.borne {
+		c := &g.spec.Held[class]
+		row := 3 + 3*(nh+i)
+		for k := range 3 {
+			direct, toggle := g.slopes.Direct[3*i+k], g.slopes.Toggle[3*(nh+i)+k]
+			switch c.Kind {
+			case Amplitude:
+				for j, v := range direct {
+					toggle[j] += v
+				}
+			case Mixed:
+				g.unmix(c.Mix, 1, direct, toggle, 0, g.nodes)
+			}
+		}
+		if c.Kind == Line {
+			g.contract(g.response.Slopes[class], 1, g.slopes.Direct[3*i][:3*w:3*w], 3, first, last, g.raw[row*n:])
+		}
+	}
+	// The same for the members: their controls were u + λ v.
+	for i, e := range g.members {
+		c, row := &g.spec.Held[e.class], g.memberRow(i)
+		switch {
+		case e.scale != 1:
+			for k := range 3 {
+				for a := range g.spec.Axes {
+					part := g.member[i].Gate[k][a*g.nodes+first : a*g.nodes+last]
+					for j := range part {
+						part[j] *= e.scale
+					}
+				}
+			}
+		case e.lambda != 0 && c.Kind == Line:
+			g.contract(g.response.Slopes[e.class], e.lambda, g.d[row*w:], 3, first, last, g.raw[row*n:])
+		case e.lambda != 0:
+			for k := range 3 {
+				d := g.member[i].Gate[k]
+				copy(g.moved, d)
+				g.unmix(c.Mix, e.lambda, g.moved, d, first, last)
+			}
+		}
+	}
+	g.contract(g.response.Blocks, 1, g.d, len(g.d)/w, 0, g.nodes, g.raw)
+
+	g.turnRows(jac, 0, 0, g.frames[0], 1)
+	out := 3
+	for _, e := range g.combine {
+		dst := jac[out*n : (out+3)*n]
+		clear(dst)
+		for _, x := range e.parts {
+			src := g.raw[(3+3*x.toggle)*n : (6+3*x.toggle)*n]
+			f := e.weight * x.factor
+			for i, v := range src {
+				dst[i] += f * v
+			}
+		}
+		out += 3
+	}
+	for i := range g.members {
+		g.turnRows(jac, out, 3+3*nt+3*i, g.frames[1+i], g.weight)
+		out += 3
+	}
+}
+
+// turnRows stores f k times three raw rows in three rows of jac.
+func (g *Gate) turnRows(jac []float64, out, in int, k frame, f float64) {
+	w := g.response.Dim
+	a, b, c := g.raw[in*w:(in+1)*w], g.raw[(in+1)*w:(in+2)*w], g.raw[(in+2)*w:(in+3)*w]
+	for r := range 3 {
+		dst := jac[(out+r)*w : (out+r+1)*w]
+		x, y, z := f*k[3*r], f*k[3*r+1], f*k[3*r+2]
+		for i := range dst {
+			dst[i] = x*a[i] + y*b[i] + z*c[i]
+		}
+	}
+}
+
+func norm(v dynamics.Vec) float64 { return math.Sqrt(v[0]*v[0] + v[1]*v[1] + v[2]*v[2]) }
