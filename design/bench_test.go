@@ -21,11 +21,11 @@ func BenchmarkAny96(b *testing.B) {
 	full := p.Channels[0].FullScale
 	target := dynamics.Vec{math.Pi / 2, 0, 0}
 	s := robust.Spin{
-		Axes:   [2]dynamics.Vec{{full, 0, 0}, {0, full, 0}},
+		Axes:   []dynamics.Vec{{full, 0, 0}, {0, full, 0}},
 		Target: dynamics.Turn(target),
 		Held:   []robust.Class{{Name: "any", Kind: robust.Any, Weight: 1}},
 	}
-	q, err := newProblem(p, 0, 96, shape.FamilySlepian, 0, s, target, true)
+	q, err := newProblem(p, wish{channels: []int{0}, samples: 96, family: shape.FamilySlepian, spin: s, target: target, settled: true})
 	if err != nil {
 		b.Fatal(err)
 	}

@@ -46,12 +46,17 @@ type Progress struct {
 
 // A Pulse is a finished design.
 type Pulse struct {
-	Status  Status
-	Record  Record
-	Exact   []complex128 // samples before rounding, share of full scale
-	Codes   []int16      // I0 Q0 I1 Q1 ...
+	Status   Status
+	Record   Record
+	Channels []Waveform // in the order of the record's [[model.channel]]
+	inputs   Inputs
+}
+
+// A Waveform is what one channel plays.
+type Waveform struct {
 	Channel int          // of the profile
-	inputs  Inputs
+	Exact   []complex128 // samples before rounding, share of full scale
+	Codes   []int16      // I0 Q0 I1 Q1 ..., or of a baseband channel x0 x1 ...
 }
 
 // What the finish of a design spends: successes are refined against finite
@@ -95,68 +100,81 @@ func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error
 
 // newTask readies the problem of the brief.
 func newTask(in Inputs) (*problem, error) {
-	channel, operators, err := drive(in)
+	d, err := drives(in)
 	if err != nil {
 		return nil, err
 	}
-	n := int(math.Round(in.Brief.Span / in.Profile.SamplePeriod))
-	full := in.Profile.Channels[channel].FullScale
-	s := robust.Spin{Static: scale(pauli(in.Device.Static()), 2)}
-	for k, op := range operators {
-		s.Axes[k] = scale(pauli(op), 2*full)
+	b := in.Brief
+	w := wish{
+		samples: int(math.Round(b.Span / in.Profile.SamplePeriod)), family: b.Basis.Family, count: b.Basis.Coefficients,
+		settled: b.Ends == brief.Settled,
+		target:  dynamics.Vec{b.Target.Axis[0] * b.Target.Angle, b.Target.Axis[1] * b.Target.Angle, b.Target.Axis[2] * b.Target.Angle},
 	}
-	turn := in.Brief.Target
-	target := dynamics.Vec{turn.Axis[0] * turn.Angle, turn.Axis[1] * turn.Angle, turn.Axis[2] * turn.Angle}
-	s.Target = dynamics.Turn(target)
-	if s.Held, err = classes(in.Brief.Errors); err != nil {
+	w.spin.Static = scale(pauli(in.Device.Static()), 2)
+	w.spin.Target = dynamics.Turn(w.target)
+	for _, x := range d {
+		w.channels = append(w.channels, x.channel)
+		for _, op := range x.operators {
+			w.spin.Axes = append(w.spin.Axes, scale(pauli(op), 2*in.Profile.Channels[x.channel].FullScale))
+		}
+	}
+	if w.spin.Held, w.slopes, err = classes(in, d); err != nil {
 		return nil, err
 	}
-	q, err := newProblem(in.Profile, channel, n, in.Brief.Basis.Family, in.Brief.Basis.Coefficients, s, target, in.Brief.Ends == brief.Settled)
+	q, err := newProblem(in.Profile, w)
 	if err != nil {
 		return nil, err
 	}
-	q.seed, q.starts = in.Brief.Seed, in.Brief.Starts
+	q.seed, q.starts = b.Seed, b.Starts
 	return q, nil
 }
 
-// drive finds the channel that drives the target's site, and what its
-// quadratures do there.
-func drive(in Inputs) (channel int, operators [2]device.Matrix, err error) {
+// A driven channel of the target's site, and what its controls do there.
+type driven struct {
+	channel   int
+	operators []device.Matrix
+}
+
+// drives finds the channels that drive the target's site.
+func drives(in Inputs) (list []driven, err error) {
 	for i, d := range in.Device.Drives {
 		if d.Site != in.Brief.Target.Site {
 			continue
 		}
 		channel, ok := in.Profile.Channel(d.Channel)
 		if !ok {
-			return 0, operators, fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, d.Channel)
+			return nil, fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, d.Channel)
 		}
-		return channel, in.Device.Operators(i, string(in.Profile.Channels[channel].Mixing)), nil
+		ops := in.Device.Operators(i, string(in.Profile.Channels[channel].Mixing))
+		list = append(list, driven{channel, ops[:]})
 	}
-	return 0, operators, fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
+	if len(list) == 0 {
+		return nil, fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
+	}
+	return list, nil
 }
 
-// classes turns the brief's errors into those of package robust.
-func classes(list []brief.Error) ([]robust.Class, error) {
-	var held []robust.Class
-	statics := 0
-	for _, e := range list {
+// classes turns the brief's errors into those of package robust, with the lines
+// of those that are errors of a line.
+func classes(in Inputs, d []driven) (held []robust.Class, slopes []*slope, err error) {
+	for _, e := range in.Brief.Errors {
 		c := robust.Class{Name: e.Name, Weight: e.Weight, Size: e.Size}
+		var s *slope
 		switch e.Kind {
 		case brief.Static:
 			c.Kind, c.Vector = robust.Static, pauli(e.Operator)
 			// the field that an operator of that size adds: H = F·σ/2
 			c.Size = 2 * e.Size * length(c.Vector)
-			statics++
 		case brief.Amplitude:
 			c.Kind = robust.Amplitude
 		case brief.Any:
 			c.Kind = robust.Any
 		default:
-			return nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
+			return nil, nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
 		}
-		held = append(held, c)
+		held, slopes = append(held, c), append(slopes, s)
 	}
-	return held, nil
+	return held, slopes, nil
 }
 
 // pauli returns v with v·σ the traceless part of a 2x2 Hermitian matrix.
@@ -337,24 +355,12 @@ func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
 // the fine grid, summed over the classes.
 func (q *problem) loss(c []float64) float64 {
 	g := q.gate(true)
-	u := q.controls(q.sampled(c))
+	u, v := q.controls(&q.fine, q.sampled(c))
 	sum := 0.0
-	for _, class := range q.spin.Held {
-		sum += g.MeanInfidelity(u, class)
+	for i := range q.spin.Held {
+		sum += g.MeanInfidelity(u, v, i)
 	}
 	return sum
-}
-
-// controls returns what arrives at the nodes of the fine grid, I then Q.
-func (q *problem) controls(x []complex128) []float64 { return q.fine.controls(q, x) }
-
-func (a *axis) controls(q *problem, x []complex128) []float64 {
-	v := a.field(q.profile.Channels[q.channel].Line, x, q.profile.SamplePeriod, nil)
-	u := make([]float64, 2*len(v))
-	for i, z := range v {
-		u[i], u[len(v)+i] = real(z), imag(z)
-	}
-	return u
 }
 
 // each calls f for 0 .. n-1 on all processors.

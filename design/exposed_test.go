@@ -130,7 +130,7 @@ func TestLineLeftOut(t *testing.T) {
 		if e := foundError(t, v, "detuning"); !v.Met() || !(v.Settled.Infidelity <= 3e-8) || !(e.Susceptibility <= 1e-3) {
 			t.Errorf("designed and judged without a line: infidelity %.3g, susceptibility %.3g", v.Settled.Infidelity, e.Susceptibility)
 		}
-		rounded, err := hardware.SamplesOf(p.Codes, without.Profile.Bits)
+		rounded, err := hardware.SamplesOf(p.Channels[0].Codes, without.Profile.Bits)
 		if err != nil {
 			t.Fatal(err)
 		}

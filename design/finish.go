@@ -8,32 +8,47 @@ import (
 	"holdfast/design/device"
 	"holdfast/design/dynamics"
 	"holdfast/design/robust"
+	"holdfast/filter"
 	"holdfast/hardware"
 	"holdfast/hardware/quantity"
 )
 
 // finish rounds the samples to codes and writes the record of the codes.
 func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
+	p := &Pulse{Status: out.status, inputs: in}
 	exact := q.sampled(out.c)
-	codes, err := hardware.QuantiseAll(exact, in.Profile.Bits)
+	var rounded [][]complex128
+	var headroom []Headroom
+	for i, l := range q.lanes {
+		ch := &in.Profile.Channels[l.channel]
+		codes, err := hardware.QuantiseAll(exact[i], in.Profile.Bits)
+		if err != nil {
+			return nil, err
+		}
+		x, err := hardware.SamplesOf(codes, in.Profile.Bits)
+		if err != nil {
+			return nil, err
+		}
+		readings, err := in.Profile.CheckCodes(l.channel, codes)
+		if err != nil {
+			return nil, err
+		}
+		for _, r := range readings {
+			headroom = append(headroom, Headroom{
+				Channel: ch.Name, Limit: string(r.Limit), Unit: r.Unit, Found: r.Found, Allowed: r.Allowed, Share: r.Headroom, Kept: r.OK,
+			})
+		}
+		rounded = append(rounded, x)
+		p.Channels = append(p.Channels, Waveform{Channel: l.channel, Exact: exact[i], Codes: codes})
+	}
+	d, err := drives(in)
 	if err != nil {
 		return nil, err
 	}
-	rounded, err := hardware.SamplesOf(codes, in.Profile.Bits)
-	if err != nil {
-		return nil, err
-	}
-	readings, err := in.Profile.CheckCodes(q.channel, codes)
-	if err != nil {
-		return nil, err
-	}
-	ch := &in.Profile.Channels[q.channel]
-	_, operators, err := drive(in)
-	if err != nil {
-		return nil, err
-	}
+	first := &q.lanes[0]
+	ch := &in.Profile.Channels[first.channel]
 	b := in.Brief
-	n := q.basis.Count
+	n := first.basis.Count
 	record := Record{
 		Format: 1,
 		Pulse: PulseFacts{
@@ -41,7 +56,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 			Span: quantity.Format(b.Span, quantity.Time), HeldByDefault: b.Defaulted, Status: string(out.status),
 			Held: []string{},
 		},
-		Basis: BasisFacts{Family: q.basis.Family, PerQuad: n, I: out.c[:n], Q: out.c[n:]},
+		Basis: BasisFacts{Family: first.basis.Family, PerQuad: n, I: out.c[:n], Q: out.c[n : 2*n]},
 		Search: SearchFacts{
 			Seed: b.Seed, Starts: b.Starts, Tried: out.tried, Successes: out.successes, Winner: out.winner,
 			Evaluations: out.evaluations, Equations: q.gate(false).Rows(), Refined: out.refined, Miss: out.miss,
@@ -75,14 +90,11 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 			record.Decoherence = &DecayFacts{T1: s.T1, T2: s.T2}
 		}
 	}
-	for _, r := range readings {
-		record.Headroom = append(record.Headroom, Headroom{
-			Channel: ch.Name, Limit: string(r.Limit), Unit: r.Unit, Found: r.Found, Allowed: r.Allowed, Share: r.Headroom, Kept: r.OK,
-		})
-	}
-	record.Model = q.model(in, operators)
+	record.Headroom = headroom
+	record.Model = q.model(in, d)
 	q.claim(&record, in, exact, rounded)
-	return &Pulse{Status: out.status, Record: record, Exact: exact, Codes: codes, Channel: q.channel, inputs: in}, nil
+	p.Record = record
+	return p, nil
 }
 
 func (q *problem) isAmplitude(b *brief.Brief, name string) bool {
@@ -95,29 +107,31 @@ func (q *problem) isAmplitude(b *brief.Brief, name string) bool {
 }
 
 // model writes down what an outsider needs.
-func (q *problem) model(in Inputs, operators [2]device.Matrix) Model {
-	ch := &in.Profile.Channels[q.channel]
-	stem := fileStem(ch.Name)
-	mc := ModelChannel{
-		Name: ch.Name, Kind: ch.Kind, Codes: stem + ".npy", Exact: stem + "-exact.npy",
-		FullScale: ch.FullScale, Delay: in.Profile.Start(q.channel), Direct: pair(ch.Line.Direct),
-		Poles: []Complex{}, Powers: []int{}, Residues: []Complex{},
-		MaxShare: ch.AmplitudeLimit, MaxSlew: finite(ch.SlewLimit), RingOut: finite(ch.RingOut.Limit),
-		GuardLead: ch.GuardLead, GuardTrail: ch.GuardTrail,
-	}
-	for _, t := range ch.Line.Terms {
-		mc.Poles = append(mc.Poles, pair(t.Pole))
-		mc.Powers = append(mc.Powers, t.Power)
-		mc.Residues = append(mc.Residues, pair(t.Residue))
-	}
-	for _, op := range operators {
-		mc.Operators = append(mc.Operators, rowsOf(op))
-	}
+func (q *problem) model(in Inputs, d []driven) Model {
 	m := Model{
 		SamplePeriod: in.Profile.SamplePeriod, Samples: q.samples, Bits: in.Profile.Bits, Ends: in.Brief.Ends,
-		WindowStart: in.Profile.Start(q.channel), Dim: in.Device.Dim(), CodeSpace: []int{0, 1},
+		WindowStart: q.opening(), Dim: in.Device.Dim(), CodeSpace: []int{0, 1},
 		Static: rowsOf(in.Device.Static()), Target: rowsOf(in.Brief.Target.Matrix),
-		FreeZBefore: []float64{}, FreeZAfter: []float64{}, Channels: []ModelChannel{mc},
+		FreeZBefore: []float64{}, FreeZAfter: []float64{},
+	}
+	stems := map[string]bool{}
+	for i, l := range q.lanes {
+		ch := &in.Profile.Channels[l.channel]
+		stem := fileStem(ch.Name)
+		for n := 2; stems[stem]; n++ { // two names may leave the same letters
+			stem = fmt.Sprintf("%s-%d", fileStem(ch.Name), n)
+		}
+		stems[stem] = true
+		mc := ModelChannel{
+			Name: ch.Name, Kind: ch.Kind, Codes: stem + ".npy", Exact: stem + "-exact.npy",
+			FullScale: ch.FullScale, Delay: in.Profile.Start(l.channel), LineModel: lineOf(ch.Line),
+			MaxShare: ch.AmplitudeLimit, MaxSlew: finite(ch.SlewLimit), RingOut: finite(ch.RingOut.Limit),
+			GuardLead: ch.GuardLead, GuardTrail: ch.GuardTrail,
+		}
+		for _, op := range d[i].operators {
+			mc.Operators = append(mc.Operators, rowsOf(op))
+		}
+		m.Channels = append(m.Channels, mc)
 	}
 	known := map[string]bool{}
 	for _, e := range in.Brief.Errors {
@@ -146,6 +160,25 @@ func (q *problem) model(in Inputs, operators [2]device.Matrix) Model {
 	return m
 }
 
+// opening is the instant of the window: that of the last channel to arrive.
+func (q *problem) opening() float64 {
+	t := math.Inf(-1)
+	for _, l := range q.lanes {
+		t = math.Max(t, q.profile.Start(l.channel))
+	}
+	return t
+}
+
+func lineOf(l filter.Line) LineModel {
+	m := LineModel{Direct: pair(l.Direct), Poles: []Complex{}, Powers: []int{}, Residues: []Complex{}}
+	for _, t := range l.Terms {
+		m.Poles = append(m.Poles, pair(t.Pole))
+		m.Powers = append(m.Powers, t.Power)
+		m.Residues = append(m.Residues, pair(t.Residue))
+	}
+	return m
+}
+
 func half(name string) device.Matrix {
 	op, _ := device.Operator(name)
 	return op.Scale(0.5)
@@ -165,50 +198,56 @@ func rowsOf(m device.Matrix) [][]Complex {
 }
 
 // claim fills in what the record says of the rounded codes.
-func (q *problem) claim(r *Record, in Inputs, exact, rounded []complex128) {
+func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) {
 	s := q.spin
 	s.Held = nil
-	for _, e := range r.Model.Errors {
-		c := robust.Class{Name: e.Name, Weight: 1}
-		switch e.Kind {
-		case brief.Static:
-			c.Vector = pauli(matrixOf(e.Operator))
-		case brief.Amplitude:
-			c.Kind = robust.Amplitude
-		case brief.Any:
-			c.Kind = robust.Any
+	var slopes []*slope
+	declared := len(in.Brief.Errors)
+	for i, e := range r.Model.Errors {
+		if i < declared {
+			c := q.spin.Held[i]
+			c.Weight = 1
+			s.Held, slopes = append(s.Held, c), append(slopes, q.slopes[i])
+			continue
 		}
-		s.Held = append(s.Held, c)
+		c := robust.Class{Name: e.Name, Weight: 1}
+		if e.Kind == brief.Amplitude {
+			c.Kind = robust.Amplitude
+		} else {
+			c.Vector = pauli(matrixOf(e.Operator))
+		}
+		s.Held, slopes = append(s.Held, c), append(slopes, nil)
 	}
-	figures := func(a axis, x []complex128) robust.Figures {
-		t := s
-		t.Grid = a.Grid
-		return robust.NewGate(t, robust.Response{}, 0).Figures(a.controls(q, x))
-	}
-	ch := &in.Profile.Channels[q.channel]
-	full := math.Max(length(s.Axes[0]), length(s.Axes[1]))
-	static := length(s.Static)
+	all := *q
+	all.slopes = slopes
 	axes := map[string]axis{}
 	for _, ends := range []string{brief.Settled, brief.Window} {
-		axes[ends] = newAxis(ch.Line, q.samples, in.Profile.SamplePeriod, claimShare, ends == brief.Settled, full, static, q.after())
+		axes[ends] = q.axis(claimShare, ends == brief.Settled)
+	}
+	on := func(ends string, x [][]complex128) (*robust.Gate, []float64, [][]float64) {
+		a, t := axes[ends], s
+		t.Grid = a.Grid
+		u, v := all.controls(&a, x)
+		return robust.NewGate(t, robust.Response{}, 0), u, v
+	}
+	figures := func(ends string, x [][]complex128) robust.Figures {
+		g, u, v := on(ends, x)
+		return g.Figures(u, v)
 	}
 	other := brief.Window
 	if in.Brief.Ends == brief.Window {
 		other = brief.Settled
 	}
-	f := figures(axes[in.Brief.Ends], rounded)
+	f := figures(in.Brief.Ends, rounded)
 	r.Claim.Infidelity = f.Infidelity
-	r.Claim.InfidelityOtherEnds = figures(axes[other], rounded).Infidelity
-	r.Search.Before = figures(axes[in.Brief.Ends], exact).Infidelity
+	r.Claim.InfidelityOtherEnds = figures(other, rounded).Infidelity
+	r.Search.Before = figures(in.Brief.Ends, exact).Infidelity
 	for i := range r.Model.Errors {
 		r.Model.Errors[i].Susceptibility = f.Susceptibility[i]
 	}
 	gate := func(ends string) dynamics.Quat {
-		t := q.spin
-		t.Held = nil
-		a := axes[ends]
-		t.Grid = a.Grid
-		return robust.NewGate(t, robust.Response{}, 0).Unitary(a.controls(q, rounded))
+		g, u, _ := on(ends, rounded)
+		return g.Unitary(u)
 	}
 	tail := gate(brief.Settled).Mul(gate(brief.Window).Conj())
 	r.Claim.TailAngle = 2 * math.Atan2(math.Sqrt(tail[1]*tail[1]+tail[2]*tail[2]+tail[3]*tail[3]), math.Abs(tail[0]))

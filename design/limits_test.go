@@ -268,11 +268,12 @@ func (j *judge) codes(codes []int16) {
 // and the codes they round to.
 func (j *judge) visit(q *problem, c []float64) {
 	j.seen++
-	n := q.basis.Count
+	basis := q.lanes[0].basis
+	n := basis.Count
 	x := make([]complex128, j.n)
 	for k := range x {
 		for i := range n {
-			b := q.basis.Columns[i*j.n+k]
+			b := basis.Columns[i*j.n+k]
 			x[k] += complex(b*c[i], b*c[n+i])
 		}
 	}
@@ -346,7 +347,7 @@ func drawTrial(t *testing.T, rng *rand.Rand) trial {
 	tr := trial{first: rng.IntN(60), profile: p, n: n, family: []string{brief.Slepian, brief.Samples}[rng.IntN(2)], settled: rng.IntN(3) > 0}
 	full := c.FullScale
 	sign := float64(1 - 2*rng.IntN(2))
-	tr.spin.Axes = [2]dynamics.Vec{{full, 0, 0}, {0, sign * full, 0}}
+	tr.spin.Axes = []dynamics.Vec{{full, 0, 0}, {0, sign * full, 0}}
 	if rng.IntN(4) == 0 {
 		tr.spin.Static = dynamics.Vec{0, 0, 0.02 * rng.NormFloat64()}
 	}
@@ -446,7 +447,7 @@ func (tr trial) judged(t *testing.T, starts, iterations int) (*judge, error) {
 	if err != nil {
 		return nil, err
 	}
-	q, err := newProblem(tr.profile, 0, tr.n, tr.family, 0, tr.spin, tr.target, tr.settled)
+	q, err := newProblem(tr.profile, wish{channels: []int{0}, samples: tr.n, family: tr.family, spin: tr.spin, target: tr.target, settled: tr.settled})
 	if err != nil {
 		t.Fatalf("%s: %v", tr.words, err)
 	}
@@ -465,7 +466,7 @@ func (tr trial) judged(t *testing.T, starts, iterations int) (*judge, error) {
 		}
 		r = solve.GaussNewton(ctx, q.residuals(q.gate(true)), q.set, r.C, o)
 		// what would be written: the samples by design's own sum
-		x := q.sampled(r.C)
+		x := q.sampled(r.C)[0]
 		j.samples(x)
 		codes, err := hardware.QuantiseAll(x, tr.profile.Bits)
 		if err != nil {

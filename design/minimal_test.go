@@ -78,7 +78,7 @@ func minimal(t *testing.T, head, tail string, time float64, starts int) *Pulse {
 		t.Fatal(err)
 	}
 	largest := 0.0
-	for _, x := range p.Exact {
+	for _, x := range p.Channels[0].Exact {
 		largest = math.Max(largest, math.Hypot(real(x), imag(x)))
 	}
 	if angle := largest * in.Profile.Channels[0].FullScale * n / math.Pi; !(angle <= time*(1+1e-12)) {

@@ -14,118 +14,191 @@ import (
 	"holdfast/shape"
 )
 
-// A problem is one span of one channel, ready for the solver: the basis, the
-// playable set in coefficients, and the residuals on a coarse grid for the
-// search and on a fine one for the finish. Coefficients are c = (c_I, c_Q).
+// A problem is one span, ready for the solver: the lanes that play, the playable
+// set in coefficients, and the residuals on a coarse grid for the search and on a
+// fine one for the finish.
 type problem struct {
 	profile *hardware.Profile
-	channel int
 	samples int
 	target  dynamics.Vec // rotation vector of the target, rad
+	lanes   []lane
+	dim     int // coefficients in all
 
-	basis *shape.Basis
-	limit *hardware.Set
 	set   *solve.Set
 	quiet *mat.Dense // orthonormal columns: the directions that ring out; nil without such a limit
 
+	settled        bool
 	coarse, fine   axis
 	spin           robust.Spin // without grid
+	slopes         []*slope    // by held class: the line of an error of a line; nil for the others
 	coarseR, fineR robust.Response
 	starts         int
 	seed           uint64
 	visit          func(c []float64) // of every point evaluated; nil outside tests
-	columns        [][]complex128
 }
 
-// mostEntries bounds the response matrix of a problem, 64 MB, of which every
-// worker holds a copy: some 2000 samples at the demonstration's band.
+// A lane is one channel that plays: its coefficients are c[first:first+n] and, of
+// a quadrature channel, n more for Q.
+type lane struct {
+	channel     int // of the profile
+	first       int
+	quadratures int // 2, or 1 for a baseband channel
+	control     int // the first of its controls in the spin
+	feed        feed
+	basis       *shape.Basis
+	limit       *hardware.Set
+	columns     [][]complex128 // samples of each basis function
+}
+
+// A slope is the line of an error of a line's parameter, on one lane.
+type slope struct {
+	lane int
+	feed feed
+}
+
+// mostEntries bounds the response matrix of a problem, 64 MB: some 2000 samples
+// at the demonstration's band.
 const mostEntries = 8 << 20
 
-// newProblem puts the rooms together for n samples.
-func newProblem(p *hardware.Profile, channel, n int, family string, count int, s robust.Spin, target dynamics.Vec, settled bool) (*problem, error) {
-	ch := &p.Channels[channel]
-	h := p.SamplePeriod
-	limit, err := p.Playable(channel, n)
-	if err != nil {
-		return nil, err
-	}
-	q := &problem{profile: p, channel: channel, samples: n, spin: s, limit: limit, target: target}
-	switch width := ch.Band * h; {
-	case family == shape.FamilySamples || width >= 0.5:
-		q.basis, err = shape.Samples(n, ch.GuardLead, ch.GuardTrail)
-	default:
-		q.basis, err = shape.Slepian(n, ch.GuardLead, ch.GuardTrail, width, count)
-	}
-	if err != nil {
-		return nil, err
-	}
-	full := 0.0
-	for _, a := range s.Axes {
-		full = math.Max(full, length(a))
-	}
-	static := length(s.Static)
-	for j := range q.basis.Count {
-		col := make([]complex128, n)
-		for k := range n {
-			col[k] = complex(q.basis.Columns[j*n+k], 0)
+// A wish is what newProblem needs to know of a brief.
+type wish struct {
+	channels []int // of the profile, in the order of the spin's controls
+	samples  int
+	family   string
+	count    int // coefficients per quadrature; 0: what the band carries
+	spin     robust.Spin
+	slopes   []*slope
+	target   dynamics.Vec
+	settled  bool
+}
+
+// newProblem puts the rooms together.
+func newProblem(p *hardware.Profile, w wish) (*problem, error) {
+	q := &problem{profile: p, samples: w.samples, spin: w.spin, slopes: w.slopes, target: w.target, settled: w.settled}
+	control := 0
+	for _, c := range w.channels {
+		l, err := newLane(p, c, w)
+		if err != nil {
+			return nil, err
 		}
-		q.columns = append(q.columns, col)
+		l.first, l.control = q.dim, control
+		q.dim += l.quadratures * l.basis.Count
+		control += l.quadratures
+		q.lanes = append(q.lanes, l)
 	}
-	q.coarse = newAxis(ch.Line, n, h, stepShare, settled, full, static, q.after())
-	q.fine = newAxis(ch.Line, n, h, fineShare, settled, full, static, q.after())
-	if entries := 2 * len(q.fine.Steps) * q.basis.Count; entries > mostEntries {
-		return nil, fmt.Errorf("span: %d samples with %d coefficients per quadrature and %d steps are more than a search can hold; allowed: coefficients times steps up to %d: take a shorter span or a narrower band",
-			n, q.basis.Count, len(q.fine.Steps), mostEntries/2)
+	q.coarse, q.fine = q.axis(stepShare, w.settled), q.axis(fineShare, w.settled)
+	if entries := q.fine.nodes() * q.dim; entries > mostEntries {
+		return nil, fmt.Errorf("span: %d samples with %d coefficients and %d steps are more than a search can hold; allowed: coefficients times steps up to %d: take a shorter span or a narrower band",
+			w.samples, q.dim, len(q.fine.Steps), mostEntries/2)
 	}
-	q.coarseR = q.coarse.response(ch.Line, q.columns, h)
-	q.fineR = q.fine.response(ch.Line, q.columns, h)
+	q.coarseR, q.fineR = q.response(&q.coarse), q.response(&q.fine)
 	q.constrain()
 	return q, nil
 }
 
+// newLane readies one channel.
+func newLane(p *hardware.Profile, c int, w wish) (lane, error) {
+	ch := &p.Channels[c]
+	l := lane{channel: c, quadratures: 2, feed: feed{line: ch.Line}}
+	var err error
+	if l.limit, err = p.Playable(c, w.samples); err != nil {
+		return l, err
+	}
+	n := w.samples
+	switch width := ch.Band * p.SamplePeriod; {
+	case w.family == shape.FamilySamples || width >= 0.5:
+		l.basis, err = shape.Samples(n, ch.GuardLead, ch.GuardTrail)
+	default:
+		l.basis, err = shape.Slepian(n, ch.GuardLead, ch.GuardTrail, width, w.count)
+	}
+	if err != nil {
+		return l, err
+	}
+	for j := range l.basis.Count {
+		col := make([]complex128, n)
+		for k, v := range l.basis.Columns[j*n : (j+1)*n] {
+			col[k] = complex(v, 0)
+		}
+		l.columns = append(l.columns, col)
+	}
+	return l, nil
+}
+
+// axis builds a grid for the lanes that play.
+func (q *problem) axis(share float64, settled bool) axis {
+	var feeds []feed
+	for _, l := range q.lanes {
+		feeds = append(feeds, l.feed)
+	}
+	full := 0.0
+	for _, a := range q.spin.Axes {
+		full = math.Max(full, length(a))
+	}
+	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static), q.after())
+}
+
+// response gives every coefficient's field at the nodes, and every slope's.
+func (q *problem) response(a *axis) robust.Response {
+	r := robust.Response{Dim: q.dim, Slopes: make([][]robust.Block, len(q.slopes))}
+	for i := range q.lanes {
+		r.Blocks = append(r.Blocks, a.block(&q.lanes[i], q.lanes[i].feed))
+	}
+	for i, s := range q.slopes {
+		if s != nil {
+			r.Slopes[i] = []robust.Block{a.block(&q.lanes[s.lane], s.feed)}
+		}
+	}
+	return r
+}
+
 // after is the largest field, rad/ns, that the steps after the span must resolve.
 func (q *problem) after() float64 {
-	full := math.Max(length(q.spin.Axes[0]), length(q.spin.Axes[1]))
-	if limit := q.profile.Channels[q.channel].RingOut.Limit; !math.IsInf(limit, 1) {
-		return full * math.Min(1, 2*limit)
+	most := 0.0
+	for _, l := range q.lanes {
+		full := length(q.spin.Axes[l.control])
+		most = math.Max(most, full*math.Min(1, 2*q.profile.Channels[l.channel].RingOut.Limit))
 	}
-	return full
+	return most
 }
 
 func length(v dynamics.Vec) float64 { return math.Sqrt(v[0]*v[0] + v[1]*v[1] + v[2]*v[2]) }
 
-// constrain multiplies the playable set by the basis.
+// constrain multiplies the playable sets by the bases.
 func (q *problem) constrain() {
-	n := q.basis.Count
-	N := q.samples
-	q.set = solve.NewSet(2 * n)
-	for k := q.limit.Lead; k < N-q.limit.Trail; k++ {
-		i, s := make([]float64, 2*n), make([]float64, 2*n)
-		for j := range n {
-			i[j] = q.basis.Columns[j*N+k]
-			s[n+j] = i[j]
-		}
-		q.set.AddDisc(i, s, q.limit.Disc)
-	}
+	q.set = solve.NewSet(q.dim)
 	var ringing []float64 // the ring-out rows, one after the other
 	rows := 0
-	for _, row := range q.limit.Rows {
-		// w·x with x = B (c_I + i c_Q): real and imaginary part
-		re, im := make([]float64, 2*n), make([]float64, 2*n)
-		for j := range n {
-			var w complex128
-			for k, v := range row.Weights {
-				w += v * complex(q.basis.Columns[j*N+row.First+k], 0)
+	for i := range q.lanes {
+		l := &q.lanes[i]
+		n, N := l.basis.Count, q.samples
+		// a row over samples becomes one over the coefficients of each quadrature
+		row := func(first int, weights []complex128) (re, im []float64) {
+			re, im = make([]float64, q.dim), make([]float64, q.dim)
+			for j := range n {
+				var w complex128
+				for k, v := range weights {
+					w += v * complex(l.basis.Columns[j*N+first+k], 0)
+				}
+				re[l.first+j], im[l.first+j] = real(w), imag(w)
+				if l.quadratures == 2 { // w·x with x = B (c_I + i c_Q)
+					re[l.first+n+j], im[l.first+n+j] = -imag(w), real(w)
+				}
 			}
-			re[j], re[n+j] = real(w), -imag(w)
-			im[j], im[n+j] = imag(w), real(w)
+			return re, im
 		}
-		for _, a := range [][]float64{re, im} {
-			q.set.AddRow(a, row.Bound)
-			if row.Limit != hardware.Slew {
-				rows++
-				for _, v := range a {
-					ringing = append(ringing, v/row.Bound)
+		for k := l.limit.Lead; k < N-l.limit.Trail; k++ {
+			re, im := row(k, []complex128{1})
+			q.set.AddDisc(re, im, l.limit.Disc)
+		}
+		for _, r := range l.limit.Rows {
+			re, im := row(r.First, r.Weights)
+			for _, a := range [][]float64{re, im} {
+				q.set.AddRow(a, r.Bound)
+				if r.Limit != hardware.Slew {
+					rows++
+					for _, v := range a {
+						ringing = append(ringing, v/r.Bound)
+					}
 				}
 			}
 		}
@@ -134,17 +207,20 @@ func (q *problem) constrain() {
 		return
 	}
 	var svd mat.SVD
-	if !svd.Factorize(mat.NewDense(rows, 2*n, ringing), mat.SVDThin) {
+	if !svd.Factorize(mat.NewDense(rows, q.dim, ringing), mat.SVDThin) {
 		return
 	}
 	values := svd.Values(nil)
 	rank := 0
-	for rank < len(values) && rank < n && values[rank] > 1e-2*values[0] {
+	for rank < len(values) && rank < q.dim/2 && values[rank] > 1e-2*values[0] {
 		rank++
+	}
+	if rank == 0 {
+		return
 	}
 	var v mat.Dense
 	svd.VTo(&v)
-	q.quiet = mat.DenseCopyOf(v.Slice(0, 2*n, 0, rank))
+	q.quiet = mat.DenseCopyOf(v.Slice(0, q.dim, 0, rank))
 }
 
 // silence takes the directions that ring out from c.
@@ -204,7 +280,7 @@ var ways = [...]struct {
 // of the ways.
 func (q *problem) start(number int) start {
 	rng := rand.New(rand.NewPCG(q.seed, uint64(number)))
-	s := start{c: make([]float64, 2*q.basis.Count), kappa: [...]float64{5, 1, 20}[number%3]}
+	s := start{c: make([]float64, q.dim), kappa: [...]float64{5, 1, 20}[number%3]}
 	for i := range s.c {
 		s.c[i] = rng.NormFloat64()
 	}
@@ -226,35 +302,39 @@ func (q *problem) start(number int) start {
 	return s
 }
 
-// addArea moves c along the lowest shape so that the areas of the quadratures
-// turn a resonant spin by want about the target's transverse axis.
+// addArea moves c along the lowest shapes so that the areas of the controls turn
+// a resonant spin by want about the target's axis, as far as they can.
 func (q *problem) addArea(c []float64, want, angle float64) {
-	n := q.basis.Count
-	sums := make([]float64, n)
-	total := 0.0
-	for j := range n {
-		for _, v := range q.basis.Columns[j*q.samples : (j+1)*q.samples] {
-			sums[j] += v
-		}
-		total += sums[j] * sums[j]
-	}
-	if total == 0 {
-		return
-	}
-	for k, axis := range q.spin.Axes {
-		full := length(axis) * q.profile.SamplePeriod
-		along := 0.0
-		for i := range 3 {
-			along += axis[i] * q.target[i]
-		}
-		along /= length(axis) * angle
-		have := 0.0
+	for _, l := range q.lanes {
+		n := l.basis.Count
+		sums := make([]float64, n)
+		total := 0.0
 		for j := range n {
-			have += sums[j] * c[k*n+j]
+			for _, v := range l.basis.Columns[j*q.samples : (j+1)*q.samples] {
+				sums[j] += v
+			}
+			total += sums[j] * sums[j]
 		}
-		f := (want*along/full - have) / total
-		for j := range n {
-			c[k*n+j] += f * sums[j]
+		if total == 0 {
+			continue
+		}
+		for k := range l.quadratures {
+			axis := q.spin.Axes[l.control+k]
+			full := length(axis) * q.profile.SamplePeriod
+			along := 0.0
+			for i := range 3 {
+				along += axis[i] * q.target[i]
+			}
+			along /= length(axis) * angle
+			part := c[l.first+k*n : l.first+(k+1)*n]
+			have := 0.0
+			for j := range n {
+				have += sums[j] * part[j]
+			}
+			f := (want*along/full - have) / total
+			for j := range n {
+				part[j] += f * sums[j]
+			}
 		}
 	}
 }
@@ -295,14 +375,39 @@ func (q *problem) residuals(g *robust.Gate) solve.Problem {
 	return p
 }
 
-// sampled returns the samples of c.
-func (q *problem) sampled(c []float64) []complex128 {
-	n, N := q.basis.Count, q.samples
-	x := make([]complex128, N)
-	for j := range n {
-		for k, v := range q.basis.Columns[j*N : (j+1)*N] {
-			x[k] += complex(v*c[j], v*c[n+j])
+// sampled returns the samples of c, lane by lane.
+func (q *problem) sampled(c []float64) [][]complex128 {
+	list := make([][]complex128, len(q.lanes))
+	for i, l := range q.lanes {
+		n, N := l.basis.Count, q.samples
+		x := make([]complex128, N)
+		for j := range n {
+			re, im := c[l.first+j], 0.0
+			if l.quadratures == 2 {
+				im = c[l.first+n+j]
+			}
+			for k, v := range l.basis.Columns[j*N : (j+1)*N] {
+				x[k] += complex(v*re, v*im)
+			}
+		}
+		list[i] = x
+	}
+	return list
+}
+
+// controls returns what arrives at the nodes of a grid for the samples of every
+// lane, and for every held class that is an error of a line what λ multiplies.
+func (q *problem) controls(a *axis, x [][]complex128) (u []float64, v [][]float64) {
+	u = make([]float64, len(q.spin.Axes)*a.nodes())
+	v = make([][]float64, len(q.slopes))
+	for i := range q.lanes {
+		a.put(&q.lanes[i], q.lanes[i].feed, x[i], u)
+	}
+	for i, s := range q.slopes {
+		if s != nil {
+			v[i] = make([]float64, len(u))
+			a.put(&q.lanes[s.lane], s.feed, x[s.lane], v[i])
 		}
 	}
-	return x
+	return u, v
 }

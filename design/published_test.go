@@ -149,8 +149,9 @@ func TestPublishedComposites(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		g, u := q.gate(true), q.controls(x)
-		f := g.Figures(u)
+		g := q.gate(true)
+		u, _ := q.controls(&q.fine, [][]complex128{x})
+		f := g.Figures(u, nil)
 		if !(f.Infidelity <= 1e-28) {
 			t.Errorf("%s: infidelity %.3g without error", c.name, f.Infidelity)
 		}
@@ -251,13 +252,14 @@ func TestPublishedShapes(t *testing.T) {
 			w := 2 * math.Pi * full
 			s := robust.Spin{
 				Static: dynamics.Vec{0, 0, 2 * math.Pi * offset / (n * period)},
-				Axes:   [2]dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
+				Axes:   []dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
 			}
 			// as claim does for a pulse of any length
-			a := newAxis(line, n, period, claimShare, true, w, length(s.Static), w)
+			a := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static), w)
 			s.Grid = a.Grid
-			q := &problem{profile: in.Profile}
-			r := robust.NewGate(s, robust.Response{}, 0).Unitary(a.controls(q, x)).Rotation()
+			u := make([]float64, 2*a.nodes())
+			a.put(&lane{quadratures: 2}, feed{line: line}, x, u)
+			r := robust.NewGate(s, robust.Response{}, 0).Unitary(u).Rotation()
 			if got := c.sign * r[3*c.row+2]; !(math.Abs(got-c.want[i]) <= 0.7e-4) {
 				t.Errorf("%s at %g/T: %.5f, want %.4f", c.name, offset, got, c.want[i])
 			}

@@ -141,22 +141,27 @@ type Model struct {
 // ModelChannel is one [[model.channel]]. A limit that the instrument does not
 // have is nil and absent.
 type ModelChannel struct {
-	Name       string        `toml:"name"`
-	Kind       string        `toml:"kind"`
-	Codes      string        `toml:"codes"`
-	Exact      string        `toml:"samples_before_rounding"`
-	FullScale  float64       `toml:"full_scale_rad_per_ns"`
-	Delay      float64       `toml:"delay_ns"`
-	Direct     Complex       `toml:"direct"`
-	Poles      []Complex     `toml:"poles_per_ns"`
-	Powers     []int         `toml:"powers"`
-	Residues   []Complex     `toml:"residues"`
+	Name      string  `toml:"name"`
+	Kind      string  `toml:"kind"`
+	Codes     string  `toml:"codes"`
+	Exact     string  `toml:"samples_before_rounding"`
+	FullScale float64 `toml:"full_scale_rad_per_ns"`
+	Delay     float64 `toml:"delay_ns"`
+	LineModel
 	Operators  [][][]Complex `toml:"operators"`
 	MaxShare   float64       `toml:"max_share"`
 	MaxSlew    *float64      `toml:"max_slew_per_sample,omitempty"`
 	GuardLead  int           `toml:"guard_lead"`
 	GuardTrail int           `toml:"guard_trail"`
 	RingOut    *float64      `toml:"ring_out_share,omitempty"`
+}
+
+// LineModel are the poles of a line: G(s) = direct + sum residue/(s - pole)^power.
+type LineModel struct {
+	Direct   Complex   `toml:"direct"`
+	Poles    []Complex `toml:"poles_per_ns"`
+	Powers   []int     `toml:"powers"`
+	Residues []Complex `toml:"residues"`
 }
 
 // ModelError is one [[model.error]].

@@ -62,17 +62,17 @@ func TestWitness(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, ends := range []bool{true, false} {
-			a := newAxis(line, n, h, claimShare, ends, full, math.Abs(static), full)
+			a := newAxis([]feed{{line: line}}, n, h, claimShare, ends, full, math.Abs(static), full)
 			s := robust.Spin{
 				Grid: a.Grid, Static: dynamics.Vec{0, 0, static},
-				Axes: [2]dynamics.Vec{{full, 0, 0}, {0, full, 0}}, Target: dynamics.One,
+				Axes: []dynamics.Vec{{full, 0, 0}, {0, full, 0}}, Target: dynamics.One,
 			}
-			v := a.field(line, x, h, nil)
+			v := a.field(feed{line: line}, x, nil)
 			u := make([]float64, 2*len(v))
 			for i, z := range v {
 				u[i], u[len(v)+i] = real(z), imag(z)
 			}
-			got := robust.NewGate(s, robust.Response{}, 0).Figures(u).Infidelity
+			got := robust.NewGate(s, robust.Response{}, 0).Figures(u, nil).Infidelity
 			want := window.Infidelity
 			if ends {
 				want = settled.Infidelity

@@ -29,10 +29,9 @@ func ReadSources(in Inputs) (s Sources, err error) {
 	return s, nil
 }
 
-// Write fills dir, an empty folder, with the pulse: the waveform files, inputs/
+// Write fills dir, an empty folder, with the pulse: the waveform files in every format, inputs/
 // and, last, pulse.toml with the hashes of all others. It completes the record.
 func (p *Pulse) Write(dir string, s Sources) error {
-	ch := p.Record.Model.Channels[0]
 	if err := os.Mkdir(filepath.Join(dir, "inputs"), 0o777); err != nil {
 		return err
 	}
@@ -41,16 +40,21 @@ func (p *Pulse) Write(dir string, s Sources) error {
 			return err
 		}
 	}
-	n := len(p.Exact)
-	if err := hardware.WriteNPY(filepath.Join(dir, ch.Codes), n, 2, p.Codes); err != nil {
-		return err
-	}
-	exact := make([]float64, 0, 2*n)
-	for _, x := range p.Exact {
-		exact = append(exact, real(x), imag(x))
-	}
-	if err := hardware.WriteNPY(filepath.Join(dir, ch.Exact), n, 2, exact); err != nil {
-		return err
+	for i, w := range p.Channels {
+		ch := p.Record.Model.Channels[i]
+		columns := len(w.Codes) / len(w.Exact) // 2, or 1 for a baseband channel
+		exact := make([]float64, 0, len(w.Codes))
+		for _, x := range w.Exact {
+			if exact = append(exact, real(x)); columns == 2 {
+				exact = append(exact, imag(x))
+			}
+		}
+		if err := hardware.WriteNPY(filepath.Join(dir, ch.Exact), len(w.Exact), columns, exact); err != nil {
+			return err
+		}
+		if _, err := WriteWaveform(dir, p.inputs.Profile, w.Channel, w.Codes); err != nil {
+			return err
+		}
 	}
 	names, err := hardware.ListFiles(dir)
 	if err != nil {
@@ -72,6 +76,36 @@ func (p *Pulse) Write(dir string, s Sources) error {
 		return fmt.Errorf("%s: %w", hardware.RecordName, err)
 	}
 	return nil
+}
+
+// WriteWaveform writes the interleaved codes of one channel into dir in every format: STEM.npy, STEM.csv, STEM.int16,
+// and STEM-arrives.npy with what they become at the device, where STEM is made of the channel's name. It gives the names of
+// the files. The record's [model] names the first; the others are for whoever plays or looks.
+func WriteWaveform(dir string, p *hardware.Profile, channel int, codes []int16) (names []string, err error) {
+	x, err := hardware.SamplesOf(codes, p.Bits)
+	if err != nil {
+		return nil, err
+	}
+	rows, err := p.Arrival(channel, x)
+	if err != nil {
+		return nil, err
+	}
+	stem := fileStem(p.Channels[channel].Name)
+	for _, f := range []struct {
+		end   string
+		write func(path string) error
+	}{
+		{".npy", func(path string) error { return hardware.WriteNPY(path, len(x), 2, codes) }},
+		{".csv", func(path string) error { return hardware.WriteCSV(path, p.SamplePeriod, p.Bits, 2, codes) }},
+		{".int16", func(path string) error { return hardware.WriteRaw(path, codes) }},
+		{"-arrives.npy", func(path string) error { return hardware.WriteArrival(path, rows) }},
+	} {
+		if err := f.write(filepath.Join(dir, stem+f.end)); err != nil {
+			return nil, err
+		}
+		names = append(names, stem+f.end)
+	}
+	return names, nil
 }
 
 // fileStem makes a file name of a channel's: letters and digits stay, runs of

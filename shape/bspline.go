@@ -50,7 +50,7 @@ const (
 // the splines in order of time by QR factorisation: column j is a sum of the
 // first j+1 splines, the last of them with a positive factor. They are
 // orthonormal to 3e-14 and span what the splines span to about 1e-14 (the condition
-// number of the sampled splines is under 25 up to N = 400, whatever the count).
+// number of the sampled splines was under 25 at every count tried up to N = 400).
 func BSpline(samples, lead, trail int, bandTimesPeriod float64, count, degree int) (*Basis, error) {
 	free, err := freeSamples(samples, lead, trail)
 	if err != nil {

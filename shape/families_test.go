@@ -250,8 +250,8 @@ func TestSinOfPi(t *testing.T) {
 			if !(math.Abs(got-want) <= tolerance) || (p%q == 0) != (got == 0) || (2*p%q == 0) && p%q != 0 && math.Abs(got) != 1 && q%2 == 0 {
 				t.Errorf("sin(pi %d/%d) = %v, want %v", p, q, got, want)
 			}
-			if far := sinOfPi(p+(int64(1)<<33)*q, q); far != got {
-				t.Errorf("sin(pi %d/%d) = %v, 2^33 half turns on %v", p, q, got, far)
+			if far := sinOfPi(p+2*3486784401*q, q); far != got { // 3^20 turns: no power of 2
+				t.Errorf("sin(pi %d/%d) = %v, 3^20 turns on %v", p, q, got, far)
 			}
 			if got, want := cosOfPi(p, q), math.Cos(math.Pi*float64(p)/float64(q)); !(math.Abs(got-want) <= tolerance) {
 				t.Errorf("cos(pi %d/%d) = %v, want %v", p, q, got, want)

@@ -57,7 +57,7 @@ func Fourier(samples, lead, trail int, bandTimesPeriod float64, count int) (*Bas
 // Arguments and errors are those of [Slepian]. The default count is one less
 // than [DefaultCount], at least 1, because the columns reach one step further
 // in frequency; at W = 0.5 it is N. Column j-1 is symmetric in time for odd j and antisymmetric for
-// even j, exactly, and starts positive.
+// even j, exactly, and starts positive. The columns are orthonormal to 3e-14.
 func TaperedFourier(samples, lead, trail int, bandTimesPeriod float64, count int) (*Basis, error) {
 	return series(samples, lead, trail, bandTimesPeriod, count, 1, FamilyTaperedFourier, func(j, k, n int64) float64 {
 		a := (j + 1) * (k + 1)

@@ -15,6 +15,14 @@ func TestZeroMean(t *testing.T) {
 	for _, f := range families[1:] {
 		bases = append(bases, f.basis(t, 64, 0, 4, 0.1, 0), f.basis(t, 41, 3, 2, 0.3, 7), f.basis(t, 33, 0, 1, 0.5, 0))
 	}
+	// Columns of the other sign, the sum of the first negative and the only one:
+	// with the wrong sign of the reflection nothing would be left of v.
+	u := named(t, FamilySlepian).basis(t, 64, 0, 4, 0.1, 2)
+	negative := &Basis{Samples: u.Samples, Count: u.Count, Columns: slices.Clone(u.Columns), Family: u.Family, Lead: u.Lead, Trail: u.Trail}
+	for i := range negative.Columns {
+		negative.Columns[i] *= -1
+	}
+	bases = append(bases, negative)
 	for _, b := range bases {
 		z, err := ZeroMean(b)
 		if err != nil {

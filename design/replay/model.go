@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"slices"
 )
 
 // What a model may hold; larger ones are refused before any work is done.
@@ -12,8 +13,9 @@ const (
 	maxDim      = 64
 	maxChannels = 16
 	maxPoles    = 64 // entries of one line
-	maxPower    = 16
+	maxPower    = 33 // what package filter allows, and one more for the slope of such a line
 	maxErrors   = 64
+	maxKnees    = 256 // points of a compression table
 	maxAnyDim   = 16 // levels of which all d^2-1 static errors are judged
 )
 
@@ -51,23 +53,82 @@ type Channel struct {
 
 	Operators [][]complex128 // of u_I and u_Q, or of u alone; Hermitian
 
-	// The limits, in shares of full scale; +Inf where the instrument has none.
+	// Compression says what share of the full-scale rate the converter's share reaches, before the line; nil where they are the
+	// same. See Compressed.
+	Compression []Knee
+	// Shift is what the drive's power does to the device: H += Shift |u_I + i u_Q|^2 ShiftOperator, u in shares of full scale
+	// as it arrives; rad/ns, either sign. The operator may be nil where Shift is 0.
+	Shift         float64
+	ShiftOperator []complex128
+
+	// The limits, in shares of full scale; +Inf where the instrument has none. All but those of ring-out are of the samples as
+	// the converter plays them, before compression.
 	MaxShare, MaxSlew, RingOut float64
 	GuardLead, GuardTrail      int
 
-	Samples []complex128 // x_I + i x_Q, what the converters play
+	// More limits, of which 0 means that there is none.
+	Box         bool    // MaxShare bounds each quadrature, not |x|
+	RMS         float64 // root of the sum of |x|^2 over max(the span, RMSSamples)
+	RMSSamples  float64 // samples of a repetition period
+	RingOutTail float64 // rules from RingOutFast on; before, and without it, RingOut does
+	RingOutFast float64 // ns after the span
+	OutOfBand   float64 // root of the mean square of the samples outside Band, over the span
+	Band        float64 // GHz, either side of zero
+	ZeroMean    bool    // the samples, compressed, add up to zero as nearly as codes can
+
+	Samples []complex128 // x_I + i x_Q, or x, what the converters play
 	Exact   []complex128 // the same before rounding; nil when there is none
 	Codes   []int16      // interleaved as in the file; nil for a pulse that has no codes
 }
 
-// A Class is one [[model.error]]: what may go wrong, and what the record says of it.
+// A Knee is one point of a compression table.
+type Knee struct {
+	Share   float64 // at the converter
+	Reached float64 // of the full-scale rate
+}
+
+// Compressed gives what enters the line when the converter plays x: x/|x| f(|x|), f straight between the points of the table and
+// beyond its last one as between the last two. A baseband channel's is odd by the same formula.
+func (c *Channel) Compressed(x complex128) complex128 {
+	if len(c.Compression) < 2 || x == 0 {
+		return x
+	}
+	a := cmplx.Abs(x)
+	i := 1
+	for i < len(c.Compression)-1 && a > c.Compression[i].Share {
+		i++
+	}
+	p, q := c.Compression[i-1], c.Compression[i]
+	f := p.Reached + (q.Reached-p.Reached)*((a-p.Share)/(q.Share-p.Share))
+	return x * complex(f/a, 0)
+}
+
+// A Class is one [[model.error]]: what may go wrong, and what the record says of it. Its size lambda is in rad/ns for kind static and
+// any, in rad for kind skew, and a share for kind amplitude and line.
 type Class struct {
-	Name           string
-	Kind           string       // "static", "amplitude" or "any"
-	Held           bool         // the pulse was designed to be held against it
-	Operator       []complex128 // kind static: Dim x Dim, multiplied by lambda in rad/ns
-	Channels       []string     // kind amplitude; empty means all
-	Susceptibility float64      // that the record claims; 0 to 1
+	Name string
+	// Kind is one of
+	//
+	//	"static"     H += lambda Operator
+	//	"any"        the same for every traceless operator
+	//	"amplitude"  u of the channels times 1 + lambda, or u_I or u_Q alone where Quadrature says so
+	//	"skew"       u_I += -lambda u_Q of the channels: the angle between the quadratures
+	//	"line"       u += lambda FullScale times what arrives through the line below: lambda relative change of a parameter
+	//
+	// All act in the window only. A drive-induced shift follows the u that the error leaves.
+	Kind       string
+	Held       bool         // the pulse was designed to be held against it
+	Operator   []complex128 // kind static: Dim x Dim
+	Channels   []string     // kinds amplitude and skew, where empty means all that have what is asked for; kind line: one
+	Quadrature string       // kind amplitude: "I", "Q" or "" for both
+
+	// Kind line: the line's slope, with the channel's delay.
+	Direct   complex128
+	Poles    []complex128
+	Powers   []int
+	Residues []complex128
+
+	Susceptibility float64 // that the record claims; 0 to 1
 	claimed        bool
 }
 
@@ -95,6 +156,22 @@ func (m *Model) WithSamples(samples int, x ...[]complex128) *Model {
 	return &other
 }
 
+// WithLine gives a model of the same pulse through another line of one channel, as when lines are drawn from a spread: its delay in ns, latency
+// included, and G(s) as in Channel, 1/ns. Window, operators, limits and errors stay as they are, an error of kind line with the slope of
+// the line that was. A channel that does not exist, or lists of unlike lengths, are a caller's bug and panic; numbers that make no sense
+// are for Validate to find.
+func (m *Model) WithLine(channel int, delay float64, direct complex128, poles []complex128, powers []int, residues []complex128) *Model {
+	if channel < 0 || channel >= len(m.Channels) || len(powers) != len(poles) || len(residues) != len(poles) {
+		panic(fmt.Sprintf("replay: a line of %d poles, %d powers, %d residues for channel %d of %d", len(poles), len(powers), len(residues), channel, len(m.Channels)))
+	}
+	other := *m
+	other.Channels = append([]Channel(nil), m.Channels...)
+	c := &other.Channels[channel]
+	c.Delay, c.Direct = delay, direct
+	c.Poles, c.Powers, c.Residues = append([]complex128(nil), poles...), append([]int(nil), powers...), append([]complex128(nil), residues...)
+	return &other
+}
+
 // BeforeRounding gives a model of the same pulse with its samples as they were before rounding to codes, or nil when a
 // channel has none.
 func (m *Model) BeforeRounding() *Model {
@@ -106,6 +183,12 @@ func (m *Model) BeforeRounding() *Model {
 		x[c] = ch.Exact
 	}
 	return m.WithSamples(m.Samples, x...)
+}
+
+// channel finds a channel by its name; the name is known to exist.
+func (m *Model) channel(name string) *Channel {
+	i := slices.IndexFunc(m.Channels, func(c Channel) bool { return c.Name == name })
+	return &m.Channels[i]
 }
 
 // Span is the length of the window in ns.
@@ -214,18 +297,35 @@ func (m *Model) validate() *fault {
 			if !(frobenius(op) > 1e-6) {
 				return bad(key+"operator", "a multiple of the identity", "a Hermitian matrix of which something is left without its trace")
 			}
-		case "amplitude":
+		case "amplitude", "skew":
+			if q := e.Quadrature; q != "" && (e.Kind != "amplitude" || q != "I" && q != "Q") {
+				return bad(key+"quadrature", fmt.Sprintf("%q", q), `"I" or "Q", of kind "amplitude"`)
+			}
+			both := e.Kind == "skew" || e.Quadrature != "" // of channels that have two quadratures
 			for _, c := range e.Channels {
 				if !names[c] {
 					return bad(key+"channels", fmt.Sprintf("%q", c), "names of [[model.channel]]")
 				}
+				if both && m.channel(c).Kind != "quadrature" {
+					return bad(key+"channels", fmt.Sprintf("%q, which has one quadrature", c), `channels of kind "quadrature"`)
+				}
+			}
+			if both && !slices.ContainsFunc(m.Channels, func(c Channel) bool { return c.Kind == "quadrature" }) {
+				return bad(key+"kind", fmt.Sprintf("%q of channels with one quadrature", e.Kind), `a model with a channel of kind "quadrature"`)
+			}
+		case "line":
+			if len(e.Channels) != 1 || !names[e.Channels[0]] {
+				return bad(key+"channel", fmt.Sprintf("%q", e.Channels), "the name of a [[model.channel]]")
+			}
+			if f := validLine(key, e.Direct, e.Poles, e.Powers, e.Residues); f != nil {
+				return f
 			}
 		case "any":
 			if m.Dim > maxAnyDim {
 				return bad(key+"kind", fmt.Sprintf("%q with %d levels", e.Kind, m.Dim), fmt.Sprintf("up to %d levels", maxAnyDim))
 			}
 		default:
-			return bad(key+"kind", fmt.Sprintf("%q", e.Kind), `"static", "amplitude" or "any"`)
+			return bad(key+"kind", fmt.Sprintf("%q", e.Kind), `"static", "amplitude", "any", "skew" or "line"`)
 		}
 	}
 	return nil
@@ -249,29 +349,8 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 	if !(math.Abs(c.Delay) <= 1e9) {
 		return bad("delay_ns", c.Delay, "-1e9 to 1e9")
 	}
-	if !(cmplx.Abs(c.Direct) <= 1e9) {
-		return bad("direct", c.Direct, "a finite number")
-	}
-	n := len(c.Poles)
-	if n > maxPoles {
-		return bad("poles_per_ns", fmt.Sprintf("%d poles", n), fmt.Sprintf("up to %d", maxPoles))
-	}
-	if len(c.Powers) != n {
-		return bad("powers", fmt.Sprintf("%d powers", len(c.Powers)), fmt.Sprintf("one for each of %d poles", n))
-	}
-	if len(c.Residues) != n {
-		return bad("residues", fmt.Sprintf("%d residues", len(c.Residues)), fmt.Sprintf("one for each of %d poles", n))
-	}
-	for i, p := range c.Poles {
-		if !(real(p) <= -1e-15) || !(cmplx.Abs(p) <= 1e6) {
-			return bad(fmt.Sprintf("poles_per_ns[%d]", i), p, "poles with a negative real part, up to 1e6 per ns")
-		}
-		if c.Powers[i] < 1 || c.Powers[i] > maxPower {
-			return bad(fmt.Sprintf("powers[%d]", i), c.Powers[i], fmt.Sprintf("1 to %d", maxPower))
-		}
-		if !(cmplx.Abs(c.Residues[i]) <= 1e30) {
-			return bad(fmt.Sprintf("residues[%d]", i), c.Residues[i], "finite numbers")
-		}
+	if f := validLine(key, c.Direct, c.Poles, c.Powers, c.Residues); f != nil {
+		return f
 	}
 	if len(c.Operators) != quadratures {
 		return bad("operators", fmt.Sprintf("%d matrices", len(c.Operators)), fmt.Sprintf("%d for kind %q", quadratures, c.Kind))
@@ -289,6 +368,50 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 			return bad(l.key, l.v, "a positive share of full scale")
 		}
 	}
+	for _, l := range []struct {
+		key string
+		v   float64
+	}{{"rms_share", c.RMS}, {"rms_samples", c.RMSSamples}, {"ring_out_tail_share", c.RingOutTail}, {"ring_out_fast_ns", c.RingOutFast},
+		{"out_of_band_share", c.OutOfBand}, {"band_ghz", c.Band}} {
+		if !(l.v >= 0) || math.IsInf(l.v, 1) {
+			return bad(l.key, l.v, "a positive number, or none")
+		}
+	}
+	if c.RMSSamples > 0 && c.RMS == 0 {
+		return bad("rms_samples", c.RMSSamples, "none without rms_share")
+	}
+	if c.RingOutFast > 0 && c.RingOutTail == 0 {
+		return bad("ring_out_fast_ns", c.RingOutFast, "none without a limit of ring-out")
+	}
+	if c.OutOfBand > 0 && c.Band == 0 {
+		return bad("out_of_band_share", c.OutOfBand, "none without band_ghz")
+	}
+	if c.Box && c.Kind != "quadrature" {
+		return bad("envelope", `"box"`, "none for one quadrature")
+	}
+	if n := len(c.Compression); n == 1 || n > maxKnees {
+		return bad("compression", fmt.Sprintf("%d points", n), fmt.Sprintf("none, or 2 to %d", maxKnees))
+	}
+	for i, k := range c.Compression {
+		last := Knee{}
+		if i > 0 {
+			last = c.Compression[i-1]
+		}
+		switch {
+		case i == 0 && k != last:
+			return bad("compression[0]", fmt.Sprintf("[%g, %g]", k.Share, k.Reached), "[0, 0]")
+		case i > 0 && !(k.Share > last.Share && k.Share <= 1e3 && k.Reached > last.Reached && k.Reached <= 1e3):
+			return bad(fmt.Sprintf("compression[%d]", i), fmt.Sprintf("[%g, %g]", k.Share, k.Reached), "points that rise in both numbers")
+		}
+	}
+	if !(math.Abs(c.Shift) <= 1e4) {
+		return bad("shift_rad_per_ns", c.Shift, "-1e4 to 1e4")
+	}
+	if c.Shift != 0 || c.ShiftOperator != nil {
+		if what := notHermitian(c.ShiftOperator, dim); what != "" {
+			return bad("shift_operator", what, fmt.Sprintf("a Hermitian %d x %d matrix", dim, dim))
+		}
+	}
 	if c.GuardLead < 0 || c.GuardTrail < 0 || c.GuardLead+c.GuardTrail > samples {
 		return bad("guard_lead", fmt.Sprintf("guards of %d and %d samples", c.GuardLead, c.GuardTrail), fmt.Sprintf("guards within the %d samples", samples))
 	}
@@ -298,6 +421,38 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 	for k, x := range c.Samples {
 		if cmplx.IsNaN(x) || !(cmplx.Abs(x) <= 1e6) {
 			return bad(fmt.Sprintf("codes[%d]", k), x, "finite samples")
+		}
+	}
+	return nil
+}
+
+// validLine judges the numbers of a line, or of a line's slope.
+func validLine(key string, direct complex128, poles []complex128, powers []int, residues []complex128) *fault {
+	bad := func(k string, found any, allowed string) *fault {
+		return &fault{key + k, fmt.Sprint(found), allowed}
+	}
+	if !(cmplx.Abs(direct) <= 1e9) {
+		return bad("direct", direct, "a finite number")
+	}
+	n := len(poles)
+	if n > maxPoles {
+		return bad("poles_per_ns", fmt.Sprintf("%d poles", n), fmt.Sprintf("up to %d", maxPoles))
+	}
+	if len(powers) != n {
+		return bad("powers", fmt.Sprintf("%d powers", len(powers)), fmt.Sprintf("one for each of %d poles", n))
+	}
+	if len(residues) != n {
+		return bad("residues", fmt.Sprintf("%d residues", len(residues)), fmt.Sprintf("one for each of %d poles", n))
+	}
+	for i, p := range poles {
+		if !(real(p) <= -1e-15) || !(cmplx.Abs(p) <= 1e6) {
+			return bad(fmt.Sprintf("poles_per_ns[%d]", i), p, "poles with a negative real part, up to 1e6 per ns")
+		}
+		if powers[i] < 1 || powers[i] > maxPower {
+			return bad(fmt.Sprintf("powers[%d]", i), powers[i], fmt.Sprintf("1 to %d", maxPower))
+		}
+		if !(cmplx.Abs(residues[i]) <= 1e200) {
+			return bad(fmt.Sprintf("residues[%d]", i), residues[i], "finite numbers")
 		}
 	}
 	return nil
