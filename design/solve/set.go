@@ -3,13 +3,17 @@ package solve
 import "math"
 
 // A Set is a convex set around the origin in n dimensions: the points c with
-// |a·c| <= 1 for every row and (p·c)² + (q·c)² <= 1 for every disc. The zero
-// Set is not useful; NewSet makes one.
+// |a·c| <= 1 for every row, (p·c)² + (q·c)² <= 1 for every disc and cᵀQc <= 1 for
+// every ball. The zero Set is not useful; NewSet makes one.
 type Set struct {
 	n     int
 	rows  []span
 	discs [][2]span
+	balls []ball
 }
+
+// A ball is the limit cᵀ Q c <= 1 with Q positive semidefinite, kept whole.
+type ball struct{ q []float64 }
 
 // A span is a vector that is zero outside [lo, lo+len(v)).
 type span struct {
@@ -23,8 +27,9 @@ func NewSet(n int) *Set { return &Set{n: n} }
 // Dim returns the number of dimensions.
 func (s *Set) Dim() int { return s.n }
 
-// Constraints counts one-sided limits: two for a row, one for a disc.
-func (s *Set) Constraints() int { return 2*len(s.rows) + len(s.discs) }
+// Constraints counts one-sided limits: two for a row, one for a disc or a
+// ball.
+func (s *Set) Constraints() int { return 2*len(s.rows) + len(s.discs) + len(s.balls) }
 
 // AddRow demands |a·c| <= bound, bound > 0. Rows that are zero are left out.
 func (s *Set) AddRow(a []float64, bound float64) {
@@ -39,6 +44,30 @@ func (s *Set) AddDisc(p, q []float64, radius float64) {
 	if len(a.v)+len(b.v) > 0 {
 		s.discs = append(s.discs, [2]span{a, b})
 	}
+}
+
+// AddBall demands cᵀ Q c <= bound², bound > 0, for a symmetric positive
+// semidefinite Q, n x n row by row.
+func (s *Set) AddBall(q []float64, bound float64) {
+	b := ball{make([]float64, len(q))}
+	for i, v := range q {
+		b.q[i] = v / (bound * bound)
+	}
+	s.balls = append(s.balls, b)
+}
+
+// times returns c·Q·d.
+func (b ball) times(c, d []float64) float64 {
+	n, sum := len(c), 0.0
+	for i, v := range c {
+		if v != 0 {
+			row := b.q[i*n : (i+1)*n]
+			for k, w := range row {
+				sum += v * w * d[k]
+			}
+		}
+	}
+	return sum
 }
 
 func trim(a []float64, bound float64) span {
@@ -81,6 +110,9 @@ func (s *Set) Gauge(c []float64) float64 {
 	for i := range s.discs {
 		m = math.Max(m, math.Hypot(s.discs[i][0].dot(c), s.discs[i][1].dot(c)))
 	}
+	for _, b := range s.balls {
+		m = math.Max(m, math.Sqrt(math.Max(0, b.times(c, c))))
+	}
 	return m
 }
 
@@ -100,20 +132,25 @@ func (s *Set) reach(c, p []float64) float64 {
 	for i := range s.discs {
 		x, y := s.discs[i][0].dot(c), s.discs[i][1].dot(c)
 		dx, dy := s.discs[i][0].dot(p), s.discs[i][1].dot(p)
-		a := dx*dx + dy*dy
-		if a == 0 {
-			continue
-		}
-		b := x*dx + y*dy
-		room := 1 - x*x - y*y
-		// the positive root of a t² + 2 b t - room, without cancellation
-		if r := math.Sqrt(b*b + a*room); b > 0 {
-			t = math.Min(t, room/(b+r))
-		} else {
-			t = math.Min(t, (r-b)/a)
-		}
+		t = math.Min(t, root(dx*dx+dy*dy, x*dx+y*dy, 1-x*x-y*y))
+	}
+	for _, q := range s.balls {
+		t = math.Min(t, root(q.times(p, p), q.times(c, p), 1-q.times(c, c)))
 	}
 	return math.Max(t, 0)
+}
+
+// root returns the positive root of a t² + 2 b t - room, a >= 0, without
+// cancellation; +Inf for a = 0.
+func root(a, b, room float64) float64 {
+	if !(a > 0) {
+		return math.Inf(1)
+	}
+	r := math.Sqrt(b*b + a*room)
+	if b > 0 {
+		return room / (b + r)
+	}
+	return (r - b) / a
 }
 
 // barrier returns φ(c) = -sum ln(slack), +Inf outside the set.
@@ -141,6 +178,13 @@ func (s *Set) barrier(c []float64) float64 {
 			prod = 1
 		}
 	}
+	for _, b := range s.balls {
+		slack := 1 - b.times(c, c)
+		if !(slack > 0) {
+			return math.Inf(1)
+		}
+		sum -= math.Log(slack)
+	}
 	return sum - math.Log(prod)
 }
 
@@ -167,6 +211,35 @@ func (s *Set) derivatives(c, g, h []float64) {
 		q.addOuter(h, s.n, w+w*w*y*y)
 		addMixed(h, s.n, p, q, w*w*x*y)
 	}
+	for _, b := range s.balls {
+		// w Q + w² (Q c)(Q c)ᵀ
+		qc := b.apply(c)
+		w := 2 / (1 - dotted(c, qc))
+		for i, v := range qc {
+			g[i] += w * v
+			row, q := h[i*s.n:(i+1)*s.n], b.q[i*s.n:(i+1)*s.n]
+			for k := i; k < s.n; k++ {
+				row[k] += w*q[k] + w*w*v*qc[k]
+			}
+		}
+	}
+}
+
+// apply returns Q c.
+func (b ball) apply(c []float64) []float64 {
+	qc := make([]float64, len(c))
+	for i := range qc {
+		qc[i] = dotted(b.q[i*len(c):(i+1)*len(c)], c)
+	}
+	return qc
+}
+
+func dotted(a, b []float64) float64 {
+	sum := 0.0
+	for i, v := range a {
+		sum += v * b[i]
+	}
+	return sum
 }
 
 // addOuter adds f v vᵀ to the upper triangle of h.

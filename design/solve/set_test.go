@@ -12,6 +12,7 @@ import (
 type dense struct {
 	rows  [][]float64
 	discs [][2][]float64
+	balls [][][]float64 // rows of each
 }
 
 func inner(a, b []float64) float64 {
@@ -31,6 +32,9 @@ func (d dense) gauge(c []float64) float64 {
 		x, y := inner(p[0], c), inner(p[1], c)
 		m = math.Max(m, math.Sqrt(x*x+y*y))
 	}
+	for _, rows := range d.balls {
+		m = math.Max(m, math.Sqrt(energy(rows, c)))
+	}
 	return m
 }
 
@@ -44,6 +48,18 @@ func (d dense) barrier(c []float64) float64 {
 	for _, p := range d.discs {
 		x, y := inner(p[0], c), inner(p[1], c)
 		sum -= math.Log(1 - x*x - y*y)
+	}
+	for _, rows := range d.balls {
+		sum -= math.Log(1 - energy(rows, c))
+	}
+	return sum
+}
+
+func energy(rows [][]float64, c []float64) float64 {
+	sum := 0.0
+	for _, a := range rows {
+		v := inner(a, c)
+		sum += v * v
 	}
 	return sum
 }
@@ -88,6 +104,21 @@ func randomSet(rng *rand.Rand, n int) (*Set, dense) {
 		s.AddDisc(p, q, r)
 		d.discs = append(d.discs, [2][]float64{scaledBy(p, 1/r), scaledBy(q, 1/r)})
 	}
+	for range rng.IntN(3) {
+		var rows [][]float64
+		q, bound := make([]float64, n*n), 0.2+rng.Float64()
+		for range 1 + rng.IntN(3) {
+			a := part(rng, n)
+			rows = append(rows, scaledBy(a, 1/bound))
+			for i, v := range a {
+				for k, w := range a {
+					q[i*n+k] += v * w
+				}
+			}
+		}
+		s.AddBall(q, bound)
+		d.balls = append(d.balls, rows)
+	}
 	for i := range n { // so that no direction is free
 		a := make([]float64, n)
 		a[i] = 1
@@ -111,7 +142,7 @@ func TestSetAgainstDefinition(t *testing.T) {
 	for trial := range 60 {
 		n := 1 + rng.IntN(9)
 		s, d := randomSet(rng, n)
-		if got, want := s.Constraints(), 2*len(d.rows)+len(d.discs); got != want || len(s.rows) != len(d.rows) || s.Dim() != n {
+		if got, want := s.Constraints(), 2*len(d.rows)+len(d.discs)+len(d.balls); got != want || len(s.rows) != len(d.rows) || s.Dim() != n {
 			t.Fatalf("trial %d: %d constraints, want %d; %d rows, want %d; dimension %d, want %d", trial, got, want, len(s.rows), len(d.rows), s.Dim(), n)
 		}
 		for _, gauge := range []float64{0.01, 0.5, 0.999} {
