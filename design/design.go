@@ -2,9 +2,12 @@ package design
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
+	"math/cmplx"
 	"runtime"
+	"slices"
 	"sync"
 	"time"
 
@@ -49,7 +52,14 @@ type Pulse struct {
 	Status   Status
 	Record   Record
 	Channels []Waveform // in the order of the record's [[model.channel]]
+	Turned   []Turned   // the gate at the angles that the brief asks for by samples
 	inputs   Inputs
+}
+
+// Turned is the pulse with its quadratures turned by an angle.
+type Turned struct {
+	Angle    float64 // rad
+	Channels []Waveform
 }
 
 // A Waveform is what one channel plays.
@@ -87,36 +97,62 @@ var rounds = [2][]stage{
 // inputs alone. When ctx is cancelled it returns the best so far with status
 // Interrupted. progress, unless nil, is called from one goroutine at a time.
 func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error) {
-	p, err := newTask(in)
-	if err != nil {
-		return nil, err
-	}
 	if progress == nil {
 		progress = func(Progress) {}
 	}
-	out := p.find(ctx, in.Brief, progress)
-	return p.finish(in, out)
+	families := []string{in.Brief.Basis.Family}
+	if in.Brief.Basis.Family == brief.Best {
+		families = []string{brief.Slepian, brief.Fourier, brief.BSpline}
+	}
+	var q *problem
+	var out outcome
+	for _, family := range families {
+		next, err := newTask(in, family)
+		if err != nil {
+			return nil, err
+		}
+		o := next.find(ctx, in.Brief, progress)
+		if q == nil || o.better(out) {
+			q, out = next, o
+		}
+		if ctx.Err() != nil {
+			break
+		}
+	}
+	return q.finish(in, out)
 }
 
-// newTask readies the problem of the brief.
-func newTask(in Inputs) (*problem, error) {
+// newTask readies the problem of the brief in one family of shapes.
+func newTask(in Inputs, family string) (*problem, error) {
 	d, err := drives(in)
 	if err != nil {
 		return nil, err
 	}
 	b := in.Brief
 	w := wish{
-		samples: int(math.Round(b.Span / in.Profile.SamplePeriod)), family: b.Basis.Family, count: b.Basis.Coefficients,
+		samples: int(math.Round(b.Span / in.Profile.SamplePeriod)),
+		family:  family, count: b.Basis.Coefficients, degree: b.Basis.Degree,
 		settled: b.Ends == brief.Settled,
 		target:  dynamics.Vec{b.Target.Axis[0] * b.Target.Angle, b.Target.Axis[1] * b.Target.Angle, b.Target.Axis[2] * b.Target.Angle},
+		turns:   turns(b),
 	}
 	w.spin.Static = scale(pauli(in.Device.Static()), 2)
 	w.spin.Target = dynamics.Turn(w.target)
+	w.spin.FreeBefore = b.Target.FreeZ == brief.Before || b.Target.FreeZ == brief.Both
+	w.spin.FreeAfter = b.Target.FreeZ == brief.After || b.Target.FreeZ == brief.Both
+	shifted := false
 	for _, x := range d {
+		ch := &in.Profile.Channels[x.channel]
 		w.channels = append(w.channels, x.channel)
 		for _, op := range x.operators {
-			w.spin.Axes = append(w.spin.Axes, scale(pauli(op), 2*in.Profile.Channels[x.channel].FullScale))
+			w.spin.Axes = append(w.spin.Axes, scale(pauli(op), 2*ch.FullScale))
+			// H += Shift |u|² Z/2
+			w.spin.Shifts = append(w.spin.Shifts, dynamics.Vec{0, 0, ch.Shift})
+			shifted = shifted || ch.Shift != 0
 		}
+	}
+	if !shifted {
+		w.spin.Shifts = nil
 	}
 	if w.spin.Held, w.slopes, err = classes(in, d); err != nil {
 		return nil, err
@@ -129,52 +165,167 @@ func newTask(in Inputs) (*problem, error) {
 	return q, nil
 }
 
+// turns are the angles that the samples are emitted at: none, and those that the
+// brief asks for.
+func turns(b *brief.Brief) []complex128 {
+	list := []complex128{1}
+	if b.PhaseBy != brief.BySamples {
+		return list
+	}
+	for _, phase := range b.Phases {
+		if z := cmplx.Rect(1, phase); cmplx.Abs(z-1) > 1e-12 {
+			list = append(list, z)
+		}
+	}
+	return list
+}
+
 // A driven channel of the target's site, and what its controls do there.
 type driven struct {
 	channel   int
+	control   int // the first of its controls
 	operators []device.Matrix
 }
 
-// drives finds the channels that drive the target's site.
+// drives finds the channels that drive the target's site: quadrature channels
+// first, then baseband ones.
 func drives(in Inputs) (list []driven, err error) {
-	for i, d := range in.Device.Drives {
-		if d.Site != in.Brief.Target.Site {
-			continue
-		}
-		channel, ok := in.Profile.Channel(d.Channel)
+	control := 0
+	add := func(name string, operators func(ch *hardware.Channel) []device.Matrix) error {
+		i, ok := in.Profile.Channel(name)
 		if !ok {
-			return nil, fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, d.Channel)
+			return fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, name)
 		}
-		ops := in.Device.Operators(i, string(in.Profile.Channels[channel].Mixing))
-		list = append(list, driven{channel, ops[:]})
+		d := driven{i, control, operators(&in.Profile.Channels[i])}
+		control += len(d.operators)
+		list = append(list, d)
+		return nil
 	}
-	if len(list) == 0 {
-		return nil, fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
+	for i, d := range in.Device.Drives {
+		if d.Site == in.Brief.Target.Site {
+			err = errors.Join(err, add(d.Channel, func(ch *hardware.Channel) []device.Matrix {
+				ops := in.Device.Operators(i, string(ch.Mixing))
+				return ops[:]
+			}))
+		}
 	}
-	return list, nil
+	for _, d := range in.Device.Biases {
+		if d.Site == in.Brief.Target.Site {
+			err = errors.Join(err, add(d.Channel, func(*hardware.Channel) []device.Matrix { return []device.Matrix{half(d.Axis)} }))
+		}
+	}
+	if err == nil && len(list) == 0 {
+		err = fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
+	}
+	return list, err
 }
 
 // classes turns the brief's errors into those of package robust, with the lines
 // of those that are errors of a line.
 func classes(in Inputs, d []driven) (held []robust.Class, slopes []*slope, err error) {
+	controls := 0
+	for _, x := range d {
+		controls += len(x.operators)
+	}
+	on := func(name string) (lane int) {
+		return slices.IndexFunc(d, func(x driven) bool { return in.Profile.Channels[x.channel].Name == name })
+	}
+	opening := opening(in.Profile, d)
 	for _, e := range in.Brief.Errors {
 		c := robust.Class{Name: e.Name, Weight: e.Weight, Size: e.Size}
 		var s *slope
+		lane := -1
+		if len(e.Channels) > 0 {
+			if lane = on(e.Channels[0]); lane < 0 {
+				return nil, nil, fmt.Errorf("error %q: channel %q does not drive site %q", e.Name, e.Channels[0], in.Brief.Target.Site)
+			}
+		}
+		mix := func() [][]float64 {
+			m := make([][]float64, controls)
+			for i := range m {
+				m[i] = make([]float64, controls)
+			}
+			return m
+		}
 		switch e.Kind {
 		case brief.Static:
 			c.Kind, c.Vector = robust.Static, pauli(e.Operator)
 			// the field that an operator of that size adds: H = F·σ/2
 			c.Size = 2 * e.Size * length(c.Vector)
-		case brief.Amplitude:
-			c.Kind = robust.Amplitude
 		case brief.Any:
 			c.Kind = robust.Any
+		case brief.Amplitude:
+			if c.Kind = robust.Amplitude; e.Quadrature == "" && (len(e.Channels) == 0 || len(e.Channels) == len(d)) {
+				break
+			}
+			c.Kind, c.Mix = robust.Mixed, mix()
+			for _, name := range e.Channels {
+				i := on(name)
+				if i < 0 {
+					return nil, nil, fmt.Errorf("error %q: channel %q does not drive site %q", e.Name, name, in.Brief.Target.Site)
+				}
+				for k := range d[i].operators {
+					if e.Quadrature == "" || e.Quadrature == "IQ"[k:k+1] {
+						c.Mix[d[i].control+k][d[i].control+k] = 1
+					}
+				}
+			}
+		case brief.Skew:
+			c.Kind, c.Mix = robust.Mixed, mix()
+			c.Mix[d[lane].control][d[lane].control+1] = -1
+		case brief.Offset: // what a constant at the converter makes of H, per rad/ns
+			i := 0
+			if e.Quadrature == "Q" {
+				i = 1
+			}
+			ch := &in.Profile.Channels[d[lane].channel]
+			c.Kind, c.Vector = robust.Static, pauli(d[lane].operators[i])
+			c.Size = 2 * e.Size * ch.FullScale * cmplx.Abs(ch.Line.DC()) * length(c.Vector)
+		case brief.Line:
+			ch := &in.Profile.Channels[d[lane].channel]
+			p, ok := ch.Parameter(e.Parameter)
+			if !ok || p.Refused != "" {
+				return nil, nil, fmt.Errorf("error %q: parameter %q of channel %q has no derivative", e.Name, e.Parameter, ch.Name)
+			}
+			c.Kind = robust.Line
+			s = &slope{lane, feed{p.Slope, in.Profile.Start(d[lane].channel) - opening}}
 		default:
 			return nil, nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
 		}
 		held, slopes = append(held, c), append(slopes, s)
 	}
+	if n := toggles(held); n > dynamics.MaxToggles {
+		return nil, nil, fmt.Errorf("found %d errors that a search must follow at once; allowed: up to %d, any number of static ones counting as three", n, dynamics.MaxToggles)
+	}
 	return held, slopes, nil
+}
+
+// toggles counts what dynamics has to follow for the classes: see robust.NewGate.
+func toggles(held []robust.Class) int {
+	statics, others, all := 0, 0, false
+	for _, c := range held {
+		switch c.Kind {
+		case robust.Static:
+			statics++
+		case robust.Any:
+			all = true
+		default:
+			others++
+		}
+	}
+	if all {
+		statics = 3
+	}
+	return min(statics, 3) + others
+}
+
+// opening is the instant of the gate's window: that of the last channel to arrive.
+func opening(p *hardware.Profile, d []driven) float64 {
+	t := math.Inf(-1)
+	for _, x := range d {
+		t = math.Max(t, p.Start(x.channel))
+	}
+	return t
 }
 
 // pauli returns v with v·σ the traceless part of a 2x2 Hermitian matrix.
@@ -194,12 +345,25 @@ func scale(v dynamics.Vec, f float64) dynamics.Vec {
 type outcome struct {
 	c           []float64
 	miss        float64
+	loss        float64 // of the finite errors, once refined
 	status      Status
 	winner      int
 	tried       int
 	successes   int
 	evaluations int
 	refined     bool
+}
+
+// better says whether an outcome is worth more: found before not found, then less
+// loss under finite errors, then a smaller miss.
+func (o outcome) better(p outcome) bool {
+	if (o.status == Found) != (p.status == Found) {
+		return o.status == Found
+	}
+	if o.loss != p.loss {
+		return o.loss < p.loss
+	}
+	return o.miss < p.miss
 }
 
 // find searches from many starts, refines the lowest-numbered successes and
@@ -248,7 +412,7 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 			best = c
 		}
 	}
-	out.c, out.miss, out.winner, out.refined = best.c, best.miss, best.start, refine
+	out.c, out.miss, out.loss, out.winner, out.refined = best.c, best.miss, best.loss, best.start, refine
 	if ctx.Err() == nil {
 		out.status = Found
 		if !best.zero {

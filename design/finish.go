@@ -3,6 +3,7 @@ package design
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 
 	"holdfast/design/brief"
 	"holdfast/design/device"
@@ -21,11 +22,11 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	var headroom []Headroom
 	for i, l := range q.lanes {
 		ch := &in.Profile.Channels[l.channel]
-		codes, err := hardware.QuantiseAll(exact[i], in.Profile.Bits)
+		codes, err := encode(in.Profile, ch, exact[i])
 		if err != nil {
 			return nil, err
 		}
-		x, err := hardware.SamplesOf(codes, in.Profile.Bits)
+		x, err := decode(in.Profile, ch, codes)
 		if err != nil {
 			return nil, err
 		}
@@ -94,7 +95,58 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	record.Model = q.model(in, d)
 	q.claim(&record, in, exact, rounded)
 	p.Record = record
+	if b.PhaseBy == brief.BySamples {
+		return p, q.turn(p, in, exact)
+	}
 	return p, nil
+}
+
+// turn adds the waveforms of the gate at the angles that the brief asks for. The
+// search kept the limits of every one of them.
+func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
+	for _, angle := range in.Brief.Phases {
+		t := Turned{Angle: angle}
+		facts := PhaseFacts{Angle: angle * 180 / math.Pi, Kept: true}
+		var rounded [][]complex128
+		for i, l := range q.lanes {
+			ch := &in.Profile.Channels[l.channel]
+			x := exact[i]
+			if l.quadratures == 2 {
+				x = make([]complex128, len(exact[i]))
+				for k, v := range exact[i] {
+					x[k] = v * cmplx.Rect(1, angle)
+				}
+			}
+			codes, err := encode(in.Profile, ch, x)
+			if err != nil {
+				return err
+			}
+			readings, err := in.Profile.CheckCodes(l.channel, codes)
+			if err != nil {
+				return err
+			}
+			facts.Kept = facts.Kept && hardware.Kept(readings)
+			y, err := decode(in.Profile, ch, codes)
+			if err != nil {
+				return err
+			}
+			rounded = append(rounded, y)
+			t.Channels = append(t.Channels, Waveform{Channel: l.channel, Exact: x, Codes: codes})
+		}
+		// the axis of the target turns by the angle, with the sense in which Q drives
+		sense := 1.0
+		if q.spin.Axes[q.lanes[0].control+1][1] < 0 {
+			sense = -1
+		}
+		z := dynamics.Turn(dynamics.Vec{0, 0, sense * angle})
+		a, s := q.axis(claimShare, q.settled), q.spin
+		s.Grid, s.Held, s.Target = a.Grid, nil, z.Mul(q.spin.Target).Mul(z.Conj())
+		u, _ := q.controls(&a, rounded)
+		facts.Infidelity = robust.NewGate(s, robust.Response{}, 0).Figures(u, nil).Infidelity
+		p.Turned = append(p.Turned, t)
+		p.Record.Pulse.Phases = append(p.Record.Pulse.Phases, facts)
+	}
+	return nil
 }
 
 func (q *problem) isAmplitude(b *brief.Brief, name string) bool {
@@ -110,7 +162,7 @@ func (q *problem) isAmplitude(b *brief.Brief, name string) bool {
 func (q *problem) model(in Inputs, d []driven) Model {
 	m := Model{
 		SamplePeriod: in.Profile.SamplePeriod, Samples: q.samples, Bits: in.Profile.Bits, Ends: in.Brief.Ends,
-		WindowStart: q.opening(), Dim: in.Device.Dim(), CodeSpace: []int{0, 1},
+		WindowStart: opening(in.Profile, d), Dim: in.Device.Dim(), CodeSpace: []int{0, 1},
 		Static: rowsOf(in.Device.Static()), Target: rowsOf(in.Brief.Target.Matrix),
 		FreeZBefore: []float64{}, FreeZAfter: []float64{},
 	}
@@ -128,17 +180,56 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			MaxShare: ch.AmplitudeLimit, MaxSlew: finite(ch.SlewLimit), RingOut: finite(ch.RingOut.Limit),
 			GuardLead: ch.GuardLead, GuardTrail: ch.GuardTrail,
 		}
+		if ch.Envelope == hardware.Box {
+			mc.Envelope = ch.Envelope
+		}
+		if ch.RMSLimit > 0 {
+			n := q.samples
+			if ch.RMSPeriod > 0 {
+				n = max(n, int(math.Floor(ch.RMSPeriod/in.Profile.SamplePeriod+1e-9)))
+			}
+			mc.RMS, mc.RMSSamples = &ch.RMSLimit, n
+		}
+		if tail := ch.RingOut.Tail; tail > 0 && tail != ch.RingOut.Limit {
+			mc.RingOutTail, mc.RingOutFast = &tail, &ch.RingOut.Fast
+		}
+		if ch.OutOfBand > 0 {
+			mc.OutOfBand, mc.Band = &ch.OutOfBand, &ch.Band
+		}
+		mc.ZeroMean = ch.ZeroMean
+		for _, pt := range ch.Compression {
+			mc.Compression = append(mc.Compression, [2]float64{pt.Converter, pt.Reached})
+		}
+		if ch.Shift != 0 {
+			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(half("Z"))
+		}
 		for _, op := range d[i].operators {
 			mc.Operators = append(mc.Operators, rowsOf(op))
 		}
 		m.Channels = append(m.Channels, mc)
 	}
 	known := map[string]bool{}
-	for _, e := range in.Brief.Errors {
+	for i, e := range in.Brief.Errors {
 		known[e.Name] = true
-		r := ModelError{Name: e.Name, Held: true, Kind: e.Kind, Channels: e.Channels}
-		if e.Kind == brief.Static {
+		r := ModelError{Name: e.Name, Held: true, Kind: e.Kind, Channels: e.Channels, Quadrature: e.Quadrature}
+		switch e.Kind {
+		case brief.Static:
 			r.Operator = rowsOf(e.Operator)
+		case brief.Offset: // a static error along what the quadrature drives
+			r.Kind, r.Channels, r.Quadrature = brief.Static, nil, ""
+			for k, x := range d {
+				if in.Profile.Channels[x.channel].Name == e.Channels[0] {
+					op := 0
+					if e.Quadrature == "Q" {
+						op = 1
+					}
+					r.Operator = rowsOf(d[k].operators[op])
+				}
+			}
+		case brief.Line:
+			r.Channels, r.Channel = nil, e.Channels[0]
+			l := lineOf(q.slopes[i].feed.line)
+			r.LineModel = &l
 		}
 		m.Errors = append(m.Errors, r)
 	}
@@ -158,15 +249,6 @@ func (q *problem) model(in Inputs, d []driven) Model {
 		m.Errors = append(m.Errors, r)
 	}
 	return m
-}
-
-// opening is the instant of the window: that of the last channel to arrive.
-func (q *problem) opening() float64 {
-	t := math.Inf(-1)
-	for _, l := range q.lanes {
-		t = math.Max(t, q.profile.Start(l.channel))
-	}
-	return t
 }
 
 func lineOf(l filter.Line) LineModel {
@@ -240,7 +322,15 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) {
 	}
 	f := figures(in.Brief.Ends, rounded)
 	r.Claim.Infidelity = f.Infidelity
-	r.Claim.InfidelityOtherEnds = figures(other, rounded).Infidelity
+	if s.FreeBefore {
+		r.Model.FreeZBefore = []float64{f.Before}
+	}
+	if s.FreeAfter {
+		r.Model.FreeZAfter = []float64{f.After}
+	}
+	// the free angles are those of the stated ends, whatever the ends
+	g, u, _ := on(other, rounded)
+	r.Claim.InfidelityOtherEnds = g.InfidelityAt(u, f.Before, f.After)
 	r.Search.Before = figures(in.Brief.Ends, exact).Infidelity
 	for i := range r.Model.Errors {
 		r.Model.Errors[i].Susceptibility = f.Susceptibility[i]
@@ -273,4 +363,35 @@ func (p *Pulse) Summary() string {
 		return fmt.Sprintf("interrupted after %d starts; the best so far misses by %.3g", s.Tried, math.Sqrt(s.Miss))
 	}
 	return fmt.Sprintf("not found: %d starts, the best of them misses by %.3g (root of the sum of squared residuals)", s.Tried, math.Sqrt(s.Miss))
+}
+
+// encode rounds what a drive is to reach to codes of its channel.
+func encode(p *hardware.Profile, ch *hardware.Channel, y []complex128) ([]int16, error) {
+	var codes []int16
+	for k, v := range y {
+		i, q, err := hardware.Quantise(ch.Compression.Converter(v), p.Bits)
+		if err != nil {
+			return nil, fmt.Errorf("channel %q, sample %d: %w", ch.Name, k, err)
+		}
+		if codes = append(codes, i); ch.Columns() == 2 {
+			codes = append(codes, q)
+		}
+	}
+	return codes, nil
+}
+
+// decode is the way back: what the drive reaches with the codes.
+func decode(p *hardware.Profile, ch *hardware.Channel, codes []int16) ([]complex128, error) {
+	pairs := codes
+	if ch.Columns() == 1 {
+		pairs = make([]int16, 0, 2*len(codes))
+		for _, c := range codes {
+			pairs = append(pairs, c, 0)
+		}
+	}
+	x, err := hardware.SamplesOf(pairs, p.Bits)
+	for k, v := range x {
+		x[k] = ch.Compression.Reached(v)
+	}
+	return x, err
 }

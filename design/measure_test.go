@@ -135,7 +135,7 @@ func TestMeasureShares(t *testing.T) {
 			if gate == "X180" {
 				ns = c.x180
 			}
-			q, err := newTask(wanted(t, gate, ns, c.held, ""))
+			q, err := newTask(wanted(t, gate, ns, c.held, ""), "slepian")
 			if err != nil {
 				t.Fatal(err)
 			}

@@ -7,6 +7,7 @@ import (
 
 	"gonum.org/v1/gonum/mat"
 
+	"holdfast/design/brief"
 	"holdfast/design/dynamics"
 	"holdfast/design/robust"
 	"holdfast/design/solve"
@@ -35,6 +36,7 @@ type problem struct {
 	starts         int
 	seed           uint64
 	visit          func(c []float64) // of every point evaluated; nil outside tests
+	turns          []complex128      // e^{iφ} of the angles that the samples are emitted at; 1 comes first
 }
 
 // A lane is one channel that plays: its coefficients are c[first:first+n] and, of
@@ -66,18 +68,26 @@ type wish struct {
 	samples  int
 	family   string
 	count    int // coefficients per quadrature; 0: what the band carries
+	degree   int // of B-splines
 	spin     robust.Spin
 	slopes   []*slope
 	target   dynamics.Vec
 	settled  bool
+	turns    []complex128
 }
 
 // newProblem puts the rooms together.
 func newProblem(p *hardware.Profile, w wish) (*problem, error) {
-	q := &problem{profile: p, samples: w.samples, spin: w.spin, slopes: w.slopes, target: w.target, settled: w.settled}
-	control := 0
+	q := &problem{profile: p, samples: w.samples, spin: w.spin, slopes: w.slopes, target: w.target, settled: w.settled, turns: w.turns}
+	if len(q.turns) == 0 {
+		q.turns = []complex128{1}
+	}
+	control, opening := 0, math.Inf(-1)
 	for _, c := range w.channels {
-		l, err := newLane(p, c, w)
+		opening = math.Max(opening, p.Start(c))
+	}
+	for _, c := range w.channels {
+		l, err := newLane(p, c, w, opening)
 		if err != nil {
 			return nil, err
 		}
@@ -96,24 +106,18 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 	return q, nil
 }
 
-// newLane readies one channel.
-func newLane(p *hardware.Profile, c int, w wish) (lane, error) {
+// newLane readies one channel; opening is the instant of the gate's window.
+func newLane(p *hardware.Profile, c int, w wish, opening float64) (lane, error) {
 	ch := &p.Channels[c]
-	l := lane{channel: c, quadratures: 2, feed: feed{line: ch.Line}}
+	l := lane{channel: c, quadratures: ch.Columns(), feed: feed{line: ch.Line, at: p.Start(c) - opening}}
 	var err error
 	if l.limit, err = p.Playable(c, w.samples); err != nil {
 		return l, err
 	}
+	if l.basis, err = newBasis(ch, p.SamplePeriod, w); err != nil {
+		return l, fmt.Errorf("channel %q: %w", ch.Name, err)
+	}
 	n := w.samples
-	switch width := ch.Band * p.SamplePeriod; {
-	case w.family == shape.FamilySamples || width >= 0.5:
-		l.basis, err = shape.Samples(n, ch.GuardLead, ch.GuardTrail)
-	default:
-		l.basis, err = shape.Slepian(n, ch.GuardLead, ch.GuardTrail, width, w.count)
-	}
-	if err != nil {
-		return l, err
-	}
 	for j := range l.basis.Count {
 		col := make([]complex128, n)
 		for k, v := range l.basis.Columns[j*n : (j+1)*n] {
@@ -122,6 +126,28 @@ func newLane(p *hardware.Profile, c int, w wish) (lane, error) {
 		l.columns = append(l.columns, col)
 	}
 	return l, nil
+}
+
+// newBasis makes the samples' basis. Where the channel has no band, or one of half
+// the sample rate, every family is the whole space: one coefficient per sample.
+func newBasis(ch *hardware.Channel, h float64, w wish) (b *shape.Basis, err error) {
+	lead, trail, width := ch.GuardLead, ch.GuardTrail, ch.Band*h
+	switch {
+	case w.family == brief.Samples || width >= 0.5:
+		b, err = shape.Samples(w.samples, lead, trail)
+	case w.family == brief.Fourier:
+		b, err = shape.Fourier(w.samples, lead, trail, width, w.count)
+	case w.family == brief.Tapered:
+		b, err = shape.TaperedFourier(w.samples, lead, trail, width, w.count)
+	case w.family == brief.BSpline:
+		b, err = shape.BSpline(w.samples, lead, trail, width, w.count, w.degree)
+	default:
+		b, err = shape.Slepian(w.samples, lead, trail, width, w.count)
+	}
+	if err == nil && ch.ZeroMean {
+		b, err = shape.ZeroMean(b)
+	}
+	return b, err
 }
 
 // axis builds a grid for the lanes that play.
@@ -186,20 +212,50 @@ func (q *problem) constrain() {
 			}
 			return re, im
 		}
+		turns := []complex128{1}
+		if l.quadratures == 2 {
+			turns = q.turns // every angle that the samples are emitted at
+		}
 		for k := l.limit.Lead; k < N-l.limit.Trail; k++ {
-			re, im := row(k, []complex128{1})
-			q.set.AddDisc(re, im, l.limit.Disc)
+			if l.limit.Box == 0 {
+				re, im := row(k, []complex128{1})
+				q.set.AddDisc(re, im, l.limit.Disc)
+				continue
+			}
+			for _, turn := range turns {
+				re, im := row(k, []complex128{turn})
+				q.set.AddRow(re, l.limit.Box)
+				q.set.AddRow(im, l.limit.Box)
+			}
 		}
 		for _, r := range l.limit.Rows {
-			re, im := row(r.First, r.Weights)
-			for _, a := range [][]float64{re, im} {
-				q.set.AddRow(a, r.Bound)
-				if r.Limit != hardware.Slew {
-					rows++
-					for _, v := range a {
-						ringing = append(ringing, v/r.Bound)
+			for i, turn := range turns {
+				weights := r.Weights
+				if i > 0 {
+					weights = make([]complex128, len(r.Weights))
+					for k, w := range r.Weights {
+						weights[k] = turn * w
 					}
 				}
+				re, im := row(r.First, weights)
+				for _, a := range [][]float64{re, im} {
+					q.set.AddRow(a, r.Bound)
+					if r.Limit != hardware.Slew && i == 0 {
+						rows++
+						for _, v := range a {
+							ringing = append(ringing, v/r.Bound)
+						}
+					}
+				}
+			}
+		}
+		for _, b := range l.limit.Balls {
+			q.set.AddBall(l.both(q.dim, l.overlap(b.Weights, N)), b.Bound)
+		}
+		if !math.IsInf(l.limit.OutOfBand, 1) && l.limit.OutOfBand > 0 {
+			width := q.profile.Channels[l.channel].Band * q.profile.SamplePeriod
+			if e, err := l.basis.OutOfBand(width); err == nil && width < 0.5 {
+				q.set.AddBall(l.both(q.dim, e), math.Sqrt(l.limit.OutOfBand))
 			}
 		}
 	}
@@ -221,6 +277,41 @@ func (q *problem) constrain() {
 	var v mat.Dense
 	svd.VTo(&v)
 	q.quiet = mat.DenseCopyOf(v.Slice(0, q.dim, 0, rank))
+}
+
+// overlap gives the matrix of a sum of squares over rows of samples, in the
+// coefficients of one quadrature; the identity for no rows, as the columns are
+// orthonormal.
+func (l *lane) overlap(rows [][]float64, samples int) []float64 {
+	n := l.basis.Count
+	m := make([]float64, n*n)
+	if rows == nil {
+		for i := range n {
+			m[i*n+i] = 1
+		}
+	}
+	for _, w := range rows {
+		a := l.basis.Transpose(w, nil)
+		for i, v := range a {
+			for k, u := range a {
+				m[i*n+k] += v * u
+			}
+		}
+	}
+	return m
+}
+
+// both puts the matrix of one quadrature in the place of each of the lane's.
+func (l *lane) both(dim int, m []float64) []float64 {
+	n := l.basis.Count
+	q := make([]float64, dim*dim)
+	for k := range l.quadratures {
+		first := l.first + k*n
+		for i := range n {
+			copy(q[(first+i)*dim+first:(first+i)*dim+first+n], m[i*n:(i+1)*n])
+		}
+	}
+	return q
 }
 
 // silence takes the directions that ring out from c.

@@ -145,7 +145,7 @@ func TestPublishedComposites(t *testing.T) {
 		if err != nil || !hardware.Kept(readings) {
 			t.Errorf("%s: the ideal instrument does not play it: %v %v", c.name, readings, err)
 		}
-		q, err := newTask(in)
+		q, err := newTask(in, in.Brief.Basis.Family)
 		if err != nil {
 			t.Fatal(err)
 		}

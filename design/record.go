@@ -36,8 +36,18 @@ type PulseFacts struct {
 	Span   string   `toml:"span"`
 	Held   []string `toml:"held"` // names of the errors it is held against
 	// HeldByDefault is true when the brief named no error.
-	HeldByDefault bool   `toml:"held_by_default"`
-	Status        string `toml:"status"` // a Status in words
+	HeldByDefault bool         `toml:"held_by_default"`
+	Status        string       `toml:"status"` // a Status in words
+	Phases        []PhaseFacts `toml:"phase,omitempty"`
+}
+
+// PhaseFacts are the same gate emitted turned by an angle about Z: its axis is
+// turned in the XY plane.
+type PhaseFacts struct {
+	Angle      float64  `toml:"angle_deg"`
+	Files      []string `toml:"files"`
+	Infidelity float64  `toml:"infidelity"` // of the codes, to the target turned likewise, for the stated ends
+	Kept       bool     `toml:"limits_kept"`
 }
 
 // BasisFacts give the coefficients: samples = basis times coefficients.
@@ -154,6 +164,18 @@ type ModelChannel struct {
 	GuardLead  int           `toml:"guard_lead"`
 	GuardTrail int           `toml:"guard_trail"`
 	RingOut    *float64      `toml:"ring_out_share,omitempty"`
+
+	Envelope      string       `toml:"envelope,omitempty"` // "box", or absent for the disc
+	RMS           *float64     `toml:"rms_share,omitempty"`
+	RMSSamples    int          `toml:"rms_samples,omitzero"`
+	OutOfBand     *float64     `toml:"out_of_band_share,omitempty"`
+	Band          *float64     `toml:"band_ghz,omitempty"`
+	RingOutTail   *float64     `toml:"ring_out_tail_share,omitempty"`
+	RingOutFast   *float64     `toml:"ring_out_fast_ns,omitempty"`
+	ZeroMean      bool         `toml:"zero_mean,omitempty"`
+	Compression   [][2]float64 `toml:"compression,omitempty"`
+	Shift         *float64     `toml:"shift_rad_per_ns,omitempty"`
+	ShiftOperator [][]Complex  `toml:"shift_operator,omitempty"`
 }
 
 // LineModel are the poles of a line: G(s) = direct + sum residue/(s - pole)^power.
@@ -171,6 +193,9 @@ type ModelError struct {
 	Kind           string      `toml:"kind"`
 	Operator       [][]Complex `toml:"operator,omitempty"`
 	Channels       []string    `toml:"channels,omitempty"`
+	Quadrature     string      `toml:"quadrature,omitempty"` // "I" or "Q" of an amplitude error of one
+	Channel        string      `toml:"channel,omitempty"`    // of kind "line"
+	*LineModel                 // of kind "line": what u gains per lambda, over full scale
 	Susceptibility float64     `toml:"susceptibility"`
 }
 

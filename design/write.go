@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"os"
 	"path/filepath"
+	"strconv"
 	"strings"
 
 	"holdfast/hardware"
@@ -52,8 +53,23 @@ func (p *Pulse) Write(dir string, s Sources) error {
 		if err := hardware.WriteNPY(filepath.Join(dir, ch.Exact), len(w.Exact), columns, exact); err != nil {
 			return err
 		}
-		if _, err := WriteWaveform(dir, p.inputs.Profile, w.Channel, w.Codes); err != nil {
+		if _, err := WriteWaveform(dir, strings.TrimSuffix(ch.Codes, ".npy"), p.inputs.Profile, w.Channel, w.Codes); err != nil {
 			return err
+		}
+	}
+	for i, t := range p.Turned {
+		facts := &p.Record.Pulse.Phases[i]
+		facts.Files = []string{}
+		for k, w := range t.Channels {
+			if p.inputs.Profile.Channels[w.Channel].Columns() == 1 {
+				continue // a bias does not turn
+			}
+			stem := fmt.Sprintf("%s-turned-%sdeg", strings.TrimSuffix(p.Record.Model.Channels[k].Codes, ".npy"), strconv.FormatFloat(facts.Angle, 'g', 6, 64))
+			names, err := WriteWaveform(dir, stem, p.inputs.Profile, w.Channel, w.Codes)
+			if err != nil {
+				return err
+			}
+			facts.Files = append(facts.Files, names...)
 		}
 	}
 	names, err := hardware.ListFiles(dir)
@@ -78,25 +94,21 @@ func (p *Pulse) Write(dir string, s Sources) error {
 	return nil
 }
 
-// WriteWaveform writes the interleaved codes of one channel into dir in every format: STEM.npy, STEM.csv, STEM.int16,
-// and STEM-arrives.npy with what they become at the device, where STEM is made of the channel's name. It gives the names of
-// the files. The record's [model] names the first; the others are for whoever plays or looks.
-func WriteWaveform(dir string, p *hardware.Profile, channel int, codes []int16) (names []string, err error) {
-	x, err := hardware.SamplesOf(codes, p.Bits)
+// WriteWaveform writes the interleaved codes of one channel into dir in every format: stem.npy, stem.csv, stem.int16,
+// and stem-arrives.npy with what they become at the device. It gives the names of the files. The record's [model] names
+// the first; the others are for whoever plays or looks.
+func WriteWaveform(dir, stem string, p *hardware.Profile, channel int, codes []int16) (names []string, err error) {
+	rows, err := p.Arrival(channel, codes)
 	if err != nil {
 		return nil, err
 	}
-	rows, err := p.Arrival(channel, x)
-	if err != nil {
-		return nil, err
-	}
-	stem := fileStem(p.Channels[channel].Name)
+	columns := p.Channels[channel].Columns()
 	for _, f := range []struct {
 		end   string
 		write func(path string) error
 	}{
-		{".npy", func(path string) error { return hardware.WriteNPY(path, len(x), 2, codes) }},
-		{".csv", func(path string) error { return hardware.WriteCSV(path, p.SamplePeriod, p.Bits, 2, codes) }},
+		{".npy", func(path string) error { return hardware.WriteNPY(path, len(codes)/columns, columns, codes) }},
+		{".csv", func(path string) error { return hardware.WriteCSV(path, p.SamplePeriod, p.Bits, columns, codes) }},
 		{".int16", func(path string) error { return hardware.WriteRaw(path, codes) }},
 		{"-arrives.npy", func(path string) error { return hardware.WriteArrival(path, rows) }},
 	} {

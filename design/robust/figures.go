@@ -155,6 +155,14 @@ func (g *Gate) MeanInfidelity(u []float64, v [][]float64, class int) float64 {
 	return sum / float64(len(list))
 }
 
+// InfidelityAt returns the average gate infidelity of controls u with rotations
+// about Z by given angles, rad, before and after the gate, whatever is free.
+func (g *Gate) InfidelityAt(u []float64, before, after float64) float64 {
+	x := dynamics.Turn(dynamics.Vec{0, 0, after}).Mul(g.Unitary(u)).Mul(dynamics.Turn(dynamics.Vec{0, 0, before}))
+	e := x.Mul(g.spec.Target.Conj())
+	return 2. / 3 * (e[1]*e[1] + e[2]*e[2] + e[3]*e[3])
+}
+
 // Unitary returns the gate of controls u given at the grid's nodes, in the frame
 // of the undriven device, without free angles.
 func (g *Gate) Unitary(u []float64) dynamics.Quat {

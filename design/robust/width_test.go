@@ -130,6 +130,9 @@ func TestFreeAngles(t *testing.T) {
 			if got := loss(f.Before, f.After); !(math.Abs(got-f.Infidelity) <= 1e-13) {
 				t.Errorf("free %v: infidelity %v, at the angles that go with it %v", free, f.Infidelity, got)
 			}
+			if got := NewGate(s, Response{}, 0).InfidelityAt(u, f.Before, f.After); !(math.Abs(got-f.Infidelity) <= 1e-13) {
+				t.Errorf("free %v: infidelity %v, at the best angles %v", free, f.Infidelity, got)
+			}
 			least := 1.0
 			const steps = 60
 			for i := range steps {

@@ -1,0 +1,157 @@
+package design
+
+import (
+	"context"
+	"fmt"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"holdfast/design/brief"
+	"holdfast/design/replay"
+)
+
+// A scene is an instrument, a device and a brief with one thing out of the
+// ordinary. Everything must come through the whole road: found, playable, and
+// agreed with by replay, which computes each by its own means.
+type scene struct {
+	name                 string
+	channel              string // keys of the drive's [[channel]]
+	line                 string // its [channel.line]
+	more                 string // further channels
+	device               string // further tables of the device
+	head, target, errors string // of the brief
+	ns                   int
+}
+
+const plainLine = "delay = \"3.2 ns\"\nlowpass = { family = \"bessel\", order = 2, corner = \"200 MHz\" }\ntails = [ { amplitude = \"-1.5 %\", time = \"30 ns\", known_to = \"20 %\" } ]\n"
+
+var scenes = []scene{
+	{name: "fourier", head: "[basis]\nfamily = \"fourier\"", ns: 64, errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "b-spline", head: "[basis]\nfamily = \"b-spline\"", ns: 72, errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "best", head: "[basis]\nfamily = \"best\"", ns: 64, errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "tail and corner", ns: 96, line: strings.Replace(plainLine, "\"200 MHz\"", "\"200 MHz\", known_to = \"5 %\"", 1), head: "hold = \"profile\""},
+	{name: "delay", ns: 72, errors: "[[error]]\nline = \"q1 drive\"\nparameter = \"delay\"\nsize = \"3 %\""},
+	{name: "one quadrature", ns: 72, errors: "[[error]]\namplitude = \"q1 drive\"\nquadrature = \"Q\"\n[[error]]\nquadrature_angle = \"q1 drive\""},
+	{name: "offset", ns: 96, errors: "[[error]]\noffset = \"q1 drive\""},
+	{name: "free Z", ns: 64, target: "free_z = \"both\"", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "free Z after", ns: 64, target: "free_z = \"after\"", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "rms and band", ns: 80, channel: "rms_limit = \"60 %\"\nout_of_band = \"0.2 %\"", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "box", ns: 64, channel: "envelope = \"box\"", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "zero mean", ns: 96, channel: "zero_mean = true", line: plainLine + "ac_coupling = \"1 ms\"\n", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "asymmetric line", ns: 72, line: plainLine + "resonance = [ { offset = \"60 MHz\", half_width = \"20 MHz\", depth = \"4 %\" } ]\n", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "compression and shift", ns: 80, channel: "compression = [[\"0 %\", \"0 %\"], [\"50 %\", \"49 %\"], [\"100 %\", \"94 %\"]]\nshift = \"200 kHz\"", errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\""},
+	{name: "bias", ns: 64, more: `[[channel]]
+name = "q1 flux"
+kind = "baseband"
+full_scale = "20 MHz"
+slew_limit = "25 %/sample"
+band = "100 MHz"
+guard = { lead = 0, trail = 4 }
+ring_out = { limit = "0.1 %", fast = "8 ns" }
+latency = "1.3 ns"
+[channel.line]
+delay = "2.4 ns"
+lowpass = { family = "single-pole", corner = "250 MHz" }
+`, device: "[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n", errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\""},
+	{name: "by samples", ns: 64, head: "phase_by = \"samples\"\nphases = [\"90 deg\", \"180 deg\", \"37 deg\"]", errors: "[[error]]\ndetuning = \"q1\""},
+}
+
+func (s scene) inputs(t *testing.T) Inputs {
+	t.Helper()
+	dir := t.TempDir()
+	line := s.line
+	if line == "" {
+		line = plainLine
+	}
+	write := func(name, text string) {
+		if err := os.WriteFile(filepath.Join(dir, name), []byte(text), 0o666); err != nil {
+			t.Fatal(err)
+		}
+	}
+	write("p.toml", `format = 1
+[instrument]
+name = "invented"
+sample_rate = "1 GS/s"
+resolution = "14 bit"
+block = 8
+[[channel]]
+name = "q1 drive"
+kind = "quadrature"
+mixing = "I cos - Q sin"
+full_scale = "40 MHz"
+amplitude_limit = "95 %"
+slew_limit = "25 %/sample"
+band = "100 MHz"
+guard = { lead = 0, trail = 4 }
+ring_out = { limit = "0.1 %", fast = "8 ns" }
+`+s.channel+"\n[channel.line]\n"+line+s.more)
+	write("d.toml", "format = 1\nname = \"invented\"\n[[site]]\nname = \"q1\"\nzero = \"upper\"\n[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n"+s.device)
+	head, basis, _ := strings.Cut(s.head, "[basis]")
+	if basis != "" {
+		basis = "[basis]" + basis
+	}
+	write("b.toml", fmt.Sprintf("format = 1\nname = \"x\"\nprofile = \"p.toml\"\ndevice = \"d.toml\"\nspan = \"%d ns\"\n%s\n[target]\nsite = \"q1\"\ngate = \"X90\"\n%s\n%s\n%s\n[require]\ninfidelity = 1e-6\n", s.ns, head, s.target, basis, s.errors))
+	b, p, d, err := brief.LoadAll(filepath.Join(dir, "b.toml"))
+	if err != nil {
+		t.Fatalf("%s: %v", s.name, err)
+	}
+	return Inputs{Brief: b, Profile: p, Device: d, Version: "test"}
+}
+
+func TestWidth(t *testing.T) {
+	for _, s := range scenes {
+		t.Run(s.name, func(t *testing.T) {
+			in := s.inputs(t)
+			p, err := Run(context.Background(), in, nil)
+			if err != nil {
+				t.Fatal(err)
+			}
+			src, err := ReadSources(in)
+			if err != nil {
+				t.Fatal(err)
+			}
+			dir := t.TempDir()
+			if err := p.Write(dir, src); err != nil {
+				t.Fatal(err)
+			}
+			f, err := replay.Open(dir)
+			if err != nil {
+				t.Fatal(err)
+			}
+			v, err := replay.Judge(context.Background(), f)
+			if err != nil {
+				t.Fatal(err)
+			}
+			t.Logf("%s; infidelity %.2g; differs by %.2g, %.2g, %.2g; inputs %v", p.Summary(), v.Required().Infidelity, v.Agreement.Infidelity, v.Agreement.Susceptibility, v.Agreement.TailAngle, v.Inputs)
+			if p.Status != Found {
+				t.Fatalf("%s", p.Summary())
+			}
+			if !v.Met() {
+				for _, r := range v.Requirements {
+					t.Logf("%+v", r)
+				}
+				for _, l := range v.Limits {
+					t.Logf("%+v", l)
+				}
+				t.Errorf("replay does not agree, or a limit or a requirement is broken: %+v %v", v.Agreement, v.Inputs)
+			}
+			for _, h := range p.Record.Headroom {
+				if !h.Kept {
+					t.Errorf("%s: %s breaks its limit", h.Channel, h.Limit)
+				}
+			}
+			for _, e := range v.Errors {
+				if e.Held && !(e.Susceptibility <= 1e-3) {
+					t.Errorf("%s: susceptibility %.2g", e.Name, e.Susceptibility)
+				}
+			}
+			for _, ph := range p.Record.Pulse.Phases {
+				if !ph.Kept || !(ph.Infidelity <= 1e-7) || len(ph.Files) != 4 {
+					t.Errorf("turned by %v: %+v", ph.Angle, ph)
+				}
+			}
+		})
+	}
+}
