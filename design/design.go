@@ -481,7 +481,7 @@ func (q *problem) refine(ctx context.Context, won []solve.Numbered, wanted bool,
 			q.improve(ctx, &left[i], stages)
 			mu.Lock()
 			done++
-			progress(Progress{Stage: "refine", Done: done, Of: len(left), Successes: len(won), Best: left[i].loss})
+			progress(Progress{Stage: "refine", Done: done, Of: len(left), Successes: len(won)})
 			mu.Unlock()
 		})
 	}
@@ -497,16 +497,28 @@ func sortByLoss(pool []candidate) {
 	}
 }
 
-// improve takes a candidate through stages of the refinement and polishes it. A polish
-// that does not end at a zero, or ends at a worse one, is dropped.
+// improve takes a candidate through stages of the refinement and polishes what
+// comes of it, the success itself the first time. A polish that ends at no zero,
+// or at a worse one, is dropped.
 func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
+	if c.c == nil {
+		q.polish(ctx, c)
+	}
+	if len(stages) == 0 {
+		return
+	}
 	for _, s := range stages {
 		r := solve.GaussNewton(ctx, q.residuals(q.finite(s)), q.set, c.wide,
 			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: s.iterations, Stalls: refineStalls})
 		c.wide = r.C
 		c.evaluations += r.Evaluations
 	}
-	// the polish is short and ends what was begun, even when interrupted
+	q.polish(ctx, c)
+}
+
+// polish brings the first order back to zero on the fine grid. It is short, and
+// ends what was begun even when interrupted.
+func (q *problem) polish(ctx context.Context, c *candidate) {
 	r := solve.GaussNewton(context.WithoutCancel(ctx), q.residuals(q.gate(true)), q.set, c.wide, solve.Options{Iterations: 100})
 	c.evaluations += r.Evaluations
 	next := candidate{zero: r.Status == solve.Converged, loss: q.loss(r.C)}

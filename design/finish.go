@@ -93,7 +93,9 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	}
 	record.Headroom = headroom
 	record.Model = q.model(in, d)
-	q.claim(&record, in, exact, rounded)
+	if err := q.claim(&record, in, exact, rounded); err != nil {
+		return nil, err
+	}
 	p.Record = record
 	if b.PhaseBy == brief.BySamples {
 		return p, q.turn(p, in, exact)
@@ -139,7 +141,11 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 			sense = -1
 		}
 		z := dynamics.Turn(dynamics.Vec{0, 0, sense * angle})
-		a, s := q.axis(claimShare, q.settled), q.spin
+		a, err := q.axis(claimShare, q.settled)
+		if err != nil {
+			return err
+		}
+		s := q.spin
 		s.Grid, s.Held, s.Target = a.Grid, nil, z.Mul(q.spin.Target).Mul(z.Conj())
 		u, _ := q.controls(&a, rounded)
 		facts.Infidelity = robust.NewGate(s, robust.Response{}, 0).Figures(u, nil).Infidelity
@@ -280,7 +286,7 @@ func rowsOf(m device.Matrix) [][]Complex {
 }
 
 // claim fills in what the record says of the rounded codes.
-func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) {
+func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) error {
 	s := q.spin
 	s.Held = nil
 	var slopes []*slope
@@ -304,7 +310,11 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) {
 	all.slopes = slopes
 	axes := map[string]axis{}
 	for _, ends := range []string{brief.Settled, brief.Window} {
-		axes[ends] = q.axis(claimShare, ends == brief.Settled)
+		a, err := q.axis(claimShare, ends == brief.Settled)
+		if err != nil {
+			return err
+		}
+		axes[ends] = a
 	}
 	on := func(ends string, x [][]complex128) (*robust.Gate, []float64, [][]float64) {
 		a, t := axes[ends], s
@@ -341,6 +351,7 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) {
 	}
 	tail := gate(brief.Settled).Mul(gate(brief.Window).Conj())
 	r.Claim.TailAngle = 2 * math.Atan2(math.Sqrt(tail[1]*tail[1]+tail[2]*tail[2]+tail[3]*tail[3]), math.Abs(tail[0]))
+	return nil
 }
 
 func matrixOf(rows [][]Complex) device.Matrix {

@@ -1,6 +1,7 @@
 package design
 
 import (
+	"fmt"
 	"math"
 	"math/cmplx"
 	"slices"
@@ -38,16 +39,18 @@ const (
 	claimShare = stepShare / 8
 	// turnShare bounds the angle, in rad, that full scale turns in one step.
 	turnShare = 0.3
-	dead      = 1e-9 // a pole has died when its decay is below this
-	mostSteps = 200_000
+	dead      = 1e-9    // a pole has died when its decay is below this
+	mostSteps = 100_000 // of one grid: some seconds of propagation, 50 MB
 )
 
 // newAxis builds the grid for n samples of period h on every feed. settled goes
 // on until the angle still to come is negligible, and begins where the first feed
 // does. full is the largest field (rad/ns), static that of the undriven device,
-// quiet the largest field expected after the span.
-func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, quiet float64) axis {
+// quiet the largest field expected after the span. It is an error when that
+// would take more than mostSteps.
+func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, quiet float64) (axis, error) {
 	a := axis{h: h}
+	tooMany := fmt.Errorf("span: %d samples through lines this fast or this slow take more than %d steps of propagation; allowed: a shorter span, or lines whose poles lie nearer to the sample rate", n, mostSteps)
 	span := float64(n) * h
 	var poles []filter.Term
 	slow := 0.0
@@ -55,6 +58,9 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 	for _, f := range feeds {
 		poles = append(poles, f.line.Terms...)
 		slow = math.Max(slow, f.line.SlowestTime())
+		if n > mostSteps {
+			return a, tooMany
+		}
 		for k := range n + 1 {
 			edges = append(edges, f.at+float64(k)*h)
 		}
@@ -78,7 +84,11 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 		if len(poles) == 0 { // the field is constant between edges
 			a.extend(begin, []float64{t - begin})
 		} else {
-			a.extend(begin, graded(poles, t-begin, share, full+static))
+			steps, ok := graded(poles, t-begin, share, full+static)
+			if !ok || len(a.Steps)+len(steps) > mostSteps {
+				return a, tooMany
+			}
+			a.extend(begin, steps)
 		}
 		if t <= 1e-9*h {
 			a.First = len(a.Steps)
@@ -87,7 +97,7 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 	a.Last = len(a.Steps)
 	a.end = span
 	if !settled || len(poles) == 0 {
-		return a
+		return a, nil
 	}
 	// After the span: until every pole but the slowest has died when nothing
 	// else turns the device and there is but one feed (its field then keeps its
@@ -100,14 +110,18 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 			until = math.Max(until, tau*math.Log(1/dead))
 		}
 	}
-	a.extend(a.end, graded(poles, until, share, quiet+static))
+	steps, ok := graded(poles, until, share, quiet+static)
+	if !ok || len(a.Steps)+len(steps) > mostSteps {
+		return a, tooMany
+	}
+	a.extend(a.end, steps)
 	a.end += until
 	a.Trail = until
 	if alone {
 		a.cell = true
 		a.Steps = append(a.Steps, 1)
 	}
-	return a
+	return a, nil
 }
 
 func (a *axis) extend(at float64, steps []float64) {
@@ -121,10 +135,12 @@ func (a *axis) extend(at float64, steps []float64) {
 }
 
 // graded cuts length ns after an edge of the input into steps that grow as the
-// poles die.
-func graded(poles []filter.Term, length, share, full float64) []float64 {
-	var steps []float64
-	for s := 0.0; s < length && len(steps) < mostSteps; {
+// poles die; false when there would be more than mostSteps.
+func graded(poles []filter.Term, length, share, full float64) (steps []float64, ok bool) {
+	for s := 0.0; s < length; {
+		if len(steps) > mostSteps {
+			return nil, false
+		}
 		fastest := 0.0
 		for _, t := range poles {
 			if math.Exp(real(t.Pole)*s) > dead {
@@ -149,7 +165,7 @@ func graded(poles []filter.Term, length, share, full float64) []float64 {
 			break
 		}
 	}
-	return steps
+	return steps, true
 }
 
 // nodes is how many instants the grid has, two a step.

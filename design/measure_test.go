@@ -18,6 +18,8 @@ import (
 	"holdfast/design/brief"
 	"holdfast/design/replay"
 	"holdfast/design/solve"
+	"holdfast/filter"
+	"holdfast/shape"
 )
 
 // The figures that DEVELOPERS.md quotes are printed by
@@ -222,4 +224,109 @@ func randomDirections(n int) [][3]float64 {
 		list = append(list, [3]float64{v[0] / l, v[1] / l, v[2] / l})
 	}
 	return list
+}
+
+// TestMeasureShapes finds the shortest span of each family of shapes for every
+// class, from the shortest known on, and what lies outside the band.
+func TestMeasureShapes(t *testing.T) {
+	for _, gate := range []string{"X90", "X180"} {
+		for _, c := range heldTable {
+			ns := c.x90
+			if gate == "X180" {
+				ns = c.x180
+			}
+			line := fmt.Sprintf("%-4s %-21s", gate, c.name)
+			for _, family := range []string{"slepian", "fourier", "b-spline"} {
+				found := false
+				for span := ns - 8; span <= ns+24; span += 8 {
+					in := wanted(t, gate, span, c.held, "refine = false")
+					in.Brief.Basis.Family, in.Brief.Basis.Degree = family, 3
+					p, err := Run(context.Background(), in, nil)
+					if err != nil {
+						t.Fatal(err)
+					}
+					if p.Status != Found {
+						continue
+					}
+					x := p.Channels[0].Exact
+					re, im := make([]float64, len(x)), make([]float64, len(x))
+					for k, v := range x {
+						re[k], im[k] = real(v), imag(v)
+					}
+					a, _, err := shape.OutOfBand(re, 0.1)
+					if err != nil {
+						t.Fatal(err)
+					}
+					b, _, err := shape.OutOfBand(im, 0.1)
+					if err != nil {
+						t.Fatal(err)
+					}
+					total := 0.0
+					for _, v := range x {
+						total += real(v)*real(v) + imag(v)*imag(v)
+					}
+					line += fmt.Sprintf("  %s %3d ns (%.1e outside)", family, span, (a+b)/total)
+					found = true
+					break
+				}
+				if !found {
+					line += fmt.Sprintf("  %s not found to %d ns", family, ns+24)
+				}
+			}
+			fmt.Println(line)
+		}
+	}
+}
+
+// TestMeasureLines designs a pulse with and without holding the line's corner and
+// tail, and replays both over 200 lines drawn from what is known of them.
+func TestMeasureLines(t *testing.T) {
+	const lines = 200
+	for _, c := range []struct {
+		name, held string
+		ns         int
+	}{{"detuning", detuning, 72}, {"any static error", anyError, 120}, {"any static error", anyError, 144}} {
+		ns := c.ns
+		var mean [2]float64
+		for i, hold := range []bool{false, true} {
+			held := []string{c.held}
+			if hold {
+				held = append(held, "line = \"q1 drive\"\nparameter = \"lowpass[0].corner\"\nsize = \"5 %\"", "line = \"q1 drive\"\nparameter = \"tails[0].amplitude\"\nsize = \"20 %\"")
+			}
+			p, f, v, _ := judged(t, wanted(t, "X90", ns, held, ""))
+			fmt.Printf("X90 %s %3d ns, line held %v: %s; infidelity %.1e\n", c.name, ns, hold, p.Summary(), v.Settled.Infidelity)
+			m := f.Model.BeforeRounding()
+			rng := rand.New(rand.NewPCG(200, 1))
+			worst := 0.0
+			for range lines {
+				// normal with the stated figure as the standard deviation
+				corner, tail := 0.2*(1+0.05*rng.NormFloat64()), -0.015*(1+0.2*rng.NormFloat64())
+				low, err := filter.Bessel(2, corner)
+				if err != nil {
+					t.Fatal(err)
+				}
+				tails, err := filter.Tails([]filter.Tail{{Amplitude: tail, Time: 30}})
+				if err != nil {
+					t.Fatal(err)
+				}
+				l, err := filter.Cascade(low, tails)
+				if err != nil {
+					t.Fatal(err)
+				}
+				var poles, residues []complex128
+				var powers []int
+				for _, x := range l.Terms {
+					poles, powers, residues = append(poles, x.Pole), append(powers, x.Power), append(residues, x.Residue)
+				}
+				s, _, _, err := m.WithLine(0, 3.2, l.Direct, poles, powers, residues).Figures(context.Background())
+				if err != nil {
+					t.Fatal(err)
+				}
+				mean[i] += s.Infidelity / lines
+				worst = math.Max(worst, s.Infidelity)
+			}
+			fmt.Printf("  over %d lines: average infidelity %.2e, worst %.2e\n", lines, mean[i], worst)
+		}
+		fmt.Printf("  %.1f times lower\n", mean[0]/mean[1])
+	}
 }

@@ -96,7 +96,13 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 		control += l.quadratures
 		q.lanes = append(q.lanes, l)
 	}
-	q.coarse, q.fine = q.axis(stepShare, w.settled), q.axis(fineShare, w.settled)
+	var err error
+	if q.coarse, err = q.axis(stepShare, w.settled); err != nil {
+		return nil, err
+	}
+	if q.fine, err = q.axis(fineShare, w.settled); err != nil {
+		return nil, err
+	}
 	if entries := q.fine.nodes() * q.dim; entries > mostEntries {
 		return nil, fmt.Errorf("span: %d samples with %d coefficients and %d steps are more than a search can hold; allowed: coefficients times steps up to %d: take a shorter span or a narrower band",
 			w.samples, q.dim, len(q.fine.Steps), mostEntries/2)
@@ -110,6 +116,10 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 func newLane(p *hardware.Profile, c int, w wish, opening float64) (lane, error) {
 	ch := &p.Channels[c]
 	l := lane{channel: c, quadratures: ch.Columns(), feed: feed{line: ch.Line, at: p.Start(c) - opening}}
+	free := w.samples - ch.GuardLead - ch.GuardTrail
+	if width := math.Min(0.5, ch.Band*p.SamplePeriod); free > 0 && float64(2*w.samples)*float64(l.quadratures*shape.DefaultCount(free, width)) > mostEntries {
+		return l, fmt.Errorf("span: %d samples with %d coefficients per quadrature are more than a search can hold; allowed: a shorter span or a narrower band", w.samples, shape.DefaultCount(free, width))
+	}
 	var err error
 	if l.limit, err = p.Playable(c, w.samples); err != nil {
 		return l, err
@@ -151,7 +161,7 @@ func newBasis(ch *hardware.Channel, h float64, w wish) (b *shape.Basis, err erro
 }
 
 // axis builds a grid for the lanes that play.
-func (q *problem) axis(share float64, settled bool) axis {
+func (q *problem) axis(share float64, settled bool) (axis, error) {
 	var feeds []feed
 	for _, l := range q.lanes {
 		feeds = append(feeds, l.feed)

@@ -255,7 +255,10 @@ func TestPublishedShapes(t *testing.T) {
 				Axes:   []dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
 			}
 			// as claim does for a pulse of any length
-			a := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static), w)
+			a, err := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static), w)
+			if err != nil {
+				t.Fatal(err)
+			}
 			s.Grid = a.Grid
 			u := make([]float64, 2*a.nodes())
 			a.put(&lane{quadratures: 2}, feed{line: line}, x, u)

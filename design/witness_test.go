@@ -62,7 +62,10 @@ func TestWitness(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, ends := range []bool{true, false} {
-			a := newAxis([]feed{{line: line}}, n, h, claimShare, ends, full, math.Abs(static), full)
+			a, err := newAxis([]feed{{line: line}}, n, h, claimShare, ends, full, math.Abs(static), full)
+			if err != nil {
+				t.Fatal(err)
+			}
 			s := robust.Spin{
 				Grid: a.Grid, Static: dynamics.Vec{0, 0, static},
 				Axes: []dynamics.Vec{{full, 0, 0}, {0, full, 0}}, Target: dynamics.One,

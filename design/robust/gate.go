@@ -185,6 +185,9 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 	g.rows = 3 + 3*len(g.combine) + 3*len(g.members)
 	g.frames = make([]frame, 1+len(g.members))
 
+	if r.Dim == 0 { // figures alone are wanted
+		return g
+	}
 	// Raw rows: nominal gate, toggled errors, members.
 	rawRows := 3 + 3*len(g.nominal.Toggle) + 3*len(g.members)
 	g.d = make([]float64, rawRows*K*g.nodes)
