@@ -65,7 +65,7 @@ type Turned struct {
 // A Waveform is what one channel plays.
 type Waveform struct {
 	Channel int          // of the profile
-	Exact   []complex128 // samples before rounding, share of full scale
+	Exact   []complex128 // samples before rounding, what the converter puts out, share of full scale
 	Codes   []int16      // I0 Q0 I1 Q1 ..., or of a baseband channel x0 x1 ...
 }
 

@@ -40,7 +40,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 			})
 		}
 		rounded = append(rounded, x)
-		p.Channels = append(p.Channels, Waveform{Channel: l.channel, Exact: exact[i], Codes: codes})
+		p.Channels = append(p.Channels, Waveform{Channel: l.channel, Exact: played(ch, exact[i]), Codes: codes})
 	}
 	d, err := drives(in)
 	if err != nil {
@@ -79,9 +79,18 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	}
 	for _, m := range b.Require.Margins {
 		f := MarginFacts{Error: m.Error}
-		if q.isAmplitude(b, m.Error) {
+		e := named(b, m.Error)
+		switch e.Kind {
+		case brief.Amplitude, brief.Line:
 			f.Share = m.Size
-		} else {
+		case brief.Skew:
+			f.Angle = m.Size
+		case brief.Offset: // a share of full scale at the converter, as the rate that it drives
+			if i, ok := in.Profile.Channel(e.Channels[0]); ok {
+				ch := &in.Profile.Channels[i]
+				f.Rate = m.Size * ch.FullScale * cmplx.Abs(ch.Line.DC())
+			}
+		default:
 			f.Rate = m.Size
 		}
 		record.Require.Margins = append(record.Require.Margins, f)
@@ -133,7 +142,7 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 				return err
 			}
 			rounded = append(rounded, y)
-			t.Channels = append(t.Channels, Waveform{Channel: l.channel, Exact: x, Codes: codes})
+			t.Channels = append(t.Channels, Waveform{Channel: l.channel, Exact: played(ch, x), Codes: codes})
 		}
 		// the axis of the target turns by the angle, with the sense in which Q drives
 		sense := 1.0
@@ -155,13 +164,18 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 	return nil
 }
 
-func (q *problem) isAmplitude(b *brief.Brief, name string) bool {
+// named finds an error of the brief by its name, or makes one of those that are
+// judged undeclared.
+func named(b *brief.Brief, name string) brief.Error {
 	for _, e := range b.Errors {
 		if e.Name == name {
-			return e.Kind == brief.Amplitude
+			return e
 		}
 	}
-	return name == "amplitude"
+	if name == "amplitude" {
+		return brief.Error{Name: name, Kind: brief.Amplitude}
+	}
+	return brief.Error{Name: name, Kind: brief.Static}
 }
 
 // model writes down what an outsider needs.
@@ -374,6 +388,15 @@ func (p *Pulse) Summary() string {
 		return fmt.Sprintf("interrupted after %d starts; the best so far misses by %.3g", s.Tried, math.Sqrt(s.Miss))
 	}
 	return fmt.Sprintf("not found: %d starts, the best of them misses by %.3g (root of the sum of squared residuals)", s.Tried, math.Sqrt(s.Miss))
+}
+
+// played gives what the converter has to put out for the drive to reach y.
+func played(ch *hardware.Channel, y []complex128) []complex128 {
+	x := make([]complex128, len(y))
+	for k, v := range y {
+		x[k] = ch.Compression.Converter(v)
+	}
+	return x
 }
 
 // encode rounds what a drive is to reach to codes of its channel.

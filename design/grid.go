@@ -45,12 +45,11 @@ const (
 
 // newAxis builds the grid for n samples of period h on every feed. settled goes
 // on until the angle still to come is negligible, and begins where the first feed
-// does. full is the largest field (rad/ns), static that of the undriven device,
-// quiet the largest field expected after the span. It is an error when that
-// would take more than mostSteps.
-func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, quiet float64) (axis, error) {
+// does. full is the largest field (rad/ns), static that of the undriven device.
+// It is an error when that would take more than mostSteps.
+func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static float64) (axis, error) {
 	a := axis{h: h}
-	tooMany := fmt.Errorf("span: %d samples through lines this fast or this slow take more than %d steps of propagation; allowed: a shorter span, or lines whose poles lie nearer to the sample rate", n, mostSteps)
+	tooMany := fmt.Errorf("span: %d samples, and what the lines still bring after them, take more than %d steps of propagation; allowed: a shorter span, ends = \"window\", or a line and a detuning that turn the device less while they settle", n, mostSteps)
 	span := float64(n) * h
 	var poles []filter.Term
 	slow := 0.0
@@ -84,7 +83,7 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 		if len(poles) == 0 { // the field is constant between edges
 			a.extend(begin, []float64{t - begin})
 		} else {
-			steps, ok := graded(poles, t-begin, share, full+static)
+			steps, ok := graded(poles, t-begin, share, func(float64) float64 { return full + static })
 			if !ok || len(a.Steps)+len(steps) > mostSteps {
 				return a, tooMany
 			}
@@ -110,7 +109,7 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 			until = math.Max(until, tau*math.Log(1/dead))
 		}
 	}
-	steps, ok := graded(poles, until, share, quiet+static)
+	steps, ok := graded(poles, until, share, func(s float64) float64 { return static + full*left(poles, s) })
 	if !ok || len(a.Steps)+len(steps) > mostSteps {
 		return a, tooMany
 	}
@@ -135,8 +134,9 @@ func (a *axis) extend(at float64, steps []float64) {
 }
 
 // graded cuts length ns after an edge of the input into steps that grow as the
-// poles die; false when there would be more than mostSteps.
-func graded(poles []filter.Term, length, share, full float64) (steps []float64, ok bool) {
+// poles die; false when there would be more than mostSteps. field bounds the
+// field, rad/ns, from the given time on.
+func graded(poles []filter.Term, length, share float64, field func(s float64) float64) (steps []float64, ok bool) {
 	for s := 0.0; s < length; {
 		if len(steps) > mostSteps {
 			return nil, false
@@ -151,8 +151,8 @@ func graded(poles []filter.Term, length, share, full float64) (steps []float64, 
 		if fastest > 0 {
 			step = math.Min(step, share/fastest)
 		}
-		if full > 0 {
-			step = math.Min(step, share/stepShare*turnShare/full)
+		if f := field(s); f > 0 {
+			step = math.Min(step, share/stepShare*turnShare/f)
 		}
 		if left := length - s; step >= left*(1-1e-9) {
 			step = left
@@ -166,6 +166,23 @@ func graded(poles []filter.Term, length, share, full float64) (steps []float64, 
 		}
 	}
 	return steps, true
+}
+
+// left bounds what arrives s ns after the last sample, as a share of the largest
+// sample: a pole that samples have driven for ever holds |residue/pole^m|, and
+// decays, a repeated one with the polynomial of its power.
+func left(poles []filter.Term, s float64) float64 {
+	sum := 0.0
+	for _, t := range poles {
+		rate := -real(t.Pole)
+		series, term := 0.0, 1.0
+		for k := range t.Power {
+			series += term
+			term *= rate * s / float64(k+1)
+		}
+		sum += cmplx.Abs(t.Residue) / math.Pow(rate, float64(t.Power)) * series * math.Exp(-rate*s)
+	}
+	return math.Min(1, sum)
 }
 
 // nodes is how many instants the grid has, two a step.

@@ -170,7 +170,7 @@ func (q *problem) axis(share float64, settled bool) (axis, error) {
 	for _, a := range q.spin.Axes {
 		full = math.Max(full, length(a))
 	}
-	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static), q.after())
+	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static))
 }
 
 // response gives every coefficient's field at the nodes, and every slope's.
@@ -185,16 +185,6 @@ func (q *problem) response(a *axis) robust.Response {
 		}
 	}
 	return r
-}
-
-// after is the largest field, rad/ns, that the steps after the span must resolve.
-func (q *problem) after() float64 {
-	most := 0.0
-	for _, l := range q.lanes {
-		full := length(q.spin.Axes[l.control])
-		most = math.Max(most, full*math.Min(1, 2*q.profile.Channels[l.channel].RingOut.Limit))
-	}
-	return most
 }
 
 func length(v dynamics.Vec) float64 { return math.Sqrt(v[0]*v[0] + v[1]*v[1] + v[2]*v[2]) }

@@ -255,7 +255,7 @@ func TestPublishedShapes(t *testing.T) {
 				Axes:   []dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
 			}
 			// as claim does for a pulse of any length
-			a, err := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static), w)
+			a, err := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static))
 			if err != nil {
 				t.Fatal(err)
 			}

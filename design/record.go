@@ -80,11 +80,13 @@ type RequireFacts struct {
 	Margins        []MarginFacts `toml:"margin,omitempty"`
 }
 
-// MarginFacts are one [[require.margin]]; one of the sizes is zero and absent.
+// MarginFacts are one [[require.margin]]; all but one of the sizes are zero and
+// absent.
 type MarginFacts struct {
 	Error string  `toml:"error"`
 	Rate  float64 `toml:"size_rad_per_ns,omitzero"`
 	Share float64 `toml:"size_share,omitzero"`
+	Angle float64 `toml:"size_rad,omitzero"`
 }
 
 // DecayFacts are the device's times; absent where not stated.

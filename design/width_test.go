@@ -124,6 +124,18 @@ func TestWidth(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
+			// what the record calls the samples before rounding must be those
+			exact, err := f.Model.BeforeRounding().Judge(context.Background(), 1e-4)
+			if err != nil {
+				t.Fatal(err)
+			}
+			tol := 1e-10
+			if in.Brief.Target.FreeZ != brief.NoFreeZ { // the recorded angles are the best of the codes
+				tol = 1e-8
+			}
+			if !(exact.Required().Infidelity <= tol) {
+				t.Errorf("infidelity %.2g before rounding", exact.Required().Infidelity)
+			}
 			t.Logf("%s; infidelity %.2g; differs by %.2g, %.2g, %.2g; inputs %v", p.Summary(), v.Required().Infidelity, v.Agreement.Infidelity, v.Agreement.Susceptibility, v.Agreement.TailAngle, v.Inputs)
 			if p.Status != Found {
 				t.Fatalf("%s", p.Summary())

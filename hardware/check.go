@@ -21,29 +21,91 @@ type Reading struct {
 const CheckTolerance = 1e-12
 
 // CheckSamples judges unrounded samples of one channel, in shares of full scale, against every limit of the profile. It
-// shares nothing with Playable: amplitude, slew and guards are read off the samples, and ring-out is searched for in time.
-// Readings come in a fixed order; a limit that the profile does not set has none. The largest code is that after rounding.
+// shares nothing with Playable: amplitude, slew and guards are read off the samples, ring-out is searched for in time, and what lies out
+// of band is integrated over frequency. Readings come in a fixed order; a limit that the profile does not set has none. The largest code is
+// that after rounding.
+//
+// Where the drive compresses, samples are what it reaches (see Channel): amplitude, slew and codes are judged at the converter. The
+// mean of each quadrature must be zero before rounding; of codes it may be half an LSB, which is what rounding leaves.
+//
+// Samples of a baseband channel are real; others are an error.
 func (p *Profile) CheckSamples(channel int, x []complex128) ([]Reading, error) {
-	if channel < 0 || channel >= len(p.Channels) {
-		return nil, fmt.Errorf("%s has no channel %d; it has %d", p.Name, channel, len(p.Channels))
-	}
-	if len(x) > maxSamples {
-		return nil, fmt.Errorf("%d samples; allowed: at most %d", len(x), maxSamples)
+	c, err := p.checked(channel, len(x))
+	if err != nil {
+		return nil, err
 	}
 	for k, v := range x {
 		if cmplx.IsNaN(v) || cmplx.IsInf(v) {
 			return nil, fmt.Errorf("sample %d is %v; needed: finite numbers", k, v)
 		}
+		if c.Kind == Baseband && imag(v) != 0 {
+			return nil, fmt.Errorf("sample %d is %v; needed: real numbers, as %q is a baseband channel", k, v, c.Name)
+		}
 	}
-	c := &p.Channels[channel]
+	at := x
+	if c.Compression != nil {
+		at = make([]complex128, len(x))
+		for k, v := range x {
+			at[k] = c.Compression.Converter(v)
+		}
+	}
+	return p.check(c, at, x, 0), nil
+}
+
+// CheckCodes judges codes of one channel, interleaved I0 Q0 I1 Q1 ... or of a baseband channel one for each sample, as CheckSamples does
+// samples. A code that the converter does not have is a reading that is not OK; half a pair is an error.
+func (p *Profile) CheckCodes(channel int, codes []int16) ([]Reading, error) {
+	c, err := p.checked(channel, 0)
+	if err != nil {
+		return nil, err
+	}
+	at, err := c.atConverter(codes, p.Bits)
+	if err != nil {
+		return nil, err
+	}
+	if _, err := p.checked(channel, len(at)); err != nil {
+		return nil, err
+	}
+	reached := at
+	_, steepest := c.Compression.slopes(1)
+	if c.Compression != nil {
+		reached = make([]complex128, len(at))
+		for k, v := range at {
+			reached[k] = c.Compression.Reached(v)
+		}
+		if c.Kind != Baseband {
+			least, most := c.Compression.slopes(1)
+			steepest = stretch(least, most)
+		}
+	}
+	return p.check(c, at, reached, steepest*LeastStep(p.Bits)/2), nil
+}
+
+// checked gives a channel, and complains of one that is not there and of too many samples.
+func (p *Profile) checked(channel, samples int) (*Channel, error) {
+	if channel < 0 || channel >= len(p.Channels) {
+		return nil, fmt.Errorf("%s has no channel %d; it has %d", p.Name, channel, len(p.Channels))
+	}
+	if samples > maxSamples {
+		return nil, fmt.Errorf("%d samples; allowed: at most %d", samples, maxSamples)
+	}
+	return &p.Channels[channel], nil
+}
+
+// check judges samples at the converter and what the drive makes of them. mean is what the mean of a quadrature may be.
+func (p *Profile) check(c *Channel, at, reached []complex128, mean float64) []Reading {
 	scale := math.Ldexp(1, p.Bits-1)
 	var guards, amplitude, code, slew float64
 	last := complex128(0)
-	for k, v := range x {
-		if k < c.GuardLead || k >= len(x)-c.GuardTrail {
+	for k, v := range at {
+		if k < c.GuardLead || k >= len(at)-c.GuardTrail {
 			guards = max(guards, cmplx.Abs(v))
 		}
-		amplitude = max(amplitude, cmplx.Abs(v))
+		if c.boxed() {
+			amplitude = max(amplitude, math.Abs(real(v)), math.Abs(imag(v)))
+		} else {
+			amplitude = max(amplitude, cmplx.Abs(v))
+		}
 		for _, q := range []float64{real(v), imag(v)} {
 			// -2^(bits-1) exists and counts like 2^(bits-1) - 1.
 			q = math.Round(q * scale)
@@ -54,8 +116,8 @@ func (p *Profile) CheckSamples(channel int, x []complex128) ([]Reading, error) {
 	}
 	slew = max(slew, math.Abs(real(last)), math.Abs(imag(last)))
 
-	length := reading(Length, "samples", float64(len(x)), float64(p.Longest))
-	length.OK = p.CheckSpan(len(x)) == nil
+	length := reading(Length, "samples", float64(len(at)), float64(p.Longest))
+	length.OK = p.CheckSpan(len(at)) == nil
 	list := []Reading{length,
 		reading(Guards, "of full scale", guards, 0),
 		reading(Amplitude, "of full scale", amplitude, c.AmplitudeLimit),
@@ -64,24 +126,31 @@ func (p *Profile) CheckSamples(channel int, x []complex128) ([]Reading, error) {
 	if !math.IsInf(c.SlewLimit, 1) {
 		list = append(list, reading(Slew, "of full scale per sample", slew, c.SlewLimit))
 	}
+	if c.RMSLimit > 0 {
+		sum := 0.0
+		for _, v := range reached {
+			sum += real(v)*real(v) + imag(v)*imag(v)
+		}
+		over := math.Max(float64(len(reached)), c.RMSPeriod/p.SamplePeriod)
+		list = append(list, reading(RMS, "of full scale", math.Sqrt(sum/over), c.RMSLimit))
+	}
+	if c.OutOfBand > 0 && c.Band*p.SamplePeriod < 0.5 {
+		energy := outOfBand(reached, c.Band*p.SamplePeriod)
+		list = append(list, reading(OutOfBand, "of full scale rms", math.Sqrt(energy/float64(len(reached))), c.OutOfBand))
+	}
+	if c.ZeroMean {
+		sum := complex128(0)
+		for _, v := range reached {
+			sum += v
+		}
+		found := math.Max(math.Abs(real(sum)), math.Abs(imag(sum))) / float64(max(1, len(reached)))
+		list = append(list, reading(Mean, "of full scale", found, mean))
+	}
 	if limit := c.RingOut.Limit; !math.IsInf(limit, 1) {
-		fast, tail := p.ringOut(c, x)
-		list = append(list, reading(RingOutFast, "of full scale", fast, limit), reading(RingOutTail, "of full scale", tail, limit))
+		fast, tail := p.ringOut(c, reached)
+		list = append(list, reading(RingOutFast, "of full scale", fast, limit), reading(RingOutTail, "of full scale", tail, c.RingOut.After(math.Inf(1))))
 	}
-	return list, nil
-}
-
-// CheckCodes judges interleaved codes I0 Q0 I1 Q1 ... of one channel, as CheckSamples does samples. A code that the converter
-// does not have is a reading that is not OK; half a pair is an error.
-func (p *Profile) CheckCodes(channel int, codes []int16) ([]Reading, error) {
-	if len(codes)%2 != 0 {
-		return nil, fmt.Errorf("%d codes are not pairs of I and Q", len(codes))
-	}
-	x := make([]complex128, len(codes)/2)
-	for k := range x {
-		x[k] = complex(math.Ldexp(float64(codes[2*k]), 1-p.Bits), math.Ldexp(float64(codes[2*k+1]), 1-p.Bits))
-	}
-	return p.CheckSamples(channel, x)
+	return list
 }
 
 // Kept says whether every reading is OK.

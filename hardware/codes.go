@@ -79,3 +79,67 @@ func SamplesOf(codes []int16, bits int) ([]complex128, error) {
 	}
 	return x, nil
 }
+
+// Codes turns unrounded samples of a channel, in shares of full scale, into its codes: what the converter has to put out for
+// the drive to reach them, rounded. They are interleaved I0 Q0 I1 Q1 ..., the C order of an array of shape (len(x), 2), or of shape
+// (len(x), 1) for a baseband channel, of which the samples must be real. The error names the first sample that has no code.
+func (p *Profile) Codes(channel int, x []complex128) ([]int16, error) {
+	c, err := p.checked(channel, len(x))
+	if err != nil {
+		return nil, err
+	}
+	codes := make([]int16, 0, c.Columns()*len(x))
+	for k, v := range x {
+		if c.Kind == Baseband && imag(v) != 0 {
+			return nil, fmt.Errorf("sample %d is %v; needed: real numbers, as %q is a baseband channel", k, v, c.Name)
+		}
+		i, q, err := Quantise(c.Compression.Converter(v), p.Bits)
+		if err != nil {
+			return nil, fmt.Errorf("sample %d, %w", k, err)
+		}
+		codes = append(codes, i, q)[:(k+1)*c.Columns()]
+	}
+	return codes, nil
+}
+
+// Samples is the way back from codes of a channel, laid out as Codes does, to what the drive reaches, in shares of full
+// scale. A code that the converter does not have, or half a pair, is an error.
+func (p *Profile) Samples(channel int, codes []int16) ([]complex128, error) {
+	c, err := p.checked(channel, 0)
+	if err != nil {
+		return nil, err
+	}
+	x, err := c.atConverter(codes, p.Bits)
+	if err != nil {
+		return nil, err
+	}
+	if _, err := p.checked(channel, len(x)); err != nil {
+		return nil, err
+	}
+	for k := range x {
+		for _, code := range codes[k*c.Columns() : (k+1)*c.Columns()] {
+			if int(code) > LargestCode(p.Bits) || int(code) < -LargestCode(p.Bits)-1 {
+				return nil, fmt.Errorf("sample %d has code %d; allowed at %d bit: %d to %d", k, code, p.Bits, -LargestCode(p.Bits)-1, LargestCode(p.Bits))
+			}
+		}
+		x[k] = c.Compression.Reached(x[k])
+	}
+	return x, nil
+}
+
+// atConverter gives codes as shares at the converter, those that it does not have included.
+func (c *Channel) atConverter(codes []int16, bits int) ([]complex128, error) {
+	columns := c.Columns()
+	if len(codes)%columns != 0 {
+		return nil, fmt.Errorf("%d codes are not pairs of I and Q", len(codes))
+	}
+	x := make([]complex128, len(codes)/columns)
+	for k := range x {
+		q := 0.0
+		if columns == 2 {
+			q = math.Ldexp(float64(codes[2*k+1]), 1-bits)
+		}
+		x[k] = complex(math.Ldexp(float64(codes[columns*k]), 1-bits), q)
+	}
+	return x, nil
+}

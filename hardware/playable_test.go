@@ -306,7 +306,7 @@ func TestAfterglow(t *testing.T) {
 	s := &Set{Samples: 14, Lead: 1, Trail: 2}
 	for _, line := range []filter.Line{bessel, thrice, odd} {
 		const h = 0.7
-		g := afterglowOf(line, s, h, 1)
+		g := afterglowOf(line, s, h, 1, RingOut{Limit: 1e-3, Fast: 3})
 		weights := func(at float64, order int) []complex128 {
 			w := make([]complex128, s.Samples)
 			for j, f := range g.functional(at, order, nil) {

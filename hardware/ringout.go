@@ -13,16 +13,18 @@ import (
 //
 //	v(t) = sum_q rho_q(t) z_q,   z_q = sum_k Z_qk x_k,   rho from a chain: e^{pt} (a t)^j/j!
 //
-// The limit L holds at every instant t >= 0. Rows can only stand at finitely many instants t_0 = 0 < t_1 < ..., so each has the
-// bound b = L - E, and the instants lie close enough for the reserve E = betweenShare L to cover what lies between.
+// The limit holds at every instant t >= 0: L(t) is RingOut.Limit up to RingOut.Fast and RingOut.Tail later. Rows can only stand at
+// finitely many instants t_0 = 0 < t_1 < ..., so each has the bound L - E, with the reserve E = betweenShare L, and the instants lie close
+// enough for E to cover what lies between. Where the two parts differ an instant is put at RingOut.Fast, and its bound is that of
+// the smaller; so no interval between two rows lies in both parts.
 //
 // # Between two instants
 //
-// Let M = sup |v| over t >= 0 and both quadratures, and suppose that the rows are kept. On [t_i, t_i + D] split
-// v = alive + dead, where the dead poles together cannot exceed eta after t_i. A function stays within D^2/8 sup|v”| of its
-// chord, so there
+// Let M = sup |v|/L over t >= 0 and both quadratures, and suppose that the rows are kept. On [t_i, t_i + D], a part of the time in which
+// L is one number, split v = alive + dead, where the dead poles together cannot exceed eta after t_i. A function stays within D^2/8 sup|v”|
+// of its chord, so there
 //
-//	|v| <= b + 2 eta + D^2/8 sup |alive''|.                                                     (1)
+//	|v| <= L - E + 2 eta + D^2/8 sup |alive''|.                                                 (1)
 //
 // By Taylor, sup |alive”| <= sum_{j<J} D^j/j! |alive^(2+j)(t_i)| + D^J/J! sup |alive^(2+J)|. The last supremum is
 // bounded pole by pole and a priori, from |x_k| <= A (the amplitude limit, which rounded samples keep too):
@@ -31,26 +33,29 @@ import (
 //
 // The others are functionals f of x. For any instants s_i >= 0 and numbers beta,
 //
-//	|f x| <= sum |beta_i| M + A sum_k |f_k - sum_i beta_i w_k(s_i)|,                              (3)
+//	|f x| <= sum |beta_i| L(s_i) M + A sum_k |f_k - sum_i beta_i w_k(s_i)|,                       (3)
 //
 // with w(s) the weights of v(s): the ring-out that is allowed bounds its own derivatives, and where that says little the amplitude limit
 // does. Exponentials with Q states have Q dimensions, so Q instants serve; those are picked greedily, and each
-// partial choice is tried. Together (1) reads |v| <= b + g + h M with g, h >= 0, and D is chosen such that
-// g + h L <= E. Were M > L, then
+// partial choice is tried. Together (1) reads |v| <= L - E + g + h M with g, h >= 0, and D is chosen such that
+// g + h <= E. Were M > 1, then where |v| = M L (or as near to it as one likes)
 //
-//	M <= L - E + g + h M <= L - E + (g + h L) M/L <= L - E + E M/L,   so   (M - L)(1 - E/L) <= 0,
+//	M L <= L - E + g + h M <= L - E + (g + h) M <= L - E + E M,   so   (M - 1)(L - E) <= 0,
 //
-// against the assumption. Hence M <= L.
+// against the assumption. Hence M <= 1.
 //
 // # The end
 //
 // Rows stop at the first instant after which at most one real, simple pole is alive: then alive only shrinks, and
-// |v(t)| <= |v(t_i)| + 2 eta. Or no pole at all: |v| <= eta.
+// |v(t)| <= |v(t_i)| + 2 eta. Or no pole at all: |v| <= eta. Where that comes before RingOut.Fast and the later limit is the
+// smaller one, RingOut.Fast is the next instant.
 //
 // # Rounding
 //
 // Codes are x + e with |e| <= LSB/2 in each quadrature, which moves w.x by at most LSB/2 sum(|Re w| + |Im w|) in each. That
-// is taken off each bound, and the derivation above then holds for the rounded samples.
+// is taken off each bound, and the derivation above then holds for the rounded samples. A drive that compresses makes of e at most
+// its gain K times as much in each quadrature (see stretch); A is then what it reaches at the amplitude limit. Of a baseband channel
+// samples and weights are real. With an envelope "box" |x_k| reaches the corner, and A is sqrt 2 times the limit.
 const (
 	// betweenShare is E/L. Half a per cent of the limit costs nothing that a user would notice and
 	// keeps the rows of a common line at some tens.
@@ -70,11 +75,14 @@ const (
 // ringOutRows gives the rows that keep the ring-out limit of a channel at every instant after the span, and says whether
 // rounding is reserved for. One more row bounds the amplitude of the slow tail (poles slower than RingOut.Fast)
 // at the end of the span, so that a search does not play ringing off against the tail.
-func ringOutRows(p *Profile, c *Channel, s *Set) (rows []Row, reserved bool, err error) {
-	limit, end := c.RingOut.Limit, float64(s.Samples)*p.SamplePeriod
-	e := betweenShare * limit
+//
+// most is A, and gain K.
+func ringOutRows(p *Profile, c *Channel, s *Set, most, gain float64) (rows []Row, reserved bool, err error) {
+	end := float64(s.Samples) * p.SamplePeriod
 	w := make([]complex128, s.Samples)
-	add := func(name Limit, at, bound float64) {
+	var limits []float64 // of each row
+	add := func(name Limit, at, limit, bound float64) {
+		e := betweenShare * limit
 		free := w[s.Lead : s.Samples-s.Trail]
 		first, lost := 0, 0.0
 		for first < len(free) && lost+cmplx.Abs(free[first]) <= trimShare*e {
@@ -83,35 +91,40 @@ func ringOutRows(p *Profile, c *Channel, s *Set) (rows []Row, reserved bool, err
 		}
 		row := Row{Limit: name, At: at, First: s.Lead + first, Bound: bound - lost, Weights: append([]complex128(nil), free[first:]...)}
 		// What no playable code can reach needs no row.
-		if c.AmplitudeLimit*sumAbs(row.Weights) > row.Bound {
+		if most*sumAbs(row.Weights) > row.Bound {
 			rows = append(rows, row)
+			limits = append(limits, limit)
 		}
 	}
-	g := afterglowOf(c.Line, s, p.SamplePeriod, c.AmplitudeLimit)
-	instants, err := g.instants(limit, e)
+	g := afterglowOf(c.Line, s, p.SamplePeriod, most, c.RingOut)
+	instants, err := g.instants()
 	if err != nil {
 		return nil, false, err
 	}
+	later := c.RingOut.After(math.Inf(1))
 	for _, t := range instants {
 		c.Line.Weights(end+t, p.SamplePeriod, w)
-		name := RingOutFast
+		name, limit := RingOutFast, c.RingOut.After(t)
 		if t > c.RingOut.Fast {
 			name = RingOutTail
+		} else if t == c.RingOut.Fast && later < limit {
+			name, limit = RingOutTail, later
 		}
-		add(name, t, limit-e)
+		add(name, t, limit, limit-betweenShare*limit)
 	}
 	if slow := c.Line.SlowestTime() > c.RingOut.Fast; slow && g.fastestTime() <= c.RingOut.Fast {
 		c.Line.SlowWeights(end, p.SamplePeriod, c.RingOut.Fast, w)
-		add(RingOutTail, 0, limit)
+		limit := max(c.RingOut.Limit, later)
+		add(RingOutTail, 0, limit, limit)
 	}
 	// The reserve is for all rows or for none, so that Reserved has one meaning.
 	reserve := make([]float64, len(rows))
 	reserved = true
 	for i, row := range rows {
 		for _, v := range row.Weights {
-			reserve[i] += LeastStep(p.Bits) / 2 * (math.Abs(real(v)) + math.Abs(imag(v)))
+			reserve[i] += gain * LeastStep(p.Bits) / 2 * (math.Abs(real(v)) + math.Abs(imag(v)))
 		}
-		reserved = reserved && reserve[i] <= roundingShare*limit
+		reserved = reserved && reserve[i] <= roundingShare*limits[i]
 	}
 	if reserved {
 		for i := range rows {
@@ -125,6 +138,7 @@ func ringOutRows(p *Profile, c *Channel, s *Set) (rows []Row, reserved bool, err
 type afterglow struct {
 	real   bool    // the line
 	most   float64 // A: no |x[k]| exceeds it
+	allows RingOut // L
 	free   int     // number of free samples
 	chains []glowChain
 	// In the coordinates of an orthonormal basis of the states' functionals:
@@ -144,12 +158,13 @@ type glowChain struct {
 // A pick is one instant of the greedy choice: the weights of v there, in coordinates, minus their part along earlier
 // picks, normalised; and how the earlier ones combine.
 type pick struct {
-	unit []complex128
-	row  []complex128 // weights(s_i) = sum_{j<=i} row[j] unit_j
+	allowed float64 // L(s_i)
+	unit    []complex128
+	row     []complex128 // weights(s_i) = sum_{j<=i} row[j] unit_j
 }
 
-func afterglowOf(line filter.Line, s *Set, period, most float64) *afterglow {
-	g := &afterglow{real: line.Real(), most: most, free: s.Samples - s.Lead - s.Trail}
+func afterglowOf(line filter.Line, s *Set, period, most float64, allows RingOut) *afterglow {
+	g := &afterglow{real: line.Real(), most: most, allows: allows, free: s.Samples - s.Lead - s.Trail}
 	end := float64(s.Samples) * period
 	w := make([]complex128, s.Samples)
 	for i, t := range line.Terms {
@@ -306,8 +321,10 @@ func (g *afterglow) choose() {
 		fastest, slowest = max(fastest, cmplx.Abs(c.pole)), min(slowest, c.rate)
 	}
 	var grid [][]complex128
+	var at []float64
 	for t := 0.0; t <= 15/slowest; t = max(0.01/fastest, 1.15*t) {
 		grid = append(grid, g.functional(t, 0, nil))
+		at = append(at, t)
 	}
 	whole := append([][]complex128(nil), grid...)
 	for i := range grid {
@@ -315,18 +332,18 @@ func (g *afterglow) choose() {
 	}
 	largest := 0.0
 	for range g.basis {
-		best, at := 0.0, -1
+		best, chosen := 0.0, -1
 		for i, v := range grid {
 			if n := norm(v); n > best {
-				best, at = n, i
+				best, chosen = n, i
 			}
 		}
 		largest = max(largest, best)
-		if at < 0 || best <= 1e-13*largest {
+		if chosen < 0 || best <= 1e-13*largest {
 			return
 		}
-		unit := grid[at]
-		rest := append([]complex128(nil), whole[at]...)
+		unit := grid[chosen]
+		rest := append([]complex128(nil), whole[chosen]...)
 		var row []complex128
 		for range 2 {
 			for j, p := range g.picks {
@@ -344,8 +361,8 @@ func (g *afterglow) choose() {
 		for k := range unit {
 			unit[k] = rest[k] / complex(n, 0)
 		}
-		g.picks = append(g.picks, pick{unit: unit, row: append(row, complex(n, 0))})
-		grid[at] = nil // its memory is the unit now
+		g.picks = append(g.picks, pick{allowed: g.allows.After(at[chosen]), unit: unit, row: append(row, complex(n, 0))})
+		grid[chosen] = nil // its memory is the unit now
 		for _, v := range grid {
 			if v == nil {
 				continue
@@ -358,8 +375,8 @@ func (g *afterglow) choose() {
 	}
 }
 
-// bound bounds |f x| by (3) when no ring-out exceeds m: the least over the first 0, 1, 2... picks.
-func (g *afterglow) bound(f []complex128, m float64) float64 {
+// bound bounds |f x| by (3) when no ring-out exceeds its limit: the least over the first 0, 1, 2... picks.
+func (g *afterglow) bound(f []complex128) float64 {
 	rest := append([]complex128(nil), f...)
 	best := g.most * g.oneNorm(rest)
 	var along []complex128
@@ -375,16 +392,16 @@ func (g *afterglow) bound(f []complex128, m float64) float64 {
 		for j := i; j >= 0; j-- {
 			beta := c[j] / g.picks[j].row[j]
 			if g.real {
-				betas += cmplx.Abs(beta)
+				betas += cmplx.Abs(beta) * g.picks[j].allowed
 			} else {
-				betas += math.Abs(real(beta)) + math.Abs(imag(beta))
+				betas += (math.Abs(real(beta)) + math.Abs(imag(beta))) * g.picks[j].allowed
 			}
 			for l := 0; l < j; l++ {
 				c[l] -= beta * g.picks[j].row[l]
 			}
 		}
 		// The remainder by the cheap norm: it is small wherever it matters.
-		best = min(best, betas*m+g.most*math.Sqrt(float64(g.free))*norm(rest))
+		best = min(best, betas+g.most*math.Sqrt(float64(g.free))*norm(rest))
 	}
 	return best
 }
@@ -406,13 +423,24 @@ func (g *afterglow) oneNorm(f []complex128) float64 {
 }
 
 // instants places the rows: from 0, each as late as (1) allows.
-func (g *afterglow) instants(limit, e float64) ([]float64, error) {
+func (g *afterglow) instants() ([]float64, error) {
 	var list []float64
 	alive := make([]bool, len(g.chains))
+	fast, later := g.allows.Fast, g.allows.After(math.Inf(1))
 	for t := 0.0; ; {
 		list = append(list, t)
+		// L from here on, and whether it changes later.
+		limit, changes := g.allows.Limit, later != g.allows.Limit
+		if t >= fast {
+			limit, changes = later, false
+		}
+		e := betweenShare * limit
 		eta, living, lasting := g.split(t, deadShare*e, alive)
 		if living == 0 || lasting {
+			if changes && later < limit {
+				t = fast
+				continue
+			}
 			return list, nil
 		}
 		if len(list) >= maxInstants {
@@ -420,7 +448,7 @@ func (g *afterglow) instants(limit, e float64) ([]float64, error) {
 		}
 		var taylor [taylorTerms + 1]float64
 		for j := range taylorTerms {
-			taylor[j] = g.bound(g.functional(t, 2+j, alive), limit)
+			taylor[j] = g.bound(g.functional(t, 2+j, alive))
 		}
 		for i := range g.chains {
 			if alive[i] {
@@ -456,7 +484,9 @@ func (g *afterglow) instants(limit, e float64) ([]float64, error) {
 				hi = mid
 			}
 		}
-		t += lo
+		if t += lo; changes {
+			t = min(t, fast)
+		}
 	}
 }
 

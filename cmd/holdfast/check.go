@@ -24,14 +24,25 @@ func check(c *call) (int, error) {
 		return exitBadInput, err
 	}
 	status := exitMet
+	forms := checkForm{Format: jsonFormat}
 	for i, path := range files {
-		if i > 0 {
+		if i > 0 && !c.json {
 			fmt.Fprintln(c.stdout)
 		}
-		if err := checkFile(c.stdout, path); err != nil {
+		w := c.stdout
+		if c.json {
+			w = io.Discard
+		}
+		form := fileForm{File: path}
+		if err := checkFile(w, path, &form); err != nil {
 			fmt.Fprintf(c.stderr, "holdfast: %s\n", oneLine(err))
 			status = exitBadInput
+			form = fileForm{File: path, Kind: form.Kind, Error: oneLine(err)}
 		}
+		forms.Files = append(forms.Files, form)
+	}
+	if c.json {
+		return status, c.emit(forms)
 	}
 	return status, nil
 }
@@ -46,32 +57,39 @@ const (
 	pulseKind   fileKind = "pulse"
 )
 
-// checkFile describes one file on w.
-func checkFile(w io.Writer, path string) error {
+// checkFile describes one file on w, and in form.
+func checkFile(w io.Writer, path string, form *fileForm) error {
 	kind, err := kindOf(path)
 	if err != nil {
 		return err
 	}
+	form.Kind = string(kind)
 	switch kind {
 	case profileKind:
 		p, err := hardware.Load(path)
 		if err != nil {
 			return err
 		}
-		return describeProfile(w, p)
+		if err := describeProfile(w, p); err != nil {
+			return err
+		}
+		form.Profile, err = profileFormOf(p)
+		return err
 	case deviceKind:
 		d, err := device.Load(path)
 		if err != nil {
 			return err
 		}
 		describeDevice(w, d)
+		form.Device = deviceFormOf(d)
 		return nil
 	case briefKind:
 		b, p, d, err := brief.LoadAll(path)
 		if err != nil {
 			return inBrief(path, err)
 		}
-		return describeBrief(w, b, p, d)
+		form.Brief, err = describeBrief(w, b, p, d)
+		return err
 	}
 	return fmt.Errorf("%s: found a pulse's record; allowed: a profile, a device or a brief ('holdfast replay' takes the record's folder)", path)
 }
@@ -129,6 +147,11 @@ func describeDevice(w io.Writer, d *device.Device) {
 				list = append(list, fact{"driven by", fmt.Sprintf("channel %q of the hardware profile", drive.Channel)})
 			}
 		}
+		for _, bias := range d.Biases {
+			if bias.Site == s.Name {
+				list = append(list, fact{"turned by", fmt.Sprintf("channel %q of the hardware profile, about %s", bias.Channel, bias.Axis)})
+			}
+		}
 		list = append(list, fact{"T1", stated(s.T1, quantity.Time)}, fact{"T2", stated(s.T2, quantity.Time)})
 		if loss := decoherence(s, 100); loss > 0 {
 			list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: T/6 (1/T1 + 2/T2)", loss)})
@@ -162,17 +185,19 @@ func stated(v float64, k quantity.Kind) string {
 	return quantity.Format(v, k)
 }
 
-// describeBrief says what is wanted, and whether there is room for it.
-func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.Device) error {
-	site, channel, mixing := driven(b, p, d)
-	ch := &p.Channels[channel]
+// describeBrief says what is wanted, and whether there is room for it, in words and as a form.
+func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.Device) (*briefForm, error) {
+	site, channels, words := driven(b, p, d)
+	ch := &p.Channels[channels[0]]
 	samples := int(math.Round(b.Span / p.SamplePeriod))
-	if _, err := p.Playable(channel, samples); err != nil {
-		return fmt.Errorf("%s: %w", b.File, err)
+	for _, c := range channels {
+		if _, err := p.Playable(c, samples); err != nil {
+			return nil, fmt.Errorf("%s: %w", b.File, err)
+		}
 	}
-	r, err := roomOf(b, p, channel, samples)
+	r, err := roomOf(b, p, d, channels, samples)
 	if err != nil {
-		return fmt.Errorf("%s: %w", b.File, err)
+		return nil, fmt.Errorf("%s: %w", b.File, err)
 	}
 	fmt.Fprintf(w, "%s: brief %q\n\n", b.File, b.Name)
 	list := []fact{
@@ -186,7 +211,24 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 		{"equations", r.String()},
 		{"requires", requiredInWords(b)},
 		{"search", searchInWords(b)},
-		{"drive", mixing},
+	}
+	for i, line := range words {
+		name := "drive"
+		if i > 0 {
+			name = ""
+		}
+		list = append(list, fact{name, line})
+	}
+	if z := b.Target.FreeZ; z != brief.NoFreeZ && z != "" {
+		list = append(list, fact{"free Z", fmt.Sprintf("rotations about Z cost nothing %s the gate: the design chooses them, the record says which", map[string]string{
+			brief.Before: "before", brief.After: "after", brief.Both: "before and after"}[z])})
+	}
+	if len(b.Phases) > 0 {
+		var angles []string
+		for _, a := range b.Phases {
+			angles = append(angles, quantity.Format(a, quantity.Angle))
+		}
+		list = append(list, fact{"phases", "the gate is written turned about Z by " + strings.Join(angles, ", ")})
 	}
 	if loss := decoherence(site, b.Span); loss > 0 {
 		list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity in this span, whatever the pulse", loss)})
@@ -202,7 +244,7 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
 		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
 	}
-	if off := math.Abs(site.Frequency - ch.Carrier); site.Frequency > 0 && ch.Carrier > 0 {
+	if off := math.Abs(site.Frequency - ch.Carrier); ch.Kind != hardware.Baseband && site.Frequency > 0 && ch.Carrier > 0 {
 		stated := math.Abs(site.Detuning) / (2 * math.Pi)
 		if !(math.Abs(off-stated) <= 1e-6*site.Frequency) {
 			warn = append(warn, fmt.Sprintf("The transition, %s, lies %s from the carrier, %s, and the device states a detuning of %s: the pulse is designed for the detuning.",
@@ -210,23 +252,23 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 		}
 	}
 	printCautions(w, warn)
-	return nil
+	return briefFormOf(b, p, samples, r, decoherence(site, b.Span), warn), nil
 }
 
-// driven finds the site of the target, the channel that drives it, and says what
-// its quadratures do there. brief.LoadAll has seen to it that both exist.
-func driven(b *brief.Brief, p *hardware.Profile, d *device.Device) (site device.Site, channel int, words string) {
+// driven finds the site of the target, the channels that turn it, and says what each does there. brief.LoadAll has seen to it that
+// all exist and that there is one.
+func driven(b *brief.Brief, p *hardware.Profile, d *device.Device) (site device.Site, channels []int, words []string) {
 	for _, s := range d.Sites {
 		if s.Name == b.Target.Site {
 			site = s
 		}
 	}
 	for i, drive := range d.Drives {
-		if drive.Site != site.Name {
+		c, ok := p.Channel(drive.Channel)
+		if drive.Site != site.Name || !ok {
 			continue
 		}
-		channel, _ = p.Channel(drive.Channel)
-		ch := &p.Channels[channel]
+		ch := &p.Channels[c]
 		sign, sense := "+", "+"
 		if imag(d.Operators(i, string(ch.Mixing))[1].At(0, 1)) > 0 { // +Y/2 has -i/2 there
 			sign = "-"
@@ -234,10 +276,19 @@ func driven(b *brief.Brief, p *hardware.Profile, d *device.Device) (site device.
 		if site.Zero == device.Lower {
 			sense = "-"
 		}
-		words = fmt.Sprintf("%q mixes %s, and |0> of %s is the %s energy: I turns about +X and Q about %sY, in the frame that turns about %sZ with the carrier (%s)",
-			ch.Name, ch.Mixing, site.Name, site.Zero, sign, sense, carrier(ch))
+		channels = append(channels, c)
+		words = append(words, fmt.Sprintf("%q mixes %s, and |0> of %s is the %s energy: I turns about +X and Q about %sY, in the frame that turns about %sZ with the carrier (%s)",
+			ch.Name, ch.Mixing, site.Name, site.Zero, sign, sense, carrier(ch)))
 	}
-	return site, channel, words
+	for _, bias := range d.Biases {
+		c, ok := p.Channel(bias.Channel)
+		if bias.Site != site.Name || !ok {
+			continue
+		}
+		channels = append(channels, c)
+		words = append(words, fmt.Sprintf("%q turns about +%s by what it puts out, without a carrier", bias.Channel, bias.Axis))
+	}
+	return site, channels, words
 }
 
 func carrier(ch *hardware.Channel) string {
@@ -261,10 +312,13 @@ func endsInWords(ends string) string {
 	return "settled: what still arrives after the span is part of the gate"
 }
 
-// sizeInWords gives the size of an error: a rotation frequency, or a share.
+// sizeInWords gives the size of an error: a rotation frequency, a share, or an angle.
 func sizeInWords(kind string, size float64) string {
-	if kind == brief.Amplitude {
+	switch kind {
+	case brief.Amplitude, brief.Line, brief.Offset:
 		return quantity.Format(size, quantity.Ratio)
+	case brief.Skew:
+		return quantity.Format(size, quantity.Angle)
 	}
 	return quantity.Format(size/(2*math.Pi), quantity.Frequency)
 }
@@ -294,18 +348,23 @@ func requiredInWords(b *brief.Brief) string {
 		words += fmt.Sprintf(", susceptibility at most %.3g of each held error", b.Require.Susceptibility)
 	}
 	for _, m := range b.Require.Margins {
-		kind := brief.Static
-		if m.Error == "amplitude" {
-			kind = brief.Amplitude
-		}
-		for _, e := range b.Errors {
-			if e.Name == m.Error {
-				kind = e.Kind
-			}
-		}
+		kind := marginKind(b, m.Error)
 		words += fmt.Sprintf(", that infidelity up to ±%s of %s", sizeInWords(kind, m.Size), m.Error)
 	}
 	return words
+}
+
+// marginKind is the kind of the error that a margin names.
+func marginKind(b *brief.Brief, name string) string {
+	for _, e := range b.Errors {
+		if e.Name == name {
+			return e.Kind
+		}
+	}
+	if name == "amplitude" {
+		return brief.Amplitude
+	}
+	return brief.Static
 }
 
 func searchInWords(b *brief.Brief) string {

@@ -61,8 +61,53 @@ func TestCheckStarts(t *testing.T) {
 	if status != exitMet || stderr != "" {
 		t.Fatalf("check: %d, %s", status, stderr)
 	}
-	mustHave(t, "check", stdout, "q1 drive begins 3.2 ns after the trigger, 0 ns after the earliest", "q2 drive begins 5.7 ns after the trigger, 2.5 ns after the earliest",
-		"up to 2.5 ns (2.5 samples) apart")
+	mustHave(t, "check", stdout, "q1 drive begins 6.2 ns after the trigger, 0 ns before the latest; its samples are to be delayed by 3 samples for that",
+		"q2 drive begins 5.7 ns after the trigger, 500 ps before the latest", "up to 500 ps (0.5 samples) apart: whole samples bring them no nearer",
+		"3.2 ns of pure delay, and 3 samples for the sake of the slower channels")
+	change(t, path, "block = 8", "block = 8\nalign = \"none\"")
+	_, stdout, _ = play("check", path)
+	mustHave(t, "check", stdout, "q1 drive begins 3.2 ns after the trigger, 2.5 ns before the latest", "q2 drive begins 5.7 ns after the trigger, 0 ns before the latest",
+		"up to 2.5 ns (2.5 samples) apart, as align = \"none\" asks")
+}
+
+// What few profiles have is told in words where it stands there, and a baseband channel has no mixer.
+func TestCheckOtherLimits(t *testing.T) {
+	dir := newLab(t)
+	path := filepath.Join(dir, "rack-b.toml")
+	change(t, path, `kind = "quadrature"`, "kind = \"quadrature\"\nrms_limit = \"60 %\"\nrms_period = \"1 us\"\nout_of_band = \"1 %\"\nzero_mean = true\nshift = \"12 kHz\"\n"+
+		"compression = [[\"0 %\", \"0 %\"], [\"50 %\", \"49 %\"], [\"100 %\", \"95 %\"]]")
+	change(t, path, `fast = "8 ns"`, `fast = "8 ns", tail = "0.05 %"`)
+	_, stdout, stderr := play("check", path)
+	mustHave(t, "check", stdout, "at most 60 % of full scale over the span, or over 1 us where that is longer", "at most 1 % of full scale, rms over the span",
+		"sum to zero", "at 100 % of the converter's range the drive reaches 95 % of full scale; 3 points", "moves the transition by 12 kHz",
+		"in the first 8 ns after the span, and 0.05 % at every later instant",
+		"40 ns 40 5 10") // one coefficient less
+	if stderr != "" {
+		t.Errorf("stderr: %s", stderr)
+	}
+	dir = newLab(t)
+	path = filepath.Join(dir, "rack-b.toml")
+	change(t, path, `kind = "quadrature"`, `kind = "baseband"`)
+	change(t, path, `mixing = "I cos - Q sin"`, "")
+	_, stdout, stderr = play("check", path)
+	mustHave(t, "check", stdout, "one converter without a carrier", "up to 95 % of full scale, either sign", "64 ns 64 11 11 4 the gate alone")
+	if stderr != "" || strings.Contains(stdout, "mixing") || strings.Contains(stdout, "frame that turns") {
+		t.Errorf("baseband: %s%s", stdout, stderr)
+	}
+	// a drive and a bias: 60 free samples carry 11 coefficients for each of three converters
+	dir = newLab(t)
+	path = filepath.Join(dir, "rack-b.toml")
+	write(t, path, read(t, path)+"\n[[channel]]\nname = \"q1 flux\"\nkind = \"baseband\"\nfull_scale = \"10 MHz\"\nband = \"100 MHz\"\nguard = { trail = 4 }\n")
+	write(t, filepath.Join(dir, "skerry.toml"), read(t, filepath.Join(dir, "skerry.toml"))+"\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n")
+	text := strings.NewReplacer("weight = 1", "weight = 1\n[[error]]\nline = \"q1 drive\"\nparameter = \"tails[0].time\"\n[[error]]\nquadrature_angle = \"q1 drive\"\n"+
+		"[[error]]\noffset = \"q1 flux\"", `"72 ns"`, `"64 ns"`).Replace(held)
+	write(t, filepath.Join(dir, "held.toml"), text)
+	_, stdout, stderr = play("check", filepath.Join(dir, "held.toml"), filepath.Join(dir, "skerry.toml"))
+	mustHave(t, "check", stdout, "against them 33 coefficients, 11 per quadrature", "15: 3 of the gate and 12 of the errors, of which 3 repeat others", // the offset is a detuning
+		`"q1 flux" turns about +Z by what it puts out`, "tails[0].time up to 5 %, quadrature angle up to 1 deg, offset", `channel "q1 flux" of the hardware profile, about Z`)
+	if stderr != "" {
+		t.Errorf("stderr: %s", stderr)
+	}
 }
 
 // 100 ns cost 100/6 (1/60000 + 2/40000) = 1.11e-3 with the demonstration's times.

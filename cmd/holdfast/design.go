@@ -46,7 +46,7 @@ func designPulse(c *call) (int, error) {
 		return exitBadInput, err
 	}
 	defer stage.Discard()
-	if b.Defaulted {
+	if b.Defaulted && !c.json {
 		fmt.Fprintln(c.stdout, "The brief names no [[error]]: held against detuning, amplitude and any static error.")
 	}
 
@@ -79,13 +79,17 @@ func designPulse(c *call) (int, error) {
 	if err := stage.Commit(); err != nil {
 		return exitBadInput, err
 	}
+	status := pulseStatus(pulse.Status, verdict)
+	if c.json {
+		return status, c.emit(pulseFormOf(*out, filepath.Join(*out, datasheetFile), status, &pulse.Record, sheet))
+	}
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
 	fmt.Fprintf(c.stdout, "\nsearch:    %s\n", pulse.Summary())
 	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
 	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
-	return pulseStatus(pulse.Status, verdict), nil
+	return status, nil
 }
 
 func pulseStatus(s design.Status, v *replay.Verdict) int {

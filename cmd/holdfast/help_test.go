@@ -43,8 +43,11 @@ func askedKeys(t *testing.T, files ...string) map[string]bool {
 			var args []ast.Expr
 			switch f := call.Fun.(type) {
 			case *ast.SelectorExpr:
-				if slices.Contains(accessors, f.Sel.Name) && len(call.Args) > 0 {
+				switch {
+				case slices.Contains(accessors, f.Sel.Name) && len(call.Args) > 0:
 					args = call.Args[:1]
+				case f.Sel.Name == "known": // of a line: the table, the key
+					args = call.Args[1:]
 				}
 			case *ast.Ident:
 				if f.Name == "oneOf" || f.Name == "wholes" {
@@ -139,6 +142,9 @@ func recordKeys(t reflect.Type, at string, keys map[string]bool) {
 			inner, list = inner.Elem(), "[]"
 		}
 		if inner.Kind() == reflect.Struct {
+			if f.Anonymous { // its keys stand among those of the table
+				path = at
+			}
 			recordKeys(inner, path+list, keys)
 			continue
 		}
@@ -290,7 +296,8 @@ func TestHelpIsTrue(t *testing.T) {
 
 // alternatives are the keys of which one must stand there.
 var alternatives = map[string]bool{"target.gate": true, "target.axis": true, "target.matrix": true,
-	"error[].detuning": true, "error[].amplitude": true, "error[].operator": true, "error[].matrix": true, "error[].any": true}
+	"error[].detuning": true, "error[].amplitude": true, "error[].operator": true, "error[].matrix": true, "error[].any": true,
+	"error[].line": true, "error[].quadrature_angle": true, "error[].offset": true}
 
 // rivalsOf gives the keys that may not stand beside one: those of the other alternatives.
 func rivalsOf(path string) map[string]bool {
@@ -306,10 +313,17 @@ func rivalsOf(path string) map[string]bool {
 		target = path
 	case alternatives[path] && strings.HasPrefix(path, "error"):
 		kind = path
+	case path == "error[].parameter":
+		kind = "error[].line"
+	case path == "error[].quadrature":
+		kind = "error[].offset"
 	}
-	if kind == "error[].amplitude" {
+	switch kind {
+	case "error[].amplitude", "error[].line", "error[].quadrature_angle", "error[].offset":
 		not["error[].size"] = true // its example is a frequency
 	}
+	not["error[].parameter"] = kind != "error[].line"
+	not["error[].quadrature"] = kind != "error[].amplitude" && kind != "error[].offset"
 	for k := range alternatives {
 		not[k] = k != target && k != kind
 	}
@@ -345,7 +359,7 @@ func defaultOf(k key) string {
 
 // Each topic of the help is there, its lines fit a terminal, and -h shows the same.
 func TestHelp(t *testing.T) {
-	topics := []string{"profile", "device", "brief", "pulse"}
+	topics := []string{"profile", "device", "brief", "pulse", "json"}
 	for _, v := range verbs() {
 		topics = append(topics, v.name)
 		_, a, _ := play("help", v.name)
@@ -375,12 +389,17 @@ func TestHelp(t *testing.T) {
 	for _, v := range verbs() {
 		mustHave(t, "help", stdout, "holdfast "+v.name)
 	}
-	for _, c := range []struct{ topic, flag string }{{"design", "-out"}, {"design", "-force"}, {"replay", "-datasheet"}} {
+	for _, c := range []struct{ topic, flag string }{{"design", "-out"}, {"design", "-force"}, {"replay", "-datasheet"}, {"card", "-out"}, {"card", "-force"}, {"card", "-detuning"}} {
 		_, stdout, _ := play("help", c.topic)
 		mustHave(t, "help "+c.topic, stdout, c.flag)
 	}
+	// -json is a flag of every verb
+	for _, v := range verbs() {
+		_, stdout, _ := play("help", v.name)
+		mustHave(t, "help "+v.name, stdout, "[-json]", "-json print one JSON object instead of text")
+	}
 	// the flags in the source are the ones above
-	for file, want := range map[string]int{"design.go": 2, "replay.go": 1, "check.go": 0, "start.go": 0, "help.go": 0} {
+	for file, want := range map[string]int{"design.go": 2, "replay.go": 1, "card.go": 3, "check.go": 0, "start.go": 0, "help.go": 0} {
 		source, err := os.ReadFile(file)
 		if err != nil {
 			t.Fatal(err)

@@ -6,6 +6,7 @@
 //	holdfast check FILE...   reads them and says what they mean
 //	holdfast design BRIEF    makes a pulse folder with a datasheet
 //	holdfast replay PULSE    recomputes a pulse folder by other means
+//	holdfast card PROFILE DEVICE  writes sequences that tell how the bench is wired
 //	holdfast help [TOPIC]
 //	holdfast version
 //
@@ -58,12 +59,13 @@ type verb struct {
 // is one of them.
 func verbs() []verb {
 	return []verb{
-		{"start", "DIR", "write a commented profile, device and brief into a new folder", "", start},
-		{"check", "FILE...", "read profiles, devices, briefs and say what they mean", "", check},
-		{"design", "BRIEF", "design a pulse and write its folder with a datasheet", "[-out FOLDER] [-force]", designPulse},
-		{"replay", "PULSE", "recompute a pulse folder by other means and judge it", "[-datasheet FILE]", replayPulse},
-		{"help", "[VERB | TOPIC]", "explain a verb, or one of: profile, device, brief, pulse", "", help},
-		{"version", "", "print the version", "", printVersion},
+		{"start", "DIR", "write a commented profile, device and brief into a new folder", "[-json]", start},
+		{"check", "FILE...", "read profiles, devices, briefs and say what they mean", "[-json]", check},
+		{"design", "BRIEF", "design a pulse and write its folder with a datasheet", "[-out FOLDER] [-force] [-json]", designPulse},
+		{"replay", "PULSE", "recompute a pulse folder by other means and judge it", "[-datasheet FILE] [-json]", replayPulse},
+		{"card", "PROFILE DEVICE", "write three sequences that tell how the bench is wired", "[-out FOLDER] [-force] [-detuning F] [-json]", card},
+		{"help", "[VERB | TOPIC]", "explain a verb, or one of: profile, device, brief, pulse, json", "[-json]", help},
+		{"version", "", "print the version", "[-json]", printVersion},
 	}
 }
 
@@ -74,6 +76,7 @@ type call struct {
 	args   []string // after the verb
 	stdout io.Writer
 	stderr io.Writer
+	json   bool // print one JSON object instead of text; known after parse
 }
 
 // run is the whole program but for the process around it.
@@ -118,10 +121,11 @@ func verbNames() string {
 
 func oneLine(err error) string { return strings.Join(strings.Fields(err.Error()), " ") }
 
-// flags returns an empty flag set that keeps quiet: errors are told by parse.
+// flags returns a flag set that has what every verb has and keeps quiet: errors are told by parse.
 func (c *call) flags() *flag.FlagSet {
 	f := flag.NewFlagSet(c.verb.name, flag.ContinueOnError)
 	f.SetOutput(io.Discard)
+	f.BoolVar(&c.json, "json", false, "print one JSON object instead of text")
 	return f
 }
 
@@ -164,6 +168,16 @@ func printVersion(c *call) (int, error) {
 	if _, err := c.parse(c.flags(), 0, 0); err != nil {
 		return exitBadInput, err
 	}
+	if c.json {
+		return exitMet, c.emit(versionForm{Format: jsonFormat, Program: "holdfast", Version: version})
+	}
 	fmt.Fprintf(c.stdout, "holdfast %s\n", version)
 	return exitMet, nil
+}
+
+// versionForm is what version -json prints.
+type versionForm struct {
+	Format  int    `json:"format"`
+	Program string `json:"program"`
+	Version string `json:"version"`
 }

@@ -160,7 +160,7 @@ func TestHappyPath(t *testing.T) {
 	}
 	mustHave(t, "design", stdout, "MET.", "search: found", "pulse: "+pulse, "datasheet: "+filepath.Join(pulse, datasheetFile))
 	made := tree(t, pulse)
-	for _, name := range []string{"pulse.toml", "q1-drive.npy", "q1-drive-exact.npy", datasheetFile, "inputs/profile.toml", "inputs/device.toml", "inputs/brief.toml"} {
+	for _, name := range []string{"pulse.toml", "q1-drive.npy", "q1-drive-exact.npy", "q1-drive.csv", "q1-drive.int16", "q1-drive-arrives.npy", datasheetFile, "inputs/profile.toml", "inputs/device.toml", "inputs/brief.toml"} {
 		if made[name] == "" {
 			t.Errorf("the pulse folder has no %s", name)
 		}
@@ -287,7 +287,7 @@ func TestArguments(t *testing.T) {
 		status int
 		stderr string // part of the one line; empty: nothing there
 	}{
-		{[]string{"dsign", "x.toml"}, exitBadInput, `the verb "dsign"; allowed: start, check, design, replay, help, version`},
+		{[]string{"dsign", "x.toml"}, exitBadInput, `the verb "dsign"; allowed: start, check, design, replay, card, help, version`},
 		{[]string{"design"}, exitBadInput, "design: found 0 operands"},
 		{[]string{"design", "a", "b"}, exitBadInput, "design: found 2 operands"},
 		{[]string{"design", "-fast", "a"}, exitBadInput, "-fast"},
@@ -304,6 +304,8 @@ func TestArguments(t *testing.T) {
 		{[]string{"help", "a", "b"}, exitBadInput, "help: found 2 operands"},
 		{[]string{"version", "a"}, exitBadInput, "version: found 1 operands"},
 		{[]string{"replay", "--", "-out"}, exitBadInput, "-out: "},
+		{[]string{"card", "a"}, exitBadInput, "card: found 1 operands"},
+		{[]string{"card", "a", "b", "-json=perhaps"}, exitBadInput, "json"},
 		{[]string{"help"}, exitMet, ""},
 		{[]string{"-h"}, exitMet, ""},
 		{[]string{"--help"}, exitMet, ""},

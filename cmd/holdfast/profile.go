@@ -35,47 +35,56 @@ func describeProfile(w io.Writer, p *hardware.Profile) error {
 	return fault
 }
 
-// describeStarts says what stays misaligned: in this version waveforms of all
-// channels leave the converters together, whatever their delays.
+// describeStarts says when the windows of several channels begin, what delays them, and what stays misaligned.
 func describeStarts(w io.Writer, p *hardware.Profile) {
 	fmt.Fprintf(w, "\nwindows of the channels at the device\n")
-	first := math.Inf(1)
-	for c := range p.Channels {
-		first = math.Min(first, p.Start(c))
-	}
 	var list []fact
 	apart := 0.0
 	for c := range p.Channels {
-		late := p.Start(c) - first
-		apart = math.Max(apart, late)
-		list = append(list, fact{p.Channels[c].Name, fmt.Sprintf("begins %s after the trigger, %s after the earliest", quantity.Format(p.Start(c), quantity.Time), quantity.Format(late, quantity.Time))})
+		early := p.Window() - p.Start(c)
+		apart = math.Max(apart, math.Abs(early))
+		words := fmt.Sprintf("begins %s after the trigger, %s before the latest", quantity.Format(p.Start(c), quantity.Time), quantity.Format(early, quantity.Time))
+		if n := p.Shift(c); n > 0 {
+			words += fmt.Sprintf("; its samples are to be delayed by %s for that", count(n, "sample"))
+		}
+		list = append(list, fact{p.Channels[c].Name, words})
 	}
 	printFacts(w, list)
-	if whole := apart / p.SamplePeriod; apart > 0 {
-		fmt.Fprintf(w, "  They stay up to %s (%.4g samples) apart; this version plays one channel and aligns none.\n", quantity.Format(apart, quantity.Time), whole)
-	} else {
+	switch whole := apart / p.SamplePeriod; {
+	case apart <= 1e-9:
 		fmt.Fprintf(w, "  All begin together.\n")
+	case p.Align == hardware.AlignNone:
+		fmt.Fprintf(w, "  They stay up to %s (%.4g samples) apart, as align = \"none\" asks.\n", quantity.Format(apart, quantity.Time), whole)
+	default:
+		fmt.Fprintf(w, "  They stay up to %s (%.4g samples) apart: whole samples bring them no nearer.\n", quantity.Format(apart, quantity.Time), whole)
 	}
 }
 
 func describeChannel(w io.Writer, p *hardware.Profile, c int) error {
 	ch := &p.Channels[c]
 	fmt.Fprintf(w, "\nchannel %q, %s\n", ch.Name, ch.Kind)
-	q, upper, lower := "plus", "-", "+"
-	if ch.Mixing == hardware.MinusSin {
-		q, upper, lower = "minus", "+", "-"
+	var list []fact
+	if ch.Kind == hardware.Baseband {
+		list = append(list, fact{"kind", "one converter without a carrier: what it puts out turns the device about the axis that the device file gives its bias"})
+	} else {
+		q, upper, lower := "plus", "-", "+"
+		if ch.Mixing == hardware.MinusSin {
+			q, upper, lower = "minus", "+", "-"
+		}
+		list = append(list,
+			fact{"mixing", fmt.Sprintf("%s: I multiplies the cosine of the carrier and Q %s its sine; Q turns a spin about %sY when its |0> is the upper energy, about %sY when it is the lower",
+				ch.Mixing, q, upper, lower)},
+			fact{"frame", fmt.Sprintf("everything is told in the frame that turns with the carrier (%s)", carrier(ch))})
 	}
-	list := []fact{
-		{"mixing", fmt.Sprintf("%s: I multiplies the cosine of the carrier and Q %s its sine; Q turns a spin about %sY when its |0> is the upper energy, about %sY when it is the lower",
-			ch.Mixing, q, upper, lower)},
-		{"frame", fmt.Sprintf("everything is told in the frame that turns with the carrier (%s)", carrier(ch))},
+	list = append(list, []fact{
 		{"full scale", fmt.Sprintf("a steady drive at full code turns a spin at %s, once in %s", quantity.Format(ch.FullScale/(2*math.Pi), quantity.Frequency), quantity.Format(2*math.Pi/ch.FullScale, quantity.Time))},
-		{"amplitude", fmt.Sprintf("up to %s of full scale, the length of (I, Q)", quantity.Format(ch.AmplitudeLimit, quantity.Ratio))},
+		{"amplitude", fmt.Sprintf("up to %s of full scale, %s", quantity.Format(ch.AmplitudeLimit, quantity.Ratio), amplitudeOf(ch))},
 		{"slew", slewInWords(ch)},
 		{"band", bandInWords(p, ch)},
 		{"guards", fmt.Sprintf("%s at zero before the pulse and %d after, within the span", count(ch.GuardLead, "sample"), ch.GuardTrail)},
 		{"ring-out", ringOutInWords(ch)},
-	}
+	}...)
+	list = append(list, otherLimits(ch)...)
 	for i, s := range ch.Sections {
 		name := "line"
 		if i > 0 {
@@ -91,14 +100,62 @@ func describeChannel(w io.Writer, p *hardware.Profile, c int) error {
 		}
 	}
 	list = append(list,
-		fact{"window", fmt.Sprintf("begins at the device %s after the trigger: %s of latency and %s of pure delay",
-			quantity.Format(p.Start(c), quantity.Time), quantity.Format(ch.Latency, quantity.Time), quantity.Format(ch.Line.Delay, quantity.Time))},
+		fact{"window", fmt.Sprintf("begins at the device %s after the trigger: %s of latency and %s",
+			quantity.Format(p.Start(c), quantity.Time), quantity.Format(ch.Latency, quantity.Time), delayInWords(p, c))},
 		fact{"plain turns", plainTurns(p, ch)})
 	printFacts(w, list)
 	err := describeSpans(w, p, c)
 	fmt.Fprintln(w)
 	printCautions(w, cautions(p, c))
 	return err
+}
+
+// delayInWords tells the rest of the window's start.
+func delayInWords(p *hardware.Profile, c int) string {
+	words := quantity.Format(p.Channels[c].Line.Delay, quantity.Time) + " of pure delay"
+	if n := p.Shift(c); n > 0 {
+		words += fmt.Sprintf(", and %s for the sake of the slower channels", count(n, "sample"))
+	}
+	return words
+}
+
+// amplitudeOf says of what the amplitude is limited.
+func amplitudeOf(ch *hardware.Channel) string {
+	switch {
+	case ch.Kind == hardware.Baseband:
+		return "either sign"
+	case ch.Envelope == hardware.Box:
+		return "I and Q apart"
+	}
+	return "the length of (I, Q)"
+}
+
+// otherLimits tells what few profiles have.
+func otherLimits(ch *hardware.Channel) []fact {
+	share := func(v float64) string { return quantity.Format(v, quantity.Ratio) }
+	var list []fact
+	if ch.RMSLimit > 0 {
+		over := "the span"
+		if ch.RMSPeriod > 0 {
+			over += ", or over " + quantity.Format(ch.RMSPeriod, quantity.Time) + " where that is longer"
+		}
+		list = append(list, fact{"rms", fmt.Sprintf("at most %s of full scale over %s", share(ch.RMSLimit), over)})
+	}
+	if ch.OutOfBand > 0 {
+		list = append(list, fact{"out of band", fmt.Sprintf("at most %s of full scale, rms over the span, may lie outside the band", share(ch.OutOfBand))})
+	}
+	if ch.ZeroMean {
+		list = append(list, fact{"mean", "the samples of a span sum to zero"})
+	}
+	if n := len(ch.Compression); n > 0 {
+		last := ch.Compression[n-1]
+		list = append(list, fact{"compression", fmt.Sprintf("at %s of the converter's range the drive reaches %s of full scale; %d points, inverted before the codes",
+			share(last.Converter), share(last.Reached), n)})
+	}
+	if ch.Shift != 0 {
+		list = append(list, fact{"shift", fmt.Sprintf("a steady drive at full scale moves the transition by %s along Z/2, in proportion to its power", quantity.Format(ch.Shift/(2*math.Pi), quantity.Frequency))})
+	}
+	return list
 }
 
 func slewInWords(ch *hardware.Channel) string {
@@ -124,12 +181,19 @@ func ringOutInWords(ch *hardware.Channel) string {
 	if math.IsInf(ch.RingOut.Limit, 1) {
 		return "no limit on what arrives after the span"
 	}
+	if tail := ch.RingOut.Tail; tail > 0 && tail != ch.RingOut.Limit {
+		return fmt.Sprintf("at most %s of full scale may arrive in I and in Q in the first %s after the span, and %s at every later instant",
+			quantity.Format(ch.RingOut.Limit, quantity.Ratio), quantity.Format(ch.RingOut.Fast, quantity.Time), quantity.Format(tail, quantity.Ratio))
+	}
 	return fmt.Sprintf("at most %s of full scale may arrive in I and in Q at any instant after the span; the first %s and the rest are told apart",
 		quantity.Format(ch.RingOut.Limit, quantity.Ratio), quantity.Format(ch.RingOut.Fast, quantity.Time))
 }
 
 // plainTurns says how long a square pulse takes that is held against nothing.
 func plainTurns(p *hardware.Profile, ch *hardware.Channel) string {
+	if !(steady(ch) > 1e-6) {
+		return "no steady drive reaches the device"
+	}
 	long := func(angle float64) string {
 		area := angle / (ch.FullScale * p.SamplePeriod * steady(ch))
 		n := len(shape.RampedSquare(area, ch.AmplitudeLimit, ch.SlewLimit))
@@ -157,26 +221,27 @@ func degrees() []degree {
 	}
 }
 
-// describeSpans tables the coefficients that each span carries, from the first
-// that carries the gate to the first that carries everything.
-func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
+// A spanLine says what one span carries.
+type spanLine struct{ samples, perQuad, degree int }
+
+// spansOf counts the coefficients that each span carries, from the first that carries the gate to the first that carries
+// everything. first is the least number of samples in which something is playable.
+func spansOf(p *hardware.Profile, c int) (first int, lines []spanLine, err error) {
 	ch := &p.Channels[c]
 	least := max(p.Shortest, ch.GuardLead+ch.GuardTrail+1)
-	first := (least + p.Block - 1) / p.Block * p.Block
+	first = (least + p.Block - 1) / p.Block * p.Block
 	if first > p.Longest {
-		return fmt.Errorf("channel %q can play nothing: guard: %d samples at zero leave none free in the longest waveform, %d samples", ch.Name, ch.GuardLead+ch.GuardTrail, p.Longest)
+		return 0, nil, fmt.Errorf("channel %q can play nothing: guard: %d samples at zero leave none free in the longest waveform, %d samples", ch.Name, ch.GuardLead+ch.GuardTrail, p.Longest)
 	}
 	if _, err := p.Playable(c, first); err != nil {
-		return err
+		return 0, nil, err
 	}
-	type line struct{ samples, perQuad, degree int }
-	var lines []line
 	most := len(degrees()) - 1
 	for n := first; n <= p.Longest; n += p.Block {
 		perQuad, _ := perQuadrature(ch, p.SamplePeriod, n-ch.GuardLead-ch.GuardTrail, "")
-		l := line{n, perQuad, -1}
+		l := spanLine{n, perQuad, -1}
 		for i, d := range degrees() {
-			if d.equations <= carries(ch, 2*perQuad) {
+			if d.equations <= carries(ch, ch.Columns()*perQuad) {
 				l.degree = i
 			}
 		}
@@ -186,6 +251,16 @@ func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
 		if l.degree == most {
 			break
 		}
+	}
+	return first, lines, nil
+}
+
+// describeSpans tables them.
+func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
+	ch := &p.Channels[c]
+	first, lines, err := spansOf(p, c)
+	if err != nil {
+		return err
 	}
 	fmt.Fprintf(w, "\n  Something is playable in spans from %s up.", quantity.Format(float64(first)*p.SamplePeriod, quantity.Time))
 	if len(lines) == 0 {
@@ -205,7 +280,7 @@ func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
 		}
 		before = l.degree
 		fmt.Fprintf(t, "%s\t%d\t%d\t%d\t%d\t  %s\n", quantity.Format(float64(l.samples)*p.SamplePeriod, quantity.Time),
-			l.samples, l.perQuad, 2*l.perQuad, carries(ch, 2*l.perQuad), degrees()[l.degree].words)
+			l.samples, l.perQuad, ch.Columns()*l.perQuad, carries(ch, ch.Columns()*l.perQuad), degrees()[l.degree].words)
 	}
 	t.Flush()
 	return nil

@@ -53,6 +53,13 @@ func replayPulse(c *call) (int, error) {
 			return exitBadInput, err
 		}
 	}
+	status := exitMet
+	if record.Pulse.Status != string(design.Found) || !verdict.Met() {
+		status = exitMissed
+	}
+	if c.json {
+		return status, c.emit(pulseFormOf(dir, *page, status, record, sheet))
+	}
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
@@ -63,10 +70,7 @@ func replayPulse(c *call) (int, error) {
 		}
 		fmt.Fprintf(c.stdout, "model.%s: the record says %s, inputs/ give %s\n", d.Key, d.Recorded, d.Rebuilt)
 	}
-	if record.Pulse.Status != string(design.Found) || !verdict.Met() {
-		return exitMissed, nil
-	}
-	return exitMet, nil
+	return status, nil
 }
 
 // folderInputs loads the copies of the inputs that a pulse folder keeps.

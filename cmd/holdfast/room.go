@@ -3,8 +3,10 @@ package main
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"holdfast/design/brief"
+	"holdfast/design/device"
 	"holdfast/hardware"
 	"holdfast/shape"
 )
@@ -32,7 +34,8 @@ const (
 // A room says how a span's coefficients compare with the equations.
 type room struct {
 	free        int // samples that are not guards
-	perQuad     int // coefficients per quadrature
+	perQuad     int // coefficients per quadrature of the first channel
+	together    int // of all quadratures of all channels
 	family      string
 	equations   int
 	independent int // fewer when one error contains another
@@ -41,12 +44,21 @@ type room struct {
 }
 
 // perQuadrature gives the number of coefficients that a design uses by default,
-// and the family: without a band, or with one of all frequencies, every free sample is one.
+// and the family: without a band, or with one of all frequencies, every free sample is one. What sums to zero has one less.
 func perQuadrature(ch *hardware.Channel, period float64, free int, family string) (int, string) {
+	n := free
 	if width := ch.Band * period; family != shape.FamilySamples && width < 0.5 {
-		return shape.DefaultCount(free, width), shape.FamilySlepian
+		n = shape.DefaultCount(free, width)
+		if family == "" {
+			family = shape.FamilySlepian
+		}
+	} else {
+		family = shape.FamilySamples
 	}
-	return free, shape.FamilySamples
+	if ch.ZeroMean {
+		n = max(n-1, 0)
+	}
+	return n, family
 }
 
 // carries says for how many equations some coefficients suffice by the count,
@@ -61,39 +73,63 @@ func spare(ch *hardware.Channel, n int) int {
 	return n
 }
 
-// roomOf counts for a brief.
-func roomOf(b *brief.Brief, p *hardware.Profile, channel, samples int) (room, error) {
-	ch := &p.Channels[channel]
+// roomOf counts for a brief, of which the site is turned by the given channels.
+func roomOf(b *brief.Brief, p *hardware.Profile, d *device.Device, channels []int, samples int) (room, error) {
+	ch := &p.Channels[channels[0]]
 	r := room{free: samples - ch.GuardLead - ch.GuardTrail, equations: gateEquations, independent: gateEquations}
-	r.perQuad, r.family = perQuadrature(ch, p.SamplePeriod, r.free, b.Basis.Family)
-	if n := b.Basis.Coefficients; n > 0 && r.family == shape.FamilySlepian {
-		r.perQuad = n
-	}
-	if r.perQuad*samples > shape.MaxEntries {
-		return r, fmt.Errorf("span: found %s with %d coefficients per quadrature; allowed: a product of at most %d",
-			count(samples, "sample"), r.perQuad, shape.MaxEntries)
+	for i, c := range channels {
+		q := &p.Channels[c]
+		perQuad, family := perQuadrature(q, p.SamplePeriod, samples-q.GuardLead-q.GuardTrail, b.Basis.Family)
+		if n := b.Basis.Coefficients; n > 0 && family != shape.FamilySamples {
+			perQuad = n
+		}
+		if perQuad*samples > shape.MaxEntries {
+			return r, fmt.Errorf("span: found %s with %d coefficients per quadrature; allowed: a product of at most %d",
+				count(samples, "sample"), perQuad, shape.MaxEntries)
+		}
+		if i == 0 {
+			r.perQuad, r.family = perQuad, family
+		}
+		r.together += q.Columns() * perQuad
 	}
 	var directions [][3]float64
-	amplitude := false
+	scaled := map[string]int{} // amplitude errors of a channel: of three, I, Q and both, one is the sum of the others
 	for _, e := range b.Errors {
-		switch e.Kind {
-		case brief.Any:
+		if e.Kind == brief.Any {
 			r.equations += anyEquations
 			directions = append(directions, [3]float64{1}, [3]float64{0, 1}, [3]float64{0, 0, 1})
-		case brief.Amplitude:
-			r.equations += namedEquations
-			amplitude = true
-		default:
-			r.equations += namedEquations
+			continue
+		}
+		r.equations += namedEquations
+		switch e.Kind {
+		case brief.Static:
 			m := e.Operator
 			directions = append(directions, [3]float64{real(m.At(0, 1)), -imag(m.At(0, 1)), real(m.At(0, 0))})
+		case brief.Offset: // a constant along what the quadrature turns about
+			about := "X"
+			if e.Quadrature == "Q" {
+				about = "Y"
+			}
+			for _, bias := range d.Biases {
+				if bias.Channel == e.Channels[0] {
+					about = bias.Axis
+				}
+			}
+			directions = append(directions, map[string][3]float64{"X": {1, 0, 0}, "Y": {0, 1, 0}, "Z": {0, 0, 1}}[about])
+		case brief.Amplitude:
+			scaled[fmt.Sprint(e.Channels)]++
+		default: // each parameter is its own
+			r.independent += namedEquations
 		}
 	}
 	r.independent += namedEquations * rank(directions)
-	if amplitude { // one drive: a second amplitude error is the first again
-		r.independent += namedEquations
+	for _, n := range scaled {
+		r.independent += namedEquations * min(n, 2)
+		if n > 1 && !slices.ContainsFunc(b.Errors, func(e brief.Error) bool { return e.Kind == brief.Amplitude && e.Quadrature != "" }) {
+			r.independent -= namedEquations // the same error again
+		}
 	}
-	together := 2 * r.perQuad
+	together := r.together
 	switch r.spare = spare(ch, ringOutEasy); {
 	case together <= r.independent+spare(ch, ringOutLeast):
 		r.verdict = fmt.Sprintf("Too few coefficients: %d equations%s want more than %d, and the span carries %d. Expect 'not found'; a longer span carries more.",
@@ -120,7 +156,7 @@ func (r room) String() string {
 	if r.independent < r.equations {
 		s += fmt.Sprintf(", of which %d repeat others", r.equations-r.independent)
 	}
-	return s + fmt.Sprintf("; against them %d coefficients, %d per quadrature, family %s", 2*r.perQuad, r.perQuad, r.family)
+	return s + fmt.Sprintf("; against them %d coefficients, %d per quadrature, family %s", r.together, r.perQuad, r.family)
 }
 
 // rank counts independent directions, by Gram and Schmidt.

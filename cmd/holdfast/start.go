@@ -43,6 +43,13 @@ func start(c *call) (int, error) {
 	if err := stage.Commit(); err != nil {
 		return exitBadInput, err
 	}
+	if c.json {
+		form := startForm{Format: jsonFormat, Folder: dir}
+		for _, e := range entries {
+			form.Files = append(form.Files, e.Name())
+		}
+		return exitMet, c.emit(form)
+	}
 	fmt.Fprintf(c.stdout, "%s holds an invented example to change into yours:\n", dir)
 	fmt.Fprintf(c.stdout, "  rack-b.toml   what the instrument and its line can do\n")
 	fmt.Fprintf(c.stdout, "  skerry.toml   what is driven\n")
@@ -50,4 +57,11 @@ func start(c *call) (int, error) {
 	fmt.Fprintf(c.stdout, "Next: holdfast check %s, then holdfast design %s\n",
 		filepath.Join(dir, "*.toml"), filepath.Join(dir, "x90.toml"))
 	return exitMet, nil
+}
+
+// startForm is what start -json prints.
+type startForm struct {
+	Format int      `json:"format"`
+	Folder string   `json:"folder"`
+	Files  []string `json:"files"`
 }

@@ -25,16 +25,25 @@ type Brief struct {
 	Errors          []Error // what the pulse is held against
 	Defaulted       bool    // the file names no error, so Errors are detuning, amplitude and any static error
 	HoldNothing     bool    // hold = "nothing": Errors is empty
+	HoldProfile     bool    // hold = "profile": Complete adds every parameter of the driving lines that is known to some share
 	Require         Require
-	Seed            uint64 // default 1
-	Starts          int    // of the search, default 60
-	Refine          bool   // default true
+	Seed            uint64    // default 1
+	Starts          int       // of the search, default 60
+	Refine          bool      // default true
+	PhaseBy         string    // ByInstrument or BySamples: who turns the gate's axis in the XY plane
+	Phases          []float64 // rad, with BySamples: the angles to which the gate is emitted
 
 	lines lines
 }
 
 // lines says where keys stand that LoadAll may have to complain of.
-type lines struct{ span, site, coefficients int }
+type lines struct{ span, site, coefficients, hold int }
+
+// Who turns a gate's axis about Z, as frames and phases of a sequence ask.
+const (
+	ByInstrument = "instrument" // one waveform is emitted; the instrument turns its phase
+	BySamples    = "samples"    // one waveform for each of the phases
+)
 
 // The ends of a gate: settled counts what arrives after the window too.
 const (
@@ -49,39 +58,64 @@ type Target struct {
 	Matrix device.Matrix
 	Angle  float64    // rad
 	Axis   [3]float64 // of length 1
+	FreeZ  string     // NoFreeZ, Before, After or Both: where rotations about Z cost nothing
 }
+
+// Where rotations about Z are free, because phases are tracked in software: the design may choose them.
+const (
+	NoFreeZ = "none"
+	Before  = "before"
+	After   = "after"
+	Both    = "both"
+)
 
 // Basis says of what the samples are made.
 type Basis struct {
-	Family       string // Slepian or Samples
+	Family       string // Slepian, Fourier, Tapered, BSpline, Samples or Best
 	Coefficients int    // per quadrature; 0: as many as the band and the span carry
+	Degree       int    // of BSpline, 1 to 5, default 3; for other families it means nothing
 }
 
 // The families of a basis.
 const (
 	Slepian = "slepian"
-	Samples = "samples" // one coefficient per free sample
+	Fourier = "fourier"  // a sine series
+	Tapered = "tapered"  // a sine series that starts and ends softly
+	BSpline = "b-spline" // orthonormalised B-splines
+	Samples = "samples"  // one coefficient per free sample
+	Best    = "best"     // whichever of Slepian, Fourier and BSpline serves best
 )
 
 // Error is an error, or a class of them, against which the pulse is held.
 type Error struct {
 	Name     string
-	Kind     string        // Static, Amplitude or Any
+	Kind     string        // Static, Amplitude, Any, Line, Skew or Offset
 	Operator device.Matrix // of kind Static: traceless and Hermitian; H += lambda Operator, lambda in rad/ns
-	Channels []string      // of kind Amplitude; in a defaulted brief LoadAll fills them in
-	Size     float64       // rad/ns, or a share for kind Amplitude; defaults 3 MHz, 3 %, and 1 MHz for kind Any
-	Weight   float64       // relative to the gate itself, default 1
+	// Channels are those of kind Amplitude (in a defaulted brief Complete fills them in), and the one of kind Line, Skew or Offset.
+	Channels   []string
+	Parameter  string // of kind Line: a name of hardware.Parameter
+	Quadrature string // of kind Amplitude, "I", "Q", or empty for both; of kind Offset, "I" or "Q" ("I" for a baseband channel)
+	// Size is in rad/ns of kinds Static and Any (defaults 3 MHz and 1 MHz), a share of kinds Amplitude (3 %), Line (what the profile says, else
+	// 5 %) and Offset (0.1 % of full scale), rad of kind Skew (1 deg).
+	Size   float64
+	Weight float64 // relative to the gate itself, default 1
 
-	key, on string // which key made it, and the site or channel that key names; for LoadAll
-	index   int    // in the file
-	line    int
+	key, on                       string // which key made it, and the site or channel that key names; for Complete
+	index                         int    // in the file; -1: not in it
+	line                          int    // of the key
+	lineParameter, lineQuadrature int    // of these keys
+	unsized                       bool   // the default size may give way to the profile's
+	expanded                      bool   // one of the two that stand for both quadratures
 }
 
 // The kinds of Error.
 const (
 	Static    = "static"    // one operator, constant in time
-	Amplitude = "amplitude" // what channels deliver, scaled
+	Amplitude = "amplitude" // what channels deliver, or one quadrature of it, scaled
 	Any       = "any"       // every traceless static operator
+	Line      = "line"      // one parameter of a channel's line, off by a share of itself
+	Skew      = "skew"      // quadratures that are not at right angles: u_I += -lambda u_Q, lambda in rad
+	Offset    = "offset"    // a constant at the converter, a share of full scale
 )
 
 // Require says what the finished pulse must reach.
@@ -94,7 +128,7 @@ type Require struct {
 // Margin asks that the infidelity stay within the requirement up to a size of an error, on both sides of zero.
 type Margin struct {
 	Error string  // the name of an error of the brief, or detuning, amplitude, X, Y or Z
-	Size  float64 // rad/ns, or a share for an amplitude error
+	Size  float64 // rad/ns, a share, or rad, as Error.Size
 }
 
 // The ranges of what a brief may ask.
@@ -110,6 +144,12 @@ const (
 	defaultStatic             = 0.003 // GHz
 	defaultAny                = 0.001 // GHz
 	defaultShare              = 0.03
+	defaultParameter          = 0.05          // of a line's parameter
+	defaultSkew               = math.Pi / 180 // rad
+	defaultOffset             = 1e-3          // of full scale
+	smallestSkew, largestSkew = 1e-6, math.Pi / 6
+	mostPhases                = 64
+	samePhase                 = 1e-9 // rad
 )
 
 // rate turns a cyclic frequency in GHz into rad/ns.
@@ -123,20 +163,28 @@ func rate(f float64) float64 { return 2 * math.Pi * f }
 //	device = "skerry.toml"
 //	span = "112 ns"
 //	ends = "settled"                 # or "window"                      | "settled"
-//	hold = "nothing"                 # the only value; excludes [[error]] | absent
+//	hold = "nothing"                 # excludes [[error]]; or "profile": the profile's known_to beside any [[error]] | absent
+//	phase_by = "samples"             # or "instrument"                  | "instrument", without phases
+//	phases = ["0 deg", "90 deg"]     # up to 64, with "samples" only
 //	seed = 1                         #                                  | 1
 //	starts = 60                      #                                  | 60
 //	refine = true                    #                                  | true
 //	[target]
 //	site = "q1"
 //	gate = "X90"                     # or axis = [1, 0, 0] and angle = "90 deg"; or matrix, unitary
+//	free_z = "none"                  # or "before", "after", "both"     | "none"
 //	[basis]
-//	family = "slepian"               # or "samples"                     | "slepian"
+//	family = "slepian"               # "fourier", "tapered", "b-spline", "samples", "best" | "slepian"
 //	coefficients = 20                #                                  | from band and span
-//	[[error]]                        # none: detuning, amplitude and any static error
-//	detuning = "q1"                  # or amplitude = "q1 drive", operator = "X", matrix, any = "all"
-//	name = "..."                     #                                  | "detuning", "amplitude", "X", "matrix", "any static error"
-//	size = "3 MHz"                   # or "3 %" for an amplitude        | 3 MHz, 3 %, 1 MHz for any
+//	degree = 3                       # of "b-spline", 1 to 5            | 3
+//	[[error]]                        # none and no hold: detuning, amplitude and any static error
+//	detuning = "q1"                  # or amplitude = "q1 drive", operator = "X", matrix, any = "all",
+//	                                 # line = "q1 drive" with parameter, quadrature_angle = "q1 drive", offset = "q1 drive"
+//	parameter = "lowpass[0].corner"  # of the line, as hardware.Parameter names it
+//	quadrature = "I"                 # or "Q", with amplitude or offset | both; offsets as two errors, "... I" and "... Q"
+//	name = "..."                     #                                  | "detuning", "amplitude", "X", "matrix", "any static error",
+//	                                 #                                    "amplitude I", "q1 drive lowpass[0].corner", "quadrature angle", "offset I"
+//	size = "3 MHz"                   # "3 %", "1 deg" by kind           | 3 MHz, 3 %, 1 MHz for any, known_to or 5 % of a line, 1 deg, 0.1 % of an offset
 //	weight = 1                       #                                  | 1
 //	[require]
 //	infidelity = 1e-4                #                                  | 1e-4
@@ -166,21 +214,54 @@ func read(doc *quantity.Document) (*Brief, error) {
 		Seed:    uint64(root.Int("seed", 0, math.MaxInt, 1)),
 		Starts:  root.Int("starts", 1, mostStarts, 60),
 		Refine:  root.Bool("refine", true),
+		PhaseBy: ByInstrument,
 	}
 	b.ProfilePath, b.DevicePath = b.beside(b.Profile), b.beside(b.Device)
 	b.Target = readTarget(root.Table("target"))
+	b.readPhases(root)
 	basis := root.Table("basis")
-	b.Basis = Basis{Family: basis.Choice("family", []string{Slepian, Samples}, Slepian), Coefficients: basis.Int("coefficients", 1, mostCoefficients, 0)}
+	b.Basis = Basis{
+		Family:       basis.Choice("family", []string{Slepian, Fourier, Tapered, BSpline, Samples, Best}, Slepian),
+		Coefficients: basis.Int("coefficients", 1, mostCoefficients, 0),
+		Degree:       basis.Int("degree", 1, 5, 3),
+	}
 	if b.Basis.Family == Samples && b.Basis.Coefficients > 0 {
 		basis.Fail("coefficients", `found %d with family = "samples"; allowed: no number here, as there is one coefficient for each sample`, b.Basis.Coefficients)
 	}
-	b.lines = lines{root.Line("span"), root.Table("target").Line("site"), basis.Line("coefficients")}
+	b.lines = lines{root.Line("span"), root.Table("target").Line("site"), basis.Line("coefficients"), root.Line("hold")}
 	b.readErrors(root)
 	b.readRequire(root.Table("require"))
 	if err := doc.Err(); err != nil {
 		return nil, err
 	}
 	return b, nil
+}
+
+// readPhases reads who turns the gate. Phases alone mean the samples.
+func (b *Brief) readPhases(root *quantity.Table) {
+	by := ByInstrument
+	if root.Has("phases") {
+		by = BySamples
+	}
+	b.PhaseBy = root.Choice("phase_by", []string{ByInstrument, BySamples}, by)
+	switch {
+	case b.PhaseBy == ByInstrument && by == BySamples:
+		root.Fail("phases", `found phases beside phase_by = "instrument"; allowed: phases with phase_by = "samples"`)
+		return
+	case b.PhaseBy == ByInstrument:
+		return
+	}
+	b.Phases = root.Quantities("phases", mostPhases, quantity.Angle, -4*math.Pi, 4*math.Pi)
+	if b.Phases != nil && len(b.Phases) == 0 {
+		root.Fail("phases", `found no phase; allowed: 1 to %d, as in ["0 deg", "90 deg"]`, mostPhases)
+	}
+	for i, a := range b.Phases {
+		for _, o := range b.Phases[:i] {
+			if math.Abs(math.Remainder(a-o, 2*math.Pi)) <= samePhase {
+				root.Fail("phases", "found %s, the same turn as %s; allowed: each turn once", quantity.Format(a, quantity.Angle), quantity.Format(o, quantity.Angle))
+			}
+		}
+	}
 }
 
 // beside resolves a path of the brief against the folder of the brief.
@@ -212,7 +293,7 @@ func oneOf(t *quantity.Table, keys ...string) string {
 }
 
 func readTarget(t *quantity.Table) Target {
-	target := Target{Site: t.Text("site")}
+	target := Target{Site: t.Text("site"), FreeZ: t.Choice("free_z", []string{NoFreeZ, Before, After, Both}, NoFreeZ)}
 	if t.Has("angle") && !t.Has("axis") {
 		t.Fail("angle", "found an angle without an axis; allowed: both, as in axis = [1, 0, 0] and angle = \"90 deg\"")
 		return target
@@ -261,12 +342,13 @@ func readTarget(t *quantity.Table) Target {
 func (b *Brief) readErrors(root *quantity.Table) {
 	tables := root.Tables("error", mostErrors)
 	if root.Has("hold") {
-		b.HoldNothing = root.Choice("hold", []string{"nothing"}) == "nothing"
-		if len(tables) > 0 {
+		hold := root.Choice("hold", []string{"nothing", "profile"})
+		b.HoldNothing, b.HoldProfile = hold == "nothing", hold == "profile"
+		if b.HoldNothing && len(tables) > 0 {
 			tables[0].Fail("", `found an [[error]] beside hold = "nothing"; allowed: one of the two`)
 		}
 	}
-	if len(tables) == 0 && !b.HoldNothing {
+	if len(tables) == 0 && !b.HoldNothing && !b.HoldProfile {
 		b.Defaulted = true
 		z, _ := device.Operator("Z")
 		b.Errors = []Error{
@@ -277,20 +359,34 @@ func (b *Brief) readErrors(root *quantity.Table) {
 		return
 	}
 	for i, t := range tables {
-		e := readError(t)
-		e.index = i
-		if slices.ContainsFunc(b.Errors, func(other Error) bool { return other.Name == e.Name }) {
-			t.Fail("name", "found a second error called %q; allowed: a name of its own for each error", e.Name)
+		for _, e := range readError(t) {
+			e.index = i
+			if slices.ContainsFunc(b.Errors, func(other Error) bool { return other.Name == e.Name }) {
+				t.Fail("name", "found a second error called %q; allowed: a name of its own for each error", e.Name)
+			}
+			b.Errors = append(b.Errors, e)
 		}
-		b.Errors = append(b.Errors, e)
 	}
 }
 
-func readError(t *quantity.Table) Error {
-	e := Error{key: oneOf(t, "detuning", "amplitude", "operator", "matrix", "any")}
+// readError gives the error of one table; two, for I and Q, of an offset without a quadrature.
+func readError(t *quantity.Table) []Error {
+	e := Error{key: oneOf(t, "detuning", "amplitude", "operator", "matrix", "any", "line", "quadrature_angle", "offset")}
 	e.line = t.Line(e.key)
 	size := func(f float64) float64 {
 		return rate(t.Quantity("size", quantity.Frequency, smallestSize, largestSize, f))
+	}
+	share := func(s float64) float64 { return t.Quantity("size", quantity.Ratio, smallestShare, mostShare, s) }
+	if t.Has("quadrature") {
+		e.lineQuadrature = t.Line("quadrature")
+		if e.key == "amplitude" || e.key == "offset" {
+			e.Quadrature = t.Choice("quadrature", []string{"I", "Q"})
+		} else if e.key != "" {
+			t.Fail("quadrature", "found a quadrature beside %s; allowed: only beside amplitude or offset", e.key)
+		}
+	}
+	if t.Has("parameter") && e.key != "line" && e.key != "" {
+		t.Fail("parameter", "found a parameter beside %s; allowed: only beside line", e.key)
 	}
 	natural := ""
 	switch e.key {
@@ -298,8 +394,8 @@ func readError(t *quantity.Table) Error {
 		z, _ := device.Operator("Z")
 		e.Kind, natural, e.on, e.Operator, e.Size = Static, "detuning", t.Text("detuning"), z.Scale(0.5), size(defaultStatic)
 	case "amplitude":
-		e.Kind, natural, e.on = Amplitude, "amplitude", t.Text("amplitude")
-		e.Channels, e.Size = []string{e.on}, t.Quantity("size", quantity.Ratio, smallestShare, mostShare, defaultShare)
+		e.Kind, natural, e.on = Amplitude, strings.TrimSpace("amplitude "+e.Quadrature), t.Text("amplitude")
+		e.Channels, e.Size = []string{e.on}, share(defaultShare)
 	case "operator":
 		natural = t.Choice("operator", device.OperatorNames())
 		m, _ := device.Operator(natural)
@@ -309,6 +405,17 @@ func readError(t *quantity.Table) Error {
 	case "any":
 		t.Choice("any", []string{"all"})
 		e.Kind, natural, e.Size = Any, "any static error", size(defaultAny)
+	case "line":
+		e.Kind, e.on, e.Parameter = Line, t.Text("line"), t.Text("parameter")
+		e.lineParameter = t.Line("parameter")
+		natural = lineName(e.on, e.Parameter)
+		e.Channels, e.Size, e.unsized = []string{e.on}, share(defaultParameter), !t.Has("size")
+	case "quadrature_angle":
+		e.Kind, natural, e.on = Skew, "quadrature angle", t.Text("quadrature_angle")
+		e.Channels, e.Size = []string{e.on}, t.Quantity("size", quantity.Angle, smallestSkew, largestSkew, defaultSkew)
+	case "offset":
+		e.Kind, natural, e.on = Offset, strings.TrimSpace("offset "+e.Quadrature), t.Text("offset")
+		e.Channels, e.Size = []string{e.on}, share(defaultOffset)
 	default: // complained of already; the rest is asked for so that its keys are known
 		t.Has("size")
 	}
@@ -317,8 +424,17 @@ func readError(t *quantity.Table) Error {
 		t.Fail("name", "found %q for another error; allowed: any name but detuning, amplitude, X, Y and Z, which stand for the errors of these kinds", e.Name)
 	}
 	e.Weight = t.Number("weight", 1e-6, 1e6, 1)
-	return e
+	if e.Kind != Offset || e.Quadrature != "" {
+		return []Error{e}
+	}
+	i, q := e, e
+	i.Name, i.Quadrature, i.expanded = e.Name+" I", "I", true
+	q.Name, q.Quadrature, q.expanded = e.Name+" Q", "Q", true
+	return []Error{i, q}
 }
+
+// lineName is the name of an error of a line's parameter, unless the brief gives another.
+func lineName(channel, parameter string) string { return channel + " " + parameter }
 
 // standard reports whether name is that of an error of which replay finds the margin whether declared or not, and its kind.
 func standard(name string) (kind string, ok bool) {
@@ -397,9 +513,12 @@ func (b *Brief) readRequire(t *quantity.Table) {
 	seen := map[string]bool{}
 	for _, m := range t.Tables("margin", mostMargins) {
 		margin := Margin{Error: m.Choice("error", names)}
-		if kinds[margin.Error] == Amplitude {
+		switch kinds[margin.Error] {
+		case Amplitude, Line, Offset:
 			margin.Size = m.Quantity("size", quantity.Ratio, smallestShare, mostShare)
-		} else {
+		case Skew:
+			margin.Size = m.Quantity("size", quantity.Angle, smallestSkew, largestSkew)
+		default:
 			margin.Size = rate(m.Quantity("size", quantity.Frequency, smallestSize, largestSize))
 		}
 		if seen[margin.Error] {

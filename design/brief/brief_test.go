@@ -83,7 +83,7 @@ func TestRead(t *testing.T) {
 		t.Fatal(err)
 	}
 	if b.File != "jobs/b.toml" || b.Name != "X90, held" || b.Profile != "racks/b.toml" || b.ProfilePath != "jobs/racks/b.toml" || b.DevicePath != "/somewhere/skerry.toml" ||
-		b.Span != 112 || b.Ends != Window || b.Seed != 7 || b.Starts != 12 || b.Refine || b.Defaulted || b.HoldNothing || b.Basis != (Basis{Slepian, 20}) {
+		b.Span != 112 || b.Ends != Window || b.Seed != 7 || b.Starts != 12 || b.Refine || b.Defaulted || b.HoldNothing || b.Basis != (Basis{Slepian, 20, 3}) {
 		t.Errorf("%+v", b)
 	}
 	x, _ := device.Operator("X")
@@ -128,7 +128,7 @@ func TestDefaults(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if b.Ends != Settled || b.Seed != 1 || b.Starts != 60 || !b.Refine || !b.Defaulted || b.HoldNothing || b.Basis != (Basis{Slepian, 0}) ||
+	if b.Ends != Settled || b.Seed != 1 || b.Starts != 60 || !b.Refine || !b.Defaulted || b.HoldNothing || b.Basis != (Basis{Slepian, 0, 3}) ||
 		b.Require.Infidelity != 1e-4 || b.Require.Susceptibility != 1e-3 || len(b.Require.Margins) != 0 {
 		t.Errorf("%+v", b)
 	}
@@ -146,6 +146,79 @@ func TestDefaults(t *testing.T) {
 	b, err = parse(t, "hold = 'nothing'\n"+bare+"gate = 'X180'\n[basis]\nfamily = 'samples'\n")
 	if err != nil || !b.HoldNothing || b.Defaulted || len(b.Errors) != 0 || b.Basis.Family != Samples {
 		t.Errorf("held against nothing: %+v, %v", b, err)
+	}
+}
+
+// What the width brought: kinds of error, free rotations, phases, families.
+func TestReadWide(t *testing.T) {
+	b, err := parse(t, "phases = ['0 deg', '90 deg']\n"+bare+`gate = 'X90'
+free_z = 'both'
+[basis]
+family = 'b-spline'
+degree = 4
+[[error]]
+line = 'q1 drive'
+parameter = 'lowpass[0].corner'
+[[error]]
+line = 'q1 drive'
+parameter = 'tails[0].time'
+name = 'slow tail'
+size = '20 %'
+weight = 3
+[[error]]
+amplitude = 'q1 drive'
+quadrature = 'Q'
+[[error]]
+quadrature_angle = 'q1 drive'
+[[error]]
+offset = 'q1 drive'
+[[error]]
+offset = 'q1 drive'
+quadrature = 'I'
+name = 'leak'
+size = '0.5 %'
+[[require.margin]]
+error = 'slow tail'
+size = '10 %'
+[[require.margin]]
+error = 'quadrature angle'
+size = '0.5 deg'
+[[require.margin]]
+error = 'offset Q'
+size = '0.2 %'
+`)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if b.Target.FreeZ != Both || b.PhaseBy != BySamples || len(b.Phases) != 2 || b.Phases[0] != 0 || !near(b.Phases[1], math.Pi/2) || b.Basis != (Basis{BSpline, 0, 4}) || b.Defaulted || b.HoldProfile {
+		t.Errorf("%+v", b)
+	}
+	for i, w := range []Error{
+		{Name: "q1 drive lowpass[0].corner", Kind: Line, Parameter: "lowpass[0].corner", Size: 0.05, Weight: 1},
+		{Name: "slow tail", Kind: Line, Parameter: "tails[0].time", Size: 0.2, Weight: 3},
+		{Name: "amplitude Q", Kind: Amplitude, Quadrature: "Q", Size: 0.03, Weight: 1},
+		{Name: "quadrature angle", Kind: Skew, Size: math.Pi / 180, Weight: 1},
+		{Name: "offset I", Kind: Offset, Quadrature: "I", Size: 1e-3, Weight: 1},
+		{Name: "offset Q", Kind: Offset, Quadrature: "Q", Size: 1e-3, Weight: 1},
+		{Name: "leak", Kind: Offset, Quadrature: "I", Size: 5e-3, Weight: 1},
+	} {
+		got := b.Errors[i]
+		if got.Name != w.Name || got.Kind != w.Kind || got.Parameter != w.Parameter || got.Quadrature != w.Quadrature || !near(got.Size, w.Size) || got.Weight != w.Weight || len(got.Channels) != 1 || got.Channels[0] != "q1 drive" {
+			t.Errorf("error %d: %+v, want %+v", i, got, w)
+		}
+	}
+	for i, w := range []float64{0.1, math.Pi / 360, 0.002} {
+		if got := b.Require.Margins[i]; !near(got.Size, w) {
+			t.Errorf("margin %+v, want %g", got, w)
+		}
+	}
+	b, err = parse(t, bare+"gate = 'X90'\n")
+	if err != nil || b.Target.FreeZ != NoFreeZ || b.PhaseBy != ByInstrument || b.Phases != nil {
+		t.Errorf("%+v, %v", b, err)
+	}
+	b, err = parse(t, "hold = 'profile'\n"+bare+"gate = 'X90'\n")
+	if err != nil || !b.HoldProfile || b.Defaulted || b.HoldNothing || len(b.Errors) != 0 {
+		t.Errorf("%+v, %v", b, err)
 	}
 }
 
@@ -206,7 +279,7 @@ func TestRefuses(t *testing.T) {
 		{"span = \"112 ns\"", "span = 112 ns", `5: span: found 112 ns without quotes; allowed: text and quantities in quotes (write "112 ns")`},
 		{"span = \"112 ns\"", "span = inf", `5: span: found +Inf; allowed: a time such as "112 ns", 1 ps to 1 s`},
 		{"span = \"112 ns\"", "span = \"112 MHz\"", `5: span: found "112 MHz"; allowed: a time such as "112 ns", 1 ps to 1 s ("MHz" is a unit of frequency)`},
-		{"span = \"112 ns\"", "Span = \"112 ns\"", `5: Span: found an unknown key; allowed: format, name, profile, device, span, ends, seed, starts, refine, target, basis, error, hold, require (keys are case-sensitive: write span)`},
+		{"span = \"112 ns\"", "Span = \"112 ns\"", `5: Span: found an unknown key; allowed: format, name, profile, device, span, ends, seed, starts, refine, target, phases, phase_by, basis, error, hold, require (keys are case-sensitive: write span)`},
 		{"span = \"112 ns\"", "span = \"112 ns\"\nspan = \"64 ns\"", `6: span: found this key a second time, after line 5; allowed: each key once`},
 		{"ends = \"window\"", "ends = \"end\"", `6: ends: found "end"; allowed: "settled" or "window"`},
 		{"seed = 7", "seed = -7", `7: seed: found -7; allowed: a whole number, 0 to 9223372036854775807`},
@@ -214,13 +287,13 @@ func TestRefuses(t *testing.T) {
 		{"starts = 12", "starts = 1_000_000_000", `8: starts: found 1000000000; allowed: a whole number, 1 to 100000`},
 		{"refine = false", "refine = \"no\"", `9: refine: found "no"; allowed: true or false`},
 		{"refine = false", "refine = no", `9: refine: found no; allowed: true or false where it answers a question, and text in quotes`},
-		{"refine = false", "hold = \"everything\"", `9: hold: found "everything"; allowed: "nothing"`},
+		{"refine = false", "hold = \"everything\"", `9: hold: found "everything"; allowed: "nothing" or "profile"`},
 		{"refine = false", "hold = \"nothing\"", `19: error[0]: found an [[error]] beside hold = "nothing"; allowed: one of the two`},
 		// The target.
-		{"[target]", "[tarket]", `11: tarket: found an unknown key; allowed: format, name, profile, device, span, ends, seed, starts, refine, target, basis, error, hold, require (did you mean target?)`},
+		{"[target]", "[tarket]", `11: tarket: found an unknown key; allowed: format, name, profile, device, span, ends, seed, starts, refine, target, phases, phase_by, basis, error, hold, require (did you mean target?)`},
 		{"gate = \"X90\"", "gate = \"x90\"", `13: target.gate: found "x90"; allowed: "X90", "-X90", "X180", "Y90", "-Y90", "Y180", "Z90", "Z180", "H", "S", "T" or "identity" (did you mean "X90"?)`},
 		{"gate = \"X90\"", "", `11: target: found none of gate, axis or matrix; allowed: exactly one of them`},
-		{"gate = \"X90\"", "Gate = \"X90\"", `13: target.Gate: found an unknown key; allowed: site, angle, gate, axis, matrix (keys are case-sensitive: write gate)`},
+		{"gate = \"X90\"", "Gate = \"X90\"", `13: target.Gate: found an unknown key; allowed: site, free_z, angle, gate, axis, matrix (keys are case-sensitive: write gate)`},
 		{"gate = \"X90\"", "gate = \"X90\"\nmatrix = [[1, 0], [0, 1]]", `14: target.matrix: found matrix beside gate; allowed: exactly one of gate, axis or matrix`},
 		{"gate = \"X90\"", "gate = \"X90\"\naxis = [0, 0, 1]\nangle = \"90 deg\"", `14: target.axis: found axis beside gate; allowed: exactly one of gate, axis or matrix`},
 		{"gate = \"X90\"", "gate = \"X90\"\nangle = \"90 deg\"", `14: target.angle: found an angle without an axis; allowed: both, as in axis = [1, 0, 0] and angle = "90 deg"`},
@@ -235,12 +308,14 @@ func TestRefuses(t *testing.T) {
 		{"gate = \"X90\"", "matrix = [[1, 0, 0], [0, 1, 0], [0, 0, 1]]", `13: target.matrix: found 3 rows; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
 		// The basis.
 		{"coefficients = 20", "coefficients = 1000000", `17: basis.coefficients: found 1000000; allowed: a whole number, 1 to 65536`},
-		{"\"slepian\"", "\"fourier\"", `16: basis.family: found "fourier"; allowed: "slepian" or "samples"`},
+		{"\"slepian\"", "\"splines\"", `16: basis.family: found "splines"; allowed: "slepian", "fourier", "tapered", "b-spline", "samples" or "best"`},
+		{"\"slepian\"", "\"b-spline\"\ndegree = 6", `17: basis.degree: found 6; allowed: a whole number, 1 to 5`},
+		{"\"slepian\"", "\"bspline\"", `16: basis.family: found "bspline"; allowed: "slepian", "fourier", "tapered", "b-spline", "samples" or "best" (did you mean "b-spline"?)`},
 		{"\"slepian\"", "\"samples\"", `17: basis.coefficients: found 20 with family = "samples"; allowed: no number here, as there is one coefficient for each sample`},
 		// Errors.
-		{"detuning = \"q1\"\n", "", `19: error[0]: found none of detuning, amplitude, operator, matrix or any; allowed: exactly one of them`},
-		{"detuning = \"q1\"\n", "detunning = \"q1\"\n", `20: error[0].detunning: found an unknown key; allowed: detuning, amplitude, operator, matrix, any, size, name, weight (did you mean detuning?)`},
-		{"detuning = \"q1\"\n", "detuning = \"q1\"\nany = \"all\"\n", `21: error[0].any: found any beside detuning; allowed: exactly one of detuning, amplitude, operator, matrix or any`},
+		{"detuning = \"q1\"\n", "", `19: error[0]: found none of detuning, amplitude, operator, matrix, any, line, quadrature_angle or offset; allowed: exactly one of them`},
+		{"detuning = \"q1\"\n", "detunning = \"q1\"\n", `20: error[0].detunning: found an unknown key; allowed: detuning, amplitude, operator, matrix, any, line, quadrature_angle, offset, quadrature, parameter, size, name, weight (did you mean detuning?)`},
+		{"detuning = \"q1\"\n", "detuning = \"q1\"\nany = \"all\"\n", `21: error[0].any: found any beside detuning; allowed: exactly one of detuning, amplitude, operator, matrix, any, line, quadrature_angle or offset`},
 		{"size = \"1 MHz\"", "size = \"1 %\"", `21: error[0].size: found "1 %"; allowed: a frequency such as "40 MHz", 1 Hz to 1 GHz ("%" is a unit of share)`},
 		{"size = \"1 MHz\"", "size = \"0 MHz\"", `21: error[0].size: found "0 MHz"; allowed: a frequency such as "40 MHz", 1 Hz to 1 GHz`},
 		{"weight = 2", "weight = 0", `22: error[0].weight: found 0; allowed: a number, 1e-06 to 1e+06`},
@@ -259,6 +334,27 @@ func TestRefuses(t *testing.T) {
 		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "\"X\"", `33: error[3].matrix: found "X"; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
 		{"any = \"all\"", "any = \"one-body\"", `36: error[4].any: found "one-body"; allowed: "all"`},
 		{"any = \"all\"", "any = \"all\"" + strings.Repeat("\n[[error]]\nany = \"all\"", 16), `19: error: found 21 tables; allowed: at most 16`},
+		{"any = \"all\"", "line = \"q1 drive\"", `35: error[4].parameter: found nothing; allowed: a text in quotes`},
+		{"any = \"all\"", "line = \"q1 drive\"\nparameter = 1", `37: error[4].parameter: found 1; allowed: a text in quotes`},
+		{"any = \"all\"", "line = \"q1 drive\"\nparameter = \"delay\"\nsize = \"1 MHz\"", `38: error[4].size: found "1 MHz"; allowed: a share such as "1.5 %", 1 ppm to 50 % ("MHz" is a unit of frequency)`},
+		{"any = \"all\"", "line = \"q1 drive\"\nparameter = \"delay\"\nquadrature = \"I\"", `38: error[4].quadrature: found a quadrature beside line; allowed: only beside amplitude or offset`},
+		{"any = \"all\"", "any = \"all\"\nparameter = \"delay\"", `37: error[4].parameter: found a parameter beside any; allowed: only beside line`},
+		{"any = \"all\"", "amplitude = \"q1 drive\"\nquadrature = \"i\"", `37: error[4].quadrature: found "i"; allowed: "I" or "Q" (did you mean "I"?)`},
+		{"any = \"all\"", "amplitude = \"q1 drive\"\nquadrature = \"I\"\nname = \"amplitude\"", `38: error[4].name: found "amplitude" for another error; allowed: any name but detuning, amplitude, X, Y and Z, which stand for the errors of these kinds`},
+		{"any = \"all\"", "quadrature_angle = \"q1 drive\"\nsize = \"31 deg\"", `37: error[4].size: found "31 deg"; allowed: an angle such as "90 deg", 5.72958e-05 deg to 30 deg`},
+		{"any = \"all\"", "offset = \"q1 drive\"\nsize = \"1 mV\"", `37: error[4].size: found "1 mV"; allowed: a share such as "1.5 %", 1 ppm to 50 % ("mV" is a unit of voltage)`},
+		{"any = \"all\"", "offset = \"q1 drive\"\n[[error]]\noffset = \"q1 drive\"\nquadrature = \"Q\"", `37: error[5].name: found a second error called "offset Q"; allowed: a name of its own for each error`},
+		{"any = \"all\"", "offset = 1", `36: error[4].offset: found 1; allowed: a text in quotes`},
+		// Free rotations and phases.
+		{"gate = \"X90\"", "gate = \"X90\"\nfree_z = true", `14: target.free_z: found true; allowed: "none", "before", "after" or "both"`},
+		{"refine = false", "phase_by = \"samples\"", `1: phases: found nothing; allowed: an array of at most 64 texts, each an angle such as "90 deg"`},
+		{"refine = false", "phase_by = \"hand\"", `9: phase_by: found "hand"; allowed: "instrument" or "samples"`},
+		{"refine = false", "phase_by = \"instrument\"\nphases = [\"0 deg\"]", `10: phases: found phases beside phase_by = "instrument"; allowed: phases with phase_by = "samples"`},
+		{"refine = false", "phases = []", `9: phases: found no phase; allowed: 1 to 64, as in ["0 deg", "90 deg"]`},
+		{"refine = false", "phases = [0, 90]", `9: phases: found 0 as element 0; allowed: an angle such as "90 deg", -720 deg to 720 deg`},
+		{"refine = false", "phases = [\"0 deg\", \"90 ns\"]", `9: phases: found "90 ns" as element 1; allowed: an angle such as "90 deg", -720 deg to 720 deg ("ns" is a unit of time)`},
+		{"refine = false", "phases = [\"-90 deg\", \"0 deg\", \"270 deg\"]", `9: phases: found 270 deg, the same turn as -90 deg; allowed: each turn once`},
+		{"refine = false", "phases = [" + strings.Repeat("\"1 deg\", ", 65) + "]", `9: phases: found an array of 65; allowed: an array of at most 64 texts, each an angle such as "90 deg"`},
 		// Requirements.
 		{"infidelity = 1e-6", "infidelity = \"1e-6\"", `39: require.infidelity: found "1e-6"; allowed: a number, 1e-12 to 1 (this figure has no unit: write it without quotes)`},
 		{"infidelity = 1e-6", "infidelity = 0", `39: require.infidelity: found 0; allowed: a number, 1e-12 to 1`},

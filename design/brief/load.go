@@ -3,6 +3,7 @@ package brief
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"holdfast/design/device"
@@ -31,13 +32,22 @@ func LoadAll(path string) (*Brief, *hardware.Profile, *device.Device, error) {
 	if err != nil {
 		return nil, nil, nil, err
 	}
-	if fault := b.against(p, d); fault != nil {
-		return nil, nil, nil, fault
+	if err := b.Complete(p, d); err != nil {
+		return nil, nil, nil, err
 	}
 	return b, p, d, nil
 }
 
-// against checks the brief and the device against what they refer to, and fills in the channels of a defaulted amplitude error.
+// Complete checks the brief and the device against what they refer to, as LoadAll does, and fills in what only the profile knows: the
+// channels of a defaulted amplitude error, the size of an error of a line's parameter, the errors of hold = "profile",
+// and that a baseband channel has an offset of one kind only. Errors are an *quantity.Error. A second call changes nothing.
+func (b *Brief) Complete(p *hardware.Profile, d *device.Device) error {
+	if fault := b.against(p, d); fault != nil {
+		return fault
+	}
+	return nil
+}
+
 func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 	var channels, sites, driven []string
 	for _, c := range p.Channels {
@@ -46,12 +56,27 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 	for _, s := range d.Sites {
 		sites = append(sites, s.Name)
 	}
+	uses := func(key, channel string, line int, kind string) *quantity.Error {
+		e := known(channel, channels, "a channel of "+p.File)
+		if i, _ := p.Channel(channel); e == nil && (p.Channels[i].Kind == hardware.Baseband) != (kind == hardware.Baseband) {
+			e = &quantity.Error{Found: fmt.Sprintf("%q, a %s channel", channel, p.Channels[i].Kind),
+				Allowed: "a " + kind + " channel (a [[drive]] takes a quadrature channel, a [[bias]] a baseband one)"}
+		}
+		if e != nil {
+			e.File, e.Line, e.Key = d.File, line, key
+		}
+		driven = append(driven, channel)
+		return e
+	}
 	for i, drive := range d.Drives {
-		if e := known(drive.Channel, channels, "a channel of "+p.File); e != nil {
-			e.File, e.Line, e.Key = d.File, drive.Line, fmt.Sprintf("drive[%d].channel", i)
+		if e := uses(fmt.Sprintf("drive[%d].channel", i), drive.Channel, drive.Line, hardware.Quadrature); e != nil {
 			return e
 		}
-		driven = append(driven, drive.Channel)
+	}
+	for i, bias := range d.Biases {
+		if e := uses(fmt.Sprintf("bias[%d].channel", i), bias.Channel, bias.Line, hardware.Baseband); e != nil {
+			return e
+		}
 	}
 	if e := known(b.Target.Site, sites, "a site of "+d.File); e != nil {
 		e.File, e.Line, e.Key = b.File, b.lines.site, "target.site"
@@ -59,21 +84,116 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 	}
 	for i := range b.Errors {
 		e := &b.Errors[i]
-		var fault *quantity.Error
-		switch {
-		case e.key == "detuning":
-			fault = known(e.on, sites, "a site of "+d.File)
-		case e.key == "amplitude":
-			fault = known(e.on, driven, "a channel that drives a site of "+d.File)
-		case e.Kind == Amplitude: // the default: whatever drives the device
-			e.Channels = driven
-		}
-		if fault != nil {
-			fault.File, fault.Line, fault.Key = b.File, e.line, fmt.Sprintf("error[%d].%s", e.index, e.key)
+		if fault := b.errorOn(e, p, d, sites, driven); fault != nil {
+			fault.File = b.File
+			if fault.Key == "" {
+				fault.Line, fault.Key = e.line, e.key
+			}
+			fault.Key = fmt.Sprintf("error[%d].%s", e.index, fault.Key)
 			return fault
 		}
 	}
+	// Of an offset of both quadratures a baseband channel has one.
+	b.Errors = slices.DeleteFunc(b.Errors, func(e Error) bool {
+		i, ok := p.Channel(e.on)
+		return e.expanded && e.Quadrature == "Q" && ok && p.Channels[i].Kind == hardware.Baseband
+	})
+	if fault := b.holdProfile(p, driven); fault != nil {
+		return fault
+	}
 	return b.spanOn(p, driven)
+}
+
+// errorOn checks one error against profile and device, and completes it. A complaint without a key is about the key that made the error.
+func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, sites, driven []string) *quantity.Error {
+	switch {
+	case e.key == "detuning":
+		return known(e.on, sites, "a site of "+d.File)
+	case e.Kind == Amplitude && e.key == "": // the default: whatever drives the device
+		e.Channels = driven
+		return nil
+	case len(e.Channels) == 0 || e.key == "":
+		return nil
+	}
+	if fault := known(e.on, driven, "a channel that drives a site of "+d.File); fault != nil {
+		return fault
+	}
+	i, _ := p.Channel(e.on)
+	c := &p.Channels[i]
+	if c.Kind == hardware.Baseband {
+		if e.Kind == Skew {
+			return &quantity.Error{Found: fmt.Sprintf("%q, a baseband channel", e.on), Allowed: "a quadrature channel"}
+		}
+		if e.Quadrature != "" && !e.expanded {
+			return &quantity.Error{Line: e.lineQuadrature, Key: "quadrature", Found: fmt.Sprintf("%q of %q, a baseband channel", e.Quadrature, e.on),
+				Allowed: "no quadrature there, as it has one converter"}
+		}
+	}
+	switch e.Kind {
+	case Offset:
+		if c.Line.DC() == 0 {
+			return &quantity.Error{Found: fmt.Sprintf("%q, of which the line passes nothing steady", e.on), Allowed: "a channel whose line passes an offset"}
+		}
+	case Line:
+		q, ok := c.Parameter(e.Parameter)
+		if !ok {
+			names := make([]string, len(c.Parameters))
+			for i, q := range c.Parameters {
+				names[i] = q.Name
+			}
+			fault := known(e.Parameter, names, fmt.Sprintf("a parameter of the line of %q", e.on))
+			if len(names) == 0 {
+				fault.Allowed = fmt.Sprintf("none, as the line of %q has no parameter", e.on)
+			}
+			fault.Line, fault.Key = e.lineParameter, "parameter"
+			return fault
+		}
+		if q.Refused != "" {
+			return &quantity.Error{Line: e.lineParameter, Key: "parameter", Found: fmt.Sprintf("%q of %q, to which nothing can be held: %s", q.Name, e.on, q.Refused),
+				Allowed: "a parameter on which what arrives depends smoothly"}
+		}
+		if e.unsized && q.KnownTo > 0 {
+			e.Size = q.KnownTo
+		}
+		e.unsized = false
+	}
+	return nil
+}
+
+// holdProfile adds an error for each parameter of the driving lines that is known to a share, unless the brief has one of its own.
+func (b *Brief) holdProfile(p *hardware.Profile, driven []string) *quantity.Error {
+	if !b.HoldProfile {
+		return nil
+	}
+	fail := func(format string, args ...any) *quantity.Error {
+		return &quantity.Error{File: b.File, Line: b.lines.hold, Key: "hold", Found: `"profile", and ` + fmt.Sprintf(format, args...),
+			Allowed: `"nothing", or "profile" with a known_to in the [channel.line] of a channel that drives the device`}
+	}
+	found := false
+	for _, name := range driven {
+		i, _ := p.Channel(name)
+		for _, q := range p.Channels[i].Parameters {
+			if !(q.KnownTo > 0) {
+				continue
+			}
+			found = true
+			if slices.ContainsFunc(b.Errors, func(e Error) bool { return e.Kind == Line && e.Channels[0] == name && e.Parameter == q.Name }) {
+				continue
+			}
+			if q.Refused != "" {
+				return fail("nothing can be held to %q of %q: %s", q.Name, name, q.Refused)
+			}
+			e := Error{Name: lineName(name, q.Name), Kind: Line, Channels: []string{name}, Parameter: q.Name, Size: q.KnownTo, Weight: 1, on: name, index: -1}
+			if slices.ContainsFunc(b.Errors, func(other Error) bool { return other.Name == e.Name }) {
+				return fail("%q already is the name of another error", e.Name)
+			}
+			b.Errors = append(b.Errors, e)
+		}
+	}
+	if !found {
+		return fail("no parameter of these lines is said to be known to any share")
+	}
+	return nil
 }
 
 // known says that a name is not in the list, or nothing.
@@ -123,9 +243,12 @@ func (b *Brief) spanOn(p *hardware.Profile, driven []string) *quantity.Error {
 	for _, name := range driven {
 		i, _ := p.Channel(name)
 		free := int(n) - p.Channels[i].GuardLead - p.Channels[i].GuardTrail
+		if p.Channels[i].ZeroMean {
+			free--
+		}
 		if b.Basis.Coefficients > max(free, 0) {
 			return &quantity.Error{File: b.File, Line: b.lines.coefficients, Key: "basis.coefficients", Found: fmt.Sprint(b.Basis.Coefficients),
-				Allowed: fmt.Sprintf("at most %d, the samples of %q in this span that are not guards", max(free, 0), name)}
+				Allowed: fmt.Sprintf("at most %d, the samples of %q in this span that are free", max(free, 0), name)}
 		}
 	}
 	return nil

@@ -14,6 +14,7 @@ type Device struct {
 	Name   string
 	Sites  []Site
 	Drives []Drive
+	Biases []Bias
 }
 
 // Site is one spin.
@@ -38,12 +39,20 @@ type Drive struct {
 	Line          int // of the channel's key in the device file, for messages
 }
 
+// Bias says which baseband channel of the hardware profile turns which site about which axis: H += u O/2, with u what arrives and O the Axis.
+type Bias struct {
+	Site, Channel string
+	Axis          string // X, Y or Z
+	Line          int    // of the channel's key in the device file, for messages
+}
+
 // The ranges of a site's figures, in the units of quantity.Parse.
 const (
 	lowestFrequency, highestFrequency = 1e-9, 1e4 // 1 Hz to 10 THz
 	shortestLife, longestLife         = 1, 1e15   // 1 ns to 1e6 s
 	largestDetuning                   = 1         // 1 GHz
 	mostEntries                       = 64        // of one list, before the loader looks at it
+	mostBiases                        = 8
 )
 
 // oneSpin says what this version leaves out.
@@ -63,7 +72,11 @@ const oneSpin = "this version plays one spin"
 //	T2 = "60 us"              # optional; at most 2 T1
 //	[[drive]]
 //	site = "q1"
-//	channel = "q1 drive"      # a channel of the hardware profile
+//	channel = "q1 drive"      # a quadrature channel of the hardware profile
+//	[[bias]]                  # up to 8; at least one drive or bias
+//	site = "q1"
+//	channel = "q1 flux"       # a baseband channel of the hardware profile; its own for each
+//	axis = "Z"                # or "X", "Y"; default "Z"
 func Load(path string) (*Device, error) {
 	doc, err := quantity.ReadFile(path)
 	if err != nil {
@@ -92,8 +105,11 @@ func read(doc *quantity.Document) (*Device, error) {
 			t.Fail("", "found a second drive; allowed: one [[drive]] (%s)", oneSpin)
 		}
 	}
-	if len(d.Drives) == 0 {
-		root.Fail("drive", "found none; allowed: one [[drive]], which names the site and the channel that drives it (%s)", oneSpin)
+	for _, t := range root.Tables("bias", mostBiases) {
+		d.Biases = append(d.Biases, readBias(t, d))
+	}
+	if len(d.Drives)+len(d.Biases) == 0 {
+		root.Fail("drive", "found none, and no bias; allowed: one [[drive]], which names the site and the channel that drives it, or a [[bias]] (%s)", oneSpin)
 	}
 	if err := doc.Err(); err != nil {
 		return nil, err
@@ -122,17 +138,38 @@ func readSite(t *quantity.Table) Site {
 
 func readDrive(t *quantity.Table, sites []Site) Drive {
 	d := Drive{Site: t.Text("site"), Channel: t.Text("channel"), Line: t.Line("channel")}
+	checkSite(t, d.Site, sites)
+	return d
+}
+
+func readBias(t *quantity.Table, d *Device) Bias {
+	b := Bias{Site: t.Text("site"), Channel: t.Text("channel"), Axis: t.Choice("axis", OperatorNames(), "Z"), Line: t.Line("channel")}
+	checkSite(t, b.Site, d.Sites)
+	for _, o := range d.Drives {
+		if o.Channel == b.Channel {
+			t.Fail("channel", "found %q, which a [[drive]] has; allowed: a channel of its own", b.Channel)
+		}
+	}
+	for _, o := range d.Biases {
+		if o.Channel == b.Channel {
+			t.Fail("channel", "found %q in a second [[bias]]; allowed: a channel of its own", b.Channel)
+		}
+	}
+	return b
+}
+
+// checkSite complains of a site that the device does not have.
+func checkSite(t *quantity.Table, name string, sites []Site) {
 	var names []string
 	for _, s := range sites {
-		if s.Name == d.Site {
-			return d
+		if s.Name == name {
+			return
 		}
 		names = append(names, fmt.Sprintf("%q", s.Name))
 	}
 	if len(names) > 0 {
-		t.Fail("site", "found %q; allowed: a site of this device, %s", d.Site, strings.Join(names, ", "))
+		t.Fail("site", "found %q; allowed: a site of this device, %s", name, strings.Join(names, ", "))
 	}
-	return d
 }
 
 // Dim gives the dimension of the device's space, the product of the levels of its sites.
@@ -148,6 +185,19 @@ func (d *Device) Dim() int {
 func (d *Device) Static() Matrix {
 	z, _ := Operator("Z")
 	return z.Scale(complex(d.Sites[0].Detuning/2, 0))
+}
+
+// BiasOperator gives what bias number bias multiplies, so that H += u times it: half the operator of its axis.
+func (d *Device) BiasOperator(bias int) Matrix {
+	o, _ := Operator(d.Biases[bias].Axis)
+	return o.Scale(0.5)
+}
+
+// ShiftOperator gives what a drive-induced shift of a site multiplies, Z/2, as a detuning does: H += kappa |u|^2 Z/2 with kappa in rad/ns and u
+// in shares of full scale.
+func (d *Device) ShiftOperator() Matrix {
+	z, _ := Operator("Z")
+	return z.Scale(0.5)
 }
 
 // Operators gives what the two quadratures of drive number drive multiply, so that H += u_I ops[0] + u_Q ops[1]: X/2, and Y/2 with a

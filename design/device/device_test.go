@@ -26,6 +26,15 @@ T2 = "80 us"
 [[drive]]
 site = "q1"
 channel = "q1 drive"
+
+[[bias]]
+site = "q1"
+channel = "q1 flux"
+
+[[bias]]
+site = "q1"
+channel = "q1 side"
+axis = "X"
 `
 
 func TestLoad(t *testing.T) {
@@ -45,6 +54,12 @@ func TestLoad(t *testing.T) {
 	}
 	if got, want := d.Drives[0], (Drive{"q1", "q1 drive", 15}); got != want {
 		t.Errorf("drive %+v, want %+v", got, want)
+	}
+	if len(d.Biases) != 2 || d.Biases[0] != (Bias{"q1", "q1 flux", "Z", 19}) || d.Biases[1] != (Bias{"q1", "q1 side", "X", 23}) {
+		t.Errorf("biases %+v", d.Biases)
+	}
+	if z, x := (Matrix{2, []complex128{0.5, 0, 0, -0.5}}), (Matrix{2, []complex128{0, 0.5, 0.5, 0}}); !near(d.BiasOperator(0), z, 0) || !near(d.BiasOperator(1), x, 0) || !near(d.ShiftOperator(), z, 0) {
+		t.Errorf("operators %v, %v, %v", d.BiasOperator(0), d.BiasOperator(1), d.ShiftOperator())
 	}
 	// H0 = 2 pi f Z/2.
 	want := Matrix{2, []complex128{complex(-math.Pi*0.00025, 0), 0, 0, complex(math.Pi*0.00025, 0)}}
@@ -66,6 +81,14 @@ func TestDefaults(t *testing.T) {
 	}
 }
 
+// A device that only biases turn.
+func TestBiasAlone(t *testing.T) {
+	d := mustRead(t, "format = 1\nname = 'd'\n[[site]]\nname = 'q1'\n[[bias]]\nsite = 'q1'\nchannel = 'c'\naxis = 'Y'\n")
+	if y := (Matrix{2, []complex128{0, -0.5i, 0.5i, 0}}); len(d.Drives) != 0 || len(d.Biases) != 1 || !near(d.BiasOperator(0), y, 0) {
+		t.Errorf("%+v", d)
+	}
+}
+
 func mustRead(t *testing.T, text string) *Device {
 	t.Helper()
 	doc, err := quantity.ParseDocument("d.toml", []byte(text))
@@ -84,7 +107,7 @@ func TestRefuses(t *testing.T) {
 	for _, c := range []struct{ old, new, want string }{
 		{"format = 1", "format = 2", "d.toml:1: format: found 2; allowed: 1, and nothing else"},
 		{"format = 1", "", "d.toml:1: format: found nothing; allowed: 1, and nothing else"},
-		{`name = "Skerry"`, `Name = "Skerry"`, `d.toml:2: Name: found an unknown key; allowed: format, name, site, drive (keys are case-sensitive: write name)`},
+		{`name = "Skerry"`, `Name = "Skerry"`, `d.toml:2: Name: found an unknown key; allowed: format, name, site, drive, bias (keys are case-sensitive: write name)`},
 		{`name = "Skerry"`, `name = 7`, `d.toml:2: name: found 7; allowed: a text in quotes`},
 		{"levels = 2", "levels = 3", "d.toml:6: site[0].levels: found 3; allowed: 2 (this version plays one spin)"},
 		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 16"},
@@ -98,14 +121,22 @@ func TestRefuses(t *testing.T) {
 		{`T1 = "40 us"`, `t1 = "40 us"`, `d.toml:10: site[0].t1: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning (keys are case-sensitive: write T1)`},
 		{`T2 = "80 us"`, `T2 = "80.1 us"`, "d.toml:11: site[0].T2: found 80.1 us; allowed: at most twice T1, 80 us"},
 		{`T2 = "80 us"`, "T2 = \"80 us\"\nT2 = \"80 us\"", "d.toml:12: site[0].T2: found this key a second time, after line 11; allowed: each key once"},
-		{"[[site]]", "[other]\nx = 1\n[[site]]", "d.toml:4: other: found an unknown key; allowed: format, name, site, drive"},
+		{"[[site]]", "[other]\nx = 1\n[[site]]", "d.toml:4: other: found an unknown key; allowed: format, name, site, drive, bias"},
 		{"[[drive]]", "[[site]]\nname = \"q2\"\n[[drive]]", "d.toml:13: site[1]: found a second site; allowed: one [[site]] (this version plays one spin)"},
 		{"[[drive]]", "[[drive]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n[[drive]]", "d.toml:16: drive[1]: found a second drive; allowed: one [[drive]] (this version plays one spin)"},
-		{"[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"", "", "d.toml:1: drive: found none; allowed: one [[drive]], which names the site and the channel that drives it (this version plays one spin)"},
-		{"[[drive]]\nsite", "[[drives]]\nsite", "d.toml:13: drives: found an unknown key; allowed: format, name, site, drive (did you mean drive?)"},
+		{"[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 side\"\naxis = \"X\"\n", "",
+			"d.toml:1: drive: found none, and no bias; allowed: one [[drive]], which names the site and the channel that drives it, or a [[bias]] (this version plays one spin)"},
+		{`"q1 flux"`, `"q1 drive"`, `d.toml:19: bias[0].channel: found "q1 drive", which a [[drive]] has; allowed: a channel of its own`},
+		{`"q1 side"`, `"q1 flux"`, `d.toml:23: bias[1].channel: found "q1 flux" in a second [[bias]]; allowed: a channel of its own`},
+		{`axis = "X"`, `axis = "x"`, `d.toml:24: bias[1].axis: found "x"; allowed: "X", "Y" or "Z" (did you mean "X"?)`},
+		{`axis = "X"`, `axes = "X"`, `d.toml:24: bias[1].axes: found an unknown key; allowed: site, channel, axis (did you mean axis?)`},
+		{"[[bias]]\nsite = \"q1\"", "[[bias]]\nsite = \"q3\"", `d.toml:18: bias[0].site: found "q3"; allowed: a site of this device, "q1"`},
+		{`channel = "q1 flux"`, ``, `d.toml:17: bias[0].channel: found nothing; allowed: a text in quotes`},
+		{"[[bias]]\nsite = \"q1\"", strings.Repeat("[[bias]]\n", 8), `d.toml:17: bias: found 9 tables; allowed: at most 8`},
+		{"[[drive]]\nsite", "[[drives]]\nsite", "d.toml:13: drives: found an unknown key; allowed: format, name, site, drive, bias (did you mean drive?)"},
 		{`site = "q1"`, `site = "q2"`, `d.toml:14: drive[0].site: found "q2"; allowed: a site of this device, "q1"`},
 		{`channel = "q1 drive"`, ``, `d.toml:13: drive[0].channel: found nothing; allowed: a text in quotes`},
-		{`channel = "q1 drive"`, "channel = \"q1 drive\"\n[[coupling]]\n", `d.toml:16: coupling: found an unknown key; allowed: format, name, site, drive`},
+		{`channel = "q1 drive"`, "channel = \"q1 drive\"\n[[coupling]]\n", `d.toml:16: coupling: found an unknown key; allowed: format, name, site, drive, bias`},
 		{`"q1 drive"`, `q1 drive`, `d.toml:15: drive[0].channel: found q1 drive without quotes; allowed: text and quantities in quotes (write "q1 drive")`},
 	} {
 		if !strings.Contains(whole, c.old) {

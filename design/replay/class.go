@@ -15,14 +15,26 @@ import (
 const (
 	perMHz     = 2 * math.Pi * 1e-3 // rad/ns
 	perPercent = 0.01
+	perDegree  = math.Pi / 180 // rad
 
-	searchEnd = 50.0 // MHz or %: how far margins are searched
+	searchEnd = 50.0 // MHz, % or deg: how far margins are searched
 )
+
+// unitOf gives the unit of an error's sizes, and the lambda of one of it.
+func unitOf(kind string) (name string, lambda float64) {
+	switch kind {
+	case "amplitude", "line":
+		return "%", perPercent
+	case "skew":
+		return "deg", perDegree
+	}
+	return "MHz", perMHz
+}
 
 // A study is an error class while it is judged.
 type study struct {
 	class Class
-	one   *probed   // static and amplitude
+	one   *probed   // all kinds but any
 	all   []*probed // any: along an orthogonal basis of the traceless operators
 	sides []*probed // any: the fixed directions besides the basis
 }
@@ -30,7 +42,7 @@ type study struct {
 // A probed is a probe with what was found along it. Classes that mean the same error share one.
 type probed struct {
 	*probe
-	unit      float64 // lambda for 1 MHz or 1 %
+	unit      float64 // lambda for 1 MHz, 1 % or 1 degree
 	strength  float64 // sqrt(T int |V|^2 dt) of the whole V: how far lambda = 1 turns at most
 	onCode    float64 // the same of V cut to the code space and made traceless there
 	left      []complex128
@@ -120,35 +132,41 @@ func basis(n int) (ops [][]complex128, names []string) {
 // the values of the error of the same name in like, or, without, over a range of their own.
 func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([]Error, error) {
 	var shared []*probed
-	find := func(p *probe) *probed {
+	find := func(p *probe, kind string) *probed {
+		_, unit := unitOf(kind)
 		for _, o := range shared {
-			if o.same(p) {
+			if o.unit == unit && o.same(p) {
 				return o
 			}
 		}
-		o := &probed{probe: p, unit: perMHz}
-		if p.static == nil {
-			o.unit = perPercent
+		o := &probed{probe: p, unit: unit}
+		if p.slope == nil {
+			e.weigh(o, e.plans[0])
 		}
-		e.weigh(o)
 		shared = append(shared, o)
 		return o
 	}
 	var studies []study
 	ops, names := [][]complex128(nil), []string(nil)
-	for _, c := range e.m.classes() {
+	classes := e.m.classes()
+	for i := range classes {
+		c := classes[i]
 		s := study{class: c}
 		switch c.Kind {
 		case "static":
-			s.one = find(newStatic(c.Operator, e.dim))
+			s.one = find(newStatic(c.Operator, e.dim), c.Kind)
 		case "amplitude":
-			s.one = find(e.newAmplitude(c.Channels))
+			s.one = find(e.newAmplitude(c.Channels, c.Quadrature), c.Kind)
+		case "skew":
+			s.one = find(e.newSkew(c.Channels), c.Kind)
+		case "line":
+			s.one = find(e.newLineError(&classes[i]), c.Kind)
 		case "any":
 			if ops == nil {
 				ops, names = basis(e.dim)
 			}
 			for _, op := range ops {
-				s.all = append(s.all, find(newStatic(op, e.dim)))
+				s.all = append(s.all, find(newStatic(op, e.dim), c.Kind))
 			}
 			if e.dim == 2 {
 				// With the axes these are the fourteen directions from a cube's middle to its faces and corners, up to sign.
@@ -159,13 +177,15 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 						op[k] = (ops[0][k] + complex(y, 0)*ops[1][k] + complex(z, 0)*ops[2][k]) / complex(math.Sqrt(3), 0)
 					}
 					o := &probed{probe: newStatic(op, 2), unit: perMHz}
-					e.weigh(o)
+					e.weigh(o, nil)
 					s.sides = append(s.sides, o)
 				}
 			}
 		}
 		studies = append(studies, s)
 	}
+	// Errors of lines bring plans of their own: one after another below, so that memory does not grow with their number.
+	shared = slices.DeleteFunc(shared, func(o *probed) bool { return o.slope != nil })
 	if err := e.differentiate(ctx, shared); err != nil {
 		return nil, err
 	}
@@ -178,9 +198,21 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 	}
 	var list []Error
 	for _, s := range studies {
-		r := Error{Name: s.class.Name, Kind: s.class.Kind, Held: s.class.Held, Unit: "MHz"}
-		if s.class.Kind == "amplitude" {
-			r.Unit = "%"
+		r := Error{Name: s.class.Name, Kind: s.class.Kind, Held: s.class.Held}
+		r.Unit, _ = unitOf(r.Kind)
+		if s.one != nil && s.one.slope != nil {
+			p, err := e.plan(ctx, s.one.probe, 0)
+			if err != nil {
+				return nil, err
+			}
+			e.weigh(s.one, p)
+			only := []*probed{s.one}
+			if err := e.differentiate(ctx, only); err != nil {
+				return nil, err
+			}
+			if err := e.search(ctx, only, nominal, threshold, searchEnd); err != nil {
+				return nil, err
+			}
 		}
 		if s.one != nil {
 			r.Susceptibility = s.one.share()
@@ -212,6 +244,9 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 		if r.Curve, err = e.curve(ctx, &s, values); err != nil {
 			return nil, err
 		}
+		if s.one != nil {
+			s.one.plans = plans{}
+		}
 		list = append(list, r)
 	}
 	return list, nil
@@ -223,8 +258,8 @@ func (e *engine) nominal(ctx context.Context) (float64, error) {
 	return f[0], err
 }
 
-// weigh fills the strengths of a probe.
-func (e *engine) weigh(o *probed) {
+// weigh fills the strengths of a probe; p is a plan of it, and is not needed for a static one.
+func (e *engine) weigh(o *probed, p *plan) {
 	n, d := e.dim, len(e.m.CodeSpace)
 	block := make([]complex128, d*d)
 	if o.static != nil {
@@ -233,18 +268,18 @@ func (e *engine) weigh(o *probed) {
 		o.onCode = e.span * frobenius(block)
 		return
 	}
-	// sqrt(T int |sum u_k H_k|^2 dt), the integral of the product of two Taylor polynomials term by term.
+	// sqrt(T int |sum f_k V_k|^2 dt) with V_k what first order changes of each operator: the integral of the product of two Taylor
+	// polynomials term by term.
 	var whole, onCode float64
-	p := e.plans[0]
-	for k, a := range e.controls {
-		for l, b := range e.controls {
-			if !o.amplitude[a.channel] || !o.amplitude[b.channel] || l < k {
+	other := make([]complex128, d*d)
+	for k, a := range o.first {
+		for l, b := range o.first {
+			if a == nil || b == nil || l < k {
 				continue
 			}
-			other := make([]complex128, d*d)
-			cut(block, a.op, n, e.m.CodeSpace)
-			cut(other, b.op, n, e.m.CodeSpace)
-			gw, gc := inner(a.op, b.op), inner(block, other)
+			cut(block, a, n, e.m.CodeSpace)
+			cut(other, b, n, e.m.CodeSpace)
+			gw, gc := inner(a, b), inner(block, other)
 			if gw == 0 && gc == 0 {
 				continue
 			}
@@ -661,7 +696,7 @@ func (e *engine) curve(ctx context.Context, s *study, values []float64) ([]Point
 //
 //	[G, O_I] = i O_Q  and  [G, O_Q] = -i O_I
 //
-// for every quadrature channel and [G, O] = 0 for the static part and every baseband channel. For a spin it is Z/2 or -Z/2, as the
+// for every quadrature channel and [G, O] = 0 for the static part, every baseband channel and every shift. For a spin it is Z/2 or -Z/2, as the
 // mixer's sign has it.
 func (e *engine) turn() ([]float64, error) {
 	n := e.dim
@@ -673,17 +708,17 @@ func (e *engine) turn() ([]float64, error) {
 	var needs []need
 	zero := make([]complex128, n*n)
 	needs = append(needs, need{e.static, zero, 1})
-	for c := range e.m.Channels {
-		var ops [][]complex128
-		for _, k := range e.controls {
-			if k.channel == c {
-				ops = append(ops, k.op)
-			}
-		}
-		if e.turned[c] {
-			needs = append(needs, need{ops[0], ops[1], 1}, need{ops[1], ops[0], -1})
+	for c := range e.drives {
+		d := &e.drives[c]
+		i := e.controls[d.ops[0]].op
+		if d.turned {
+			q := e.controls[d.ops[1]].op
+			needs = append(needs, need{i, q, 1}, need{q, i, -1})
 		} else {
-			needs = append(needs, need{ops[0], zero, 1})
+			needs = append(needs, need{i, zero, 1})
+		}
+		if d.shift != nil {
+			needs = append(needs, need{d.shift, zero, 1})
 		}
 	}
 	// Differences of G along the transitions, one connected part after another.

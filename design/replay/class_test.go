@@ -59,7 +59,7 @@ func TestCompositePulses(t *testing.T) {
 		e := newTestEngine(t, composite(c.segments))
 		found := make([]float64, 5)
 		rate := e.m.Channels[0].FullScale
-		z, a := newStatic(halfZ, 2), e.newAmplitude(nil)
+		z, a := newStatic(halfZ, 2), e.newAmplitude(nil, "")
 		if err := e.infidelities(context.Background(), []gate{{}, {a, c.size}, {a, -c.size}, {z, c.size2 * rate}, {z, -c.size2 * rate}}, found); err != nil {
 			t.Fatal(err)
 		}
@@ -327,4 +327,134 @@ func TestWorstBetweenAxes(t *testing.T) {
 			t.Errorf("curve at %g: %g is not the worst", p.Value, p.Infidelity)
 		}
 	}
+}
+
+// A square pi pulse about an axis at angle phi between X and Y, u_I = O cos phi and u_Q = O sin phi: an error of one quadrature, or of the angle
+// between them, is a static error along X or Y, of which the part along the axis survives whole and that across to 2/pi; and margins are those of
+// the static error of the same rate.
+func TestQuadratureErrors(t *testing.T) {
+	const phi = 0.4
+	c, s := math.Cos(phi), math.Sin(phi)
+	m := composite([]segment{{180, phi * 180 / math.Pi}})
+	m.Target = rotation(math.Pi, phi)
+	m.Errors = []Class{
+		{Name: "amplitude I", Kind: "amplitude", Quadrature: "I", Channels: []string{"q1 drive"}},
+		{Name: "amplitude Q", Kind: "amplitude", Quadrature: "Q"},
+		{Name: "angle", Kind: "skew"},
+	}
+	got := judged(t, m, 1e-4)
+	rate := m.Channels[0].FullScale / perMHz
+	for name, want := range map[string]struct {
+		along, across, per float64 // parts of the error along the axis and across; MHz of one unit
+		of, unit           string
+	}{
+		"amplitude I": {c, s, rate * c / 100, "X", "%"},
+		"amplitude Q": {s, c, rate * s / 100, "Y", "%"},
+		"angle":       {c, s, -rate * s * math.Pi / 180, "X", "deg"},
+	} {
+		e, static := got[name], got[want.of]
+		if share := math.Hypot(want.along, want.across*2/math.Pi); !(math.Abs(e.Susceptibility-share) <= 1e-11) {
+			t.Errorf("%s: susceptibility %.12g, want %.12g", name, e.Susceptibility, share)
+		}
+		low, high := static.Low/want.per, static.High/want.per
+		if low > high {
+			low, high = high, low
+		}
+		if !(math.Abs(e.Low/low-1) <= 1e-7) || !(math.Abs(e.High/high-1) <= 1e-7) || e.Unit != want.unit {
+			t.Errorf("%s: margins %.9g and %.9g %s, want %.9g and %.9g %s", name, e.Low, e.High, e.Unit, low, high, want.unit)
+		}
+		for _, p := range e.Curve {
+			f, err := m.Against(context.Background(), [][]complex128{scaled(map[string][]complex128{"X": halfX, "Y": halfY}[want.of], p.Value*want.per*perMHz)})
+			if err != nil {
+				t.Fatal(err)
+			}
+			if !(math.Abs(p.Infidelity-f[0]) <= 1e-13) {
+				t.Errorf("%s: curve at %g is %.12g, want %.12g", name, p.Value, p.Infidelity, f[0])
+			}
+		}
+	}
+	// A channel with one quadrature has neither error; none without drive is withstood for ever.
+	m.Errors = []Class{{Name: "amplitude Q", Kind: "amplitude", Quadrature: "Q"}, {Name: "angle", Kind: "skew"}}
+	m.Channels[0].Samples = composite(plain).Channels[0].Samples
+	m.Target = rotation(math.Pi, 0)
+	for _, name := range []string{"amplitude Q", "angle"} {
+		if e := judged(t, m, 1e-4)[name]; e.Susceptibility != 0 || !math.IsInf(e.High, 1) {
+			t.Errorf("%s of silence: %g, margin %g", name, e.Susceptibility, e.High)
+		}
+	}
+}
+
+// The corner of a single-pole low-pass, w/(s+w), whose slope is dG/dlog w = w/(s+w) - w^2/(s+w)^2: first order against gates through lines with
+// other corners (WithLine), the strength against a quadrature of the closed-form response, and the curve against the reference
+// integrator. For window ends lines differ inside the window only, as the error does.
+func TestLineError(t *testing.T) {
+	const w, n = 0.12, 32
+	m := spinModel(1, rotation(math.Pi/2, 0), cosine(24, n))
+	for k := range m.Channels[0].Samples {
+		m.Channels[0].Samples[k] *= complex(1, 0.2*math.Sin(float64(k)))
+	}
+	m.Ends = "window"
+	c := &m.Channels[0]
+	c.Direct, c.Poles, c.Powers, c.Residues = 0, []complex128{-w}, []int{1}, []complex128{w}
+	m.Errors = []Class{{Name: "corner", Kind: "line", Channels: []string{"q1 drive"}, Poles: []complex128{-w, -w}, Powers: []int{1, 2}, Residues: []complex128{w, -w * w}}}
+	class := &m.Errors[0]
+	at := func(lambda float64) []complex128 {
+		p := w * (1 + lambda)
+		o := m.WithLine(0, 0, 0, []complex128{complex(-p, 0)}, []int{1}, []complex128{complex(p, 0)})
+		return evolve(t, newTestEngine(t, o), nil, 0)
+	}
+	m.Target = at(0)
+	got := judged(t, m, 1e-3)["corner"]
+	// Central differences with one extrapolation: good to h^4.
+	const h = 1e-3
+	slope := make([]complex128, 4)
+	a, b, c2, d := at(h), at(-h), at(h/2), at(-h/2)
+	for i := range slope {
+		slope[i] = (4*(c2[i]-d[i])/h - (a[i]-b[i])/(2*h)) / 3
+	}
+	left := product(adjoint(at(0)), slope)
+	dropTrace(left, 2)
+	// sqrt(T int |v|^2 dt |X/2|_F^2), Simpson's rule inside each sample.
+	bent := *m
+	bent.Channels = append([]Channel(nil), m.Channels...)
+	bent.Channels[0].Poles, bent.Channels[0].Powers, bent.Channels[0].Residues = class.Poles, class.Powers, class.Residues
+	energy := 0.0
+	const parts = 64
+	for k := range n * parts {
+		t0, dt := float64(k)/parts, 1./parts
+		energy += dt / 6 * (square(arrives(&bent, 0, t0)) + 4*square(arrives(&bent, 0, t0+dt/2)) + square(arrives(&bent, 0, t0+dt)))
+	}
+	want := frobenius(left) / (c.FullScale * math.Sqrt(n*energy/2))
+	if !(math.Abs(got.Susceptibility-want) <= 1e-8) || !(want > 0.05) {
+		t.Errorf("susceptibility %.10g, want %.10g", got.Susceptibility, want)
+	}
+	if got.Unit != "%" || got.Kind != "line" || len(got.Curve) != 61 {
+		t.Errorf("unit %q, kind %q, %d points", got.Unit, got.Kind, len(got.Curve))
+	}
+	e := newTestEngine(t, m)
+	infidelity := func(size float64) float64 {
+		return e.figures(e.labours[0], slowlyWrong(m, wrong{line: class, lambda: size / 100})).Infidelity
+	}
+	for i := 0; i < len(got.Curve); i += 10 {
+		if p := got.Curve[i]; !(math.Abs(p.Infidelity-infidelity(p.Value)) <= 1e-9) {
+			t.Errorf("curve at %g %%: %.10g, want %.10g", p.Value, p.Infidelity, infidelity(p.Value))
+		}
+	}
+	if f := infidelity(got.High); !(math.Abs(f/1e-3-1) <= 1e-6) {
+		t.Errorf("margin of %g %%: infidelity %.9g there", got.High, f)
+	}
+	if f := infidelity(got.Low); !(math.Abs(f/1e-3-1) <= 1e-6) {
+		t.Errorf("margin of %g %%: infidelity %.9g there", got.Low, f)
+	}
+	// A slope that is the line itself is an amplitude error.
+	m.Errors[0].Poles, m.Errors[0].Powers, m.Errors[0].Residues = c.Poles, c.Powers, c.Residues
+	list := judged(t, m, 1e-3)
+	x, y := list["corner"], list["amplitude"]
+	if !(math.Abs(x.Susceptibility-y.Susceptibility) <= 1e-11) || !(math.Abs(x.High/y.High-1) <= 1e-8) || !(math.Abs(x.Low/y.Low-1) <= 1e-8) {
+		t.Errorf("the line as its own slope: %+v, amplitude %+v", x, y)
+	}
+}
+
+func slowlyWrong(m *Model, w wrong) []complex128 {
+	return slowlyFrom(m, m.WindowStart, m.Samples*12, m.SamplePeriod/12, w)
 }

@@ -9,12 +9,46 @@ import (
 	"sync"
 )
 
-// A control is one real function of time times one operator: a quadrature of a channel.
+// A part says which real function of time a control is.
+type part int
+
+const (
+	inPhase part = iota // u_I of a channel, rad/ns
+	quadrature
+	squareI // u_I^2 of a channel with a drive-induced shift, u in shares of full scale
+	squareQ
+	cross // u_I u_Q
+	// Of an error of kind line, with v what arrives through the slope of its channel's line:
+	slopeI // v_I, rad/ns
+	slopeQ
+	beat   // u_I v_I + u_Q v_Q, in shares
+	slopes // |v|^2
+)
+
+// A control is one real function of time times one operator, H += f(t) op. Errors may change the operator, and some controls are there
+// for errors only and have none without.
 type control struct {
-	channel, quadrature int
-	op                  []complex128 // traceless
-	norm                float64      // bound of its largest eigenvalue
-	elements            sparse
+	channel  int
+	part     part
+	op       []complex128 // traceless
+	norm     float64      // bound of its largest eigenvalue
+	elements sparse
+}
+
+func newControl(channel int, p part, op []complex128, n int) control {
+	return control{channel, p, op, operatorNorm(op, n), sparsely(op, n)}
+}
+
+// A drive is one channel made ready.
+type drive struct {
+	fullScale float64 // rad/ns
+	samples   []complex128
+	turned    bool // follows a turn of the frame: the quadrature channels do
+	ops       [2]int
+	// The controls of the channel: u_I and u_Q, then the squares and the product where there is a shift; -1 where there is none.
+	squares [3]int
+	shift   []complex128 // of |u|^2, rad/ns, traceless; nil without shift
+	norm    float64      // of shift
 }
 
 // An engine is a model made ready: lines walked through once, what comes before and after the window integrated.
@@ -24,6 +58,7 @@ type engine struct {
 	dim        int
 	start      float64 // of the window, ns
 	span       float64 // ns
+	drives     []drive
 	controls   []control
 	axes       []axis // the controls' operators when there are two levels
 	static     []complex128
@@ -32,14 +67,65 @@ type engine struct {
 	target     []complex128
 	before     []complex128 // free Z phases on the code space; nil when all are 1
 	after      []complex128
-	outside    []int  // states that are not in the code space
-	turned     []bool // which channels follow a turn of the frame: the quadrature ones
-	plans      [len(reaches)]*plan
+	outside    []int // states that are not in the code space
+	plans      plans
 
 	pre, post []complex128 // Dim x Dim: settled = post window pre
 	left      float64      // rad still to come when the integration stopped
 
 	labours []*labour // scratch, one for each goroutine
+}
+
+// plans are those of the window, one for each of reaches, each made when it is first needed.
+type plans [len(reaches)]*plan
+
+// takeDrives makes the channels' samples and controls ready.
+func (e *engine) takeDrives() {
+	n := e.dim
+	traceless := func(op []complex128) []complex128 {
+		op = append([]complex128(nil), op...)
+		dropTrace(op, n)
+		return op
+	}
+	for c := range e.m.Channels {
+		ch := &e.m.Channels[c]
+		d := drive{fullScale: ch.FullScale, samples: ch.Samples, turned: ch.Kind == "quadrature", ops: [2]int{-1, -1}, squares: [3]int{-1, -1, -1}}
+		if ch.Compression != nil {
+			d.samples = make([]complex128, len(ch.Samples))
+			for k, x := range ch.Samples {
+				d.samples[k] = ch.Compressed(x)
+			}
+		}
+		for q, op := range ch.Operators {
+			d.ops[q] = len(e.controls)
+			e.controls = append(e.controls, newControl(c, inPhase+part(q), traceless(op), n))
+		}
+		e.drives = append(e.drives, d)
+	}
+	for c := range e.drives {
+		d, ch := &e.drives[c], &e.m.Channels[c]
+		if ch.Shift == 0 {
+			continue
+		}
+		d.shift = traceless(ch.ShiftOperator)
+		for i := range d.shift {
+			d.shift[i] *= complex(ch.Shift, 0)
+		}
+		d.norm = operatorNorm(d.shift, n)
+		ops := [][]complex128{d.shift}
+		if d.ops[1] >= 0 {
+			ops = [][]complex128{d.shift, d.shift, make([]complex128, n*n)}
+		}
+		for i, op := range ops {
+			d.squares[i] = len(e.controls)
+			e.controls = append(e.controls, newControl(c, squareI+part(i), op, n))
+		}
+	}
+	if n == 2 {
+		for _, c := range e.controls {
+			e.axes = append(e.axes, axisOf(c.op))
+		}
+	}
 }
 
 // newEngine walks the pulse once and integrates what surrounds the window.
@@ -49,17 +135,7 @@ func newEngine(ctx context.Context, m *Model) (*engine, error) {
 	e.static = append([]complex128(nil), m.Static...)
 	dropTrace(e.static, n)
 	e.staticNorm, e.elements = operatorNorm(e.static, n), sparsely(e.static, n)
-	for c := range m.Channels {
-		e.turned = append(e.turned, m.Channels[c].Kind == "quadrature")
-		for q, op := range m.Channels[c].Operators {
-			op = append([]complex128(nil), op...)
-			dropTrace(op, n)
-			e.controls = append(e.controls, control{c, q, op, operatorNorm(op, n), sparsely(op, n)})
-			if n == 2 {
-				e.axes = append(e.axes, axisOf(op))
-			}
-		}
-	}
+	e.takeDrives()
 	for a := range n {
 		if !slices.Contains(m.CodeSpace, a) {
 			e.outside = append(e.outside, a)
@@ -72,12 +148,12 @@ func newEngine(ctx context.Context, m *Model) (*engine, error) {
 		e.labours = append(e.labours, newLabour(e))
 	}
 
-	w := e.newWalker(1)
-	lead := &plan{controls: len(e.controls)}
+	w := e.newWalker(nil, 1)
+	lead := w.newPlan()
 	if err := w.to(ctx, e.start, reach{}, lead); err != nil {
 		return nil, err
 	}
-	window := &plan{controls: len(e.controls)}
+	window := w.newPlan()
 	if err := w.to(ctx, e.start+e.span, reaches[0], window); err != nil {
 		return nil, err
 	}
@@ -100,7 +176,7 @@ func newEngine(ctx context.Context, m *Model) (*engine, error) {
 // rad that is left at Ts.
 func (e *engine) settled(ctx context.Context, w *walker) (post []complex128, left float64, err error) {
 	n := e.dim
-	tail := &plan{controls: len(e.controls)}
+	tail := w.newPlan()
 	if left, err = w.settle(ctx, tail); err != nil {
 		return nil, 0, err
 	}
@@ -113,31 +189,37 @@ func (e *engine) settled(ctx context.Context, w *walker) (post []complex128, lef
 	return post, left, nil
 }
 
-// plan gives the window's steps, good for errors up to need.
-func (e *engine) plan(ctx context.Context, need reach) (*plan, error) {
+// plan gives the window's steps, good for errors of size lambda along pr; pr may be nil.
+func (e *engine) plan(ctx context.Context, pr *probe, lambda float64) (*plan, error) {
+	made, line := &e.plans, pr != nil && pr.slope != nil
+	if line {
+		made = &pr.plans
+	}
+	need := pr.reach(lambda)
 	i := 0
-	for i < len(reaches)-1 && !reaches[i].holds(need) {
+	for i < len(reaches)-1 && !reaches[i].as(line).holds(need) {
 		i++
 	}
-	kept := reaches[i].holds(need) // else an error beyond all reason: its plan is made for it alone
-	if e.plans[i] == nil || !kept {
-		w, p := e.newWalker(1), &plan{controls: len(e.controls)}
-		if err := w.to(ctx, e.start, reach{}, &plan{controls: len(e.controls)}); err != nil {
-			return nil, err
-		}
-		r := reaches[i]
-		if !kept {
-			r = need
-		}
-		if err := w.to(ctx, e.start+e.span, r, p); err != nil {
-			return nil, err
-		}
-		if !kept {
-			return p, nil
-		}
-		e.plans[i] = p
+	r := reaches[i].as(line)
+	kept := r.holds(need) // else an error beyond all reason: its plan is made for it alone
+	if kept && made[i] != nil {
+		return made[i], nil
 	}
-	return e.plans[i], nil
+	if !kept {
+		r = need
+	}
+	w := e.newWalker(pr, 1)
+	if err := w.to(ctx, e.start, reach{}, w.newPlan()); err != nil {
+		return nil, err
+	}
+	p := w.newPlan()
+	if err := w.to(ctx, e.start+e.span, r, p); err != nil {
+		return nil, err
+	}
+	if kept {
+		made[i] = p
+	}
+	return p, nil
 }
 
 // frames gives the diagonal of the product of exp(-i angle Z/2) over sites, first site slowest, on a code space
@@ -161,59 +243,6 @@ func frames(angles []float64, d int) []complex128 {
 	return f
 }
 
-// A probe is one way in which things go wrong, to be multiplied by a size lambda.
-type probe struct {
-	static    []complex128 // traceless; H += lambda static, lambda in rad/ns; nil for an amplitude error
-	norm      float64      // of static
-	amplitude []bool       // for each channel: u scaled by 1 + lambda
-}
-
-func newStatic(op []complex128, n int) *probe {
-	p := &probe{static: append([]complex128(nil), op...)}
-	dropTrace(p.static, n)
-	p.norm = operatorNorm(p.static, n)
-	return p
-}
-
-// newAmplitude scales the named channels, or all.
-func (e *engine) newAmplitude(names []string) *probe {
-	p := &probe{amplitude: make([]bool, len(e.m.Channels))}
-	for c := range e.m.Channels {
-		p.amplitude[c] = len(names) == 0
-		for _, name := range names {
-			p.amplitude[c] = p.amplitude[c] || name == e.m.Channels[c].Name
-		}
-	}
-	return p
-}
-
-func (p *probe) same(o *probe) bool {
-	if (p.static == nil) != (o.static == nil) {
-		return false
-	}
-	for i := range p.static {
-		if p.static[i] != o.static[i] {
-			return false
-		}
-	}
-	for i := range p.amplitude {
-		if p.amplitude[i] != o.amplitude[i] {
-			return false
-		}
-	}
-	return true
-}
-
-func (p *probe) reach(lambda float64) reach {
-	if p == nil {
-		return reach{}
-	}
-	if p.static != nil {
-		return reach{static: math.Abs(lambda) * p.norm}
-	}
-	return reach{amplitude: math.Abs(lambda)}
-}
-
 // A gate is one simulation that is wanted: the pulse with one error.
 type gate struct {
 	p      *probe // nil without error
@@ -230,7 +259,7 @@ func (e *engine) run(ctx context.Context, gates []gate, use func(l *labour, i in
 	plans := make([]*plan, len(gates))
 	for i, g := range gates {
 		var err error
-		if plans[i], err = e.plan(ctx, g.p.reach(g.lambda)); err != nil {
+		if plans[i], err = e.plan(ctx, g.p, g.lambda); err != nil {
 			return err
 		}
 	}

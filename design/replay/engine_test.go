@@ -35,37 +35,72 @@ func TestRabi(t *testing.T) {
 // slowly integrates U' = -iHU with many midpoint exponentials and Richardson extrapolation, the line by its closed-form response: shares
 // nothing with the engine. It gives the evolution over the window with H += extra and controls scaled.
 func slowly(m *Model, extra []complex128, scale float64, perSample int) []complex128 {
-	once := func(steps int) []complex128 {
+	w := wrong{static: extra, i: scale - 1, q: scale - 1}
+	return slowlyFrom(m, m.WindowStart, m.Samples*perSample, m.SamplePeriod/float64(perSample), w)
+}
+
+// wrong is an error for the reference, of every channel that can have it.
+type wrong struct {
+	static []complex128
+	i, q   float64 // u_I and u_Q times 1 + this
+	skew   float64
+	line   *Class
+	lambda float64 // of line
+}
+
+// slowlyFrom takes so many steps of dt from time start.
+func slowlyFrom(m *Model, start float64, steps int, dt float64, w wrong) []complex128 {
+	once := func(finer int) []complex128 {
 		u := []complex128{1, 0, 0, 1}
 		next := make([]complex128, 4)
-		dt := m.SamplePeriod / float64(steps)
-		for k := range m.Samples * steps {
-			tm := m.WindowStart + (float64(k)+0.5)*dt
-			h := append([]complex128(nil), m.Static...)
-			for i := range h {
-				if extra != nil {
-					h[i] += extra[i]
-				}
-			}
-			for c := range m.Channels {
-				ch := &m.Channels[c]
-				v := arrives(m, c, tm) * complex(scale*ch.FullScale, 0)
-				for i := range h {
-					h[i] += complex(real(v), 0)*ch.Operators[0][i] + complex(imag(v), 0)*ch.Operators[1][i]
-				}
-			}
-			mul(next, exponential(h, dt), u, 2)
+		dt := dt / float64(finer)
+		for k := range steps * finer {
+			mul(next, exponential(hamiltonian(m, start+(float64(k)+0.5)*dt, w), dt), u, 2)
 			u, next = next, u
 		}
 		return u
 	}
-	a, b, c := once(perSample), once(2*perSample), once(4*perSample)
+	a, b, c := once(1), once(2), once(4)
 	out := make([]complex128, 4)
 	for i := range out {
 		ab, bc := b[i]+(b[i]-a[i])/3, c[i]+(c[i]-b[i])/3
 		out[i] = bc + (bc-ab)/15
 	}
 	return out
+}
+
+// hamiltonian is H(t) with an error, from the definitions.
+func hamiltonian(m *Model, t float64, w wrong) []complex128 {
+	h := append([]complex128(nil), m.Static...)
+	add := func(f float64, op []complex128) {
+		for i := range op {
+			h[i] += complex(f, 0) * op[i]
+		}
+	}
+	add(1, w.static)
+	for c := range m.Channels {
+		ch := &m.Channels[c]
+		u := arrives(m, c, t)
+		if w.line != nil && w.line.Channels[0] == ch.Name {
+			other := *ch
+			other.Direct, other.Poles, other.Powers, other.Residues = w.line.Direct, w.line.Poles, w.line.Powers, w.line.Residues
+			slope := *m
+			slope.Channels = []Channel{other}
+			u += complex(w.lambda, 0) * arrives(&slope, 0, t)
+		}
+		i, q := (1+w.i)*real(u), (1+w.q)*imag(u)
+		if ch.Kind == "baseband" {
+			q = 0
+		} else {
+			i -= w.skew * imag(u)
+			add(ch.FullScale*q, ch.Operators[1])
+		}
+		add(ch.FullScale*i, ch.Operators[0])
+		if ch.Shift != 0 {
+			add(ch.Shift*(i*i+q*q), ch.ShiftOperator)
+		}
+	}
+	return h
 }
 
 // arrives is u(t)/full scale on channel c: the sum of the step responses of all samples.
@@ -100,9 +135,26 @@ func arrives(m *Model, c int, t float64) complex128 {
 		if ch.Samples[k] == 0 {
 			continue
 		}
-		u += ch.Samples[k] * (step(at) - step(at-m.SamplePeriod))
+		u += pressed(ch, ch.Samples[k]) * (step(at) - step(at-m.SamplePeriod))
 	}
 	return u
+}
+
+// pressed is a sample after compression: the sum of what each piece of the table adds.
+func pressed(ch *Channel, x complex128) complex128 {
+	if ch.Compression == nil || x == 0 {
+		return x
+	}
+	a, f := cmplx.Abs(x), 0.0
+	for i := 1; i < len(ch.Compression); i++ {
+		p, q := ch.Compression[i-1], ch.Compression[i]
+		end := q.Share
+		if i == len(ch.Compression)-1 {
+			end = math.Inf(1)
+		}
+		f += (q.Reached - p.Reached) / (q.Share - p.Share) * math.Max(0, math.Min(a, end)-p.Share)
+	}
+	return cmplx.Rect(f, cmplx.Phase(x))
 }
 
 // exponential is exp(-i H dt) of a 2 x 2 Hermitian matrix by its eigenvalues.
@@ -174,7 +226,7 @@ func TestRandomDrives(t *testing.T) {
 		if !(got <= 2e-10) { // what the reference is good for
 			t.Errorf("drive %d: static error off by %.2g", i, got)
 		}
-		got = distance(evolve(t, e, e.newAmplitude(nil), 3*lambda), slowly(m, nil, 1+3*lambda, 24))
+		got = distance(evolve(t, e, e.newAmplitude(nil, ""), 3*lambda), slowly(m, nil, 1+3*lambda, 24))
 		worst = math.Max(worst, got)
 		if !(got <= 2e-10) {
 			t.Errorf("drive %d: amplitude error off by %.2g", i, got)
@@ -244,7 +296,7 @@ func TestSettledEnds(t *testing.T) {
 func TestErrorControl(t *testing.T) {
 	m := rackB(cosine(112, 112))
 	e := newTestEngine(t, m)
-	w := e.newWalker(1)
+	w := e.newWalker(nil, 1)
 	fine := &plan{controls: 2}
 	if err := w.to(context.Background(), e.start, reach{}, &plan{controls: 2}); err != nil {
 		t.Fatal(err)
@@ -256,7 +308,7 @@ func TestErrorControl(t *testing.T) {
 	}
 	l := e.labours[0]
 	a, b := make([]complex128, 4), make([]complex128, 4)
-	for _, g := range []gate{{}, {newStatic(halfZ, 2), 0.05}, {newStatic(halfX, 2), -0.01}, {e.newAmplitude(nil), 0.1}} {
+	for _, g := range []gate{{}, {newStatic(halfZ, 2), 0.05}, {newStatic(halfX, 2), -0.01}, {e.newAmplitude(nil, ""), 0.1}} {
 		l.integrate(e.plans[0], g.p, g.lambda, a)
 		l.integrate(fine, g.p, g.lambda, b)
 		if d := distance(a, b); !(d <= 1e-13) {
@@ -268,7 +320,7 @@ func TestErrorControl(t *testing.T) {
 	}
 	// Further reaches give the same gate.
 	far := evolve(t, e, newStatic(halfZ, 2), 0.3)
-	p, err := e.plan(context.Background(), reach{static: 5})
+	p, err := e.plan(context.Background(), newStatic(halfZ, 2), 10)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -288,12 +340,12 @@ func TestGeneralKernel(t *testing.T) {
 	for range 10 {
 		m := randomModel(r)
 		e := newTestEngine(t, m)
-		general := &labour{e: e, drive: make([]float64, len(e.controls)), sums: make([]complex128, 4)}
+		general := &labour{e: e, sums: make([]complex128, 4), op: make([]complex128, 4)}
 		for range maxOrder + 1 {
 			general.series = append(general.series, make([]complex128, 4))
 		}
 		a, b := make([]complex128, 4), make([]complex128, 4)
-		for _, g := range []gate{{}, {newStatic(halfX, 2), 0.02}, {e.newAmplitude([]string{"q1 drive"}), 0.05}} {
+		for _, g := range []gate{{}, {newStatic(halfX, 2), 0.02}, {e.newAmplitude([]string{"q1 drive"}, ""), 0.05}} {
 			e.labours[0].integrate(e.plans[0], g.p, g.lambda, a)
 			general.integrate(e.plans[0], g.p, g.lambda, b)
 			if d := distance(a, b); !(d <= 1e-13) {

@@ -121,6 +121,11 @@ func distance(a, b []complex128) float64 {
 // writeFolder writes a pulse folder to the letter of the record, with a claim as given, and gives its path.
 func writeFolder(t testing.TB, m *Model, v *Verdict) string {
 	t.Helper()
+	return writeFolderOf(t, m, v, testProfile, testDevice, testBrief)
+}
+
+func writeFolderOf(t testing.TB, m *Model, v *Verdict, profile, device, brief string) string {
+	t.Helper()
 	dir := filepath.Join(t.TempDir(), "pulse")
 	if err := os.MkdirAll(filepath.Join(dir, "inputs"), 0o777); err != nil {
 		t.Fatal(err)
@@ -130,21 +135,25 @@ func writeFolder(t testing.TB, m *Model, v *Verdict) string {
 			t.Fatal(err)
 		}
 	}
-	write("inputs/profile.toml", testProfile)
-	write("inputs/device.toml", testDevice)
-	write("inputs/brief.toml", testBrief)
+	write("inputs/profile.toml", profile)
+	write("inputs/device.toml", device)
+	write("inputs/brief.toml", brief)
 	var names []string
 	for i, c := range m.Channels {
 		codes, _ := rounded(c.Samples, m.Bits)
 		name := fmt.Sprintf("channel-%d.npy", i)
-		if err := hardware.WriteNPY(filepath.Join(dir, name), m.Samples, 2, codes); err != nil {
+		columns := len(c.Operators)
+		var exact []float64
+		for k, x := range c.Samples {
+			exact = append(exact, []float64{real(x), imag(x)}[:columns]...)
+			if columns == 1 {
+				codes[k] = codes[2*k]
+			}
+		}
+		if err := hardware.WriteNPY(filepath.Join(dir, name), m.Samples, columns, codes[:m.Samples*columns]); err != nil {
 			t.Fatal(err)
 		}
-		var exact []float64
-		for _, x := range c.Samples {
-			exact = append(exact, real(x), imag(x))
-		}
-		if err := hardware.WriteNPY(filepath.Join(dir, "exact-"+name), m.Samples, 2, exact); err != nil {
+		if err := hardware.WriteNPY(filepath.Join(dir, "exact-"+name), m.Samples, columns, exact); err != nil {
 			t.Fatal(err)
 		}
 		names = append(names, name, "exact-"+name)
@@ -197,6 +206,16 @@ func recordText(m *Model, v *Verdict) string {
 	p("format = 1\n[pulse]\nname = %q\ntarget = \"X90 on q1\"\nspan = \"%d ns\"\nheld = []\nrequirements_met = true", "test pulse", m.Samples)
 	p("[basis]\nfamily = \"samples\"\n[search]\nseed = 1\n[provenance]\nprogram = \"holdfast\"")
 	p("[require]\ninfidelity = 1e-4\nsusceptibility = 1e-3\n[[require.margin]]\nerror = \"detuning\"\nsize_rad_per_ns = %s", number(2*math.Pi*0.0001))
+	for _, c := range m.Errors { // margins of the wide brief
+		switch c.Name {
+		case "corner":
+			p("[[require.margin]]\nerror = \"corner\"\nsize_share = 0.01")
+		case "quadrature angle":
+			p("[[require.margin]]\nerror = \"quadrature angle\"\nsize_rad = %s", number(math.Pi/180))
+		case "offset Q":
+			p("[[require.margin]]\nerror = \"offset Q\"\nsize_rad_per_ns = %s", number(2*math.Pi*0.04*0.002))
+		}
+	}
 	p("[decoherence]\nt1_ns = 60000.0\nt2_ns = 40000.0")
 	p("[claim]\ninfidelity = %s\ninfidelity_other_ends = %s\nleakage = 0.0\ntail_angle_rad = %s",
 		number(v.Settled.Infidelity), number(v.Window.Infidelity), number(v.TailAngle))
@@ -219,14 +238,43 @@ func recordText(m *Model, v *Verdict) string {
 			p("ring_out_share = %s", number(c.RingOut))
 		}
 		p("guard_lead = %d\nguard_trail = %d", c.GuardLead, c.GuardTrail)
+		for _, o := range []struct {
+			key string
+			v   float64
+		}{
+			{"rms_share", c.RMS}, {"rms_samples", c.RMSSamples}, {"ring_out_tail_share", c.RingOutTail}, {"ring_out_fast_ns", c.RingOutFast},
+			{"out_of_band_share", c.OutOfBand}, {"band_ghz", c.Band}, {"shift_rad_per_ns", c.Shift},
+		} {
+			if o.v != 0 {
+				p("%s = %s", o.key, number(o.v))
+			}
+		}
+		if c.Box {
+			p("envelope = \"box\"")
+		}
+		if c.ZeroMean {
+			p("zero_mean = true")
+		}
+		if c.Compression != nil {
+			p("compression = %s", listText(c.Compression, func(k Knee) string { return pairText(complex(k.Share, k.Reached)) }))
+		}
+		if c.ShiftOperator != nil {
+			p("shift_operator = %s", matrixText(c.ShiftOperator))
+		}
 	}
 	for _, c := range m.Errors {
 		p("[[model.error]]\nname = %q\nheld = %v\nkind = %q", c.Name, c.Held, c.Kind)
 		if c.Operator != nil {
 			p("operator = %s", matrixText(c.Operator))
 		}
-		if c.Channels != nil {
+		if c.Kind == "line" {
+			p("channel = %q\ndirect = %s\npoles_per_ns = %s\npowers = %s\nresidues = %s", c.Channels[0], pairText(c.Direct),
+				listText(c.Poles, pairText), listText(c.Powers, strconv.Itoa), listText(c.Residues, pairText))
+		} else if c.Channels != nil {
 			p("channels = %s", listText(c.Channels, strconv.Quote))
+		}
+		if c.Quadrature != "" {
+			p("quadrature = %q", c.Quadrature)
 		}
 		for _, e := range v.Errors {
 			if e.Name == c.Name {

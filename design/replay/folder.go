@@ -41,8 +41,9 @@ type Require struct {
 // A Margin is a size of one error that must be withstood, either sign.
 type Margin struct {
 	Error string
-	Size  float64 // rad/ns, or a share where Share is true
+	Size  float64 // rad/ns, a share where Share is true, or rad where Angle is
 	Share bool
+	Angle bool
 }
 
 // The names of the three files that a pulse was designed from, below inputs/.
@@ -151,11 +152,13 @@ func (f *Folder) readRequire(t *quantity.Table) {
 	f.Require.Susceptibility = t.Number("susceptibility", 1e-15, 1)
 	for _, m := range t.Tables("margin", 64) {
 		r := Margin{Error: m.Text("error")}
-		switch rate, share := m.Has("size_rad_per_ns"), m.Has("size_share"); {
-		case rate && share:
-			m.Fail("size_share", "found beside size_rad_per_ns; allowed: one of the two")
+		switch rate, share, angle := m.Has("size_rad_per_ns"), m.Has("size_share"), m.Has("size_rad"); {
+		case share && (rate || angle), angle && rate:
+			m.Fail("size_share", "found sizes of more than one unit; allowed: one of size_rad_per_ns, size_share and size_rad")
 		case share:
 			r.Size, r.Share = m.Number("size_share", 1e-12, 1), true
+		case angle:
+			r.Size, r.Angle = m.Number("size_rad", 1e-12, 10), true
 		default:
 			r.Size = m.Number("size_rad_per_ns", 1e-12, 1e6)
 		}
@@ -220,20 +223,35 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 			GuardLead:  ct.Int("guard_lead", 0, maxSamples, 0),
 			GuardTrail: ct.Int("guard_trail", 0, maxSamples, 0),
 			RingOut:    ct.Number("ring_out_share", 1e-12, 1e6, inf),
+			RMS:        ct.Number("rms_share", 1e-12, 1e3, 0),
+			RMSSamples: ct.Number("rms_samples", 1, 1e15, 0),
+			OutOfBand:  ct.Number("out_of_band_share", 1e-12, 1e3, 0),
+			Band:       ct.Number("band_ghz", 1e-12, 1e6, 0),
+			ZeroMean:   ct.Bool("zero_mean", false),
 			Samples:    make([]complex128, m.Samples), // until the codes are read
 		}
-		// A line without poles may leave out all three lists.
-		if poles, powers, residues := ct.Has("poles_per_ns"), ct.Has("powers"), ct.Has("residues"); poles || powers || residues {
-			c.Poles = ct.Complexes("poles_per_ns", maxPoles)
-			c.Powers = wholes(ct, "powers", maxPoles, 1, maxPower)
-			c.Residues = ct.Complexes("residues", maxPoles)
+		if ct.Has("envelope") {
+			c.Box = ct.Choice("envelope", []string{"disc", "box"}) == "box"
 		}
-		direct := ct.Numbers("direct", 2, -1e9, 1e9)
-		if len(direct) == 2 {
-			c.Direct = complex(direct[0], direct[1])
-		} else if direct != nil {
-			ct.Fail("direct", "found %d numbers; allowed: [re, im]", len(direct))
+		// Without a budget of its own the tail has that of the rest.
+		if tail, fast := ct.Has("ring_out_tail_share"), ct.Has("ring_out_fast_ns"); tail || fast {
+			c.RingOutFast = ct.Number("ring_out_fast_ns", 0, 1e12)
+			if tail {
+				c.RingOutTail = ct.Number("ring_out_tail_share", 1e-12, 1e6)
+			} else if !math.IsInf(c.RingOut, 1) {
+				c.RingOutTail = c.RingOut
+			}
 		}
+		if ct.Has("compression") {
+			for _, z := range ct.Complexes("compression", maxKnees) { // pairs of numbers, like complex ones
+				c.Compression = append(c.Compression, Knee{real(z), imag(z)})
+			}
+		}
+		if shift, op := ct.Has("shift_rad_per_ns"), ct.Has("shift_operator"); shift || op {
+			c.Shift = ct.Number("shift_rad_per_ns", -1e4, 1e4)
+			c.ShiftOperator = flat(ct.Matrix("shift_operator", maxDim))
+		}
+		c.Direct, c.Poles, c.Powers, c.Residues = readLine(ct)
 		for _, op := range ct.Matrices("operators", 2, maxDim) {
 			c.Operators = append(c.Operators, flat(op))
 		}
@@ -246,7 +264,7 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 		c := Class{
 			Name: et.Text("name"),
 			Held: et.Bool("held", false),
-			Kind: et.Choice("kind", []string{"static", "amplitude", "any"}, ""), // validate misses it; nothing else is then asked for
+			Kind: et.Choice("kind", []string{"static", "amplitude", "any", "skew", "line"}, ""), // validate misses it; nothing else is then asked for
 		}
 		if c.claimed = et.Has("susceptibility"); c.claimed {
 			c.Susceptibility = et.Number("susceptibility", 0, 1e6)
@@ -254,8 +272,15 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 		if c.Kind == "static" {
 			c.Operator = flat(et.Matrix("operator", maxDim))
 		}
-		if c.Kind == "amplitude" && et.Has("channels") {
+		if (c.Kind == "amplitude" || c.Kind == "skew") && et.Has("channels") {
 			c.Channels = et.Texts("channels", maxChannels)
+		}
+		if c.Kind == "amplitude" && et.Has("quadrature") {
+			c.Quadrature = et.Choice("quadrature", []string{"I", "Q"})
+		}
+		if c.Kind == "line" {
+			c.Channels = []string{et.Text("channel")}
+			c.Direct, c.Poles, c.Powers, c.Residues = readLine(et)
 		}
 		m.Errors = append(m.Errors, c)
 	}
@@ -276,6 +301,22 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 		at.Fail(key, "found %s; allowed: %s", fault.found, fault.allowed)
 	}
 	return m, codes, exact
+}
+
+// readLine reads the keys of a line, or of a line's slope. One without poles may leave out all three lists.
+func readLine(t *quantity.Table) (direct complex128, poles []complex128, powers []int, residues []complex128) {
+	if a, b, c := t.Has("poles_per_ns"), t.Has("powers"), t.Has("residues"); a || b || c {
+		poles = t.Complexes("poles_per_ns", maxPoles)
+		powers = wholes(t, "powers", maxPoles, 1, maxPower)
+		residues = t.Complexes("residues", maxPoles)
+	}
+	d := t.Numbers("direct", 2, -1e9, 1e9)
+	if len(d) == 2 {
+		direct = complex(d[0], d[1])
+	} else if d != nil {
+		t.Fail("direct", "found %d numbers; allowed: [re, im]", len(d))
+	}
+	return direct, poles, powers, residues
 }
 
 // load reads the channel's waveform files.

@@ -259,7 +259,7 @@ func TestMalformedFolders(t *testing.T) {
 			if err == nil {
 				t.Fatal("no error")
 			}
-			if got := err.Error(); !regexp.MustCompile(c.want).MatchString(got) || strings.Contains(got, "\n") || len(got) > 500 {
+			if got := err.Error(); !regexp.MustCompile(c.want).MatchString(got) || strings.Contains(got, "\n") || len(got) > 700 {
 				t.Errorf("%s\nwant %s", got, c.want)
 			}
 		})
@@ -274,8 +274,8 @@ func TestRequirements(t *testing.T) {
 		{Name: "amplitude", Unit: "%", Low: -3, High: 1, Susceptibility: 1},
 	}}
 	v.require(Require{Infidelity: 1e-4, Susceptibility: 1e-3, Margins: []Margin{
-		{"detuning", 0.6 * perMHz, false}, {"detuning", 0.5 * perMHz, false}, {"amplitude", 0.01, true}, {"amplitude", 0.011, true},
-		{"any", 60 * perMHz, false}, {"amplitude", 1e-9, false}, {"Q", 1e-9, false},
+		{"detuning", 0.6 * perMHz, false, false}, {"detuning", 0.5 * perMHz, false, false}, {"amplitude", 0.01, true, false}, {"amplitude", 0.011, true, false},
+		{"any", 60 * perMHz, false, false}, {"amplitude", 1e-9, false, false}, {"Q", 1e-9, false, false},
 	}})
 	want := []bool{true, false, false, true, true, false, true, false, false}
 	if len(v.Requirements) != len(want) {

@@ -86,6 +86,10 @@ func (f *Folder) differences() ([]Difference, error) {
 	}
 	c := &comparison{}
 	m := f.Model
+	// Whatever the three files say against each other; the comparison goes on with what there is.
+	if err := b.Complete(p, d); err != nil {
+		c.differ("inputs", "three files that go together", err)
+	}
 	c.number("sample_period_ns", m.SamplePeriod, p.SamplePeriod)
 	// A span as written may be a little off a whole number of samples, as 1/2.4 ns has no exact decimals.
 	if n := b.Span / p.SamplePeriod; !(math.Abs(n-float64(m.Samples)) <= 0.01) {
@@ -106,29 +110,42 @@ func (f *Folder) differences() ([]Difference, error) {
 	}
 	c.matrix("static_rad_per_ns", m.Static, d.Static().Data)
 	c.matrix("target", m.Target, b.Target.Matrix.Data)
-	for i, angles := range [][]float64{m.FreeZBefore, m.FreeZAfter} {
-		if slices.ContainsFunc(angles, func(a float64) bool { return a != 0 }) {
-			c.differ([]string{"free_z_before", "free_z_after"}[i], angles, "[]")
+	for _, z := range []struct {
+		key    string
+		angles []float64
+		free   bool
+	}{
+		{"free_z_before", m.FreeZBefore, b.Target.FreeZ == brief.Before || b.Target.FreeZ == brief.Both},
+		{"free_z_after", m.FreeZAfter, b.Target.FreeZ == brief.After || b.Target.FreeZ == brief.Both},
+	} {
+		// Which angle was chosen is the design's; whether there is one is the brief's. An angle of zero does no harm.
+		if free := slices.ContainsFunc(z.angles, func(a float64) bool { return a != 0 }); free && !z.free {
+			c.differ(z.key, z.angles, "[]")
 		}
 	}
-	if len(m.Channels) != len(d.Drives) {
-		c.differ("channel", fmt.Sprintf("%d channels", len(m.Channels)), fmt.Sprintf("%d drives", len(d.Drives)))
-	} else {
-		start := math.Inf(-1)
-		for i, drive := range d.Drives {
-			k, ok := p.Channel(drive.Channel)
-			if !ok {
-				c.differ(fmt.Sprintf("channel[%d].name", i), fmt.Sprintf("%q", m.Channels[i].Name), fmt.Sprintf("%q, which the profile does not have", drive.Channel))
-				continue
-			}
+	if n := len(d.Drives) + len(d.Biases); len(m.Channels) != n {
+		c.differ("channel", fmt.Sprintf("%d channels", len(m.Channels)), fmt.Sprintf("%d drives and biases", n))
+	}
+	start := math.Inf(-1)
+	for i := range m.Channels {
+		ch, key := &m.Channels[i], fmt.Sprintf("channel[%d].", i)
+		kind, ops, known := operators(d, p, ch.Name)
+		k, ok := p.Channel(ch.Name)
+		switch {
+		case !known:
+			c.differ(key+"name", fmt.Sprintf("%q", ch.Name), "nothing: the device has neither drive nor bias by it")
+		case !ok:
+			c.differ(key+"name", fmt.Sprintf("%q", ch.Name), fmt.Sprintf("%q, which the profile does not have", ch.Name))
+		default:
 			start = math.Max(start, p.Start(k))
-			c.channel(fmt.Sprintf("channel[%d].", i), &m.Channels[i], p, k, d, i)
-		}
-		if !math.IsInf(start, 0) {
-			c.number("window_start_ns", m.WindowStart, start)
+			c.text(key+"kind", ch.Kind, kind)
+			c.channel(key, ch, p, k, ops, d.ShiftOperator().Data)
 		}
 	}
-	c.classes(m, b, d)
+	if !math.IsInf(start, 0) {
+		c.number("window_start_ns", m.WindowStart, start)
+	}
+	c.classes(m, b, p, d)
 	c.number("require.infidelity", f.Require.Infidelity, b.Require.Infidelity)
 	c.number("require.susceptibility", f.Require.Susceptibility, b.Require.Susceptibility)
 	if len(f.Require.Margins) != len(b.Require.Margins) {
@@ -137,7 +154,7 @@ func (f *Folder) differences() ([]Difference, error) {
 		for i, r := range f.Require.Margins {
 			key := fmt.Sprintf("require.margin[%d].", i)
 			c.text(key+"error", r.Error, b.Require.Margins[i].Error)
-			c.number(key+"size", r.Size, b.Require.Margins[i].Size)
+			c.number(key+"size", r.Size, c.marginSize(b, p, b.Require.Margins[i]))
 		}
 	}
 	c.number("decoherence.t1_ns", f.T1, d.Sites[0].T1)
@@ -145,37 +162,147 @@ func (f *Folder) differences() ([]Difference, error) {
 	return c.list, nil
 }
 
-func (c *comparison) channel(key string, ch *Channel, p *hardware.Profile, k int, d *device.Device, drive int) {
+// operators gives what the channel of this name multiplies: two operators of a drive, one of a bias.
+func operators(d *device.Device, p *hardware.Profile, name string) (kind string, ops [][]complex128, ok bool) {
+	for i, drive := range d.Drives {
+		if drive.Channel != name {
+			continue
+		}
+		mixing := hardware.Mixing("")
+		if k, ok := p.Channel(name); ok {
+			mixing = p.Channels[k].Mixing
+		}
+		two := d.Operators(i, string(mixing))
+		return hardware.Quadrature, [][]complex128{two[0].Data, two[1].Data}, true
+	}
+	for i, bias := range d.Biases {
+		if bias.Channel == name {
+			return hardware.Baseband, [][]complex128{d.BiasOperator(i).Data}, true
+		}
+	}
+	return "", nil, false
+}
+
+// marginSize gives the size of a brief's margin as the record has it: an offset is a static error there.
+func (c *comparison) marginSize(b *brief.Brief, p *hardware.Profile, m brief.Margin) float64 {
+	for _, e := range b.Errors {
+		if e.Name != m.Error || e.Kind != brief.Offset {
+			continue
+		}
+		if k, ok := p.Channel(e.Channels[0]); ok {
+			return m.Size * p.Channels[k].FullScale * cmplx.Abs(steady(p.Channels[k].Line))
+		}
+	}
+	return m.Size
+}
+
+// steady is the gain of a line for what does not change.
+func steady(l filter.Line) complex128 {
+	g := l.Direct
+	for _, t := range l.Terms {
+		g += t.Residue / cmplx.Pow(-t.Pole, complex(float64(t.Power), 0))
+	}
+	return g
+}
+
+func (c *comparison) channel(key string, ch *Channel, p *hardware.Profile, k int, ops [][]complex128, shift []complex128) {
 	q := &p.Channels[k]
-	c.text(key+"name", ch.Name, q.Name)
-	c.text(key+"kind", ch.Kind, q.Kind)
 	c.number(key+"full_scale_rad_per_ns", ch.FullScale, q.FullScale)
 	c.number(key+"delay_ns", ch.Delay, p.Start(k))
-	c.line(key, ch, q.Line)
-	for i, op := range d.Operators(drive, string(q.Mixing)) {
+	c.line(key, recordedLine{ch.Direct, ch.Poles, ch.Powers, ch.Residues}, q.Line)
+	for i, op := range ops {
 		if i < len(ch.Operators) {
-			c.matrix(fmt.Sprintf("%soperators[%d]", key, i), ch.Operators[i], op.Data)
+			c.matrix(fmt.Sprintf("%soperators[%d]", key, i), ch.Operators[i], op)
 		}
+	}
+	// In [model] zero says that there is no limit; in words it is none.
+	limit := func(name string, recorded, rebuilt float64) {
+		for _, v := range []*float64{&recorded, &rebuilt} {
+			if *v == 0 {
+				*v = math.Inf(1)
+			}
+		}
+		c.number(key+name, recorded, rebuilt)
 	}
 	c.number(key+"max_share", math.Min(1, ch.MaxShare), q.AmplitudeLimit) // without a limit it is full scale
 	c.number(key+"max_slew_per_sample", ch.MaxSlew, q.SlewLimit)
 	c.number(key+"guard_lead", float64(ch.GuardLead), float64(q.GuardLead))
 	c.number(key+"guard_trail", float64(ch.GuardTrail), float64(q.GuardTrail))
 	c.number(key+"ring_out_share", ch.RingOut, q.RingOut.Limit)
+	if recorded, rebuilt := envelope(ch.Box), envelope(q.Envelope == hardware.Box); ch.Kind == hardware.Quadrature {
+		c.text(key+"envelope", recorded, rebuilt)
+	}
+	limit("rms_share", ch.RMS, q.RMSLimit)
+	if ch.RMS > 0 {
+		// A repetition period that is no longer than the span changes nothing; one between two whole numbers of samples may be recorded as the
+		// stricter.
+		whole := func(samples float64) float64 {
+			return math.Max(float64(len(ch.Samples)), math.Floor(samples*(1+inputsTolerance)))
+		}
+		c.number(key+"rms_samples", whole(ch.RMSSamples), whole(q.RMSPeriod/p.SamplePeriod))
+	}
+	limit("out_of_band_share", ch.OutOfBand, q.OutOfBand)
+	if ch.OutOfBand > 0 {
+		c.number(key+"band_ghz", ch.Band, q.Band)
+	}
+	if ch.ZeroMean != q.ZeroMean {
+		c.differ(key+"zero_mean", ch.ZeroMean, q.ZeroMean)
+	}
+	// The tail's budget where it is another than that of the rest.
+	if !math.IsInf(q.RingOut.Limit, 1) || ch.RingOutTail > 0 {
+		recorded, rebuilt := ch.RingOut, q.RingOut.Limit
+		if ch.RingOutTail > 0 {
+			recorded = ch.RingOutTail
+		}
+		if q.RingOut.Tail > 0 {
+			rebuilt = q.RingOut.Tail
+		}
+		c.number(key+"ring_out_tail_share", recorded, rebuilt)
+		if ch.RingOutTail > 0 && ch.RingOutTail != ch.RingOut {
+			c.number(key+"ring_out_fast_ns", ch.RingOutFast, q.RingOut.Fast)
+		}
+	}
+	if len(ch.Compression) != len(q.Compression) {
+		c.differ(key+"compression", fmt.Sprintf("%d points", len(ch.Compression)), fmt.Sprintf("%d points", len(q.Compression)))
+	} else {
+		for i, k := range ch.Compression {
+			c.number(fmt.Sprintf("%scompression[%d][0]", key, i), k.Share, q.Compression[i].Converter)
+			c.number(fmt.Sprintf("%scompression[%d][1]", key, i), k.Reached, q.Compression[i].Reached)
+		}
+	}
+	c.number(key+"shift_rad_per_ns", ch.Shift, q.Shift)
+	if ch.Shift != 0 && q.Shift != 0 {
+		c.matrix(key+"shift_operator", ch.ShiftOperator, shift)
+	}
+}
+
+func envelope(box bool) string {
+	if box {
+		return hardware.Box
+	}
+	return hardware.Disc
+}
+
+// A recordedLine is a line, or a line's slope, as [model] has it.
+type recordedLine struct {
+	direct   complex128
+	poles    []complex128
+	powers   []int
+	residues []complex128
 }
 
 // line compares poles one by one when they stand in the same order, and otherwise the responses, for a stranger may have sorted them.
-func (c *comparison) line(key string, ch *Channel, l filter.Line) {
+func (c *comparison) line(key string, r recordedLine, l filter.Line) {
 	found := &comparison{}
-	found.matrix(key+"direct", []complex128{ch.Direct}, []complex128{l.Direct})
-	if len(ch.Poles) != len(l.Terms) {
-		found.differ(key+"poles_per_ns", fmt.Sprintf("%d poles", len(ch.Poles)), fmt.Sprintf("%d poles", len(l.Terms)))
+	found.matrix(key+"direct", []complex128{r.direct}, []complex128{l.Direct})
+	if len(r.poles) != len(l.Terms) {
+		found.differ(key+"poles_per_ns", fmt.Sprintf("%d poles", len(r.poles)), fmt.Sprintf("%d poles", len(l.Terms)))
 	} else {
 		for i, t := range l.Terms {
 			at := func(name string) string { return fmt.Sprintf("%s%s[%d]", key, name, i) }
-			found.number(at("powers"), float64(ch.Powers[i]), float64(t.Power))
-			found.complex(at("poles_per_ns"), ch.Poles[i], t.Pole)
-			found.complex(at("residues"), ch.Residues[i], t.Residue)
+			found.number(at("powers"), float64(r.powers[i]), float64(t.Power))
+			found.complex(at("poles_per_ns"), r.poles[i], t.Pole)
+			found.complex(at("residues"), r.residues[i], t.Residue)
 		}
 	}
 	if len(found.list) == 0 {
@@ -189,12 +316,12 @@ func (c *comparison) line(key string, ch *Channel, l filter.Line) {
 	}
 	for i := -200; i <= 200 && same; i++ {
 		w := math.Copysign(fastest*math.Pow(10, 1-6*(1-math.Abs(float64(i))/200)), float64(i))
-		rebuilt, recorded := l.Direct, ch.Direct
+		rebuilt, recorded := l.Direct, r.direct
 		for _, t := range l.Terms {
 			rebuilt += t.Residue / cmplx.Pow(complex(0, w)-t.Pole, complex(float64(t.Power), 0))
 		}
-		for k, p := range ch.Poles {
-			recorded += ch.Residues[k] / cmplx.Pow(complex(0, w)-p, complex(float64(ch.Powers[k]), 0))
+		for k, p := range r.poles {
+			recorded += r.residues[k] / cmplx.Pow(complex(0, w)-p, complex(float64(r.powers[k]), 0))
 		}
 		scale = math.Max(scale, cmplx.Abs(rebuilt))
 		same = cmplx.Abs(recorded-rebuilt) <= inputsTolerance*math.Max(1, scale)
@@ -210,22 +337,64 @@ func (c *comparison) complex(key string, recorded, rebuilt complex128) {
 	}
 }
 
+// A wanted is an error class as inputs/ have it.
+type wanted struct {
+	Class
+	slope filter.Line // of kind line
+}
+
+// wantedOf gives what the record should make of one error of the brief.
+func (c *comparison) wantedOf(e brief.Error, p *hardware.Profile, d *device.Device) wanted {
+	w := wanted{Class: Class{Name: e.Name, Kind: e.Kind, Held: true, Channels: e.Channels, Quadrature: e.Quadrature}}
+	switch e.Kind {
+	case brief.Static:
+		w.Operator = e.Operator.Data
+	case brief.Line:
+		if k, ok := p.Channel(e.Channels[0]); ok {
+			if q, ok := p.Channels[k].Parameter(e.Parameter); ok {
+				w.slope = q.Slope
+			}
+		}
+	case brief.Offset:
+		// A constant at the converter of one quadrature is a static error along what the line's steady gain makes of it.
+		w.Kind, w.Channels, w.Quadrature = brief.Static, nil, ""
+		k, ok := p.Channel(e.Channels[0])
+		_, ops, known := operators(d, p, e.Channels[0])
+		if !ok || !known {
+			break
+		}
+		g := steady(p.Channels[k].Line)
+		if e.Quadrature == "Q" {
+			g *= 1i
+		}
+		g /= complex(cmplx.Abs(g), 0)
+		w.Operator = make([]complex128, len(ops[0]))
+		for i := range w.Operator {
+			w.Operator[i] = complex(real(g), 0) * ops[0][i]
+			if len(ops) > 1 {
+				w.Operator[i] += complex(imag(g), 0) * ops[1][i]
+			}
+		}
+	}
+	return w
+}
+
 // classes compares what the pulse is held against, and that every other error of the record is what its name says.
-func (c *comparison) classes(m *Model, b *brief.Brief, d *device.Device) {
+func (c *comparison) classes(m *Model, b *brief.Brief, p *hardware.Profile, d *device.Device) {
 	var driven []string
 	for _, drive := range d.Drives {
 		driven = append(driven, drive.Channel)
 	}
-	wanted := map[string]Class{}
+	for _, bias := range d.Biases {
+		driven = append(driven, bias.Channel)
+	}
+	list := map[string]wanted{}
 	for _, e := range b.Errors {
-		w := Class{Name: e.Name, Kind: e.Kind, Held: true, Channels: e.Channels}
-		if e.Kind == brief.Static {
-			w.Operator = e.Operator.Data
-		}
-		if e.Kind == brief.Amplitude && len(w.Channels) == 0 {
+		w := c.wantedOf(e, p, d)
+		if w.Kind == brief.Amplitude && len(w.Channels) == 0 {
 			w.Channels = driven
 		}
-		wanted[e.Name] = w
+		list[e.Name] = w
 		if !slices.ContainsFunc(m.Errors, func(r Class) bool { return r.Name == e.Name }) {
 			c.differ("error", "nothing", fmt.Sprintf("%q, held", e.Name))
 		}
@@ -233,16 +402,16 @@ func (c *comparison) classes(m *Model, b *brief.Brief, d *device.Device) {
 	undeclared := *m
 	undeclared.Errors = nil
 	for _, s := range undeclared.classes() {
-		if _, declared := wanted[s.Name]; !declared {
+		if _, declared := list[s.Name]; !declared {
 			if s.Kind == "amplitude" {
 				s.Channels = driven
 			}
-			wanted[s.Name] = s
+			list[s.Name] = wanted{Class: s}
 		}
 	}
 	for i, r := range m.Errors {
 		key := fmt.Sprintf("error[%d].", i)
-		w, ok := wanted[r.Name]
+		w, ok := list[r.Name]
 		if !ok {
 			c.differ(key+"name", fmt.Sprintf("%q", r.Name), "nothing")
 			continue
@@ -254,22 +423,30 @@ func (c *comparison) classes(m *Model, b *brief.Brief, d *device.Device) {
 		if r.Kind != w.Kind {
 			continue
 		}
-		if r.Kind == "static" {
+		switch r.Kind {
+		case "static":
 			c.matrix(key+"operator", r.Operator, w.Operator)
-		}
-		if r.Kind == "amplitude" {
-			names := r.Channels
-			if len(names) == 0 {
-				for _, ch := range m.Channels {
-					names = append(names, ch.Name)
-				}
-			}
-			sorted := func(list []string) string {
-				list = append([]string(nil), list...)
-				slices.Sort(list)
-				return strings.Join(slices.Compact(list), ", ")
-			}
-			c.text(key+"channels", sorted(names), sorted(w.Channels))
+		case "line":
+			c.text(key+"channel", r.Channels[0], w.Channels[0])
+			c.line(key, recordedLine{r.Direct, r.Poles, r.Powers, r.Residues}, w.slope)
+		case "amplitude", "skew":
+			c.text(key+"quadrature", r.Quadrature, w.Quadrature)
+			both := r.Kind == "skew" || r.Quadrature != ""
+			c.text(key+"channels", m.named(r.Channels, both), m.named(w.Channels, both))
 		}
 	}
+}
+
+// named lists channels in order; none means all, or all with two quadratures.
+func (m *Model) named(list []string, both bool) string {
+	list = append([]string(nil), list...)
+	if len(list) == 0 {
+		for _, ch := range m.Channels {
+			if !both || ch.Kind == hardware.Quadrature {
+				list = append(list, ch.Name)
+			}
+		}
+	}
+	slices.Sort(list)
+	return strings.Join(slices.Compact(list), ", ")
 }

@@ -94,6 +94,9 @@ func (m *Model) judge(ctx context.Context, infidelity float64) (*Verdict, error)
 	}
 	if v.Pair, err = e.pair(ctx); err == errNoTurn || err == errNoFrame {
 		v.Warnings = append(v.Warnings, sentence(err))
+		if err == errNoFrame {
+			v.Pair = Pair{math.NaN(), math.NaN()}
+		}
 	} else if err != nil {
 		return nil, err
 	}
@@ -178,8 +181,11 @@ func (v *Verdict) require(r Require) {
 	}
 	for _, m := range r.Margins {
 		q := Requirement{Name: "margin against " + m.Error, Unit: "MHz", Margin: true, Allowed: m.Size / perMHz}
-		if m.Share {
+		switch {
+		case m.Share:
 			q.Unit, q.Allowed = "%", m.Size/perPercent
+		case m.Angle:
+			q.Unit, q.Allowed = "deg", m.Size/perDegree
 		}
 		known := false
 		for _, e := range v.Errors {

@@ -12,9 +12,11 @@ type labour struct {
 	spin   *spinLabour // two levels
 	series [][]complex128
 	sums   []complex128
-	drive  []float64 // 1 + lambda for each control of this gate
 	lambda complex128
 	extra  sparse
+	ops    []sparse // of every control with this gate's error
+	op     []complex128
+	own    []sparse // memory of those that the error changes
 }
 
 func newLabour(e *engine) *labour {
@@ -22,7 +24,6 @@ func newLabour(e *engine) *labour {
 	l := &labour{
 		e: e, window: make([]complex128, n*n), half: make([]complex128, n*n), whole: make([]complex128, n*n),
 		block: make([]complex128, d*d), gram: make([]complex128, d*d),
-		drive: make([]float64, len(e.controls)),
 	}
 	if n == 2 {
 		l.spin = newSpinLabour(e)
@@ -32,44 +33,64 @@ func newLabour(e *engine) *labour {
 	for i := range l.series {
 		l.series[i] = make([]complex128, n*n)
 	}
-	l.sums = make([]complex128, n*n)
+	l.sums, l.op = make([]complex128, n*n), make([]complex128, n*n)
 	return l
 }
 
 // integrate sets u to the evolution along p with error lambda times pr; pr may be nil.
 func (l *labour) integrate(p *plan, pr *probe, lambda float64, u []complex128) {
-	for k, c := range l.e.controls {
-		l.drive[k] = 1
-		if pr != nil && pr.amplitude != nil && pr.amplitude[c.channel] {
-			l.drive[k] += lambda
-		}
-	}
-	var static []complex128
-	if pr != nil {
-		static = pr.static
-	}
 	if l.spin != nil {
-		l.spin.integrate(p, l.drive, static, lambda, u)
+		l.spin.choose(p, pr, lambda)
+		l.spin.integrate(p, u)
 		return
 	}
 	l.extra, l.lambda = nil, complex(lambda, 0)
-	if static != nil {
-		l.extra = sparsely(static, l.e.dim)
+	if pr != nil && pr.static != nil {
+		l.extra = sparsely(pr.static, l.e.dim)
 	}
+	l.choose(p, pr, lambda)
 	setIdentity(u, l.e.dim)
 	for i := range p.steps {
 		l.step(p, &p.steps[i], u)
 	}
 }
 
+// choose makes the operators of every control of p with error lambda times pr.
+func (l *labour) choose(p *plan, pr *probe, lambda float64) {
+	for len(l.ops) < p.controls {
+		l.ops, l.own = append(l.ops, nil), append(l.own, nil)
+	}
+	for k := range p.controls {
+		l.ops[k] = nil
+		if k < len(l.e.controls) {
+			l.ops[k] = l.e.controls[k].elements
+		}
+		if pr == nil || pr.first == nil || pr.first[k] == nil && pr.second[k] == nil {
+			continue
+		}
+		clear(l.op)
+		if k < len(l.e.controls) {
+			copy(l.op, l.e.controls[k].op)
+		}
+		for i, v := range pr.first[k] {
+			l.op[i] += complex(lambda, 0) * v
+		}
+		for i, v := range pr.second[k] {
+			l.op[i] += complex(lambda*lambda, 0) * v
+		}
+		l.own[k] = appendSparse(l.own[k][:0], l.op, l.e.dim)
+		l.ops[k] = l.own[k]
+	}
+}
+
 // undriven sets u to the static evolution over the length of p.
 func (l *labour) undriven(p *plan, u []complex128) {
-	clear(l.drive)
 	if l.spin != nil {
-		l.spin.integrate(p, l.drive, nil, 0, u)
+		l.spin.still(p)
+		l.spin.integrate(p, u)
 		return
 	}
-	l.extra = nil
+	l.extra, l.ops, l.own = nil, make([]sparse, p.controls), make([]sparse, p.controls)
 	setIdentity(u, l.e.dim)
 	for i := range p.steps {
 		l.step(p, &p.steps[i], u)
@@ -90,7 +111,10 @@ func (l *labour) step(p *plan, st *timeStep, u []complex128) {
 		if l.extra != nil {
 			apply(next, l.extra, l.series[o], fs*l.lambda, n)
 		}
-		for k := range e.controls {
+		for k := range p.controls {
+			if len(l.ops[k]) == 0 {
+				continue
+			}
 			h := p.numbers[st.at+k*st.order : st.at+(k+1)*st.order]
 			clear(l.sums)
 			some := false
@@ -105,7 +129,7 @@ func (l *labour) step(p *plan, st *timeStep, u []complex128) {
 				}
 			}
 			if some {
-				apply(next, e.controls[k].elements, l.sums, fs*complex(l.drive[k], 0), n)
+				apply(next, l.ops[k], l.sums, fs, n)
 			}
 		}
 	}
@@ -133,9 +157,10 @@ func apply(dst []complex128, a sparse, b []complex128, f complex128, n int) {
 //
 //	a' = -i (z a + conj(c) b),   b' = -i (c a - z b)
 type spinLabour struct {
-	op     []axis // of every control
-	static axis
-	flat   bool // no control has a part along Z: only the first coefficient of z is not zero
+	e    *engine
+	op   []axis // of every control, with this gate's error
+	rest axis   // what is constant in time
+	flat bool   // no control has a part along Z: only the first coefficient of z is not zero
 
 	reciprocal [maxOrder + 1]float64 // 1/n
 
@@ -152,38 +177,60 @@ func axisOf(m []complex128) axis { // m Hermitian and traceless
 }
 
 func newSpinLabour(e *engine) *spinLabour {
-	s := &spinLabour{static: axisOf(e.static), flat: true}
+	s := &spinLabour{e: e}
 	for n := 1; n <= maxOrder; n++ {
 		s.reciprocal[n] = 1 / float64(n)
-	}
-	for _, c := range e.controls {
-		a := axisOf(c.op)
-		s.op = append(s.op, a)
-		s.flat = s.flat && a.z == 0
 	}
 	return s
 }
 
-func (s *spinLabour) integrate(p *plan, drive []float64, static []complex128, lambda float64, u []complex128) {
-	rest := s.static
-	if static != nil {
-		v := axisOf(static)
-		rest.cr += lambda * v.cr
-		rest.ci += lambda * v.ci
-		rest.z += lambda * v.z
+// choose makes the operators of every control of p with error lambda times pr.
+func (s *spinLabour) choose(p *plan, pr *probe, lambda float64) {
+	s.still(p)
+	copy(s.op, s.e.axes)
+	if pr != nil && pr.static != nil {
+		s.rest.add(lambda, axisOf(pr.static))
 	}
+	for k := range s.op {
+		if pr != nil && pr.first != nil {
+			s.op[k].add(lambda, pr.firstAxes[k])
+			s.op[k].add(lambda*lambda, pr.secondAxes[k])
+		}
+		s.flat = s.flat && s.op[k].z == 0
+	}
+}
+
+// still lets nothing drive the device.
+func (s *spinLabour) still(p *plan) {
+	s.rest, s.flat = axisOf(s.e.static), true
+	for len(s.op) < p.controls {
+		s.op = append(s.op, axis{})
+	}
+	s.op = s.op[:p.controls]
+	clear(s.op)
+}
+
+func (a *axis) add(f float64, b axis) {
+	a.cr += f * b.cr
+	a.ci += f * b.ci
+	a.z += f * b.z
+}
+
+func (s *spinLabour) integrate(p *plan, u []complex128) {
 	c := column{ar: 1}
 	for i := range p.steps {
 		st := &p.steps[i]
 		h := s.h[:st.order]
+		first := true
 		for k := range s.op {
 			o := s.op[k]
-			o.cr *= drive[k]
-			o.ci *= drive[k]
-			o.z *= drive[k]
+			if o == (axis{}) {
+				continue
+			}
 			numbers := p.numbers[st.at+k*st.order:]
 			numbers = numbers[:len(h)]
-			if k == 0 {
+			if first {
+				first = false
 				for j, v := range numbers {
 					f := v * st.s
 					h[j] = axis{f * o.cr, f * o.ci, f * o.z}
@@ -197,9 +244,10 @@ func (s *spinLabour) integrate(p *plan, drive []float64, static []complex128, la
 				h[j].z += f * o.z
 			}
 		}
-		h[0].cr += st.s * rest.cr
-		h[0].ci += st.s * rest.ci
-		h[0].z += st.s * rest.z
+		if first {
+			clear(h)
+		}
+		h[0].add(st.s, s.rest)
 		if s.flat {
 			c = s.stepFlat(h, c)
 		} else {

@@ -8,12 +8,16 @@ import (
 	"holdfast/hardware"
 )
 
-// ringOut names the reading of everything that arrives after the span: [model] does not tell its parts apart.
+// ringOut names the reading of everything that arrives after the span where the model does not tell its parts apart.
 const ringOut hardware.Limit = "ring-out"
 
 // Limits reads every limit of every channel from the codes, or from the samples where there are no codes. It uses no constraint row
 // and none of package hardware's checks: amplitudes, differences and guards are counted, and what still arrives after the
-// span is integrated and its peaks sought.
+// span is integrated and its peaks sought. Guards, amplitude and slew are of what the converter plays; rms, out-of-band, mean and ring-out
+// of what compression leaves of it.
+//
+// Rounding keeps no sum of zero: a mean passes within half a code in each quadrature, or the most that compression makes of half a code,
+// as if every sample had been rounded the same way.
 func (m *Model) Limits(ctx context.Context) ([]Limit, error) {
 	var list []Limit
 	for i := range m.Channels {
@@ -26,15 +30,23 @@ func (m *Model) Limits(ctx context.Context) ([]Limit, error) {
 			list = append(list, Limit{Channel: c.Name, Reading: r})
 		}
 		full := math.Ldexp(1, m.Bits-1)
-		var guards, amplitude, slew, code float64
-		var last complex128
+		var guards, amplitude, slew, code, energy float64
+		var last, sum complex128
+		y := make([]complex128, len(c.Samples))
 		step := func(x complex128) {
 			slew = math.Max(slew, math.Max(math.Abs(real(x-last)), math.Abs(imag(x-last))))
 			last = x
 		}
 		for k, x := range c.Samples {
 			step(x)
-			amplitude = math.Max(amplitude, cmplx.Abs(x))
+			if c.Box {
+				amplitude = math.Max(amplitude, math.Max(math.Abs(real(x)), math.Abs(imag(x))))
+			} else {
+				amplitude = math.Max(amplitude, cmplx.Abs(x))
+			}
+			y[k] = c.Compressed(x)
+			energy += square(y[k])
+			sum += y[k]
 			if k < c.GuardLead || k >= m.Samples-c.GuardTrail {
 				guards = math.Max(guards, cmplx.Abs(x))
 			}
@@ -52,59 +64,147 @@ func (m *Model) Limits(ctx context.Context) ([]Limit, error) {
 		if !math.IsInf(c.MaxSlew, 1) {
 			add(hardware.Slew, "of full scale per sample", slew, c.MaxSlew)
 		}
-		if !math.IsInf(c.RingOut, 1) {
-			found, err := m.ringing(ctx, i)
-			if err != nil {
-				return nil, err
-			}
-			add(ringOut, "of full scale", found, c.RingOut)
+		span := float64(m.Samples)
+		if c.RMS > 0 {
+			add(hardware.RMS, "of full scale", math.Sqrt(energy/math.Max(span, c.RMSSamples)), c.RMS)
 		}
+		if c.OutOfBand > 0 {
+			add(hardware.OutOfBand, "of full scale rms", math.Sqrt(outside(y, c.Band*m.SamplePeriod)/span), c.OutOfBand)
+		}
+		if c.ZeroMean {
+			add(hardware.Mean, "of full scale", math.Max(math.Abs(real(sum)), math.Abs(imag(sum)))/span, 0.5*c.stretch()/full)
+		}
+		if c.RingOutTail == 0 && math.IsInf(c.RingOut, 1) {
+			continue
+		}
+		fast, tail, err := m.ringing(ctx, i)
+		if err != nil {
+			return nil, err
+		}
+		if c.RingOutTail == 0 {
+			add(ringOut, "of full scale", math.Max(fast, tail), c.RingOut)
+			continue
+		}
+		if !math.IsInf(c.RingOut, 1) {
+			add(hardware.RingOutFast, "of full scale", fast, c.RingOut)
+		}
+		add(hardware.RingOutTail, "of full scale", tail, c.RingOutTail)
 	}
 	return list, nil
 }
 
-// ringing gives the largest quadrature of channel c, in shares of full scale, at any instant after its last sample has been played.
-func (m *Model) ringing(ctx context.Context, c int) (float64, error) {
+// stretch is by how much compression can multiply an error of up to half a code in each quadrature. Along the radius it multiplies
+// by a slope of the table and across by one between the least and the most of them: with a and b the most and the least, an
+// error (1, 1)/2 seen by a quadrature at angle t to the radius is at most
+//
+//	a cos^2 t + b sin^2 t + (a - b) cos t sin t <= (a + b)/2 + (a - b)/sqrt 2
+//
+// times a half, and where there is one quadrature a times a half.
+func (c *Channel) stretch() float64 {
+	if len(c.Compression) < 2 {
+		return 1
+	}
+	least, most := math.Inf(1), 0.0
+	for k := 1; k < len(c.Compression); k++ {
+		p, q := c.Compression[k-1], c.Compression[k]
+		slope := (q.Reached - p.Reached) / (q.Share - p.Share)
+		least, most = math.Min(least, slope), math.Max(most, slope)
+	}
+	if c.Kind == "baseband" {
+		return most
+	}
+	return (most+least)/2 + (most-least)/math.Sqrt2
+}
+
+// outside gives the energy of x outside the band |f| <= w, in cycles a sample: the sum of |x|^2 less that inside,
+//
+//	sum over j, k of x_j conj(x_k) sin(2 pi w (j-k))/(pi (j-k))
+//
+// from the autocorrelation of x, added up as it stands; good to about 1e-15 of the sum of |x|^2.
+func outside(x []complex128, w float64) float64 {
+	if w >= 0.5 {
+		return 0
+	}
+	first, last := len(x), 0
+	for k, v := range x {
+		if v != 0 {
+			first, last = min(first, k), k+1
+		}
+	}
+	if first > last {
+		return 0
+	}
+	x = x[first:last]
+	e := 0.0
+	for m := range x {
+		r := 0.0 // Re sum x_(k+m) conj(x_k)
+		for k, v := range x[m:] {
+			r += real(v)*real(x[k]) + imag(v)*imag(x[k])
+		}
+		if m == 0 {
+			e += (1 - 2*w) * r
+			continue
+		}
+		e -= 2 * r * math.Sin(2*math.Pi*w*float64(m)) / (math.Pi * float64(m))
+	}
+	return math.Max(0, e)
+}
+
+// ringing gives the largest quadrature of channel c, in shares of full scale, at any instant after its last sample has been played: in the
+// first RingOutFast ns, and from then on.
+func (m *Model) ringing(ctx context.Context, c int) (fast, tail float64, err error) {
 	// The channel alone, with a quadrature's operators of norm 1 so that the steps resolve u itself.
 	one := *m
 	one.Channels = []Channel{m.Channels[c]}
 	ch := &one.Channels[0]
-	ch.FullScale, ch.Delay = 1, 0
-	one.WindowStart = 0
-	e := &engine{m: &one, turned: []bool{true}}
+	ch.FullScale, ch.Delay, ch.Shift, ch.Operators = 1, 0, 0, make([][]complex128, len(ch.Operators))
 	for q := range ch.Operators {
-		e.controls = append(e.controls, control{quadrature: q, norm: 1})
+		ch.Operators[q] = [][]complex128{{0, 1, 1, 0}, {0, -1i, 1i, 0}}[q]
 	}
-	w := e.newWalker(1)
+	one.WindowStart, one.Dim = 0, 2
+	e := &engine{m: &one, dim: 2}
+	e.takeDrives()
+	w := e.newWalker(nil, 1)
 	// What has been stored when the last sample ends, without keeping the steps.
 	for k := range m.Samples {
 		if err := w.to(ctx, float64(k+1)*m.SamplePeriod, reach{}, &plan{}); err != nil {
-			return 0, err
+			return 0, 0, err
 		}
 	}
 	w.take()
-	worst := 0.0
+	split := w.t + ch.RingOutFast
+	worst := &tail
+	if ch.RingOutFast > 0 {
+		worst = &fast
+	}
 	for w.count = 0; w.count < settleBudget; {
 		if err := ctx.Err(); err != nil {
-			return 0, err
+			return 0, 0, err
 		}
 		still := 0.0
 		for i := range w.lines[0].chains {
 			still += w.lines[0].chains[i].peak()
 		}
-		if still <= worst || still < 1e-15 {
+		if still < 1e-15 || still <= *worst && worst == &tail {
 			break
 		}
-		p := &plan{controls: len(e.controls)}
-		if err := w.stride(w.step, reach{}, p); err != nil {
-			return 0, err
+		step := w.step
+		if worst == &fast && w.t+step >= split*(1-1e-15) {
+			step = split - w.t
+		}
+		p := w.newPlan()
+		if err := w.stride(step, reach{}, p); err != nil {
+			return 0, 0, err
 		}
 		st := p.steps[0]
 		for k := range e.controls {
-			worst = math.Max(worst, largest(p.numbers[st.at+k*st.order:st.at+(k+1)*st.order]))
+			*worst = math.Max(*worst, largest(p.numbers[st.at+k*st.order:st.at+(k+1)*st.order]))
+		}
+		if worst == &fast && w.t >= split*(1-1e-15) {
+			worst = &tail
 		}
 	}
-	return worst, nil
+	return fast, tail, nil
 }
 
 // largest gives the largest |u| of the polynomial sum u_n y^n on [0, 1]: the ends, and between them wherever the slope

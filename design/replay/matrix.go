@@ -133,8 +133,9 @@ type sparse []struct {
 	v    complex128
 }
 
-func sparsely(m []complex128, n int) sparse {
-	var s sparse
+func sparsely(m []complex128, n int) sparse { return appendSparse(nil, m, n) }
+
+func appendSparse(s sparse, m []complex128, n int) sparse {
 	for i := range n {
 		for j := range n {
 			if v := m[i*n+j]; v != 0 {

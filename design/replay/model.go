@@ -12,11 +12,11 @@ const (
 	maxSamples  = 65536
 	maxDim      = 64
 	maxChannels = 16
-	maxPoles    = 64 // entries of one line
-	maxPower    = 33 // what package filter allows, and one more for the slope of such a line
+	maxPoles    = 256 // entries of one line
+	maxPower    = 32  // as in package filter, slopes included
 	maxErrors   = 64
 	maxKnees    = 256 // points of a compression table
-	maxAnyDim   = 16 // levels of which all d^2-1 static errors are judged
+	maxAnyDim   = 16  // levels of which all d^2-1 static errors are judged
 )
 
 // A Model is [model] of pulse.toml with the samples loaded: all that is needed to recompute the gate. Matrices are
@@ -61,23 +61,23 @@ type Channel struct {
 	Shift         float64
 	ShiftOperator []complex128
 
-	// The limits, in shares of full scale; +Inf where the instrument has none. All but those of ring-out are of the samples as
-	// the converter plays them, before compression.
+	// The limits, in shares of full scale; +Inf where the instrument has none. MaxShare, MaxSlew and the guards are of the samples as
+	// the converter plays them, the others of what compression leaves.
 	MaxShare, MaxSlew, RingOut float64
 	GuardLead, GuardTrail      int
 
 	// More limits, of which 0 means that there is none.
 	Box         bool    // MaxShare bounds each quadrature, not |x|
-	RMS         float64 // root of the sum of |x|^2 over max(the span, RMSSamples)
+	RMS         float64 // root of the sum of |y|^2 over max(the span, RMSSamples)
 	RMSSamples  float64 // samples of a repetition period
 	RingOutTail float64 // rules from RingOutFast on; before, and without it, RingOut does
 	RingOutFast float64 // ns after the span
-	OutOfBand   float64 // root of the mean square of the samples outside Band, over the span
+	OutOfBand   float64 // root of the mean square of y outside Band, over the span
 	Band        float64 // GHz, either side of zero
 	ZeroMean    bool    // the samples, compressed, add up to zero as nearly as codes can
 
 	Samples []complex128 // x_I + i x_Q, or x, what the converters play
-	Exact   []complex128 // the same before rounding; nil when there is none
+	Exact   []complex128 // the same before rounding, at the converter too; nil when there is none
 	Codes   []int16      // interleaved as in the file; nil for a pulse that has no codes
 }
 

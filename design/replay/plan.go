@@ -35,15 +35,24 @@ var errTooLong = errors.New("the line is so fast, or the static part so large, a
 // A reach says for how large an error a plan is good.
 type reach struct {
 	static    float64 // norm of lambda V, rad/ns
-	amplitude float64 // largest |lambda| of an amplitude error
+	amplitude float64 // largest |lambda| of an error of amplitude or skew
+	line      float64 // largest |lambda| of an error of a line
 }
 
 // reaches are the plans that are made, each when it is first needed: about 8 MHz and 12.5 %, 32 MHz and 50 %, and
-// beyond what is ever searched.
-var reaches = [...]reach{{0.026, 0.125}, {0.104, 0.5}, {0.416, 2}, {6.7, 30}}
+// beyond what is ever searched. Plans for an error of a line hold for it alone, up to the same shares.
+var reaches = [...]reach{{0.026, 0.125, 0}, {0.104, 0.5, 0}, {0.416, 2, 0}, {6.7, 30, 0}}
+
+// as gives a reach for plans of one kind.
+func (r reach) as(line bool) reach {
+	if line {
+		return reach{line: r.amplitude}
+	}
+	return r
+}
 
 func (r reach) holds(need reach) bool {
-	return need.static <= r.static && need.amplitude <= r.amplitude
+	return need.static <= r.static && need.amplitude <= r.amplitude && need.line <= r.line
 }
 
 // A plan is a stretch of time as steps, each with the Taylor coefficients of every control, scaled to the step:
@@ -77,7 +86,7 @@ func (p *plan) append(s float64, order int, ctl []float64) error {
 func (w *walker) order(s float64, r reach) int {
 	h, m := w.norms, w.maj
 	clear(h)
-	w.bound(h, (1+r.amplitude)*s)
+	w.bound(h, r, s)
 	h[0] += (w.e.staticNorm + r.static) * s
 	// The last coefficients may all be too small to matter: leave them out of the sums.
 	last := seriesLength - 1
@@ -111,25 +120,81 @@ func (w *walker) order(s float64, r reach) int {
 	return 1
 }
 
-// bound adds to h, coefficient by coefficient, f times the sum over channels of a norm of what the channel adds to H: for two
-// levels the norm itself, half the length of the field, and otherwise the sum of both quadratures. The channels are not added up
-// before, for an amplitude error may be of one of two that cancel.
-func (w *walker) bound(h []float64, f float64) {
-	for k := 0; k < len(w.e.controls); k++ {
-		one := &w.e.controls[k]
-		u := w.ctl[k*seriesLength : (k+1)*seriesLength]
-		if w.e.dim == 2 && k+1 < len(w.e.controls) && w.e.controls[k+1].channel == one.channel {
-			a, b := w.e.axes[k], w.e.axes[k+1]
-			k++
-			v := w.ctl[k*seriesLength : (k+1)*seriesLength]
+// bound adds to h, coefficient by coefficient, s times the sum over channels of a bound of what the channel adds to H, whichever
+// error up to r there is. Channels are not added up before, for an error may be of one of two that cancel. With N_n the norm of
+// u_I O_I + u_Q O_Q in coefficient n, an error of amplitude or skew adds lambda times
+//
+//	u_I O_I + u_Q O_Q, u_I O_I, u_Q O_Q or u_Q O_I
+//
+// and a shift by |u|^2 K, whose coefficients are sums of products of those of u and so complete to the order of u, becomes at most
+// the shift for (1 + lambda)^2 as much of any of u_I^2, u_Q^2 and u_I u_Q. A line's error adds lambda N of v and the beat and square of v.
+func (w *walker) bound(h []float64, r reach, s float64) {
+	for c := range w.e.drives {
+		d := &w.e.drives[c]
+		i, q := d.ops[0], d.ops[1]
+		w.boundOf(h, s, r.amplitude, i, q, i, q)
+		if d.shift == nil {
+			continue
+		}
+		f, g := s*d.norm, s*d.norm*r.amplitude*(2+r.amplitude)
+		a := w.coefficients(d.squares[0])
+		if d.squares[1] < 0 {
 			for n := range h {
-				cr, ci, z := u[n]*a.cr+v[n]*b.cr, u[n]*a.ci+v[n]*b.ci, u[n]*a.z+v[n]*b.z
-				h[n] += f * math.Sqrt(cr*cr+ci*ci+z*z)
+				h[n] += (f + g) * math.Abs(a[n])
 			}
 			continue
 		}
+		b, ab := w.coefficients(d.squares[1]), w.coefficients(d.squares[2])
 		for n := range h {
-			h[n] += f * one.norm * math.Abs(u[n])
+			h[n] += f * math.Abs(a[n]+b[n])
+			h[n] += g * math.Max(math.Abs(a[n])+math.Abs(b[n]), math.Abs(ab[n]))
+		}
+	}
+	if w.probe == nil || w.probe.slope == nil {
+		return
+	}
+	d := &w.e.drives[w.probe.channel()]
+	at := len(w.e.controls)
+	q := -1
+	if d.ops[1] >= 0 {
+		q = at + 1
+	}
+	w.boundOf(h, s*r.line, 0, at, q, d.ops[0], d.ops[1])
+	if d.shift != nil {
+		end := len(w.controls)
+		twice, square := w.coefficients(end-2), w.coefficients(end-1)
+		f := s * d.norm * r.line
+		for n := range h {
+			h[n] += f * (2*math.Abs(twice[n]) + r.line*math.Abs(square[n]))
 		}
 	}
 }
+
+// boundOf adds f times the norm of one field, controls i and q with the operators of controls opI and opQ, and f a times
+// whatever an error of its amplitude or skew can add to it. q is negative where there is one quadrature.
+func (w *walker) boundOf(h []float64, f, a float64, i, q, opI, opQ int) {
+	e := w.e
+	u, one := w.coefficients(i), e.controls[opI].norm
+	if q < 0 {
+		for n := range h {
+			h[n] += f * (1 + a) * one * math.Abs(u[n])
+		}
+		return
+	}
+	v, two := w.coefficients(q), e.controls[opQ].norm
+	for n := range h {
+		norm := one*math.Abs(u[n]) + two*math.Abs(v[n])
+		if e.dim == 2 { // the norm itself: half the length of the field
+			p, o := &e.axes[opI], &e.axes[opQ]
+			cr, ci, z := u[n]*p.cr+v[n]*o.cr, u[n]*p.ci+v[n]*o.ci, u[n]*p.z+v[n]*o.z
+			norm = math.Sqrt(cr*cr + ci*ci + z*z)
+		}
+		h[n] += f * norm
+		if a > 0 {
+			h[n] += f * a * math.Max(norm, math.Max(one*math.Abs(u[n]), math.Max(one, two)*math.Abs(v[n])))
+		}
+	}
+}
+
+// coefficients gives the Taylor coefficients of one control.
+func (w *walker) coefficients(k int) []float64 { return w.ctl[k*seriesLength : (k+1)*seriesLength] }

@@ -70,14 +70,14 @@ func (e *engine) between(i int) complex128 {
 // from the start of the first window to the end of the last, or settled after it.
 func (e *engine) train(ctx context.Context, turns []complex128) ([]complex128, error) {
 	n, l := e.dim, e.labours[0]
-	w := e.newWalker(turns...)
-	if err := w.to(ctx, e.start, reach{}, &plan{controls: len(e.controls)}); err != nil {
+	w := e.newWalker(nil, turns...)
+	if err := w.to(ctx, e.start, reach{}, w.newPlan()); err != nil {
 		return nil, err
 	}
 	total, next, u := make([]complex128, n*n), make([]complex128, n*n), make([]complex128, n*n)
 	setIdentity(total, n)
 	for k := range turns { // a plan for each pulse, so that memory does not grow with their number
-		p := &plan{controls: len(e.controls)}
+		p := w.newPlan()
 		if err := w.to(ctx, e.start+float64(k+1)*e.span, reach{}, p); err != nil {
 			return nil, err
 		}
@@ -162,7 +162,7 @@ func (e *engine) bringUp(ctx context.Context) (BringUp, error) {
 	}
 	zero, one := e.m.CodeSpace[0], e.m.CodeSpace[1]
 	var gates []gate
-	all := e.newAmplitude(nil)
+	all := e.newAmplitude(nil, "")
 	for i := -10; i <= 10; i++ {
 		b.Amplitude = append(b.Amplitude, Population{Value: float64(100+i) / 100})
 		gates = append(gates, gate{all, float64(i) / 100})
@@ -215,11 +215,11 @@ func (e *engine) bringUp(ctx context.Context) (BringUp, error) {
 		}
 	}
 	n, l := e.dim, e.labours[0]
-	w := e.newWalker(turns...)
+	w := e.newWalker(nil, turns...)
 	total, next, u := make([]complex128, n*n), make([]complex128, n*n), make([]complex128, n*n)
 	setIdentity(total, n)
 	for k := range repeats {
-		p := &plan{controls: len(e.controls)}
+		p := w.newPlan()
 		if err := w.to(ctx, e.start+float64(k+1)*e.span, reach{}, p); err != nil {
 			return b, err
 		}

@@ -173,8 +173,16 @@ func TestNoTurn(t *testing.T) {
 		t.Errorf("warnings %q, pair %v", v.Warnings, v.Pair)
 	}
 	m.FreeZAfter = []float64{0.3}
-	if v, err = m.Judge(context.Background(), 1e-4); err != nil || len(v.Warnings) != 1 {
+	if v, err = m.Judge(context.Background(), 1e-4); err != nil || len(v.Warnings) != 1 || !math.IsNaN(v.Pair.Infidelity) {
 		t.Errorf("free frames: %v, warnings %q", err, v.Warnings)
+	}
+	// A shift about X is no friend of the frame either, and one about Z is.
+	m = rackB(cosine(24, 32))
+	for want, op := range map[int][]complex128{1: halfX, 0: halfZ} {
+		m.Channels[0].Shift, m.Channels[0].ShiftOperator = 0.01, op
+		if v, err = m.Judge(context.Background(), 1e-4); err != nil || len(v.Warnings) != want {
+			t.Errorf("a shift about %v: %v, warnings %q", op, err, v.Warnings)
+		}
 	}
 	// A ladder turns by its number of quanta.
 	s := complex(math.Sqrt2/2, 0)

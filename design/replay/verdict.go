@@ -67,7 +67,8 @@ type Figures struct {
 // Pair is the gate played twice without a gap against the square of its
 // target: what one pulse's ring-out does to the next, beyond what the record
 // of a single gate can show. The second pulse is turned by each of four phases
-// (0, 90, 180, 270 degrees) and the worst is kept.
+// (0, 90, 180, 270 degrees) and the worst is kept. Where free Z angles cannot be
+// followed from one pulse to the next it is NaN, and a warning says so.
 type Pair struct {
 	Infidelity float64
 	Phase      float64 // degrees, of the worst
@@ -83,8 +84,8 @@ type Limit struct {
 type Error struct {
 	Name string
 	Held bool
-	Kind string // "static", "amplitude" or "any"
-	Unit string // of Low, High and Curve's Value: "MHz" or "%"
+	Kind string // "static", "amplitude", "any", "skew" or "line", as Class defines them
+	Unit string // of Low, High and Curve's Value: "MHz", "%" (amplitude and line) or "deg" (skew)
 
 	// Susceptibility is the share of the error that survives the gate, rms over
 	// the class, 0 to 1, from Richardson-extrapolated differences of exact gates.

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"math/cmplx"
+	"slices"
 )
 
 // A chain is one entry r/(s-p)^m of a line:
@@ -67,10 +68,6 @@ func (c *chain) series(x complex128, s float64, dst, cur []complex128) {
 // to the end of double precision.
 func (c *chain) advance(x complex128, s float64, cur, sum []complex128) {
 	if c.settling {
-		if c.peak() < 1e-40 { // under anything that adds up, and a longer step may follow than its series could take
-			clear(c.z)
-			return
-		}
 		x = 0
 	}
 	m := len(c.z)
@@ -90,6 +87,10 @@ func (c *chain) advance(x complex128, s float64, cur, sum []complex128) {
 		}
 	}
 	for range int(steps) {
+		if x == 0 && c.peak() < 1e-40 { // under anything that adds up, and a longer step may follow than its series could take
+			clear(c.z)
+			return
+		}
 		copy(cur, c.z)
 		copy(sum, c.z)
 		for n := range terms {
@@ -132,59 +133,73 @@ func (c *chain) peak() float64 {
 	return s * cmplx.Abs(c.r)
 }
 
-// A lineState is one channel's line while it is played.
+// A lineState is one channel's line, or the slope of it, while it is played.
 type lineState struct {
-	chains []chain
-	x      complex128 // the sample that is held now
-	next   int        // index of the next sample to arrive
-	static complex128 // direct share of u per x, with the equilibria of settling chains
+	channel int
+	chains  []chain
+	x       complex128   // the sample that is held now
+	next    int          // index of the next sample to arrive
+	static  complex128   // direct share of u per x, with the equilibria of settling chains
+	buf     []complex128 // Taylor coefficients of what arrives, in shares of full scale
+}
+
+func newLineState(channel int, period float64, direct complex128, poles []complex128, powers []int, residues []complex128) lineState {
+	l := lineState{channel: channel, static: direct, buf: make([]complex128, seriesLength)}
+	for i, p := range poles {
+		c := chain{p: p, r: residues[i], z: make([]complex128, powers[i])}
+		c.settling = cmplx.Abs(p)*period > 1
+		if c.settling {
+			l.static += c.r * c.equilibrium(powers[i]-1)
+		}
+		l.chains = append(l.chains, c)
+	}
+	return l
 }
 
 // A walker carries the lines of all channels through a sequence of pulses and writes plans of what arrives: steps in
 // time with the Taylor coefficients of every control. The sequence is the model's pulse, once for each element of turns, its samples
 // times that element.
 type walker struct {
-	e     *engine
-	t     float64 // ns
-	turns []complex128
-	lines []lineState
-	step  float64 // ns, that fitted last
-	count int     // of steps so far
+	e        *engine
+	probe    *probe    // nil, or an error of which the controls are wanted too
+	controls []control // those of the plans
+	t        float64   // ns
+	turns    []complex128
+	lines    []lineState // of every channel, then of the probe's slope
+	step     float64     // ns, that fitted last
+	count    int         // of steps so far
 
-	buf        []complex128 // Taylor coefficients of one line
-	ctl        []float64    // and of every control, seriesLength each
+	ctl        []float64 // Taylor coefficients of every control, seriesLength each
 	cur, sum   []complex128
 	norms, maj []float64
 }
 
-func (e *engine) newWalker(turns ...complex128) *walker {
+func (e *engine) newWalker(pr *probe, turns ...complex128) *walker {
 	w := &walker{
-		e: e, turns: turns, t: e.start, step: e.m.SamplePeriod,
-		lines: make([]lineState, len(e.m.Channels)),
-		buf:   make([]complex128, seriesLength), ctl: make([]float64, seriesLength*len(e.controls)),
+		e: e, probe: pr, controls: e.controls, turns: turns, t: e.start, step: e.m.SamplePeriod,
 		cur: make([]complex128, maxPower), sum: make([]complex128, maxPower),
 		norms: make([]float64, seriesLength), maj: make([]float64, seriesLength),
 	}
 	for c := range e.m.Channels {
 		ch := &e.m.Channels[c]
 		w.t = math.Min(w.t, ch.Delay)
-		l := &w.lines[c]
-		l.static = ch.Direct
-		for i, p := range ch.Poles {
-			cn := chain{p: p, r: ch.Residues[i], z: make([]complex128, ch.Powers[i])}
-			cn.settling = cmplx.Abs(p)*e.m.SamplePeriod > 1
-			if cn.settling {
-				l.static += cn.r * cn.equilibrium(ch.Powers[i]-1)
-			}
-			l.chains = append(l.chains, cn)
-		}
+		w.lines = append(w.lines, newLineState(c, e.m.SamplePeriod, ch.Direct, ch.Poles, ch.Powers, ch.Residues))
 	}
+	if pr != nil && pr.slope != nil {
+		s := pr.slope
+		w.lines = append(w.lines, newLineState(pr.channel(), e.m.SamplePeriod, s.Direct, s.Poles, s.Powers, s.Residues))
+		w.controls = slices.Concat(e.controls, pr.extra)
+	}
+	w.ctl = make([]float64, seriesLength*len(w.controls))
 	return w
 }
 
+// newPlan gives an empty plan for the walker's steps.
+func (w *walker) newPlan() *plan { return &plan{controls: len(w.controls)} }
+
 // fork gives an independent walker at the same instant, of which the sequence ends after the first n pulses.
 func (w *walker) fork(n int) *walker {
-	o := w.e.newWalker(w.turns[:n]...)
+	o := w.e.newWalker(w.probe, w.turns[:n]...)
 	o.t, o.step = w.t, w.step
 	for c := range w.lines {
 		o.lines[c].x, o.lines[c].next = w.lines[c].x, w.lines[c].next
@@ -206,8 +221,9 @@ func (w *walker) sample(c, k int) complex128 {
 	if k/n >= len(w.turns) {
 		return 0
 	}
-	x := w.e.m.Channels[c].Samples[k%n]
-	if w.e.turned[c] {
+	d := &w.e.drives[c]
+	x := d.samples[k%n]
+	if d.turned {
 		x *= w.turns[k/n]
 	}
 	return x
@@ -216,10 +232,10 @@ func (w *walker) sample(c, k int) complex128 {
 // take loads every sample that has arrived.
 func (w *walker) take() {
 	slack := 1e-9 * w.e.m.SamplePeriod // edges of two channels this close are one
-	for c := range w.lines {
-		l := &w.lines[c]
-		for l.next <= len(w.turns)*w.e.m.Samples && w.arrival(c, l.next) <= w.t+slack {
-			x := w.sample(c, l.next)
+	for i := range w.lines {
+		l := &w.lines[i]
+		for l.next <= len(w.turns)*w.e.m.Samples && w.arrival(l.channel, l.next) <= w.t+slack {
+			x := w.sample(l.channel, l.next)
 			for i := range l.chains {
 				l.chains[i].input(l.x, x)
 			}
@@ -232,9 +248,9 @@ func (w *walker) take() {
 // edge is the next arrival of a sample, or +Inf; the end of the sequence counts as one of zero.
 func (w *walker) edge() float64 {
 	t := math.Inf(1)
-	for c := range w.lines {
-		if k := w.lines[c].next; k <= len(w.turns)*w.e.m.Samples {
-			t = math.Min(t, w.arrival(c, k))
+	for i := range w.lines {
+		if k := w.lines[i].next; k <= len(w.turns)*w.e.m.Samples {
+			t = math.Min(t, w.arrival(w.lines[i].channel, k))
 		}
 	}
 	return t
@@ -298,46 +314,77 @@ func (w *walker) settle(ctx context.Context, p *plan) (left float64, err error) 
 }
 
 // left bounds the angle in rad by which what is stored in the lines can still turn the device: the widest spread of
-// eigenvalues times the integral of |u|.
+// eigenvalues times the integral of |u|, and for a shift the largest |u| times the same.
 func (w *walker) left() float64 {
 	a := 0.0
-	for c := range w.lines {
-		u := 0.0
+	for c := range w.e.drives {
+		d := &w.e.drives[c]
+		u, peak := 0.0, 0.0
 		for i := range w.lines[c].chains {
 			u += w.lines[c].chains[i].left()
+			peak += w.lines[c].chains[i].peak()
 		}
 		norm := 0.0
-		for _, k := range w.e.controls {
-			if k.channel == c {
-				norm = math.Max(norm, k.norm)
+		for _, k := range d.ops {
+			if k >= 0 {
+				norm = math.Max(norm, w.e.controls[k].norm)
 			}
 		}
-		a += 2 * norm * u * w.e.m.Channels[c].FullScale
+		a += 2*norm*u*d.fullScale + 2*d.norm*peak*u
 	}
 	return a
 }
 
 // series fills ctl with the Taylor coefficients of every control over a step of s ns from now, scaled to the step.
 func (w *walker) series(s float64) {
-	for c := range w.lines {
-		l := &w.lines[c]
-		clear(w.buf)
-		w.buf[0] = l.static * l.x
-		for i := range l.chains {
-			l.chains[i].series(l.x, s, w.buf, w.cur)
+	for i := range w.lines {
+		l := &w.lines[i]
+		clear(l.buf)
+		l.buf[0] = l.static * l.x
+		for k := range l.chains {
+			l.chains[k].series(l.x, s, l.buf, w.cur)
 		}
-		for k, ctl := range w.e.controls {
-			if ctl.channel != c {
-				continue
+		if w.e.drives[l.channel].ops[1] < 0 { // one quadrature: Re u
+			for n, v := range l.buf {
+				l.buf[n] = complex(real(v), 0)
 			}
-			dst := w.ctl[k*seriesLength : (k+1)*seriesLength]
-			f := w.e.m.Channels[c].FullScale
-			for n, v := range w.buf {
-				if ctl.quadrature == 0 {
+		}
+	}
+	slope := w.lines[len(w.lines)-1].buf // when there is one
+	for k := range w.controls {
+		c := &w.controls[k]
+		u, f, dst := w.lines[c.channel].buf, w.e.drives[c.channel].fullScale, w.coefficients(k)
+		switch c.part {
+		case inPhase, quadrature, slopeI, slopeQ:
+			if c.part >= slopeI {
+				u = slope
+			}
+			for n, v := range u {
+				if c.part == inPhase || c.part == slopeI {
 					dst[n] = f * real(v)
 				} else {
 					dst[n] = f * imag(v)
 				}
+			}
+		default: // products, in shares of full scale
+			for n := range dst {
+				sum := 0.0
+				for j := 0; j <= n; j++ {
+					a, b := u[j], u[n-j]
+					switch c.part {
+					case squareI:
+						sum += real(a) * real(b)
+					case squareQ:
+						sum += imag(a) * imag(b)
+					case cross:
+						sum += real(a) * imag(b)
+					case beat:
+						sum += real(a)*real(slope[n-j]) + imag(a)*imag(slope[n-j])
+					case slopes:
+						sum += real(slope[j])*real(slope[n-j]) + imag(slope[j])*imag(slope[n-j])
+					}
+				}
+				dst[n] = sum
 			}
 		}
 	}
@@ -373,8 +420,8 @@ func (w *walker) stride(s float64, r reach, p *plan) error {
 		}
 	}
 	w.t += s
-	if order < goodOrder/2 {
-		w.step = 1.25 * math.Max(s, w.step)
+	if order < goodOrder/2 && s >= w.step { // cut at an edge, a step says nothing about longer ones
+		w.step = 1.25 * s
 	}
 	return nil
 }

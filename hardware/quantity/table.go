@@ -417,6 +417,70 @@ func complexNumber(v any) (complex128, bool) {
 	return complex(re, 0), ok
 }
 
+// Quantities gives an array of at most most quantities of kind k, each from lo to hi inclusive in the base unit of k. The key is
+// required; the array may be empty.
+func (t *Table) Quantities(key string, most int, k Kind, lo, hi float64) []float64 {
+	list := t.array(key, most, "texts, each "+k.traits().noun)
+	if list == nil {
+		return nil
+	}
+	values := make([]float64, 0, len(list))
+	for i, v := range list {
+		q, allowed := inRange(v, k, lo, hi)
+		if allowed != "" {
+			t.element(key, i, v, allowed)
+			return nil
+		}
+		values = append(values, q)
+	}
+	return values
+}
+
+// Pairs gives an array of at most most pairs of quantities of kind k, [["a", "b"], ...], each from lo to hi inclusive in the base unit of
+// k. The key is required; the array may be empty.
+func (t *Table) Pairs(key string, most int, k Kind, lo, hi float64) [][2]float64 {
+	list := t.array(key, most, "pairs of texts, each "+k.traits().noun)
+	if list == nil {
+		return nil
+	}
+	pairs := make([][2]float64, 0, len(list))
+	for i, v := range list {
+		pair, isArray := v.([]any)
+		if !isArray || len(pair) != 2 {
+			t.element(key, i, v, "pairs of texts, each "+k.traits().noun)
+			return nil
+		}
+		var values [2]float64
+		for j, v := range pair {
+			q, allowed := inRange(v, k, lo, hi)
+			if allowed != "" {
+				t.note(key, byValue, &Error{Found: fmt.Sprintf("%s in pair %d", describe(v), i), Allowed: allowed})
+				return nil
+			}
+			values[j] = q
+		}
+		pairs = append(pairs, values)
+	}
+	return pairs
+}
+
+// inRange reads an element that is a quantity; allowed says what it should have been, and is empty when it is in order.
+func inRange(v any, k Kind, lo, hi float64) (q float64, allowed string) {
+	allowed = k.traits().noun + span(lo, hi, func(v float64) string { return Format(v, k) })
+	s, isText := v.(string)
+	if !isText {
+		return 0, allowed
+	}
+	q, hint := parse(s, k)
+	if hint != "" {
+		return 0, allowed + " (" + hint + ")"
+	}
+	if !(q >= lo && q <= hi) {
+		return 0, allowed
+	}
+	return q, ""
+}
+
 // Complexes gives an array of at most most complex numbers, each a number or [re, im]. The key is required; the array may be empty.
 func (t *Table) Complexes(key string, most int) []complex128 {
 	list := t.array(key, most, "complex numbers")

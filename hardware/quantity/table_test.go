@@ -27,6 +27,8 @@ on = true
 empty = []
 numbers = [1, 2.5]
 texts = ["q1 drive", "q2 drive"]
+angles = ["0 deg", "90 deg"]
+pairs = [["0 %", "0 %"], ["50 %", "49 %"]]
 complexes = [1, [0.5, -0.25]]
 matrix = [[0, [0, -1]], [[0, 1], 0]]
 matrices = [[[1]], [[0, 1], [1, 0]]]
@@ -53,6 +55,12 @@ y = "40 MHz"
 	if len(r.Numbers("empty", 3, 0, 1)) != 0 || !slices.Equal(r.Numbers("numbers", 2, 1, 2.5), []float64{1, 2.5}) || !slices.Equal(r.Texts("texts", 2), []string{"q1 drive", "q2 drive"}) ||
 		!slices.Equal(r.Complexes("complexes", 2), []complex128{1, complex(0.5, -0.25)}) {
 		t.Error("arrays")
+	}
+	if a := r.Quantities("angles", 2, Angle, 0, 7); !slices.Equal(a, []float64{0, math.Pi / 2}) {
+		t.Error("quantities", a)
+	}
+	if a := r.Pairs("pairs", 2, Ratio, 0, 1); !slices.Equal(a, [][2]float64{{0, 0}, {0.5, 0.49}}) {
+		t.Error("pairs", a)
 	}
 	m := r.Matrix("matrix", 2)
 	if len(m) != 2 || !slices.Equal(m[0], []complex128{0, -1i}) || !slices.Equal(m[1], []complex128{1i, 0}) {
@@ -129,6 +137,15 @@ func TestTableSentences(t *testing.T) {
 		{"a = 1", func(r *Table) { r.Numbers("a", 4, -1, 1) }, `f.toml:1: a: found 1; allowed: an array of at most 4 numbers`},
 		{"a = [1, [2, nan]]", func(r *Table) { r.Complexes("a", 4) }, `f.toml:1: a: found an array of 2 as element 1; allowed: a number or [re, im], each part from -1e+30 to 1e+30`},
 		{"a = [1e31]", func(r *Table) { r.Complexes("a", 4) }, `f.toml:1: a: found 1e+31 as element 0; allowed: a number or [re, im], each part from -1e+30 to 1e+30`},
+		{`a = ["90 deg", "1 s"]`, func(r *Table) { r.Quantities("a", 4, Angle, 0, 7) }, `f.toml:1: a: found "1 s" as element 1; allowed: an angle such as "90 deg", 0 deg to 401.07 deg ("s" is a unit of time)`},
+		{"a = [\n\"1 ns\",\n\"9 ns\"]", func(r *Table) { r.Quantities("a", 4, Time, 0, 7) }, `f.toml:1: a: found "9 ns" as element 1; allowed: a time such as "112 ns", 0 ns to 7 ns`},
+		{`a = ["1 ns", 2]`, func(r *Table) { r.Quantities("a", 4, Time, 0, 7) }, `f.toml:1: a: found 2 as element 1; allowed: a time such as "112 ns", 0 ns to 7 ns`},
+		{`a = ["1 ns", "2 ns"]`, func(r *Table) { r.Quantities("a", 1, Time, 0, 7) }, `f.toml:1: a: found an array of 2; allowed: an array of at most 1 texts, each a time such as "112 ns"`},
+		{`a = "1 %"`, func(r *Table) { r.Pairs("a", 2, Ratio, 0, 1) }, `f.toml:1: a: found "1 %"; allowed: an array of at most 2 pairs of texts, each a share such as "1.5 %"`},
+		{`a = [["0 %", "0 %"], ["1 %", "1 %", "1 %"]]`, func(r *Table) { r.Pairs("a", 2, Ratio, 0, 1) }, `f.toml:1: a: found an array of 3 as element 1; allowed: pairs of texts, each a share such as "1.5 %"`},
+		{`a = [["0 %", "0 %"], ["1 %", "200 %"]]`, func(r *Table) { r.Pairs("a", 2, Ratio, 0, 1) }, `f.toml:1: a: found "200 %" in pair 1; allowed: a share such as "1.5 %", 0 % to 100 %`},
+		{`a = [["0 %", 0]]`, func(r *Table) { r.Pairs("a", 2, Ratio, 0, 1) }, `f.toml:1: a: found 0 in pair 0; allowed: a share such as "1.5 %", 0 % to 100 %`},
+		{"", func(r *Table) { r.Pairs("a", 2, Ratio, 0, 1) }, `f.toml:1: a: found nothing; allowed: an array of at most 2 pairs of texts, each a share such as "1.5 %"`},
 		{"m = []", func(r *Table) { r.Matrix("m", 2) }, `f.toml:1: m: found 0 rows; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
 		{"m = [[1],[1],[1]]", func(r *Table) { r.Matrix("m", 2) }, `f.toml:1: m: found 3 rows; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
 		{"m = [[1, 2], [3]]", func(r *Table) { r.Matrix("m", 2) }, `f.toml:1: m: found 2 rows and 1 entries in row 1; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
