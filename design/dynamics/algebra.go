@@ -18,6 +18,8 @@ func newKit(d int) *kit {
 
 func conj(z complex128) complex128 { return complex(real(z), -imag(z)) }
 
+func times(z complex128, f float64) complex128 { return complex(f*real(z), f*imag(z)) }
+
 // mul stores a b in c.
 func (k *kit) mul(c, a, b []complex128) {
 	switch k.d {

@@ -178,13 +178,14 @@ func (g *gram) integral(dst []complex128, e int, f float64) {
 			continue
 		}
 		s := g.s[b*dd : b*dd+dd]
-		if gr.diag { // the upper triangle is all there is
-			add1(dst, s, v/2)
-		} else {
-			add1(dst, s, v)
+		add1(dst, s, v)
+		if gr.diag { // the upper triangle is all there is: its diagonal would count twice
+			for i := range d {
+				dst[i*d+i] -= v / 2 * s[i*d+i]
+			}
 		}
 	}
-	for i := range d { // X + X', the diagonal blocks counting half twice
+	for i := range d { // X + X'
 		dst[i*d+i] = complex(2*f*real(dst[i*d+i]), 0)
 		for j := i + 1; j < d; j++ {
 			x, y := dst[i*d+j], dst[j*d+i]
@@ -231,14 +232,14 @@ func (g *gram) back(y, x []complex128, f float64) {
 		for _, t := range terms {
 			m := g.m[t.block*dd : t.block*dd+dd]
 			w := x[t.from*d : t.from*d+d]
-			h := complex(f*t.sign, 0)
+			h := f * t.sign
 			i := 0
 			for ; i+3 < d; i += 4 {
 				r := m[i*d:]
-				add4(row, r, r[d:], r[2*d:], r[3*d:], h*w[i], h*w[i+1], h*w[i+2], h*w[i+3])
+				add4(row, r, r[d:], r[2*d:], r[3*d:], times(w[i], h), times(w[i+1], h), times(w[i+2], h), times(w[i+3], h))
 			}
 			for ; i < d; i++ {
-				add1(row, m[i*d:], h*w[i])
+				add1(row, m[i*d:], times(w[i], h))
 			}
 		}
 	}
