@@ -56,8 +56,6 @@ func designPulse(c *call) (int, error) {
 	if err != nil {
 		return exitBadInput, fmt.Errorf("%s: %w", b.File, err)
 	}
-	// From here on the work is short, and an interrupt must not lose it.
-	ctx := context.WithoutCancel(c.ctx)
 	if err := pulse.Write(stage.Dir(), sources); err != nil {
 		return exitBadInput, err
 	}
@@ -65,13 +63,21 @@ func designPulse(c *call) (int, error) {
 	if err != nil {
 		return exitBadInput, fmt.Errorf("replay refuses what design wrote, a fault of the program: %w", err)
 	}
-	verdict, err := replay.Judge(ctx, folder)
+	// An interrupt must not lose what was found: without a verdict the folder is
+	// still whole, and replay can judge it at another time.
+	ctx := c.after()
+	show.note("replay")
+	sheet, verdict, err := judged(ctx, in, &pulse.Record, folder)
+	show.end()
 	if err != nil {
-		return exitBadInput, err
-	}
-	sheet, err := newSheet(ctx, in, &pulse.Record, folder, verdict)
-	if err != nil {
-		return exitBadInput, err
+		if ctx.Err() == nil {
+			return exitBadInput, err
+		}
+		if err := stage.Commit(); err != nil {
+			return exitBadInput, err
+		}
+		fmt.Fprintf(c.stderr, "holdfast: interrupted before the verdict; %s holds the pulse, and 'holdfast replay %s' judges it\n", *out, *out)
+		return exitInterrupted, nil
 	}
 	if err := writeSheet(filepath.Join(stage.Dir(), datasheetFile), sheet); err != nil {
 		return exitBadInput, err
@@ -90,6 +96,16 @@ func designPulse(c *call) (int, error) {
 	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
 	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
 	return status, nil
+}
+
+// judged replays a folder and gathers its sheet.
+func judged(ctx context.Context, in design.Inputs, r *design.Record, f *replay.Folder) (*datasheet.Sheet, *replay.Verdict, error) {
+	v, err := replay.Judge(ctx, f)
+	if err != nil {
+		return nil, nil, err
+	}
+	s, err := newSheet(ctx, in, r, f, v)
+	return s, v, err
 }
 
 func pulseStatus(s design.Status, v *replay.Verdict) int {
@@ -156,6 +172,9 @@ func (p *progress) report(r design.Progress) {
 	p.wide = len(line)
 	fmt.Fprintf(p.w, "\r%s%s", line, strings.Repeat(" ", pad))
 }
+
+// note says that another stage has begun.
+func (p *progress) note(stage string) { p.report(design.Progress{Stage: stage, Done: 0, Of: 1}) }
 
 func seconds(d time.Duration) string { return fmt.Sprintf("%.1f s", d.Seconds()) }
 

@@ -41,10 +41,21 @@ const (
 )
 
 func main() {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
-	// After the first interrupt a second one ends the program at once.
-	context.AfterFunc(ctx, stop)
-	os.Exit(run(ctx, os.Args[1:], os.Stdout, os.Stderr))
+	signals := make(chan os.Signal, 3)
+	signal.Notify(signals, os.Interrupt, syscall.SIGTERM)
+	soft, stop := context.WithCancel(context.Background())
+	hard, kill := context.WithCancel(context.Background())
+	// The first interrupt ends the search and keeps the best so far, the second
+	// ends its judgement too, the third the program.
+	go func() {
+		<-signals
+		stop()
+		<-signals
+		kill()
+		<-signals
+		os.Exit(exitInterrupted)
+	}()
+	os.Exit(runUntil(soft, hard, os.Args[1:], os.Stdout, os.Stderr))
 }
 
 // A verb is one subcommand. Its run returns the exit status, and an error to
@@ -71,7 +82,8 @@ func verbs() []verb {
 
 // A call is one run of a verb.
 type call struct {
-	ctx    context.Context
+	ctx    context.Context // cancelled by the first interrupt
+	hard   context.Context // cancelled by the second
 	verb   verb
 	args   []string // after the verb
 	stdout io.Writer
@@ -79,8 +91,21 @@ type call struct {
 	json   bool // print one JSON object instead of text; known after parse
 }
 
-// run is the whole program but for the process around it.
+// after gives the context for the work that follows a search: the call's own, or,
+// when that was cancelled during the search, the one for the second interrupt.
+func (c *call) after() context.Context {
+	if c.ctx.Err() == nil {
+		return c.ctx
+	}
+	return c.hard
+}
+
+// run is the whole program but for the process around it, with one interrupt.
 func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
+	return runUntil(ctx, context.WithoutCancel(ctx), args, stdout, stderr)
+}
+
+func runUntil(ctx, hard context.Context, args []string, stdout, stderr io.Writer) int {
 	if len(args) == 0 {
 		overview(stderr)
 		return exitBadInput
@@ -96,7 +121,7 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 		if v.name != name {
 			continue
 		}
-		c := &call{ctx: ctx, verb: v, args: args[1:], stdout: stdout, stderr: stderr}
+		c := &call{ctx: ctx, hard: hard, verb: v, args: args[1:], stdout: stdout, stderr: stderr}
 		status, err := v.run(c)
 		if errors.Is(err, flag.ErrHelp) {
 			explain(stdout, v.name)
