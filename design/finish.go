@@ -22,11 +22,11 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	var headroom []Headroom
 	for i, l := range q.lanes {
 		ch := &in.Profile.Channels[l.channel]
-		codes, err := encode(in.Profile, ch, exact[i])
+		codes, err := in.Profile.Codes(l.channel, exact[i])
 		if err != nil {
 			return nil, err
 		}
-		x, err := decode(in.Profile, ch, codes)
+		x, err := in.Profile.Samples(l.channel, codes)
 		if err != nil {
 			return nil, err
 		}
@@ -128,7 +128,7 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 					x[k] = v * cmplx.Rect(1, angle)
 				}
 			}
-			codes, err := encode(in.Profile, ch, x)
+			codes, err := in.Profile.Codes(l.channel, x)
 			if err != nil {
 				return err
 			}
@@ -137,7 +137,7 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 				return err
 			}
 			facts.Kept = facts.Kept && hardware.Kept(readings)
-			y, err := decode(in.Profile, ch, codes)
+			y, err := in.Profile.Samples(l.channel, codes)
 			if err != nil {
 				return err
 			}
@@ -397,35 +397,4 @@ func played(ch *hardware.Channel, y []complex128) []complex128 {
 		x[k] = ch.Compression.Converter(v)
 	}
 	return x
-}
-
-// encode rounds what a drive is to reach to codes of its channel.
-func encode(p *hardware.Profile, ch *hardware.Channel, y []complex128) ([]int16, error) {
-	var codes []int16
-	for k, v := range y {
-		i, q, err := hardware.Quantise(ch.Compression.Converter(v), p.Bits)
-		if err != nil {
-			return nil, fmt.Errorf("channel %q, sample %d: %w", ch.Name, k, err)
-		}
-		if codes = append(codes, i); ch.Columns() == 2 {
-			codes = append(codes, q)
-		}
-	}
-	return codes, nil
-}
-
-// decode is the way back: what the drive reaches with the codes.
-func decode(p *hardware.Profile, ch *hardware.Channel, codes []int16) ([]complex128, error) {
-	pairs := codes
-	if ch.Columns() == 1 {
-		pairs = make([]int16, 0, 2*len(codes))
-		for _, c := range codes {
-			pairs = append(pairs, c, 0)
-		}
-	}
-	x, err := hardware.SamplesOf(pairs, p.Bits)
-	for k, v := range x {
-		x[k] = ch.Compression.Reached(v)
-	}
-	return x, err
 }

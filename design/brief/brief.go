@@ -95,8 +95,8 @@ type Error struct {
 	Channels   []string
 	Parameter  string // of kind Line: a name of hardware.Parameter
 	Quadrature string // of kind Amplitude, "I", "Q", or empty for both; of kind Offset, "I" or "Q" ("I" for a baseband channel)
-	// Size is in rad/ns of kinds Static and Any (defaults 3 MHz and 1 MHz), a share of kinds Amplitude (3 %), Line (what the profile says, else
-	// 5 %) and Offset (0.1 % of full scale), rad of kind Skew (1 deg).
+	// Size is in rad/ns of kinds Static and Any (defaults 3 MHz and 1 MHz, for slow drives less: Complete), a share of kinds Amplitude (3 %),
+	// Line (what the profile says, else 5 %) and Offset (0.1 % of full scale), rad of kind Skew (1 deg).
 	Size   float64
 	Weight float64 // relative to the gate itself, default 1
 
@@ -104,7 +104,7 @@ type Error struct {
 	index                         int    // in the file; -1: not in it
 	line                          int    // of the key
 	lineParameter, lineQuadrature int    // of these keys
-	unsized                       bool   // the default size may give way to the profile's
+	unsized                       bool   // the default size may give way to what the profile makes of it
 	expanded                      bool   // one of the two that stand for both quadratures
 }
 
@@ -143,6 +143,8 @@ const (
 	matrixTolerance           = 1e-9  // of Hermitian and traceless, in units of the largest entry: what typing leaves
 	defaultStatic             = 0.003 // GHz
 	defaultAny                = 0.001 // GHz
+	staticShare               = 0.075 // of the fastest drive's full scale: a default size is no larger; both defaults are these shares of 40 MHz
+	anyShare                  = 0.025
 	defaultShare              = 0.03
 	defaultParameter          = 0.05          // of a line's parameter
 	defaultSkew               = math.Pi / 180 // rad
@@ -184,7 +186,8 @@ func rate(f float64) float64 { return 2 * math.Pi * f }
 //	quadrature = "I"                 # or "Q", with amplitude or offset | both; offsets as two errors, "... I" and "... Q"
 //	name = "..."                     #                                  | "detuning", "amplitude", "X", "matrix", "any static error",
 //	                                 #                                    "amplitude I", "q1 drive lowpass[0].corner", "quadrature angle", "offset I"
-//	size = "3 MHz"                   # "3 %", "1 deg" by kind           | 3 MHz, 3 %, 1 MHz for any, known_to or 5 % of a line, 1 deg, 0.1 % of an offset
+//	size = "3 MHz"                   # "3 %", "1 deg" by kind           | 3 MHz or 7.5 % of the fastest drive's full scale, whichever is less, 3 %,
+//	                                 #                                    1 MHz or 2.5 % for any, known_to or 5 % of a line, 1 deg, 0.1 % of an offset
 //	weight = 1                       #                                  | 1
 //	[require]
 //	infidelity = 1e-4                #                                  | 1e-4
@@ -352,9 +355,9 @@ func (b *Brief) readErrors(root *quantity.Table) {
 		b.Defaulted = true
 		z, _ := device.Operator("Z")
 		b.Errors = []Error{
-			{Name: "detuning", Kind: Static, Operator: z.Scale(0.5), Size: rate(defaultStatic), Weight: 1},
+			{Name: "detuning", Kind: Static, Operator: z.Scale(0.5), Size: rate(defaultStatic), Weight: 1, unsized: true},
 			{Name: "amplitude", Kind: Amplitude, Size: defaultShare, Weight: 1},
-			{Name: "any static error", Kind: Any, Size: rate(defaultAny), Weight: 1},
+			{Name: "any static error", Kind: Any, Size: rate(defaultAny), Weight: 1, unsized: true},
 		}
 		return
 	}
@@ -374,6 +377,7 @@ func readError(t *quantity.Table) []Error {
 	e := Error{key: oneOf(t, "detuning", "amplitude", "operator", "matrix", "any", "line", "quadrature_angle", "offset")}
 	e.line = t.Line(e.key)
 	size := func(f float64) float64 {
+		e.unsized = !t.Has("size")
 		return rate(t.Quantity("size", quantity.Frequency, smallestSize, largestSize, f))
 	}
 	share := func(s float64) float64 { return t.Quantity("size", quantity.Ratio, smallestShare, mostShare, s) }

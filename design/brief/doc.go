@@ -13,5 +13,7 @@
 //	matrix M       2 pi f M, M as written
 //	any            2 pi f n.(X,Y,Z)/2 for a unit vector n
 //
-// and an amplitude error of size s multiplies what the channel's line delivers by 1 + s.
+// and an amplitude error of size s multiplies what the channel's line delivers, or one quadrature of it, by 1 + s. A line error of size s
+// makes one parameter of a line 1 + s times what the profile says; a quadrature angle of size a adds -a u_Q to u_I; an offset of size s adds s
+// of full scale to what the converter puts out, all the time.
 package brief

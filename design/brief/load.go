@@ -40,7 +40,9 @@ func LoadAll(path string) (*Brief, *hardware.Profile, *device.Device, error) {
 
 // Complete checks the brief and the device against what they refer to, as LoadAll does, and fills in what only the profile knows: the
 // channels of a defaulted amplitude error, the size of an error of a line's parameter, the errors of hold = "profile",
-// and that a baseband channel has an offset of one kind only. Errors are an *quantity.Error. A second call changes nothing.
+// and that a baseband channel has an offset of one kind only. A static error for which the brief gives no size is no larger than 7.5 % of the full scale of
+// the fastest drive (any static error: 2.5 %), so that slow drives are not held against errors faster than they are. Errors are
+// an *quantity.Error. A second call changes nothing.
 func (b *Brief) Complete(p *hardware.Profile, d *device.Device) error {
 	if fault := b.against(p, d); fault != nil {
 		return fault
@@ -82,6 +84,7 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 		e.File, e.Line, e.Key = b.File, b.lines.site, "target.site"
 		return e
 	}
+	b.scaleDefaults(p, d)
 	for i := range b.Errors {
 		e := &b.Errors[i]
 		if fault := b.errorOn(e, p, d, sites, driven); fault != nil {
@@ -102,6 +105,40 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 		return fault
 	}
 	return b.spanOn(p, driven)
+}
+
+// scaleDefaults lowers the default sizes of static errors where the drives are slow; where there are only biases, where they are.
+func (b *Brief) scaleDefaults(p *hardware.Profile, d *device.Device) {
+	fastest := 0.0 // rad/ns
+	for _, drive := range d.Drives {
+		if i, ok := p.Channel(drive.Channel); ok {
+			fastest = math.Max(fastest, p.Channels[i].FullScale)
+		}
+	}
+	if len(d.Drives) == 0 {
+		for _, bias := range d.Biases {
+			if i, ok := p.Channel(bias.Channel); ok {
+				fastest = math.Max(fastest, p.Channels[i].FullScale)
+			}
+		}
+	}
+	for i := range b.Errors {
+		e := &b.Errors[i]
+		most := 0.0
+		switch e.Kind {
+		case Static:
+			most = staticShare * fastest
+		case Any:
+			most = anyShare * fastest
+		}
+		if !e.unsized || most == 0 {
+			continue
+		}
+		e.unsized = false
+		if most < e.Size*(1-1e-12) { // a full scale of 40 MHz gives the defaults to the last bit
+			e.Size = most
+		}
+	}
 }
 
 // errorOn checks one error against profile and device, and completes it. A complaint without a key is about the key that made the error.

@@ -24,7 +24,7 @@ type Site struct {
 	Zero      string  // Lower or Upper: which of the two energies |0> has
 	Frequency float64 // of the transition, GHz, cyclic; 0 when not stated
 	T1, T2    float64 // ns; 0 when not stated; T2 <= 2 T1 where both are
-	Detuning  float64 // static, of the transition from the frame of the drive, rad/ns: H0 = Detuning Z/2
+	Detuning  float64 // static, of the transition from the frame of the drive, rad/ns, positive above it: H0 = Detuning Z/2 when |0> is Upper, -Detuning Z/2 when it is Lower
 }
 
 // The energies that |0> may have.
@@ -67,7 +67,7 @@ const oneSpin = "this version plays one spin"
 //	levels = 2                # default 2
 //	zero = "lower"            # or "upper": which energy |0> has; default "lower"
 //	frequency = "5.1 GHz"     # optional
-//	detuning = "0 Hz"         # static; default 0
+//	detuning = "0 Hz"         # static, of the transition from the frame of the drive; default 0
 //	T1 = "80 us"              # optional
 //	T2 = "60 us"              # optional; at most 2 T1
 //	[[drive]]
@@ -181,10 +181,20 @@ func (d *Device) Dim() int {
 	return dim
 }
 
-// Static gives the Hamiltonian without drives and errors, rad/ns: Detuning Z/2 of the one site.
+// Static gives the Hamiltonian without drives and errors, rad/ns, of the one site. Its energies are w/2 and -w/2 with w the transition,
+// and |0> is the +1 state of Z: in a frame that turns with the drive a transition above it by Detuning leaves Detuning Z/2 when
+// |0> has the upper energy, and -Detuning Z/2 when it has the lower.
 func (d *Device) Static() Matrix {
 	z, _ := Operator("Z")
-	return z.Scale(complex(d.Sites[0].Detuning/2, 0))
+	return z.Scale(complex(d.Sites[0].Offset()/2, 0))
+}
+
+// Offset gives the factor of Z/2 in H0, rad/ns: the detuning with the sign that Zero gives it.
+func (s *Site) Offset() float64 {
+	if s.Zero == Lower {
+		return 0 - s.Detuning // 0 and not -0
+	}
+	return s.Detuning
 }
 
 // BiasOperator gives what bias number bias multiplies, so that H += u times it: half the operator of its axis.
@@ -193,8 +203,8 @@ func (d *Device) BiasOperator(bias int) Matrix {
 	return o.Scale(0.5)
 }
 
-// ShiftOperator gives what a drive-induced shift of a site multiplies, Z/2, as a detuning does: H += kappa |u|^2 Z/2 with kappa in rad/ns and u
-// in shares of full scale.
+// ShiftOperator gives what a drive-induced shift of a site multiplies, Z/2 whichever energy |0> has: H += kappa |u|^2 Z/2 with kappa in
+// rad/ns, of the profile, and u in shares of full scale.
 func (d *Device) ShiftOperator() Matrix {
 	z, _ := Operator("Z")
 	return z.Scale(0.5)

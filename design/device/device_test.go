@@ -1,6 +1,7 @@
 package device
 
 import (
+	"fmt"
 	"math"
 	"os"
 	"path/filepath"
@@ -61,13 +62,35 @@ func TestLoad(t *testing.T) {
 	if z, x := (Matrix{2, []complex128{0.5, 0, 0, -0.5}}), (Matrix{2, []complex128{0, 0.5, 0.5, 0}}); !near(d.BiasOperator(0), z, 0) || !near(d.BiasOperator(1), x, 0) || !near(d.ShiftOperator(), z, 0) {
 		t.Errorf("operators %v, %v, %v", d.BiasOperator(0), d.BiasOperator(1), d.ShiftOperator())
 	}
-	// H0 = 2 pi f Z/2.
+	// |0> is the upper state: H0 = 2 pi f Z/2.
 	want := Matrix{2, []complex128{complex(-math.Pi*0.00025, 0), 0, 0, complex(math.Pi*0.00025, 0)}}
 	if !near(d.Static(), want, 1e-15) {
 		t.Errorf("static %v, want %v", d.Static(), want)
 	}
 	if _, err := Load(path + ".none"); err == nil || !strings.HasPrefix(err.Error(), path+".none: found no such file") {
 		t.Errorf("missing file: %v", err)
+	}
+}
+
+// The energies of a spin are +-w/2 and |0> is the +1 state of Z, so in a frame that turns with the carrier a transition above it leaves
+// the upper state raised: H0 = 2 pi f Z/2 when that is |0>, and -2 pi f Z/2 when |0> is the lower. Worked out by hand from H = w/2 (|upper><upper| -
+// |lower><lower|) and the frame's -carrier/2 of the same.
+func TestDetuningSign(t *testing.T) {
+	for _, c := range []struct {
+		zero, detuning string
+		first          float64 // <0|H0|0>, rad/ns
+	}{
+		{Upper, "2 MHz", math.Pi * 2e-3}, {Upper, "-2 MHz", -math.Pi * 2e-3},
+		{Lower, "2 MHz", -math.Pi * 2e-3}, {Lower, "-2 MHz", math.Pi * 2e-3},
+	} {
+		d := mustRead(t, fmt.Sprintf("format = 1\nname = 'd'\n[[site]]\nname = 'q1'\nzero = %q\ndetuning = %q\n[[drive]]\nsite = 'q1'\nchannel = 'c'\n", c.zero, c.detuning))
+		if got := d.Static().At(0, 0); !near(d.Static(), Matrix{2, []complex128{complex(c.first, 0), 0, 0, complex(-c.first, 0)}}, 1e-15) {
+			t.Errorf("|0> %s, %s: <0|H0|0> = %v, want %v", c.zero, c.detuning, got, c.first)
+		}
+	}
+	d := mustRead(t, "format = 1\nname = 'd'\n[[site]]\nname = 'q1'\n[[drive]]\nsite = 'q1'\nchannel = 'c'\n")
+	if v := d.Static().At(0, 0); math.Signbit(real(v)) {
+		t.Errorf("without a detuning <0|H0|0> = %v, want 0 and not -0", v)
 	}
 }
 

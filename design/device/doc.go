@@ -8,7 +8,9 @@
 //
 // Planck's constant over 2 pi is 1; times are in ns, Hamiltonians in rad/ns. |0> is the +1 state of Z, whichever energy it has.
 // A two-quadrature drive on a spin acts as (u_I X + u_Q Y)/2 or (u_I X - u_Q Y)/2, by the rule at Device.Operators; a static
-// detuning delta as delta Z/2, a bias as u X/2, u Y/2 or u Z/2 by its axis, and the shift that a drive causes as kappa |u|^2 Z/2. A gate is a rotation exp(-i angle/2 (n.sigma)) about a unit axis n; its global phase has no meaning.
+// detuning delta as delta Z/2, a bias as u X/2, u Y/2 or u Z/2 by its axis, and the shift that a drive causes as kappa |u|^2 Z/2. A gate
+// is a rotation exp(-i angle/2 (n.sigma)) about a unit axis n; its global phase has no meaning.
 //
-// This version plays one spin: one site of two levels with at most one drive, and biases. Files that ask for more are refused in a sentence.
+// This version plays one spin: one site of two levels with at most one drive, and biases. Files that ask for more are refused
+// in a sentence.
 package device

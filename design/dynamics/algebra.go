@@ -83,6 +83,14 @@ func (k *kit) hermRight(c, a, b []complex128) {
 // turn stores -i (p - p') in c, which may be p.
 func (k *kit) turn(c, p []complex128) {
 	d := k.d
+	switch d {
+	case 3:
+		turn3((*[9]complex128)(c), (*[9]complex128)(p))
+		return
+	case 4:
+		turn4((*[16]complex128)(c), (*[16]complex128)(p))
+		return
+	}
 	for i := range d {
 		c[i*d+i] = complex(2*imag(p[i*d+i]), 0)
 		for j := i + 1; j < d; j++ {
@@ -316,20 +324,26 @@ func (s *sparse) add(a []complex128, f float64) {
 	}
 }
 
-// spread bounds the spectral norm of the Hermitian matrix a: the smaller of its
-// Frobenius norm and its largest row sum.
+// spread bounds the spectral norm of the Hermitian matrix a: its Frobenius norm, or
+// its largest row sum if that is smaller.
 func spread(a []complex128, d int) float64 {
-	all, most := 0.0, 0.0
+	all := 0.0
+	for _, x := range a {
+		all += real(x)*real(x) + imag(x)*imag(x)
+	}
+	all = math.Sqrt(all)
+	if d <= 4 {
+		return all
+	}
+	most := 0.0
 	for i := range d {
 		sum := 0.0
 		for _, x := range a[i*d : i*d+d] {
-			re, im := math.Abs(real(x)), math.Abs(imag(x))
-			all += re*re + im*im
-			sum += re + im
+			sum += math.Abs(real(x)) + math.Abs(imag(x))
 		}
 		most = max(most, sum)
 	}
-	return min(math.Sqrt(all), most)
+	return min(all, most)
 }
 
 // center subtracts the mean of the diagonal of a from it, and returns it.

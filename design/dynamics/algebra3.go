@@ -52,40 +52,61 @@ func hermLeft3(c, a, b *[9]complex128) {
 	c[8] = complex(real(w*b[2]+x*b[5]+y*b[8]), 0)
 }
 
-// gram3 adds w a' b + v p' q to s, the outer products of one row each; with diag,
-// where a is b and p is q, only the upper triangle.
-func gram3(s *[9]complex128, a, b, p, q *[3]complex128, w, v float64, diag bool) {
-	b0, b1, b2 := b[0], b[1], b[2]
-	q0, q1, q2 := q[0], q[1], q[2]
+// gram3 adds w a' b + v p' q to s, the outer products of one row each.
+func gram3(s *[9]complex128, a, b, p, q *[3]complex128, w, v float64) {
 	for i := range 3 {
 		x := complex(w*real(a[i]), -w*imag(a[i]))
 		y := complex(v*real(p[i]), -v*imag(p[i]))
 		r := (*[3]complex128)(s[3*i:])
-		if diag {
-			for j := i; j < 3; j++ {
-				r[j] += x*b[j] + y*q[j]
-			}
-			continue
-		}
-		r[0] += x*b0 + y*q0
-		r[1] += x*b1 + y*q1
-		r[2] += x*b2 + y*q2
+		r[0] += x*b[0] + y*q[0]
+		r[1] += x*b[1] + y*q[1]
+		r[2] += x*b[2] + y*q[2]
 	}
 }
 
-// back3 stores f sum over the terms of sign x[from,:] M[block] in y.
-func back3(y *[3]complex128, x, m []complex128, terms []term, f float64) {
-	var r0, r1, r2 complex128
+// gramDiag3 adds the upper triangle of w a' a + v p' p to s.
+func gramDiag3(s *[9]complex128, a, p *[3]complex128, w, v float64) {
+	var x, y complex128
+	x = complex(w*real(a[0]), -w*imag(a[0]))
+	y = complex(v*real(p[0]), -v*imag(p[0]))
+	s[0] += complex(real(x*a[0]+y*p[0]), 0)
+	s[1] += x*a[1] + y*p[1]
+	s[2] += x*a[2] + y*p[2]
+	x = complex(w*real(a[1]), -w*imag(a[1]))
+	y = complex(v*real(p[1]), -v*imag(p[1]))
+	s[4] += complex(real(x*a[1]+y*p[1]), 0)
+	s[5] += x*a[2] + y*p[2]
+	x = complex(w*real(a[2]), -w*imag(a[2]))
+	y = complex(v*real(p[2]), -v*imag(p[2]))
+	s[8] += complex(real(x*a[2]+y*p[2]), 0)
+}
+
+// back3 stores the adjoint of f sum over the terms of x[from,:] M[block] in column l
+// of y: no entries are shared at this dimension, so every sign is 1.
+func back3(y *[9]complex128, l int, x, m []complex128, terms []term, f float64) {
+	var r [3]complex128
 	for _, t := range terms {
 		c := (*[9]complex128)(m[9*t.block:])
 		p := (*[3]complex128)(x[3*t.from:])
-		for i := range 3 {
-			w := p[i]
-			r0 += w * c[3*i+0]
-			r1 += w * c[3*i+1]
-			r2 += w * c[3*i+2]
-		}
+		w, x, y := p[0], p[1], p[2]
+		r[0] += w*c[0] + x*c[3] + y*c[6]
+		r[1] += w*c[1] + x*c[4] + y*c[7]
+		r[2] += w*c[2] + x*c[5] + y*c[8]
 	}
-	g := complex(f, 0)
-	y[0], y[1], y[2] = g*r0, g*r1, g*r2
+	for j := range r {
+		y[3*j+l] = complex(f*real(r[j]), -f*imag(r[j]))
+	}
+}
+
+// turn3 stores -i (p - p') in c, which may be p.
+func turn3(c, p *[9]complex128) {
+	c[0] = complex(2*imag(p[0]), 0)
+	c[1] = complex(imag(p[1])+imag(p[3]), real(p[3])-real(p[1]))
+	c[3] = conj(c[1])
+	c[2] = complex(imag(p[2])+imag(p[6]), real(p[6])-real(p[2]))
+	c[6] = conj(c[2])
+	c[4] = complex(2*imag(p[4]), 0)
+	c[5] = complex(imag(p[5])+imag(p[7]), real(p[7])-real(p[5]))
+	c[7] = conj(c[5])
+	c[8] = complex(2*imag(p[8]), 0)
 }

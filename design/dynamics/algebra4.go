@@ -70,42 +70,76 @@ func hermLeft4(c, a, b *[16]complex128) {
 	c[15] = complex(real(w*b[3]+x*b[7]+y*b[11]+z*b[15]), 0)
 }
 
-// gram4 adds w a' b + v p' q to s, the outer products of one row each; with diag,
-// where a is b and p is q, only the upper triangle.
-func gram4(s *[16]complex128, a, b, p, q *[4]complex128, w, v float64, diag bool) {
-	b0, b1, b2, b3 := b[0], b[1], b[2], b[3]
-	q0, q1, q2, q3 := q[0], q[1], q[2], q[3]
+// gram4 adds w a' b + v p' q to s, the outer products of one row each.
+func gram4(s *[16]complex128, a, b, p, q *[4]complex128, w, v float64) {
 	for i := range 4 {
 		x := complex(w*real(a[i]), -w*imag(a[i]))
 		y := complex(v*real(p[i]), -v*imag(p[i]))
 		r := (*[4]complex128)(s[4*i:])
-		if diag {
-			for j := i; j < 4; j++ {
-				r[j] += x*b[j] + y*q[j]
-			}
-			continue
-		}
-		r[0] += x*b0 + y*q0
-		r[1] += x*b1 + y*q1
-		r[2] += x*b2 + y*q2
-		r[3] += x*b3 + y*q3
+		r[0] += x*b[0] + y*q[0]
+		r[1] += x*b[1] + y*q[1]
+		r[2] += x*b[2] + y*q[2]
+		r[3] += x*b[3] + y*q[3]
 	}
 }
 
-// back4 stores f sum over the terms of sign x[from,:] M[block] in y.
-func back4(y *[4]complex128, x, m []complex128, terms []term, f float64) {
-	var r0, r1, r2, r3 complex128
+// gramDiag4 adds the upper triangle of w a' a + v p' p to s.
+func gramDiag4(s *[16]complex128, a, p *[4]complex128, w, v float64) {
+	var x, y complex128
+	x = complex(w*real(a[0]), -w*imag(a[0]))
+	y = complex(v*real(p[0]), -v*imag(p[0]))
+	s[0] += complex(real(x*a[0]+y*p[0]), 0)
+	s[1] += x*a[1] + y*p[1]
+	s[2] += x*a[2] + y*p[2]
+	s[3] += x*a[3] + y*p[3]
+	x = complex(w*real(a[1]), -w*imag(a[1]))
+	y = complex(v*real(p[1]), -v*imag(p[1]))
+	s[5] += complex(real(x*a[1]+y*p[1]), 0)
+	s[6] += x*a[2] + y*p[2]
+	s[7] += x*a[3] + y*p[3]
+	x = complex(w*real(a[2]), -w*imag(a[2]))
+	y = complex(v*real(p[2]), -v*imag(p[2]))
+	s[10] += complex(real(x*a[2]+y*p[2]), 0)
+	s[11] += x*a[3] + y*p[3]
+	x = complex(w*real(a[3]), -w*imag(a[3]))
+	y = complex(v*real(p[3]), -v*imag(p[3]))
+	s[15] += complex(real(x*a[3]+y*p[3]), 0)
+}
+
+// back4 stores the adjoint of f sum over the terms of x[from,:] M[block] in column l
+// of y: no entries are shared at this dimension, so every sign is 1.
+func back4(y *[16]complex128, l int, x, m []complex128, terms []term, f float64) {
+	var r [4]complex128
 	for _, t := range terms {
 		c := (*[16]complex128)(m[16*t.block:])
 		p := (*[4]complex128)(x[4*t.from:])
-		for i := range 4 {
-			w := p[i]
-			r0 += w * c[4*i+0]
-			r1 += w * c[4*i+1]
-			r2 += w * c[4*i+2]
-			r3 += w * c[4*i+3]
-		}
+		w, x, y, z := p[0], p[1], p[2], p[3]
+		r[0] += w*c[0] + x*c[4] + y*c[8] + z*c[12]
+		r[1] += w*c[1] + x*c[5] + y*c[9] + z*c[13]
+		r[2] += w*c[2] + x*c[6] + y*c[10] + z*c[14]
+		r[3] += w*c[3] + x*c[7] + y*c[11] + z*c[15]
 	}
-	g := complex(f, 0)
-	y[0], y[1], y[2], y[3] = g*r0, g*r1, g*r2, g*r3
+	for j := range r {
+		y[4*j+l] = complex(f*real(r[j]), -f*imag(r[j]))
+	}
+}
+
+// turn4 stores -i (p - p') in c, which may be p.
+func turn4(c, p *[16]complex128) {
+	c[0] = complex(2*imag(p[0]), 0)
+	c[1] = complex(imag(p[1])+imag(p[4]), real(p[4])-real(p[1]))
+	c[4] = conj(c[1])
+	c[2] = complex(imag(p[2])+imag(p[8]), real(p[8])-real(p[2]))
+	c[8] = conj(c[2])
+	c[3] = complex(imag(p[3])+imag(p[12]), real(p[12])-real(p[3]))
+	c[12] = conj(c[3])
+	c[5] = complex(2*imag(p[5]), 0)
+	c[6] = complex(imag(p[6])+imag(p[9]), real(p[9])-real(p[6]))
+	c[9] = conj(c[6])
+	c[7] = complex(imag(p[7])+imag(p[13]), real(p[13])-real(p[7]))
+	c[13] = conj(c[7])
+	c[10] = complex(2*imag(p[10]), 0)
+	c[11] = complex(imag(p[11])+imag(p[14]), real(p[14])-real(p[11]))
+	c[14] = conj(c[11])
+	c[15] = complex(2*imag(p[15]), 0)
 }

@@ -19,8 +19,9 @@ type spinCost struct {
 
 // spinStep is what the forward sweep leaves of a step.
 type spinStep struct {
-	turn     quat // exp(-i dt H/2)
 	mid, end quat
+	w        vec     // exp(-i dt H/2) = exp(-i w·σ)
+	cos, mu  float64 // cos|w| and sin|w|/|w|
 }
 
 // sym4 is a symmetric 4 x 4 matrix, its upper triangle.
@@ -77,32 +78,16 @@ func newSpinCost(c *Cost) *spinCost {
 
 func cabs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }
 
-// halfTurn returns exp(-i w·σ) as a quaternion, and for w² = x the derivatives by x of
-// its cosine and of µ = sin|w|/|w|.
-func halfTurn(w vec) (q quat, dc, mu, dmu float64) {
-	x := w.dot(w)
-	var c float64
-	if x < 0.04 { // the terms left out are under 1e-17
+// halfTurn returns cos|w| and sin|w|/|w| for w² = x.
+func halfTurn(x float64) (c, mu float64) {
+	if x < 0.02 { // the terms left out are under 3e-18
 		c = 1 - x*(1./2-x*(1./24-x*(1./720-x*(1./40320-x*(1./3628800)))))
 		mu = 1 - x*(1./6-x*(1./120-x*(1./5040-x*(1./362880-x*(1./39916800)))))
-		dmu = -1./6 + x*(1./60-x*(1./1680-x*(1./90720-x*(1./7983360))))
-	} else {
-		th := math.Sqrt(x)
-		var sn float64
-		sn, c = math.Sincos(th)
-		mu = sn / th
-		dmu = (c - mu) / (2 * x)
+		return c, mu
 	}
-	return quat{c, mu * w.x, mu * w.y, mu * w.z}, -mu / 2, mu, dmu
-}
-
-// field returns w of step i: the half step is exp(-i w·σ), w = dt Ω/4.
-func (s *spinCost) field(u []float64) vec {
-	f := s.static
-	for k, e := range s.ctrl {
-		f = f.plus(u[k], e)
-	}
-	return f.times(s.c.Step / 4)
+	th := math.Sqrt(x)
+	s, c := math.Sincos(th)
+	return c, s / th
 }
 
 // value is Cost.Value.
@@ -112,10 +97,17 @@ func (s *spinCost) value(u, grad []float64) float64 {
 	m := sym4{ww: 1}
 	last := 2.0
 	for i := range s.step {
-		t, _, _, _ := halfTurn(s.field(u[i*nk : i*nk+nk]))
+		w := s.static
+		for k, x := range u[i*nk : i*nk+nk] {
+			w = w.plus(x, s.ctrl[k])
+		}
+		w = w.times(s.c.Step / 4)
+		c, mu := halfTurn(w.dot(w))
+		t := quat{c, mu * w.x, mu * w.y, mu * w.z}
 		mid := t.mul(q)
 		q = t.mul(mid)
-		s.step[i] = spinStep{t, mid, q}
+		st := &s.step[i]
+		st.mid, st.end, st.w, st.cos, st.mu = mid, q, w, c, mu
 		if i == n-1 {
 			last = 1
 		}
@@ -161,34 +153,48 @@ func (s *spinCost) value(u, grad []float64) float64 {
 		wx: 2 * (gc[5] - gc[7]), wy: 2 * (gc[6] - gc[2]), wz: 2 * (gc[1] - gc[3]),
 		xy: 2 * (gc[1] + gc[3]), xz: 2 * (gc[2] + gc[6]), yz: 2 * (gc[5] + gc[7]),
 	}
-	y := b.apply(q)
-	y = quat{y.w - 2*tau*t.w, y.x - 2*tau*t.x, y.y - 2*tau*t.y, y.z - 2*tau*t.z}
+	// K as a vector: turning a frame by exp(-i δ·σ) on the left changes F by k·δ. A half
+	// turn exp(-i w·σ) takes it back by its Rᵀ, and moves by δ = J dw when w does:
+	//
+	//	Rᵀ k = k - 2cµ w×k + 2µ² w×(w×k)
+	//	Jᵀ k = k -  µ² w×k +  β w×(w×k),   β = (1-cµ)/w²
+	k := cotangent(quat{-2 * tau * t.w, -2 * tau * t.x, -2 * tau * t.y, -2 * tau * t.z}, q).plus(1, b.source(q))
 	for i := n - 1; i >= 0; i-- {
 		st := &s.step[i]
-		start := quat{w: 1}
-		if i > 0 {
-			start = s.step[i-1].end
+		c, mu, w := st.cos, st.mu, st.w
+		beta := 2. / 3
+		if x := w.dot(w); x > 1e-30 {
+			beta = (1 - c*mu) / x
 		}
-		// end = turn mid, mid = turn start; back through a product: y to turn' y and
-		// y times the other factor's conjugate
-		back := quat{st.turn.w, -st.turn.x, -st.turn.y, -st.turn.z}
-		dt := y.mul(quat{st.mid.w, -st.mid.x, -st.mid.y, -st.mid.z})
-		y = back.mul(y)
-		z := b.apply(st.mid)
-		y = quat{y.w + 4*z.w, y.x + 4*z.x, y.y + 4*z.y, y.z + 4*z.z}
-		e := y.mul(quat{start.w, -start.x, -start.y, -start.z})
-		dt = quat{dt.w + e.w, dt.x + e.x, dt.y + e.y, dt.z + e.z}
-		y = back.mul(y)
-		z = b.apply(start)
-		y = quat{y.w + 2*z.w, y.x + 2*z.x, y.y + 2*z.y, y.z + 2*z.z}
-		// through the half turn
-		v := s.field(u[i*nk : i*nk+nk])
-		_, dc, mu, dmu := halfTurn(v)
-		d := vec{dt.x, dt.y, dt.z}
-		d = d.times(mu).plus(2*(dt.w*dc+dmu*d.dot(v)), v).times(s.c.Step / 4)
+		mm := mu * mu
+		sum := k
+		p := w.cross(k)
+		r := w.cross(p)
+		k = k.plus(-2*c*mu, p).plus(2*mm, r).plus(4, b.source(st.mid))
+		sum = sum.add(k)
+		p1 := w.cross(k)
+		r1 := w.cross(p1)
+		k = k.plus(-2*c*mu, p1).plus(2*mm, r1)
+		if i > 0 {
+			k = k.plus(2, b.source(s.step[i-1].end))
+		}
+		sum = sum.plus(-mm, p.add(p1)).plus(beta, r.add(r1)).times(s.c.Step / 4)
+		at := grad[i*nk : i*nk+nk]
 		for k, e := range s.ctrl {
-			grad[i*nk+k] = d.dot(e)
+			at[k] = sum.dot(e)
 		}
 	}
 	return f
 }
+
+// cotangent is the vector K of a frame q whose derivative is y: that of y conj(q).
+func cotangent(y, q quat) vec {
+	return vec{
+		q.w*y.x - y.w*q.x - y.y*q.z + y.z*q.y,
+		q.w*y.y - y.w*q.y - y.z*q.x + y.x*q.z,
+		q.w*y.z - y.w*q.z - y.x*q.y + y.y*q.x,
+	}
+}
+
+// source is the vector K of a frame of weight 1 in the averages.
+func (m *sym4) source(q quat) vec { return cotangent(m.apply(q), q) }

@@ -15,7 +15,7 @@ import "math"
 // seriesError.
 
 // seriesError bounds what the series of one exponential leave out.
-const seriesError = 1.5e-16
+const seriesError = 5e-16
 
 // mostPowers serves |t H| up to 1.7; longer arguments are halved and doubled back.
 const mostPowers = 9

@@ -19,9 +19,8 @@ package dynamics
 type gram struct {
 	k      *kit
 	groups []group
-	rows   [][]term     // of the backward sum, by k
+	rows   [][]term     // of the backward sum, by k; d = 3 and 4
 	s, m   []complex128 // S, one block a group; M and its adjoint, two a group
-	odd    []complex128 // scratch row, weighted
 }
 
 // A group is the entries of V that share one block.
@@ -37,16 +36,13 @@ type pair struct {
 	sign float64
 }
 
-// A term adds sign F[from,:] M[block] to a row.
-type term struct {
-	from, block int
-	sign        float64
-}
+// A term adds F[from,:] M[block] to a row.
+type term struct{ from, block int }
 
 // newGram finds the blocks of the Hermitian errors.
 func newGram(k *kit, errors [][]complex128) *gram {
 	d := k.d
-	g := &gram{k: k, rows: make([][]term, d), odd: make([]complex128, d)}
+	g := &gram{k: k, rows: make([][]term, d)}
 	for i := range d {
 		for j := i; j < d; j++ {
 			v := make([]complex128, len(errors))
@@ -62,10 +58,13 @@ func newGram(k *kit, errors [][]complex128) *gram {
 		}
 	}
 	for b, gr := range g.groups {
+		if d > 4 {
+			break
+		}
 		for _, p := range gr.pairs {
-			g.rows[p.k] = append(g.rows[p.k], term{p.l, 2 * b, p.sign})
+			g.rows[p.k] = append(g.rows[p.k], term{p.l, 2 * b})
 			if !gr.diag {
-				g.rows[p.l] = append(g.rows[p.l], term{p.k, 2*b + 1, p.sign})
+				g.rows[p.l] = append(g.rows[p.l], term{p.k, 2*b + 1})
 			}
 		}
 	}
@@ -109,18 +108,18 @@ func (g *gram) add(w float64, x []complex128, v float64, y []complex128) {
 	for b := range g.groups {
 		gr := &g.groups[b]
 		s := g.s[b*dd : b*dd+dd]
+		p := gr.pairs[0]
 		switch {
-		case d == 4 && y != nil:
-			p := gr.pairs[0]
-			gram4((*[16]complex128)(s), (*[4]complex128)(x[4*p.k:]), (*[4]complex128)(x[4*p.l:]), (*[4]complex128)(y[4*p.k:]), (*[4]complex128)(y[4*p.l:]), w, v, gr.diag)
-		case d == 3 && y != nil:
-			p := gr.pairs[0]
-			gram3((*[9]complex128)(s), (*[3]complex128)(x[3*p.k:]), (*[3]complex128)(x[3*p.l:]), (*[3]complex128)(y[3*p.k:]), (*[3]complex128)(y[3*p.l:]), w, v, gr.diag)
+		case y == nil || d != 3 && d != 4:
+			g.addTo(s, gr, w, x, x, v, y)
+		case d == 4 && gr.diag:
+			gramDiag4((*[16]complex128)(s), (*[4]complex128)(x[4*p.k:]), (*[4]complex128)(y[4*p.k:]), w, v)
+		case d == 4:
+			gram4((*[16]complex128)(s), (*[4]complex128)(x[4*p.k:]), (*[4]complex128)(x[4*p.l:]), (*[4]complex128)(y[4*p.k:]), (*[4]complex128)(y[4*p.l:]), w, v)
+		case gr.diag:
+			gramDiag3((*[9]complex128)(s), (*[3]complex128)(x[3*p.k:]), (*[3]complex128)(y[3*p.k:]), w, v)
 		default:
-			g.addTo(s, gr, w, x, x)
-			if y != nil {
-				g.addTo(s, gr, v, y, y)
-			}
+			gram3((*[9]complex128)(s), (*[3]complex128)(x[3*p.k:]), (*[3]complex128)(x[3*p.l:]), (*[3]complex128)(y[3*p.k:]), (*[3]complex128)(y[3*p.l:]), w, v)
 		}
 	}
 }
@@ -131,15 +130,16 @@ func (g *gram) addCross(w float64, x, z []complex128) {
 	for b := range g.groups {
 		gr := &g.groups[b]
 		s := g.s[b*dd : b*dd+dd]
-		g.addTo(s, gr, w, x, z)
-		g.addTo(s, gr, w, z, x)
+		g.addTo(s, gr, w, x, z, 0, nil)
+		g.addTo(s, gr, w, z, x, 0, nil)
 	}
 }
 
-// addTo adds w x[k,:]' y[l,:] over the pairs of the group to its block; of a
-// diagonal one only the upper triangle.
-func (g *gram) addTo(s []complex128, gr *group, w float64, x, y []complex128) {
+// addTo adds w x[k,:]' z[l,:] over the pairs of the group to its block, and
+// v y[k,:]' y[l,:] when y is not nil; of a diagonal one only the upper triangle.
+func (g *gram) addTo(s []complex128, gr *group, w float64, x, z []complex128, v float64, y []complex128) {
 	d := g.k.d
+	pairs := gr.pairs
 	for i := range d {
 		from := 0
 		if gr.diag {
@@ -147,24 +147,33 @@ func (g *gram) addTo(s []complex128, gr *group, w float64, x, y []complex128) {
 		}
 		row := s[i*d+from : i*d+d]
 		at := 0
-		coef := func(n int) complex128 {
-			p := &gr.pairs[n]
-			v, f := x[p.k*d+i], w*p.sign
-			return complex(f*real(v), -f*imag(v))
+		if y == nil {
+			for ; at+3 < len(pairs); at += 4 {
+				p := pairs[at : at+4]
+				add4(row, z[p[0].l*d+from:], z[p[1].l*d+from:], z[p[2].l*d+from:], z[p[3].l*d+from:],
+					weigh(w, x, &p[0], d, i), weigh(w, x, &p[1], d, i), weigh(w, x, &p[2], d, i), weigh(w, x, &p[3], d, i))
+			}
+			for ; at < len(pairs); at++ {
+				add1(row, z[pairs[at].l*d+from:], weigh(w, x, &pairs[at], d, i))
+			}
+			continue
 		}
-		for ; at+3 < len(gr.pairs); at += 4 {
-			p := gr.pairs[at : at+4]
-			add4(row, y[p[0].l*d+from:], y[p[1].l*d+from:], y[p[2].l*d+from:], y[p[3].l*d+from:],
-				coef(at), coef(at+1), coef(at+2), coef(at+3))
+		for ; at+1 < len(pairs); at += 2 {
+			p := pairs[at : at+2]
+			add4(row, z[p[0].l*d+from:], z[p[1].l*d+from:], y[p[0].l*d+from:], y[p[1].l*d+from:],
+				weigh(w, x, &p[0], d, i), weigh(w, x, &p[1], d, i), weigh(v, y, &p[0], d, i), weigh(v, y, &p[1], d, i))
 		}
-		if at+1 < len(gr.pairs) {
-			add2(row, y[gr.pairs[at].l*d+from:], y[gr.pairs[at+1].l*d+from:], coef(at), coef(at+1))
-			at += 2
-		}
-		if at < len(gr.pairs) {
-			add1(row, y[gr.pairs[at].l*d+from:], coef(at))
+		if at < len(pairs) {
+			p := &pairs[at]
+			add2(row, z[p.l*d+from:], y[p.l*d+from:], weigh(w, x, p, d, i), weigh(v, y, p, d, i))
 		}
 	}
+}
+
+// weigh returns w sign conj(x[k,i]).
+func weigh(w float64, x []complex128, p *pair, d, i int) complex128 {
+	v, f := x[p.k*d+i], w*p.sign
+	return complex(f*real(v), -f*imag(v))
 }
 
 // integral stores A of error e in dst, scaled by f.
@@ -211,36 +220,47 @@ func (g *gram) pull(z [][]complex128) {
 	}
 }
 
-// back stores f sum_j V_j x Z_j in y.
+// back stores the adjoint of f sum_j V_j x Z_j in y.
 func (g *gram) back(y, x []complex128, f float64) {
 	d, dd := g.k.d, g.k.dd
 	switch d {
 	case 3:
 		for l, terms := range g.rows {
-			back3((*[3]complex128)(y[3*l:]), x, g.m, terms, f)
+			back3((*[9]complex128)(y), l, x, g.m, terms, f)
 		}
 		return
 	case 4:
 		for l, terms := range g.rows {
-			back4((*[4]complex128)(y[4*l:]), x, g.m, terms, f)
+			back4((*[16]complex128)(y), l, x, g.m, terms, f)
 		}
 		return
 	}
-	for l, terms := range g.rows {
-		row := y[l*d : l*d+d]
-		clear(row)
-		for _, t := range terms {
-			m := g.m[t.block*dd : t.block*dd+dd]
-			w := x[t.from*d : t.from*d+d]
-			h := f * t.sign
-			i := 0
-			for ; i+3 < d; i += 4 {
-				r := m[i*d:]
-				add4(row, r, r[d:], r[2*d:], r[3*d:], times(w[i], h), times(w[i+1], h), times(w[i+2], h), times(w[i+3], h))
-			}
-			for ; i < d; i++ {
-				add1(row, m[i*d:], times(w[i], h))
+	// block by block, so that one is used often before the next takes its place in
+	// the cache
+	t := g.k.t
+	clear(t)
+	for b := range g.groups {
+		gr := &g.groups[b]
+		up, low := g.m[2*b*dd:2*b*dd+dd], g.m[(2*b+1)*dd:(2*b+2)*dd]
+		for _, p := range gr.pairs {
+			g.through(t[p.k*d:p.k*d+d], x[p.l*d:p.l*d+d], up, f*p.sign)
+			if !gr.diag {
+				g.through(t[p.l*d:p.l*d+d], x[p.k*d:p.k*d+d], low, f*p.sign)
 			}
 		}
+	}
+	adjoint(y, t, d)
+}
+
+// through adds f w M to the row.
+func (g *gram) through(row, w, m []complex128, f float64) {
+	d := len(row)
+	i := 0
+	for ; i+3 < d; i += 4 {
+		r := m[i*d:]
+		add4(row, r, r[d:], r[2*d:], r[3*d:], times(w[i], f), times(w[i+1], f), times(w[i+2], f), times(w[i+3], f))
+	}
+	for ; i < d; i++ {
+		add1(row, m[i*d:], times(w[i], f))
 	}
 }
