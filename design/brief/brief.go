@@ -37,7 +37,7 @@ type Brief struct {
 }
 
 // lines says where keys stand that LoadAll may have to complain of.
-type lines struct{ span, site, coefficients, hold int }
+type lines struct{ span, site, coefficients, hold, profile, device int }
 
 // Who turns a gate's axis about Z, as frames and phases of a sequence ask.
 const (
@@ -200,7 +200,13 @@ func Load(path string) (*Brief, error) {
 	if err != nil {
 		return nil, err
 	}
-	return read(doc)
+	b, err := read(doc)
+	if err != nil && !doc.Root().Has("target") {
+		if other, wrong := mistaken(path, BriefFile); wrong {
+			return nil, &quantity.Error{File: path, Found: "what looks like a " + string(other), Allowed: "a brief, which has a [target] and names a profile and a device"}
+		}
+	}
+	return b, err
 }
 
 // read makes the brief of a document.
@@ -231,7 +237,7 @@ func read(doc *quantity.Document) (*Brief, error) {
 	if b.Basis.Family == Samples && b.Basis.Coefficients > 0 {
 		basis.Fail("coefficients", `found %d with family = "samples"; allowed: no number here, as there is one coefficient for each sample`, b.Basis.Coefficients)
 	}
-	b.lines = lines{root.Line("span"), root.Table("target").Line("site"), basis.Line("coefficients"), root.Line("hold")}
+	b.lines = lines{root.Line("span"), root.Table("target").Line("site"), basis.Line("coefficients"), root.Line("hold"), root.Line("profile"), root.Line("device")}
 	b.readErrors(root)
 	b.readRequire(root.Table("require"))
 	if err := doc.Err(); err != nil {

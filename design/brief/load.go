@@ -18,7 +18,7 @@ const wholeSamples = 0.01
 // LoadAll reads a brief with the hardware profile and the device that it names, and checks the three against each other: the
 // span is one that the instrument plays, to the last digit a multiple of its sample period, and the sites and channels that are
 // named exist. Errors are an *quantity.Error or what hardware.Load
-// gives: one sentence with the file, line and key that is at fault.
+// gives: one sentence with the file, line and key that is at fault. A file that is not there, or is of another kind, is a fault of the brief's key.
 func LoadAll(path string) (*Brief, *hardware.Profile, *device.Device, error) {
 	b, err := Load(path)
 	if err != nil {
@@ -26,11 +26,11 @@ func LoadAll(path string) (*Brief, *hardware.Profile, *device.Device, error) {
 	}
 	p, err := hardware.Load(b.ProfilePath)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, nil, nil, b.named("profile", b.Profile, b.ProfilePath, b.lines.profile, ProfileFile, err)
 	}
 	d, err := device.Load(b.DevicePath)
 	if err != nil {
-		return nil, nil, nil, err
+		return nil, nil, nil, b.named("device", b.Device, b.DevicePath, b.lines.device, DeviceFile, err)
 	}
 	if err := b.Complete(p, d); err != nil {
 		return nil, nil, nil, err

@@ -95,6 +95,70 @@ func TestLoadAll(t *testing.T) {
 	}
 }
 
+// Another file in the place of a brief is recognised.
+func TestNotABrief(t *testing.T) {
+	dir := write(t, "", "", "")
+	for file, kind := range map[string]string{"racks/rack.toml": "hardware profile", "device.toml": "device file"} {
+		path := filepath.Join(dir, filepath.FromSlash(file))
+		_, _, _, err := LoadAll(path)
+		if want := path + ": found what looks like a " + kind + "; allowed: a brief, which has a [target] and names a profile and a device"; err == nil || err.Error() != want {
+			t.Errorf("%s: %v, want %s", file, err, want)
+		}
+	}
+	for file, kind := range map[string]FileKind{"racks/rack.toml": ProfileFile, "device.toml": DeviceFile, "brief.toml": BriefFile} {
+		if got, err := KindOf(filepath.Join(dir, filepath.FromSlash(file))); got != kind || err != nil {
+			t.Errorf("%s: %q, %v", file, got, err)
+		}
+	}
+}
+
+// A default size is no larger than a share of the drive's full scale: a rack of 40 MHz and a faster one have exactly 3 and 1 MHz, a slow one 7.5 % and 2.5 %. What
+// the brief says stays.
+func TestDefaultSizes(t *testing.T) {
+	for _, c := range []struct {
+		full         string
+		named, every float64 // MHz
+	}{{"40 MHz", 3, 1}, {"400 MHz", 3, 1}, {"20 MHz", 1.5, 0.5}, {"1 MHz", 0.075, 0.025}, {"10 kHz", 0.00075, 0.00025}} {
+		for name, errors := range map[string]string{
+			"named":   "[[error]]\ndetuning = \"q1\"\n[[error]]\nany = \"all\"\n[[error]]\noperator = \"X\"\nsize = \"3 MHz\"\n[[error]]\namplitude = \"q1 drive\"\n[[error]]\nmatrix = [[0.5, 0], [0, -0.5]]\n",
+			"default": "",
+		} {
+			dir := write(t, "brief.toml", "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\"\n", errors)
+			path := filepath.Join(dir, "racks", "rack.toml")
+			text := strings.Replace(folder["racks/rack.toml"], "40 MHz", c.full, 1) // the other channel drives nothing
+			if err := os.WriteFile(path, []byte(text), 0o666); err != nil {
+				t.Fatal(err)
+			}
+			b, p, d, err := LoadAll(filepath.Join(dir, "brief.toml"))
+			if err != nil {
+				t.Fatal(err)
+			}
+			for range 2 {
+				for _, e := range b.Errors {
+					want, tolerance := rate(c.named/1e3), 1e-14
+					switch {
+					case e.Kind == Any:
+						want = rate(c.every / 1e3)
+					case e.Kind == Amplitude:
+						want = 0.03
+					case e.Name == "X":
+						want = rate(0.003)
+					}
+					if c.full == "40 MHz" || c.full == "400 MHz" {
+						tolerance = 0
+					}
+					if !(math.Abs(e.Size-want) <= tolerance*want) {
+						t.Errorf("full scale %s, %s: %s of size %g, want %g", c.full, name, e.Name, e.Size, want)
+					}
+				}
+				if err := b.Complete(p, d); err != nil { // a second call changes nothing
+					t.Fatal(err)
+				}
+			}
+		}
+	}
+}
+
 // A period without exact decimals: the span as people write it becomes the exact multiple.
 func TestSpanBecomesExact(t *testing.T) {
 	dir := write(t, "racks/rack.toml", "1 GS/s", "2.4 GS/s")
@@ -124,8 +188,10 @@ func TestLoadAllRefuses(t *testing.T) {
 		{"brief.toml", "detuning = \"q1\"", "detuning = \"Q1\"", "brief.toml", `:12: error[0].detuning: found "Q1"; allowed: a site of DIR/device.toml, "q1"`},
 		{"brief.toml", "amplitude = \"q1 drive\"", "amplitude = \"q2 drive\"", "brief.toml", `:14: error[1].amplitude: found "q2 drive"; allowed: a channel that drives a site of DIR/device.toml, "q1 drive"`},
 		{"brief.toml", "coefficients = 20", "coefficients = 109", "brief.toml", `:10: basis.coefficients: found 109; allowed: at most 108, the samples of "q1 drive" in this span that are free`},
-		{"brief.toml", "racks/rack.toml", "rack.toml", "rack.toml", `: found no such file; allowed: a TOML file of at most 1 MiB that can be read`},
-		{"brief.toml", "device.toml", "racks", "racks", `: found a folder; allowed: a TOML file of at most 1 MiB that can be read`},
+		{"brief.toml", "racks/rack.toml", "rack.toml", "brief.toml", `:3: profile: found "rack.toml", and at DIR/rack.toml no such file; allowed: a hardware profile, by its path from the brief's folder or from the root`},
+		{"brief.toml", "device.toml", "racks", "brief.toml", `:4: device: found "racks", and at DIR/racks a folder; allowed: a device file, by its path from the brief's folder or from the root`},
+		{"brief.toml", "racks/rack.toml", "brief.toml", "brief.toml", `:3: profile: found "brief.toml", which looks like a brief; allowed: a hardware profile, by its path from the brief's folder or from the root`},
+		{"brief.toml", "device.toml", "racks/rack.toml", "brief.toml", `:4: device: found "racks/rack.toml", which looks like a hardware profile; allowed: a device file, by its path from the brief's folder or from the root`},
 		{"device.toml", "channel = \"q1 drive\"", "channel = \"q1\"", "device.toml", `:7: drive[0].channel: found "q1"; allowed: a channel of DIR/racks/rack.toml, "q1 drive", "q2 drive"`},
 		{"device.toml", "[[site]]", "[[site]]\nT1 = 4", "device.toml", `:4: site[0].T1: found 4; allowed: a time such as "112 ns", 1 ns to 1e+06 s (a bare number has no unit: write a quantity in quotes)`},
 		{"racks/rack.toml", "\"1 GS/s\"", "1", "racks/rack.toml", `:4: instrument.sample_rate: found 1; allowed: a sample rate such as "1 GS/s", 1 MS/s to 100 GS/s (a bare number has no unit: write a quantity in quotes)`},
@@ -256,7 +322,7 @@ func TestComplete(t *testing.T) {
 		t.Errorf("%+v, %v", b, err)
 	}
 	// hold = "profile": what is known to some share, beside what the brief says of the same parameter.
-	b, p, d, err = LoadAll(wideFolder(t, "brief.toml", "span", "hold = \"profile\"\nspan"))
+	_, _, _, err = LoadAll(wideFolder(t, "brief.toml", "span", "hold = \"profile\"\nspan"))
 	if err == nil || !strings.Contains(err.Error(), ":5: hold: found \"profile\", and nothing can be held to \"delay\" of \"flux\": ") {
 		t.Errorf("%v", err) // the flux line is straight: its field jumps
 	}

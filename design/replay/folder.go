@@ -57,14 +57,21 @@ const (
 // everything. An error is one sentence with the file and, in the record, line and key. Unknown keys are refused where they could
 // change a figure ([model], [claim], [require], [decoherence], [[file]]); what the design tells of itself elsewhere is not read.
 func Open(dir string) (*Folder, error) {
+	const allowed = "a pulse folder, which 'holdfast design BRIEF' makes"
 	info, err := os.Stat(dir)
+	if errors.Is(err, fs.ErrNotExist) {
+		return nil, fmt.Errorf("%s: found no such folder; allowed: %s", dir, allowed)
+	}
 	if err != nil {
 		return nil, fmt.Errorf("%s: %w", dir, cause(err))
 	}
 	if !info.IsDir() {
-		return nil, fmt.Errorf("%s: not a folder; replay reads a pulse folder", dir)
+		return nil, fmt.Errorf("%s: found a file; allowed: %s", dir, allowed)
 	}
 	path := filepath.Join(dir, hardware.RecordName)
+	if _, err := os.Stat(path); errors.Is(err, fs.ErrNotExist) {
+		return nil, fmt.Errorf("%s: found a folder without %s; allowed: %s", dir, hardware.RecordName, allowed)
+	}
 	doc, err := quantity.ReadFile(path)
 	if err != nil {
 		return nil, err

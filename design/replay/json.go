@@ -68,7 +68,7 @@ func (v *Verdict) MarshalJSON() ([]byte, error) {
 		j.BringUp.Repeats = append(j.BringUp.Repeats, repeatJSON{figure(p.Value), figure(p.One)})
 	}
 	for _, d := range v.Inputs {
-		j.Inputs = append(j.Inputs, differenceJSON{d.Key, d.Recorded, d.Rebuilt})
+		j.Inputs = append(j.Inputs, differenceJSON(d))
 	}
 	for _, r := range v.Requirements {
 		j.Requirements = append(j.Requirements, requirementJSON{r.Name, r.Unit, figure(r.Found), figure(r.Allowed), r.Margin, r.Met})
