@@ -122,12 +122,28 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	stalls, wait := 0, 0
 	status := Exhausted
 	fresh := true // r, jac belong to a new c: normal matrices must be formed
-	// The merit may fall while the miss rises, so the last point need not be the best.
-	keep := func() {
+	// look evaluates the trial point, unless it lies outside: the barrier sees what
+	// reach cannot, a step that is not finite.
+	look := func() (miss, phi float64, ok bool) {
+		if phi = s.barrier(trial); math.IsInf(phi, 1) {
+			return math.Inf(1), phi, false
+		}
+		p.Residuals(trial, rt)
+		res.Evaluations++
+		return sumSquares(rt), phi, true
+	}
+	// move makes the trial, which look saw last, the current point. The merit may
+	// fall while the miss rises, so the last point need not be the best.
+	move := func(newMiss, newPhi float64) {
+		c, trial = trial, c
+		r, rt = rt, r
+		miss, phi = newMiss, newPhi
 		if miss <= res.Miss {
 			res.Miss = miss
 			copy(best, c)
 		}
+		p.Jacobian(jac)
+		fresh = true
 	}
 	for res.Iterations = 0; res.Iterations < o.Iterations; res.Iterations++ {
 		if miss < o.Tolerance {
@@ -153,20 +169,10 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			for i := range trial {
 				trial[i] = c[i] + step[i]
 			}
-			// the barrier sees what reach cannot: a step that is not finite
-			if newPhi := s.barrier(trial); !math.IsInf(newPhi, 1) {
-				p.Residuals(trial, rt)
-				res.Evaluations++
-				if newMiss := sumSquares(rt); newMiss < landingGain*miss {
-					c, trial = trial, c
-					r, rt = rt, r
-					miss, phi = newMiss, newPhi
-					keep()
-					p.Jacobian(jac)
-					fresh = true
-					wait = 0
-					continue
-				}
+			if newMiss, newPhi, ok := look(); ok && newMiss < landingGain*miss {
+				move(newMiss, newPhi)
+				wait = 0
+				continue
 			}
 			wait = landingWait
 		}
@@ -188,36 +194,28 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		merit := miss/2 + mu*phi
 		t := math.Min(1, nearBoundary*s.reach(c, step))
 		t0 := t
-		accepted := false
 		var newMiss, newPhi float64
+		accepted := false
+		enough := func() (ok bool) {
+			newMiss, newPhi, ok = look()
+			return ok && newMiss/2+mu*newPhi <= merit+armijo*t*slope
+		}
 		for try := range halvings {
 			for i := range trial {
 				trial[i] = c[i] + t*step[i]
 			}
-			if newPhi = s.barrier(trial); !math.IsInf(newPhi, 1) {
-				p.Residuals(trial, rt)
-				res.Evaluations++
-				newMiss = sumSquares(rt)
-				if newMiss/2+mu*newPhi <= merit+armijo*t*slope {
-					accepted = true
-					break
+			if accepted = enough(); accepted {
+				break
+			}
+			// The full step failed because the residuals bend away from their
+			// tangent: follow the bend once before shortening the step.
+			if try == 0 && newMiss < bendLimit*miss {
+				follow(bent, rt, r, jac, step, norm, t, m, n)
+				for i := range trial {
+					trial[i] += bent[i]
 				}
-				// The full step failed because the residuals bend away from their
-				// tangent: follow the bend once before shortening the step.
-				if try == 0 && newMiss < bendLimit*miss {
-					follow(bent, rt, r, jac, step, norm, t, m, n)
-					for i := range trial {
-						trial[i] += bent[i]
-					}
-					if newPhi = s.barrier(trial); !math.IsInf(newPhi, 1) {
-						p.Residuals(trial, rt)
-						res.Evaluations++
-						newMiss = sumSquares(rt)
-						if newMiss/2+mu*newPhi <= merit+armijo*t*slope {
-							accepted = true
-							break
-						}
-					}
+				if accepted = enough(); accepted {
+					break
 				}
 			}
 			t /= 2
@@ -231,12 +229,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			continue
 		}
 		gain := (merit - newMiss/2 - mu*newPhi) / math.Max(math.Abs(miss/2), 1e-300)
-		c, trial = trial, c
-		miss, phi = newMiss, newPhi
-		r, rt = rt, r
-		keep()
-		p.Jacobian(jac)
-		fresh = true
+		move(newMiss, newPhi)
 		if t > 0.5 {
 			lambda = math.Max(lambda/4, 1e-12)
 		} else if t < 0.3*t0 {
@@ -308,7 +301,6 @@ func descend(step, g, jj, hb, norm []float64, f float64, n int) bool {
 	return true
 }
 
-// sumSquares returns |r|², +Inf when it is not a number.
 // substitute solves RᵀR x = v in place. For one right-hand side two triangular
 // solves beat the library's routine for many.
 func substitute(r blas64.Triangular, v []float64) {
@@ -317,6 +309,7 @@ func substitute(r blas64.Triangular, v []float64) {
 	blas64.Trsv(blas.NoTrans, r, x)
 }
 
+// sumSquares returns |r|², +Inf when it is not a number.
 func sumSquares(r []float64) float64 {
 	s := 0.0
 	for _, v := range r {
