@@ -24,8 +24,11 @@ type Class struct {
 	Name   string
 	Kind   Kind
 	Vector dynamics.Vec // kind Static: V, any length but zero
-	Mix    [][]float64  // kind Mixed: row by control that is moved, column by control that moves it
-	Weight float64      // of its residuals; the gate itself has 1
+	// Operator is V of kind Static for more levels than two, where Vector is (0, 0, 1):
+	// its length and sign along Operator are all that is asked of it.
+	Operator []complex128
+	Mix      [][]float64 // kind Mixed: row by control that is moved, column by control that moves it
+	Weight   float64     // of its residuals; the gate itself has 1
 	// Size is the largest error that the refinement looks at: the length of the
 	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or λ for errors of
 	// the controls. Zero keeps the class out of the refinement.

@@ -11,6 +11,7 @@ import (
 // Figures say what a gate is worth.
 type Figures struct {
 	Infidelity float64 // average gate infidelity, at the best free angles
+	Leakage    float64 // out of the code space; zero for one spin
 	// Before and After are these angles, rad; zero where not free.
 	Before, After float64
 	// Susceptibility of each held class of the Spin, in order.
@@ -22,20 +23,6 @@ type Figures struct {
 type Worst struct {
 	Susceptibility float64
 	Direction      string // "0.83 X + 0.41 Y"
-}
-
-// load takes controls u given at the grid's nodes, one control after the other
-// in shares of full scale, and for every held class of kind Line its v.
-func (g *Gate) load(u []float64, v [][]float64) {
-	copy(g.u, u)
-	for i, c := range g.spec.Held {
-		switch c.Kind {
-		case Mixed:
-			g.mix(c.Mix, g.u, g.v[i])
-		case Line:
-			copy(g.v[i], v[i])
-		}
-	}
 }
 
 // Figures evaluates controls u and, by held class, the v of those of kind Line;

@@ -3,9 +3,6 @@ package robust
 import (
 	"math"
 
-	"gonum.org/v1/gonum/blas"
-	"gonum.org/v1/gonum/blas/blas64"
-
 	"holdfast/design/dynamics"
 )
 
@@ -65,25 +62,19 @@ type Response struct {
 
 // A Gate evaluates a Spin problem. It serves one goroutine; Clone makes more.
 type Gate struct {
-	spec     Spin
-	response Response
-	span     float64 // window, ns
-	before   dynamics.Quat
-	after    dynamics.Quat
-	full     float64 // full-scale rate that makes residuals of borne errors dimensionless, rad/ns
-	weight   float64 // of the members' residuals
+	drive
+	spec   Spin
+	span   float64 // window, ns
+	before dynamics.Quat
+	after  dynamics.Quat
+	full   float64 // full-scale rate that makes residuals of borne errors dimensionless, rad/ns
+	weight float64 // of the members' residuals
 
 	nominal dynamics.Spin // with every toggled error
 	finite  dynamics.Spin // gate only
 	combine []triple
-	borne   []int // class of each borne error of nominal
 	members []placed
 	rows    int
-
-	nodes int
-	u     []float64   // controls, one after the other
-	moved []float64   // the same with a finite error
-	v     [][]float64 // of each class that is borne: what λ multiplies; u itself for an amplitude
 
 	d      []float64 // derivatives by node: raw rows x controls x nodes; the slopes lie in it
 	raw    []float64 // by coefficient: raw rows x Dim
@@ -119,7 +110,7 @@ type frame [9]float64
 // classes before those that ride on the controls. With refine > 0, the gate errors
 // of the classes' ensembles (3 each) follow with that weight.
 func NewGate(s Spin, r Response, refine float64) *Gate {
-	g := &Gate{spec: s, response: r, weight: refine}
+	g := &Gate{drive: newDrive(r, s.Held, len(s.Axes), s.Grid), spec: s, weight: refine}
 	g.span = s.Grid.Window()
 	g.before = dynamics.Turn(scaled(s.Static, -s.Grid.Lead))
 	g.after = dynamics.Turn(scaled(s.Static, -s.Grid.Trail))
@@ -127,8 +118,6 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 		g.full = math.Max(g.full, norm(a))
 	}
 	K := len(s.Axes)
-	g.nodes = 2 * len(s.Grid.Steps)
-	g.u, g.moved = make([]float64, K*g.nodes), make([]float64, K*g.nodes)
 	base := dynamics.Spin{Static: s.Static, Axes: s.Axes, Shifts: s.Shifts, Steps: s.Grid.Steps, First: s.Grid.First, Last: s.Grid.Last}
 	g.nominal, g.finite = base, base
 
@@ -161,16 +150,8 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 			g.nominal.Held = append(g.nominal.Held, unit(c.Vector))
 		}
 	}
-	g.v = make([][]float64, len(s.Held))
-	for i, c := range s.Held {
-		if !c.Kind.borne() {
-			continue
-		}
-		if g.v[i] = g.u; c.Kind != Amplitude {
-			g.v[i] = make([]float64, K*g.nodes)
-		}
-		g.combine = append(g.combine, triple{c.Weight, []part{{len(g.nominal.Held) + len(g.borne), 1 / (g.span * g.full)}}})
-		g.borne = append(g.borne, i)
+	for k, i := range g.borne {
+		g.combine = append(g.combine, triple{s.Held[i].Weight, []part{{len(g.nominal.Held) + k, 1 / (g.span * g.full)}}})
 		g.nominal.Borne = append(g.nominal.Borne, g.v[i])
 	}
 	if refine > 0 {
@@ -221,125 +202,6 @@ func (g *Gate) Rows() int { return g.rows }
 
 // Dim returns the number of coefficients.
 func (g *Gate) Dim() int { return g.response.Dim }
-
-// apply adds what blocks give for the coefficients c to the controls in dst.
-func (g *Gate) apply(blocks []Block, c, dst []float64) {
-	for _, b := range blocks {
-		control := func(k int) blas64.Vector {
-			return blas64.Vector{N: g.nodes, Inc: 1, Data: dst[(b.Control+k)*g.nodes : (b.Control+k+1)*g.nodes]}
-		}
-		part := func(k int) blas64.Vector {
-			return blas64.Vector{N: b.N, Inc: 1, Data: c[b.First+k*b.N : b.First+(k+1)*b.N]}
-		}
-		re := blas64.General{Rows: b.N, Cols: g.nodes, Stride: g.nodes, Data: b.Re}
-		blas64.Gemv(blas.Trans, 1, re, part(0), 1, control(0))
-		if !b.Quadrature {
-			continue
-		}
-		blas64.Gemv(blas.Trans, 1, re, part(1), 1, control(1))
-		if b.Im != nil {
-			im := blas64.General{Rows: b.N, Cols: g.nodes, Stride: g.nodes, Data: b.Im}
-			blas64.Gemv(blas.Trans, -1, im, part(1), 1, control(0))
-			blas64.Gemv(blas.Trans, 1, im, part(0), 1, control(1))
-		}
-	}
-}
-
-// contract adds f times rows of derivatives by node, d of rows x controls x
-// nodes, taken from the nodes first <= node < last, to derivatives by coefficient.
-func (g *Gate) contract(blocks []Block, f float64, d []float64, rows, first, last int, raw []float64) {
-	w, n := len(g.spec.Axes)*g.nodes, last-first
-	if rows == 0 || n == 0 {
-		return
-	}
-	for _, b := range blocks {
-		control := func(k int) blas64.General {
-			return blas64.General{Rows: rows, Cols: n, Stride: w, Data: d[(b.Control+k)*g.nodes+first:]}
-		}
-		part := func(k int) blas64.General {
-			return blas64.General{Rows: rows, Cols: b.N, Stride: g.response.Dim, Data: raw[b.First+k*b.N:]}
-		}
-		re := blas64.General{Rows: b.N, Cols: n, Stride: g.nodes, Data: b.Re[first:]}
-		blas64.Gemm(blas.NoTrans, blas.Trans, f, control(0), re, 1, part(0))
-		if !b.Quadrature {
-			continue
-		}
-		blas64.Gemm(blas.NoTrans, blas.Trans, f, control(1), re, 1, part(1))
-		if b.Im != nil {
-			im := blas64.General{Rows: b.N, Cols: n, Stride: g.nodes, Data: b.Im[first:]}
-			blas64.Gemm(blas.NoTrans, blas.Trans, f, control(1), im, 1, part(0))
-			blas64.Gemm(blas.NoTrans, blas.Trans, -f, control(0), im, 1, part(1))
-		}
-	}
-}
-
-// mix stores Mix u in v, and unmix adds f Mixᵀ d to d for one row of
-// derivatives in the nodes first <= node < last.
-func (g *Gate) mix(mix [][]float64, u, v []float64) {
-	clear(v)
-	for k, row := range mix {
-		for l, m := range row {
-			if m == 0 {
-				continue
-			}
-			to, from := v[k*g.nodes:(k+1)*g.nodes], u[l*g.nodes:(l+1)*g.nodes]
-			for i, x := range from {
-				to[i] += m * x
-			}
-		}
-	}
-}
-
-func (g *Gate) unmix(mix [][]float64, f float64, from, to []float64, first, last int) {
-	for k, row := range mix {
-		for l, m := range row {
-			if m == 0 {
-				continue
-			}
-			a, b := from[k*g.nodes+first:k*g.nodes+last], to[l*g.nodes+first:l*g.nodes+last]
-			for i, x := range a {
-				b[i] += f * m * x
-			}
-		}
-	}
-}
-
-// controls fills u and every v for the coefficients.
-func (g *Gate) controls(c []float64) {
-	clear(g.u)
-	g.apply(g.response.Blocks, c, g.u)
-	for i, class := range g.spec.Held {
-		switch class.Kind {
-		case Mixed:
-			g.mix(class.Mix, g.u, g.v[i])
-		case Line:
-			clear(g.v[i])
-			g.apply(g.response.Slopes[i], c, g.v[i])
-		}
-	}
-}
-
-// inside returns the nodes of the window.
-func (g *Gate) inside() (first, last int) { return 2 * g.spec.Grid.First, 2 * g.spec.Grid.Last }
-
-// err stores the controls with a finite error in moved: in the window only.
-func (g *Gate) err(e member, v []float64) {
-	copy(g.moved, g.u)
-	first, last := g.inside()
-	for k := range g.spec.Axes {
-		row := g.moved[k*g.nodes+first : k*g.nodes+last]
-		if e.scale != 1 {
-			for i := range row {
-				row[i] *= e.scale
-			}
-		}
-		if e.lambda != 0 {
-			for i, x := range v[k*g.nodes+first : k*g.nodes+last] {
-				row[i] += e.lambda * x
-			}
-		}
-	}
-}
 
 // miss returns the vector part of the gate error, at the best free angles and
 // signed so that the scalar part is positive, and the frame of its derivative.
@@ -472,7 +334,7 @@ func (g *Gate) Jacobian(jac []float64) {
 	n := g.response.Dim
 	w := len(g.spec.Axes) * g.nodes
 	nt, nh := len(g.nominal.Toggle), len(g.nominal.Held)
-	first, last := g.inside()
+	first, last := g.first, g.last
 	clear(g.raw)
 	g.nominal.Derive(g.u, &g.slopes)
 	// What an error that rides on the controls gains by itself, beside what the
