@@ -136,7 +136,9 @@ func newTask(in Inputs, family string) (*problem, error) {
 		target:  dynamics.Vec{b.Target.Axis[0] * b.Target.Angle, b.Target.Axis[1] * b.Target.Angle, b.Target.Axis[2] * b.Target.Angle},
 		turns:   turns(b),
 	}
-	w.spin.Static = scale(pauli(in.Device.Static()), 2)
+	if in.Device.Dim() == 2 {
+		w.spin.Static = scale(pauli(in.Device.Static()), 2)
+	} // a ladder's detuning is in its levels
 	w.spin.Target = dynamics.Turn(w.target)
 	w.spin.FreeBefore = b.Target.FreeZ == brief.Before || b.Target.FreeZ == brief.Both
 	w.spin.FreeAfter = b.Target.FreeZ == brief.After || b.Target.FreeZ == brief.Both
@@ -153,6 +155,20 @@ func newTask(in Inputs, family string) (*problem, error) {
 	}
 	if !shifted {
 		w.spin.Shifts = nil
+	}
+	if in.Device.Dim() > 2 {
+		if b.Target.FreeZ != brief.NoFreeZ && b.Target.FreeZ != "" {
+			return nil, fmt.Errorf("target.free_z: found %q on a ladder; allowed: \"none\" with more than two levels", b.Target.FreeZ)
+		}
+		if shifted {
+			return nil, fmt.Errorf("%s: found a drive-induced shift; allowed: none on a ladder of more than two levels", in.Profile.File)
+		}
+		w.levels = &robust.Levels{Dim: in.Device.Dim(), Code: 2, Static: in.Device.Static().Data, Target: b.Target.Matrix.Data}
+		for _, x := range d {
+			for _, op := range x.operators {
+				w.levels.Axes = append(w.levels.Axes, op.Scale(complex(in.Profile.Channels[x.channel].FullScale, 0)).Data)
+			}
+		}
 	}
 	if w.spin.Held, w.slopes, err = classes(in, d); err != nil {
 		return nil, err
@@ -209,9 +225,9 @@ func drives(in Inputs) (list []driven, err error) {
 			}))
 		}
 	}
-	for _, d := range in.Device.Biases {
+	for i, d := range in.Device.Biases {
 		if d.Site == in.Brief.Target.Site {
-			err = errors.Join(err, add(d.Channel, func(*hardware.Channel) []device.Matrix { return []device.Matrix{half(d.Axis)} }))
+			err = errors.Join(err, add(d.Channel, func(*hardware.Channel) []device.Matrix { return []device.Matrix{in.Device.BiasOperator(i)} }))
 		}
 	}
 	if err == nil && len(list) == 0 {
@@ -250,6 +266,10 @@ func classes(in Inputs, d []driven) (held []robust.Class, slopes []*slope, err e
 		switch e.Kind {
 		case brief.Static:
 			c.Kind, c.Vector = robust.Static, pauli(e.Operator)
+			if in.Device.Dim() > 2 {
+				c.Operator = in.Device.Lift(e.Operator).Data
+				c.Vector = dynamics.Vec{0, 0, length(c.Vector)} // its length along the operator is what counts
+			}
 			// the field that an operator of that size adds: H = F·σ/2
 			c.Size = 2 * e.Size * length(c.Vector)
 		case brief.Any:
@@ -281,6 +301,9 @@ func classes(in Inputs, d []driven) (held []robust.Class, slopes []*slope, err e
 			ch := &in.Profile.Channels[d[lane].channel]
 			c.Kind, c.Vector = robust.Static, pauli(d[lane].operators[i])
 			c.Size = 2 * e.Size * ch.FullScale * cmplx.Abs(ch.Line.DC()) * length(c.Vector)
+			if in.Device.Dim() > 2 {
+				c.Operator, c.Vector = d[lane].operators[i].Data, dynamics.Vec{0, 0, 1}
+			}
 		case brief.Line:
 			ch := &in.Profile.Channels[d[lane].channel]
 			p, ok := ch.Parameter(e.Parameter)
@@ -328,7 +351,8 @@ func opening(p *hardware.Profile, d []driven) float64 {
 	return t
 }
 
-// pauli returns v with v·σ the traceless part of a 2x2 Hermitian matrix.
+// pauli returns v with v·σ the traceless part of a Hermitian matrix's first two
+// rows and columns.
 func pauli(m device.Matrix) dynamics.Vec {
 	return dynamics.Vec{
 		real(m.At(0, 1)+m.At(1, 0)) / 2,

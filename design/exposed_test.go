@@ -82,7 +82,7 @@ func TestRoundedPulses(t *testing.T) {
 		}{
 			{"settled infidelity", v.Settled.Infidelity, claim.Infidelity, 1e-9, f.Claim.Infidelity},
 			{"window infidelity", v.Window.Infidelity, claim.InfidelityOtherEnds, 1e-9, f.Claim.InfidelityOtherEnds},
-			{"tail angle", v.TailAngle, claim.TailAngle, 1e-6, f.Claim.TailAngle},
+			{"tail angle", v.TailAngle, *claim.TailAngle, 1e-6, f.Claim.TailAngle},
 		} {
 			if !(math.Abs(x.got-x.want) <= x.tolerance) {
 				t.Errorf("%s: %s %.9g replayed, %.9g recorded", c.name, x.name, x.got, x.want)

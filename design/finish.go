@@ -221,7 +221,7 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			mc.Compression = append(mc.Compression, [2]float64{pt.Converter, pt.Reached})
 		}
 		if ch.Shift != 0 {
-			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(half("Z"))
+			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(in.Device.ShiftOperator())
 		}
 		for _, op := range d[i].operators {
 			mc.Operators = append(mc.Operators, rowsOf(op))
@@ -234,7 +234,7 @@ func (q *problem) model(in Inputs, d []driven) Model {
 		r := ModelError{Name: e.Name, Held: true, Kind: e.Kind, Channels: e.Channels, Quadrature: e.Quadrature}
 		switch e.Kind {
 		case brief.Static:
-			r.Operator = rowsOf(e.Operator)
+			r.Operator = rowsOf(in.Device.Lift(e.Operator))
 		case brief.Offset: // a static error along what the quadrature drives
 			r.Kind, r.Channels, r.Quadrature = brief.Static, nil, ""
 			for k, x := range d {
@@ -254,7 +254,7 @@ func (q *problem) model(in Inputs, d []driven) Model {
 		m.Errors = append(m.Errors, r)
 	}
 	for _, name := range []string{"detuning", "amplitude", "X", "Y", "Z"} {
-		if known[name] {
+		if known[name] || in.Device.Dim() > 2 { // of one spin all of these are judged
 			continue
 		}
 		r := ModelError{Name: name, Kind: brief.Static}
@@ -316,7 +316,8 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		if e.Kind == brief.Amplitude {
 			c.Kind = robust.Amplitude
 		} else {
-			c.Vector = pauli(matrixOf(e.Operator))
+			m := matrixOf(e.Operator)
+			c.Vector, c.Operator = pauli(m), m.Data
 		}
 		s.Held, slopes = append(s.Held, c), append(slopes, nil)
 	}
@@ -330,11 +331,10 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		}
 		axes[ends] = a
 	}
-	on := func(ends string, x [][]complex128) (*robust.Gate, []float64, [][]float64) {
-		a, t := axes[ends], s
-		t.Grid = a.Grid
+	on := func(ends string, x [][]complex128) (evaluator, []float64, [][]float64) {
+		a := axes[ends]
 		u, v := all.controls(&a, x)
-		return robust.NewGate(t, robust.Response{}, 0), u, v
+		return q.evaluator(a.Grid, robust.Response{}, s.Held, 0), u, v
 	}
 	figures := func(ends string, x [][]complex128) robust.Figures {
 		g, u, v := on(ends, x)
@@ -345,26 +345,37 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		other = brief.Settled
 	}
 	f := figures(in.Brief.Ends, rounded)
-	r.Claim.Infidelity = f.Infidelity
+	r.Claim.Infidelity, r.Claim.Leakage = f.Infidelity, f.Leakage
+	r.Search.Before = figures(in.Brief.Ends, exact).Infidelity
+	for i := range r.Model.Errors {
+		r.Model.Errors[i].Susceptibility = f.Susceptibility[i]
+	}
+	if q.levels != nil { // whose ring-out turns by no single angle
+		r.Claim.InfidelityOtherEnds = figures(other, rounded).Infidelity
+		return nil
+	}
 	if s.FreeBefore {
 		r.Model.FreeZBefore = []float64{f.Before}
 	}
 	if s.FreeAfter {
 		r.Model.FreeZAfter = []float64{f.After}
 	}
-	// the free angles are those of the stated ends, whatever the ends
-	g, u, _ := on(other, rounded)
-	r.Claim.InfidelityOtherEnds = g.InfidelityAt(u, f.Before, f.After)
-	r.Search.Before = figures(in.Brief.Ends, exact).Infidelity
-	for i := range r.Model.Errors {
-		r.Model.Errors[i].Susceptibility = f.Susceptibility[i]
+	spin := func(ends string) (*robust.Gate, []float64) {
+		a, t := axes[ends], s
+		t.Grid, t.Held = a.Grid, nil
+		u, _ := q.controls(&a, rounded)
+		return robust.NewGate(t, robust.Response{}, 0), u
 	}
+	// the free angles are those of the stated ends, whatever the ends
+	g, u := spin(other)
+	r.Claim.InfidelityOtherEnds = g.InfidelityAt(u, f.Before, f.After)
 	gate := func(ends string) dynamics.Quat {
-		g, u, _ := on(ends, rounded)
+		g, u := spin(ends)
 		return g.Unitary(u)
 	}
 	tail := gate(brief.Settled).Mul(gate(brief.Window).Conj())
-	r.Claim.TailAngle = 2 * math.Atan2(math.Sqrt(tail[1]*tail[1]+tail[2]*tail[2]+tail[3]*tail[3]), math.Abs(tail[0]))
+	angle := 2 * math.Atan2(math.Sqrt(tail[1]*tail[1]+tail[2]*tail[2]+tail[3]*tail[3]), math.Abs(tail[0]))
+	r.Claim.TailAngle = &angle
 	return nil
 }
 

@@ -44,7 +44,7 @@ func TestAxis(t *testing.T) {
 		{"through", []feed{{line: filter.Through()}}, true, 0},
 	} {
 		const n, h = 12, 1.0
-		a, err := newAxis(c.feeds, n, h, stepShare, c.settled, 0.25, c.static)
+		a, err := newAxis(c.feeds, n, h, stepShare, c.settled, 0.25, c.static, 0)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -98,7 +98,7 @@ func TestAxisBudget(t *testing.T) {
 		t.Fatal(err)
 	}
 	for _, static := range []float64{0, 0.06} {
-		_, err = newAxis([]feed{{line: slow}, {line: slow}}, 10, 1, stepShare, true, 0.25, static)
+		_, err = newAxis([]feed{{line: slow}, {line: slow}}, 10, 1, stepShare, true, 0.25, static, 0)
 		if err == nil || !strings.Contains(err.Error(), "steps") {
 			t.Errorf("static %v: %v; want a refusal", static, err)
 		}

@@ -30,8 +30,9 @@ type problem struct {
 
 	settled        bool
 	coarse, fine   axis
-	spin           robust.Spin // without grid
-	slopes         []*slope    // by held class: the line of an error of a line; nil for the others
+	spin           robust.Spin    // without grid; of a ladder its two lowest levels
+	levels         *robust.Levels // of a ladder, without grid and errors; nil for a spin
+	slopes         []*slope       // by held class: the line of an error of a line; nil for the others
 	coarseR, fineR robust.Response
 	starts         int
 	seed           uint64
@@ -70,6 +71,7 @@ type wish struct {
 	count    int // coefficients per quadrature; 0: what the band carries
 	degree   int // of B-splines
 	spin     robust.Spin
+	levels   *robust.Levels // nil for a spin
 	slopes   []*slope
 	target   dynamics.Vec
 	settled  bool
@@ -78,7 +80,7 @@ type wish struct {
 
 // newProblem puts the rooms together.
 func newProblem(p *hardware.Profile, w wish) (*problem, error) {
-	q := &problem{profile: p, samples: w.samples, spin: w.spin, slopes: w.slopes, target: w.target, settled: w.settled, turns: w.turns}
+	q := &problem{profile: p, samples: w.samples, spin: w.spin, levels: w.levels, slopes: w.slopes, target: w.target, settled: w.settled, turns: w.turns}
 	if len(q.turns) == 0 {
 		q.turns = []complex128{1}
 	}
@@ -109,6 +111,13 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 	}
 	q.coarseR, q.fineR = q.response(&q.coarse), q.response(&q.fine)
 	q.constrain()
+	if q.levels != nil { // before any search: does the ladder's kernel know all that is asked?
+		s := *q.levels
+		s.Grid, s.Held = q.coarse.Grid, q.spin.Held
+		if _, err := robust.NewLevelsGate(s, robust.Response{}, 0); err != nil {
+			return nil, err
+		}
+	}
 	return q, nil
 }
 
@@ -170,7 +179,20 @@ func (q *problem) axis(share float64, settled bool) (axis, error) {
 	for _, a := range q.spin.Axes {
 		full = math.Max(full, length(a))
 	}
-	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static))
+	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static), q.spread())
+}
+
+// spread is the largest difference of a ladder's energies, rad/ns; zero for a spin.
+func (q *problem) spread() float64 {
+	if q.levels == nil {
+		return 0
+	}
+	low, high := math.Inf(1), math.Inf(-1)
+	for i := range q.levels.Dim {
+		e := real(q.levels.Static[i*q.levels.Dim+i])
+		low, high = math.Min(low, e), math.Max(high, e)
+	}
+	return high - low
 }
 
 // response gives every coefficient's field at the nodes, and every slope's.
@@ -430,32 +452,55 @@ func (q *problem) addArea(c []float64, want, angle float64) {
 	}
 }
 
-// gate returns the residuals on the coarse or the fine grid.
-func (q *problem) gate(fine bool) *robust.Gate {
-	s := q.spin
-	if fine {
-		s.Grid = q.fine.Grid
-		return robust.NewGate(s, q.fineR, 0)
+// An evaluator gives residuals and figures of one gate: robust.Gate of a spin, or
+// robust.LevelsGate of a ladder.
+type evaluator interface {
+	Rows() int
+	Dim() int
+	Residuals(c, r []float64)
+	Jacobian(jac []float64)
+	Figures(u []float64, v [][]float64) robust.Figures
+	MeanInfidelity(u []float64, v [][]float64, class int) float64
+}
+
+// evaluator makes one on a grid. What a ladder asks for was found to be known when
+// the problem was made.
+func (q *problem) evaluator(grid robust.Grid, r robust.Response, held []robust.Class, refine float64) evaluator {
+	if q.levels != nil {
+		s := *q.levels
+		s.Grid, s.Held = grid, held
+		g, err := robust.NewLevelsGate(s, r, refine)
+		if err != nil {
+			panic("design: " + err.Error())
+		}
+		return g
 	}
-	s.Grid = q.coarse.Grid
-	return robust.NewGate(s, q.coarseR, 0)
+	s := q.spin
+	s.Grid, s.Held = grid, held
+	return robust.NewGate(s, r, refine)
+}
+
+// gate returns the residuals on the coarse or the fine grid.
+func (q *problem) gate(fine bool) evaluator {
+	if fine {
+		return q.evaluator(q.fine.Grid, q.fineR, q.spin.Held, 0)
+	}
+	return q.evaluator(q.coarse.Grid, q.coarseR, q.spin.Held, 0)
 }
 
 // finite returns the residuals on the coarse grid with those of a stage's finite
 // errors.
-func (q *problem) finite(st stage) *robust.Gate {
-	s := q.spin
-	s.Grid = q.coarse.Grid
-	s.Held = append([]robust.Class(nil), s.Held...)
-	for i := range s.Held {
-		s.Held[i].Size *= st.stretch
-		s.Held[i].OneSided = st.oneSided
+func (q *problem) finite(st stage) evaluator {
+	held := append([]robust.Class(nil), q.spin.Held...)
+	for i := range held {
+		held[i].Size *= st.stretch
+		held[i].OneSided = st.oneSided
 	}
-	return robust.NewGate(s, q.coarseR, refineWeight)
+	return q.evaluator(q.coarse.Grid, q.coarseR, held, refineWeight)
 }
 
 // residuals makes the solver's problem of a gate.
-func (q *problem) residuals(g *robust.Gate) solve.Problem {
+func (q *problem) residuals(g evaluator) solve.Problem {
 	p := solve.Problem{Dim: g.Dim(), Rows: g.Rows(), Residuals: g.Residuals, Jacobian: g.Jacobian}
 	if q.visit != nil {
 		p.Residuals = func(c, r []float64) {

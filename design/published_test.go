@@ -149,7 +149,7 @@ func TestPublishedComposites(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		g := q.gate(true)
+		g := q.gate(true).(*robust.Gate)
 		u, _ := q.controls(&q.fine, [][]complex128{x})
 		f := g.Figures(u, nil)
 		if !(f.Infidelity <= 1e-28) {
@@ -255,7 +255,7 @@ func TestPublishedShapes(t *testing.T) {
 				Axes:   []dynamics.Vec{{w, 0, 0}, {0, w, 0}}, Target: dynamics.One,
 			}
 			// as claim does for a pulse of any length
-			a, err := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static))
+			a, err := newAxis([]feed{{line: line}}, n, period, claimShare, true, w, length(s.Static), 0)
 			if err != nil {
 				t.Fatal(err)
 			}

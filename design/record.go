@@ -107,10 +107,10 @@ type ProvenanceFacts struct {
 
 // Claim is what the record says of the rounded codes.
 type Claim struct {
-	Infidelity          float64 `toml:"infidelity"`
-	InfidelityOtherEnds float64 `toml:"infidelity_other_ends"`
-	Leakage             float64 `toml:"leakage"`
-	TailAngle           float64 `toml:"tail_angle_rad"`
+	Infidelity          float64  `toml:"infidelity"`
+	InfidelityOtherEnds float64  `toml:"infidelity_other_ends"`
+	Leakage             float64  `toml:"leakage"`
+	TailAngle           *float64 `toml:"tail_angle_rad,omitempty"` // of a spin
 }
 
 // Headroom is one limit of the instrument on the rounded codes.

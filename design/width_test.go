@@ -20,6 +20,7 @@ type scene struct {
 	channel              string // keys of the drive's [[channel]]
 	line                 string // its [channel.line]
 	more                 string // further channels
+	site                 string // further keys of the device's [[site]]
 	device               string // further tables of the device
 	head, target, errors string // of the brief
 	ns                   int
@@ -55,6 +56,8 @@ latency = "1.3 ns"
 delay = "2.4 ns"
 lowpass = { family = "single-pole", corner = "250 MHz" }
 `, device: "[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n", errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\""},
+	{name: "three levels", ns: 40, site: "levels = 3\nanharmonicity = \"-220 MHz\"", head: "hold = \"nothing\""},
+	{name: "three levels, detuning", ns: 64, head: "refine = false", site: "levels = 3\nanharmonicity = \"-220 MHz\"", errors: "[[error]]\ndetuning = \"q1\""},
 	{name: "by samples", ns: 64, head: "phase_by = \"samples\"\nphases = [\"90 deg\", \"180 deg\", \"37 deg\"]", errors: "[[error]]\ndetuning = \"q1\""},
 }
 
@@ -87,7 +90,12 @@ band = "100 MHz"
 guard = { lead = 0, trail = 4 }
 ring_out = { limit = "0.1 %", fast = "8 ns" }
 `+s.channel+"\n[channel.line]\n"+line+s.more)
-	write("d.toml", "format = 1\nname = \"invented\"\n[[site]]\nname = \"q1\"\nzero = \"upper\"\n[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n"+s.device)
+	if strings.Contains(s.site, "levels") { // a ladder stands on |0>, the lower level
+		s.site += "\nzero = \"lower\""
+	} else {
+		s.site += "\nzero = \"upper\""
+	}
+	write("d.toml", "format = 1\nname = \"invented\"\n[[site]]\nname = \"q1\"\n"+s.site+"\n[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n"+s.device)
 	head, basis, _ := strings.Cut(s.head, "[basis]")
 	if basis != "" {
 		basis = "[basis]" + basis
@@ -165,5 +173,49 @@ func TestWidth(t *testing.T) {
 				}
 			}
 		})
+	}
+}
+
+// TestTwoLevelsOnThree replays a pulse that was designed for a spin on a ladder of
+// three levels: the light shift of the third costs 1e-3 and more, far above what
+// the design for the ladder itself leaves.
+func TestTwoLevelsOnThree(t *testing.T) {
+	run := func(s scene) (*Pulse, *replay.Model) {
+		in := s.inputs(t)
+		p, err := Run(context.Background(), in, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		src, err := ReadSources(in)
+		if err != nil {
+			t.Fatal(err)
+		}
+		dir := t.TempDir()
+		if err := p.Write(dir, src); err != nil {
+			t.Fatal(err)
+		}
+		f, err := replay.Open(dir)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return p, f.Model
+	}
+	detuning := "[[error]]\ndetuning = \"q1\""
+	two, _ := run(scene{site: "levels = 2", ns: 64, head: "refine = false", errors: detuning})
+	three, m := run(scene{site: "levels = 3\nanharmonicity = \"-220 MHz\"", ns: 64, head: "refine = false", errors: detuning})
+	own, _, _, err := m.Figures(context.Background())
+	if err != nil {
+		t.Fatal(err)
+	}
+	strange, _, _, err := m.WithSamples(64, two.Channels[0].Exact).Figures(context.Background())
+	if err != nil {
+		t.Fatal(err)
+	}
+	t.Logf("%s; on three levels infidelity %.2g, leakage %.2g; the spin's pulse there: %.2g, %.2g", three.Summary(), own.Infidelity, own.Leakage, strange.Infidelity, strange.Leakage)
+	if !(own.Infidelity <= 1e-8) || !(own.Leakage <= 1e-8) {
+		t.Errorf("designed for the ladder: infidelity %.2g, leakage %.2g", own.Infidelity, own.Leakage)
+	}
+	if !(strange.Infidelity >= 1e-3 && strange.Infidelity <= 1e-2) {
+		t.Errorf("designed for a spin: infidelity %.2g on the ladder; want 1e-3 to 1e-2", strange.Infidelity)
 	}
 }

@@ -62,7 +62,7 @@ func TestWitness(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, ends := range []bool{true, false} {
-			a, err := newAxis([]feed{{line: line}}, n, h, claimShare, ends, full, math.Abs(static))
+			a, err := newAxis([]feed{{line: line}}, n, h, claimShare, ends, full, math.Abs(static), 0)
 			if err != nil {
 				t.Fatal(err)
 			}

@@ -3,6 +3,7 @@ package device
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 	"os"
 	"path/filepath"
 	"strings"
@@ -50,7 +51,7 @@ func TestLoad(t *testing.T) {
 	if d.File != path || d.Name != "Skerry" || d.Dim() != 2 || len(d.Sites) != 1 || len(d.Drives) != 1 {
 		t.Errorf("device %+v", d)
 	}
-	if got, want := d.Sites[0], (Site{"q1", 2, Upper, 5.1, 40_000, 80_000, 2 * math.Pi * -0.00025}); got != want {
+	if got, want := d.Sites[0], (Site{"q1", 2, Upper, 5.1, 40_000, 80_000, 2 * math.Pi * -0.00025, 0}); got != want {
 		t.Errorf("site %+v, want %+v", got, want)
 	}
 	if got, want := d.Drives[0], (Drive{"q1", "q1 drive", 15}); got != want {
@@ -132,23 +133,25 @@ func TestRefuses(t *testing.T) {
 		{"format = 1", "", "d.toml:1: format: found nothing; allowed: 1, and nothing else"},
 		{`name = "Skerry"`, `Name = "Skerry"`, `d.toml:2: Name: found an unknown key; allowed: format, name, site, drive, bias (keys are case-sensitive: write name)`},
 		{`name = "Skerry"`, `name = 7`, `d.toml:2: name: found 7; allowed: a text in quotes`},
-		{"levels = 2", "levels = 3", "d.toml:6: site[0].levels: found 3; allowed: 2 (this version plays one spin)"},
-		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 16"},
-		{"levels = 2", "level = 2", "d.toml:6: site[0].level: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning (did you mean levels?)"},
+		{"levels = 2", "levels = 3", `d.toml:4: site[0].anharmonicity: found nothing; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz`},
+		{"levels = 2", "levels = 3\nanharmonicity = \"-220 MHz\"", `d.toml:8: site[0].zero: found "upper"; allowed: "lower" for more than two levels, the ladder stands on |0>`},
+		{"levels = 2", "levels = 2\nanharmonicity = \"-220 MHz\"", `d.toml:7: site[0].anharmonicity: found for two levels; allowed: with levels above 2`},
+		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 8"},
+		{"levels = 2", "level = 2", "d.toml:6: site[0].level: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, anharmonicity (did you mean levels?)"},
 		{`zero = "upper"`, `zero = "ground"`, `d.toml:7: site[0].zero: found "ground"; allowed: "lower" or "upper"`},
 		{"5.1 GHz", "5.1 ns", `d.toml:8: site[0].frequency: found "5.1 ns"; allowed: a frequency such as "40 MHz", 1 Hz to 10000 GHz ("ns" is a unit of time)`},
 		{`"-250 kHz"`, "-0.25", `d.toml:9: site[0].detuning: found -0.25; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz (a bare number has no unit: write a quantity in quotes)`},
 		{`"-250 kHz"`, "nan", `d.toml:9: site[0].detuning: found NaN; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz`},
 		{`T1 = "40 us"`, `T1 = "0 us"`, `d.toml:10: site[0].T1: found "0 us"; allowed: a time such as "112 ns", 1 ns to 1e+06 s`},
 		{`T1 = "40 us"`, `T1 = "inf us"`, `d.toml:10: site[0].T1: found "inf us"; allowed: a time such as "112 ns", 1 ns to 1e+06 s (not a finite number)`},
-		{`T1 = "40 us"`, `t1 = "40 us"`, `d.toml:10: site[0].t1: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning (keys are case-sensitive: write T1)`},
+		{`T1 = "40 us"`, `t1 = "40 us"`, `d.toml:10: site[0].t1: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, anharmonicity (keys are case-sensitive: write T1)`},
 		{`T2 = "80 us"`, `T2 = "80.1 us"`, "d.toml:11: site[0].T2: found 80.1 us; allowed: at most twice T1, 80 us"},
 		{`T2 = "80 us"`, "T2 = \"80 us\"\nT2 = \"80 us\"", "d.toml:12: site[0].T2: found this key a second time, after line 11; allowed: each key once"},
 		{"[[site]]", "[other]\nx = 1\n[[site]]", "d.toml:4: other: found an unknown key; allowed: format, name, site, drive, bias"},
-		{"[[drive]]", "[[site]]\nname = \"q2\"\n[[drive]]", "d.toml:13: site[1]: found a second site; allowed: one [[site]] (this version plays one spin)"},
-		{"[[drive]]", "[[drive]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n[[drive]]", "d.toml:16: drive[1]: found a second drive; allowed: one [[drive]] (this version plays one spin)"},
+		{"[[drive]]", "[[site]]\nname = \"q2\"\n[[drive]]", "d.toml:13: site[1]: found a second site; allowed: one [[site]] (this version plays one site)"},
+		{"[[drive]]", "[[drive]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n[[drive]]", "d.toml:16: drive[1]: found a second drive; allowed: one [[drive]] (this version plays one site)"},
 		{"[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 side\"\naxis = \"X\"\n", "",
-			"d.toml:1: drive: found none, and no bias; allowed: one [[drive]], which names the site and the channel that drives it, or a [[bias]] (this version plays one spin)"},
+			"d.toml:1: drive: found none, and no bias; allowed: one [[drive]], which names the site and the channel that drives it, or a [[bias]] (this version plays one site)"},
 		{`"q1 flux"`, `"q1 drive"`, `d.toml:19: bias[0].channel: found "q1 drive", which a [[drive]] has; allowed: a channel of its own`},
 		{`"q1 side"`, `"q1 flux"`, `d.toml:23: bias[1].channel: found "q1 flux" in a second [[bias]]; allowed: a channel of its own`},
 		{`axis = "X"`, `axis = "x"`, `d.toml:24: bias[1].axis: found "x"; allowed: "X", "Y" or "Z" (did you mean "X"?)`},
@@ -177,7 +180,7 @@ func TestRefuses(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := read(doc); err == nil || err.Error() != "d.toml:1: site: found none; allowed: one [[site]] (this version plays one spin)" {
+	if _, err := read(doc); err == nil || err.Error() != "d.toml:1: site: found none; allowed: one [[site]] (this version plays one site)" {
 		t.Errorf("no site: %v", err)
 	}
 }
@@ -212,4 +215,45 @@ func TestOperatorsAgainstCarrier(t *testing.T) {
 
 func near(a, b Matrix, tolerance float64) bool {
 	return a.N == b.N && a.Add(-1, b).Norm() <= tolerance
+}
+
+// TestLadder checks a ladder of four levels against its definition in PHYSICS: quadratures (a+a')/2 and i(a'-a)/2, energies
+// delta n + alpha n(n-1)/2, and a detuning of Z/2 on the lowest two that is -n.
+func TestLadder(t *testing.T) {
+	d := &Device{
+		Sites:  []Site{{Name: "q", Levels: 4, Zero: Lower, Detuning: 0.3, Anharmonicity: -1.4}},
+		Drives: []Drive{{Site: "q", Channel: "c"}}, Biases: []Bias{{Site: "q", Channel: "b", Axis: "Z"}},
+	}
+	ops := d.Operators(0, "I cos + Q sin")
+	static, bias := d.Static(), d.BiasOperator(0)
+	for i := range 4 {
+		for j := range 4 {
+			var x, y, s, b complex128
+			switch {
+			case i == j:
+				n := float64(i)
+				s, b = complex(0.3*n-1.4*n*(n-1)/2, 0), complex(-n, 0)
+			case j == i+1: // a
+				r := complex(math.Sqrt(float64(j)), 0)
+				x, y = r/2, -1i*r/2
+			case i == j+1: // a'
+				r := complex(math.Sqrt(float64(i)), 0)
+				x, y = r/2, 1i*r/2
+			}
+			for _, c := range []struct {
+				name      string
+				got, want complex128
+			}{{"I", ops[0].At(i, j), x}, {"Q", ops[1].At(i, j), y}, {"static", static.At(i, j), s}, {"bias", bias.At(i, j), b}} {
+				if !(cmplx.Abs(c.got-c.want) <= 1e-15) {
+					t.Errorf("%s (%d, %d): %v, want %v", c.name, i, j, c.got, c.want)
+				}
+			}
+		}
+	}
+	if got := d.Operators(0, "I cos - Q sin")[1].At(0, 1); got != 0.5i {
+		t.Errorf("Q with the other mixing: %v, want 0.5i", got)
+	}
+	if d.Dim() != 4 {
+		t.Errorf("dimension %d", d.Dim())
+	}
 }

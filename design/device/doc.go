@@ -11,6 +11,6 @@
 // detuning delta as delta Z/2, a bias as u X/2, u Y/2 or u Z/2 by its axis, and the shift that a drive causes as kappa |u|^2 Z/2. A gate
 // is a rotation exp(-i angle/2 (n.sigma)) about a unit axis n; its global phase has no meaning.
 //
-// This version plays one spin: one site of two levels with at most one drive, and biases. Files that ask for more are refused
+// This version plays one site, a spin or an anharmonic ladder, with at most one drive, and biases. Files that ask for more are refused
 // in a sentence.
 package device

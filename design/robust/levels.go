@@ -27,7 +27,8 @@ type Levels struct {
 //
 // of which the sum of squares is 1 - F_pro plus the leakage to first order, then for
 // every held class the averaged toggled error cut to the code space, traceless there,
-// and apart from it the block that couples out of it, both relative to the cut error.
+// relative to the error cut likewise. What an error adds to the leakage is of second
+// order in it and has no residual of its own; the finite errors see it.
 type LevelsGate struct {
 	drive
 	spec    Levels
@@ -136,11 +137,8 @@ func NewLevelsGate(s Levels, r Response, refine float64) (*LevelsGate, error) {
 }
 
 // gateRows counts the residuals of one gate, errorRows those of one toggled error.
-func (g *LevelsGate) gateRows() int { return 2 * g.spec.Code * g.spec.Dim }
-func (g *LevelsGate) errorRows() int {
-	c := g.spec.Code
-	return c*c - 1 + 2*c*(g.spec.Dim-c)
-}
+func (g *LevelsGate) gateRows() int  { return 2 * g.spec.Code * g.spec.Dim }
+func (g *LevelsGate) errorRows() int { return g.spec.Code*g.spec.Code - 1 }
 
 func (g *LevelsGate) memberRow(i int) int {
 	return g.spec.Dim * g.spec.Dim * (1 + len(g.toggles) + i)
@@ -264,7 +262,7 @@ func (g *LevelsGate) miss(u []complex128, r, lever []float64) {
 }
 
 // pick lists, for the residuals of a toggled error, which coordinates they are made
-// of: the code space's block without its trace, then the block that couples out.
+// of: those of the code space's block without its trace.
 func (g *LevelsGate) pick(visit func(row int, coordinate int, factor float64)) {
 	d, c := g.spec.Dim, g.spec.Code
 	row := 0
@@ -277,7 +275,7 @@ func (g *LevelsGate) pick(visit func(row int, coordinate int, factor float64)) {
 		row++
 	}
 	for i := range c {
-		for j := i + 1; j < d; j++ {
+		for j := i + 1; j < c; j++ {
 			at := dynamics.Coordinate(i, j, d)
 			visit(row, at, 1)
 			visit(row+1, at+1, 1)
