@@ -32,6 +32,18 @@ func (k *kit) mul(c, a, b []complex128) {
 	}
 }
 
+// mulAdd adds a b to c.
+func (k *kit) mulAdd(c, a, b []complex128) {
+	switch k.d {
+	case 3:
+		mulAdd3((*[9]complex128)(c), (*[9]complex128)(a), (*[9]complex128)(b))
+	case 4:
+		mulAdd4((*[16]complex128)(c), (*[16]complex128)(a), (*[16]complex128)(b))
+	default:
+		mulAddN(c, a, b, k.d)
+	}
+}
+
 // mulLeft stores a' b in c.
 func (k *kit) mulLeft(c, a, b []complex128) {
 	switch k.d {
@@ -157,9 +169,13 @@ func addReal(dst, a []complex128, f float64) {
 }
 
 func mulN(c, a, b []complex128, d int) {
+	clear(c)
+	mulAddN(c, a, b, d)
+}
+
+func mulAddN(c, a, b []complex128, d int) {
 	for i := range d {
 		row := c[i*d : i*d+d]
-		clear(row)
 		w := a[i*d : i*d+d]
 		k := 0
 		for ; k+3 < d; k += 4 {
@@ -234,8 +250,9 @@ func mirror(c []complex128, d int) {
 // matrices.
 type sparse struct {
 	d     int
-	start []int // of each row in col and val; d+1 entries
+	start []int // of each row in col, at and val; d+1 entries
 	col   []int
+	at    []int // row d + column
 	val   []complex128
 }
 
@@ -245,6 +262,7 @@ func newSparse(a []complex128, d int) *sparse {
 		for j := range d {
 			if v := a[i*d+j]; v != 0 {
 				s.col = append(s.col, j)
+				s.at = append(s.at, i*d+j)
 				s.val = append(s.val, v)
 			}
 		}
@@ -255,11 +273,9 @@ func newSparse(a []complex128, d int) *sparse {
 
 // load takes the values of a full matrix over into the pattern.
 func (s *sparse) load(a []complex128) {
-	for i := range s.d {
-		row := a[i*s.d : i*s.d+s.d]
-		for at := s.start[i]; at < s.start[i+1]; at++ {
-			s.val[at] = row[s.col[at]]
-		}
+	val := s.val[:len(s.at)]
+	for i, at := range s.at {
+		val[i] = a[at]
 	}
 }
 
@@ -304,37 +320,38 @@ func (s *sparse) row(dst, b []complex128, i, j int) {
 // trace returns Tr(s a) for Hermitian s and a.
 func (s *sparse) trace(a []complex128) float64 {
 	t := 0.0
-	for i := range s.d {
-		for at := s.start[i]; at < s.start[i+1]; at++ {
-			x, v := a[i*s.d+s.col[at]], s.val[at] // s_ij a_ji = s_ij conj(a_ij)
-			t += real(v)*real(x) + imag(v)*imag(x)
-		}
+	val := s.val[:len(s.at)]
+	for i, at := range s.at {
+		x, v := a[at], val[i] // s_ij a_ji = s_ij conj(a_ij)
+		t += real(v)*real(x) + imag(v)*imag(x)
 	}
 	return t
 }
 
 // add adds f s to the full matrix a.
 func (s *sparse) add(a []complex128, f float64) {
-	for i := range s.d {
-		row := a[i*s.d : i*s.d+s.d]
-		for at := s.start[i]; at < s.start[i+1]; at++ {
-			v, x := s.val[at], row[s.col[at]]
-			row[s.col[at]] = complex(real(x)+f*real(v), imag(x)+f*imag(v))
-		}
+	val := s.val[:len(s.at)]
+	for i, at := range s.at {
+		v, x := val[i], a[at]
+		a[at] = complex(real(x)+f*real(v), imag(x)+f*imag(v))
 	}
 }
 
 // spread bounds the spectral norm of the Hermitian matrix a: its Frobenius norm, or
-// its largest row sum if that is smaller.
+// above four levels its largest row sum if that is smaller.
 func spread(a []complex128, d int) float64 {
 	all := 0.0
 	for _, x := range a {
 		all += real(x)*real(x) + imag(x)*imag(x)
 	}
-	all = math.Sqrt(all)
 	if d <= 4 {
-		return all
+		return math.Sqrt(all)
 	}
+	return min(math.Sqrt(all), rowSum(a, d))
+}
+
+// rowSum returns the largest sum of the entries of a row, |Re| + |Im| of each.
+func rowSum(a []complex128, d int) float64 {
 	most := 0.0
 	for i := range d {
 		sum := 0.0
@@ -343,7 +360,7 @@ func spread(a []complex128, d int) float64 {
 		}
 		most = max(most, sum)
 	}
-	return min(all, most)
+	return most
 }
 
 // center subtracts the mean of the diagonal of a from it, and returns it.

@@ -2,12 +2,18 @@ package dynamics
 
 // mul3 stores a b in c.
 func mul3(c, a, b *[9]complex128) {
-	for i := 0; i < 9; i += 3 {
-		w, x, y := a[i], a[i+1], a[i+2]
-		c[i] = w*b[0] + x*b[3] + y*b[6]
-		c[i+1] = w*b[1] + x*b[4] + y*b[7]
-		c[i+2] = w*b[2] + x*b[5] + y*b[8]
-	}
+	w, x, y := a[0], a[1], a[2]
+	c[0] = w*b[0] + x*b[3] + y*b[6]
+	c[1] = w*b[1] + x*b[4] + y*b[7]
+	c[2] = w*b[2] + x*b[5] + y*b[8]
+	w, x, y = a[3], a[4], a[5]
+	c[3] = w*b[0] + x*b[3] + y*b[6]
+	c[4] = w*b[1] + x*b[4] + y*b[7]
+	c[5] = w*b[2] + x*b[5] + y*b[8]
+	w, x, y = a[6], a[7], a[8]
+	c[6] = w*b[0] + x*b[3] + y*b[6]
+	c[7] = w*b[1] + x*b[4] + y*b[7]
+	c[8] = w*b[2] + x*b[5] + y*b[8]
 }
 
 // mulLeft3 stores a' b in c.
@@ -109,4 +115,14 @@ func turn3(c, p *[9]complex128) {
 	c[5] = complex(imag(p[5])+imag(p[7]), real(p[7])-real(p[5]))
 	c[7] = conj(c[5])
 	c[8] = complex(2*imag(p[8]), 0)
+}
+
+// mulAdd3 adds a b to c.
+func mulAdd3(c, a, b *[9]complex128) {
+	for i := 0; i < 9; i += 3 {
+		w, x, y := a[i], a[i+1], a[i+2]
+		c[i] += w*b[0] + x*b[3] + y*b[6]
+		c[i+1] += w*b[1] + x*b[4] + y*b[7]
+		c[i+2] += w*b[2] + x*b[5] + y*b[8]
+	}
 }

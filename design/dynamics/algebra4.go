@@ -143,3 +143,14 @@ func turn4(c, p *[16]complex128) {
 	c[14] = conj(c[11])
 	c[15] = complex(2*imag(p[15]), 0)
 }
+
+// mulAdd4 adds a b to c.
+func mulAdd4(c, a, b *[16]complex128) {
+	for i := 0; i < 16; i += 4 {
+		w, x, y, z := a[i], a[i+1], a[i+2], a[i+3]
+		c[i] += w*b[0] + x*b[4] + y*b[8] + z*b[12]
+		c[i+1] += w*b[1] + x*b[5] + y*b[9] + z*b[13]
+		c[i+2] += w*b[2] + x*b[6] + y*b[10] + z*b[14]
+		c[i+3] += w*b[3] + x*b[7] + y*b[11] + z*b[15]
+	}
+}

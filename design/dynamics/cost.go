@@ -44,6 +44,7 @@ type Cost struct {
 	pow    *powers
 
 	h, half  []complex128   // H_n and exp(-i dt H_n/2), by step
+	norm     []float64      // a bound of the spectral norm of H_n
 	frame    []complex128   // U at the ends and middles of steps
 	a        [][]complex128 // A_j, then its cotangent
 	c, s     []complex128
@@ -110,11 +111,25 @@ func (c *Cost) Reset() error {
 	if s := newSparse(full, d); d > 4 && 3*len(s.col) < 2*d*d {
 		c.shape = s
 	}
-	c.gram = newGram(c.k, c.Errors)
+	// A multiple of the identity in V leaves A alone: take the last diagonal entry out,
+	// and with it a block. Above, that would spoil the sharing of blocks.
+	errors := c.Errors
+	if d <= 4 {
+		errors = nil
+		for _, v := range c.Errors {
+			b := append([]complex128(nil), v...)
+			for i := range d {
+				b[i*d+i] -= v[d*d-1]
+			}
+			errors = append(errors, b)
+		}
+	}
+	c.gram = newGram(c.k, errors)
 	n := c.Steps
 	dd := d * d
 	c.h = make([]complex128, n*dd)
 	c.half = make([]complex128, n*dd)
+	c.norm = make([]float64, n)
 	c.frame = make([]complex128, (2*n+1)*dd)
 	c.a = nil
 	for range c.Errors {
@@ -178,6 +193,7 @@ func (c *Cost) Value(u, grad []float64) float64 {
 		}
 		e := c.half[i*dd : i*dd+dd]
 		c.pow.raise(c.k, h, c.shape, c.Step/2)
+		c.norm[i] = c.pow.norm
 		c.pow.wave(c.k, c.c, c.s, c.Step/2, c.shape)
 		unitary(e, c.c, c.s)
 		before, mid, end := c.at(2*i), c.at(2*i+1), c.at(2*i+2)
@@ -235,29 +251,17 @@ func (c *Cost) back(grad []float64, tau complex128, w float64) {
 		e := c.half[i*dd : i*dd+dd]
 		h := c.h[i*dd : i*dd+dd]
 		// two half steps; sum gathers K at both ends of each, old their differences
-		copy(c.sum, c.k1)
-		copy(c.old, c.k1)
 		c.turnBack(e)
-		for j, x := range c.k0 {
-			c.sum[j] += x
-			c.old[j] -= x
-		}
+		between(c.sum, c.old, c.k1, c.k0)
 		c.k0, c.k1 = c.k1, c.k0
 		c.source(c.k1, 2*i+1, 4*w)
-		for j, x := range c.k1 {
-			c.sum[j] += x
-			c.old[j] += x
-		}
 		c.turnBack(e)
-		for j, x := range c.k0 {
-			c.sum[j] += x
-			c.old[j] -= x
-		}
+		gather(c.sum, c.old, c.k1, c.k0)
 		c.k0, c.k1 = c.k1, c.k0
 		if c.shape != nil {
 			c.shape.load(h)
 		}
-		c.integrate(h, c.Step/2)
+		c.integrate(h, c.Step/2, c.norm[i])
 		for q, s := range c.ctrl {
 			grad[i*nk+q] = s.trace(c.sum)
 		}
@@ -278,15 +282,29 @@ func (c *Cost) source(kk []complex128, i int, w float64) {
 	x := c.at(i)
 	c.gram.back(c.y, x, w) // twice this is the adjoint of the frame's cotangent
 	c.k.mul(c.p, x, c.y)
-	d := c.k.d
-	for i := range d { // += (p - p')/i
-		kk[i*d+i] += complex(2*imag(c.p[i*d+i]), 0)
-		for j := i + 1; j < d; j++ {
-			x, y := c.p[i*d+j], c.p[j*d+i]
-			z := complex(imag(x)+imag(y), real(y)-real(x))
-			kk[i*d+j] += z
-			kk[j*d+i] += conj(z)
-		}
+	c.k.turn(c.p, c.p)
+	p := c.p[:len(kk)]
+	for i := range kk {
+		kk[i] += p[i]
+	}
+}
+
+// between sets the sum a + b and the difference a - b.
+func between(sum, diff, a, b []complex128) {
+	diff, a, b = diff[:len(sum)], a[:len(sum)], b[:len(sum)]
+	for i := range sum {
+		x, y := a[i], b[i]
+		sum[i], diff[i] = x+y, x-y
+	}
+}
+
+// gather adds them.
+func gather(sum, diff, a, b []complex128) {
+	diff, a, b = diff[:len(sum)], a[:len(sum)], b[:len(sum)]
+	for i := range sum {
+		x, y := a[i], b[i]
+		sum[i] += x + y
+		diff[i] += x - y
 	}
 }
 
@@ -310,11 +328,11 @@ const eulerError = 1e-9
 // intervals of length t: with D = K(t) - K(0) in old and L X = -i [H, X],
 //
 //	int_0^t K = t (K(0) + K(t))/2 - t²/12 L D + t⁴/720 L³ D - ...
-func (c *Cost) integrate(h []complex128, t float64) {
+func (c *Cost) integrate(h []complex128, t, norm float64) {
 	for i, x := range c.sum {
 		c.sum[i] = times(x, t/2)
 	}
-	a := 2 * t * spread(h, c.k.d) // bounds t times the differences of eigenvalues
+	a := 2 * t * norm // bounds t times the differences of eigenvalues
 	x, y := c.old, c.p
 	tt := t
 	power := a * a

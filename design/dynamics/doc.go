@@ -2,7 +2,11 @@
 // their exact derivatives, on plain arrays. It knows nothing of pulses, lines
 // or files; robust turns its numbers into residuals.
 //
-// Conventions, quoted by every function here:
+// Spin is one spin, in quaternions; Levels is any closed system of 2 to 64 levels, in
+// complex matrices, and equals Spin on two. Cost is the piecewise-constant problem
+// by which kernels of this sort are compared (testdata/kernel).
+//
+// Conventions of Spin, quoted by its functions:
 //
 //   - time in ns, fields in rad/ns; a spin obeys dU/dt = -i H U with
 //     H = (Ωx X + Ωy Y + Ωz Z)/2;

@@ -17,7 +17,7 @@ import "math"
 // seriesError bounds what the series of one exponential leave out.
 const seriesError = 5e-16
 
-// mostPowers serves |t H| up to 1.7; longer arguments are halved and doubled back.
+// mostPowers serves |t H| up to 2; longer arguments are halved and doubled back.
 const mostPowers = 9
 
 // A series is the pair of polynomials for one number of powers, m = its index.
@@ -89,23 +89,33 @@ type powers struct {
 	h     []complex128
 	y     [mostPowers + 1][]complex128 // y[j] = H^{2j}, j >= 1
 	m     int
-	halve int // arguments are divided by 2^halve
+	halve int     // arguments are divided by 2^halve
+	norm  float64 // bounds the spectral norm of h
 	poly  []complex128
 }
 
 func newPowers(k *kit) *powers {
-	p := &powers{h: make([]complex128, k.dd), poly: make([]complex128, k.dd)}
+	p := &powers{poly: make([]complex128, k.dd)}
 	for j := 1; j <= mostPowers; j++ {
 		p.y[j] = make([]complex128, k.dd)
 	}
 	return p
 }
 
-// raise prepares the powers of h for arguments up to t. s, when not nil, is h once
-// more, by rows.
+// raise prepares the powers of h, which is kept by reference, for arguments up to t.
+// s, when not nil, is h once more, by rows.
 func (p *powers) raise(k *kit, h []complex128, s *sparse, t float64) {
-	copy(p.h, h)
-	x := t * spread(h, k.d)
+	p.h = h
+	if s != nil {
+		s.herm(p.y[1], h)
+	} else {
+		k.herm(p.y[1], p.h, p.h)
+	}
+	p.norm = spread(h, k.d)
+	if k.d > 4 { // the norm of H² bounds closer where there are many levels
+		p.norm = min(p.norm, math.Sqrt(spread(p.y[1], k.d)))
+	}
+	x := t * p.norm
 	p.halve = 0
 	for x > k.cheap[mostPowers].reach && p.halve < 60 {
 		x /= 2
@@ -114,11 +124,6 @@ func (p *powers) raise(k *kit, h []complex128, s *sparse, t float64) {
 	p.m = 1
 	for p.m < mostPowers && x > k.cheap[p.m].reach {
 		p.m++
-	}
-	if s != nil {
-		s.herm(p.y[1], h)
-	} else {
-		k.herm(p.y[1], p.h, p.h)
 	}
 	for j := 2; j <= p.m; j++ {
 		k.herm(p.y[j], p.y[j/2], p.y[j-j/2])
@@ -138,14 +143,20 @@ func (p *powers) wave(k *kit, c, s []complex128, t float64, rows *sparse) {
 		fa[j], fb[j] = co.a[j]*tt, co.b[j]*tt*t
 		tt *= t * t
 	}
-	for i := range d {
-		at, end := i*d+i, i*d+d
-		p.combine(c[at:end], p.poly[at:end], at, &fa, &fb)
+	if d <= 4 {
+		p.combine(c, p.poly, 0, &fa, &fb)
+	} else {
+		for i := range d {
+			at, end := i*d+i, i*d+d
+			p.combine(c[at:end], p.poly[at:end], at, &fa, &fb)
+		}
+		mirror(c, d)
+		mirror(p.poly, d)
+	}
+	for at := 0; at < len(c); at += d + 1 {
 		c[at] += complex(fa[0], 0)
 		p.poly[at] += complex(fb[0], 0)
 	}
-	mirror(c, d)
-	mirror(p.poly, d)
 	if rows != nil {
 		rows.herm(s, p.poly)
 	} else {

@@ -8,8 +8,8 @@ package dynamics
 // with the rows F[k,:], so one d x d block for each entry of V serves every error, at
 // d² multiply-adds per block and frame. Only the blocks of entries that some error
 // of the class has are kept, S_lk = S_kl' once, and entries whose values agree up to
-// a sign in every error share one block. One-body errors on n spins need n + 2^(n-1)
-// blocks, all errors d (d+1)/2.
+// a sign in every error share one block (above d = 4). One-body errors on n spins need
+// n + 2^(n-1) blocks, all errors d (d+1)/2.
 //
 // Backwards, the derivative of a function of the A_j by the frames is
 //
@@ -28,6 +28,7 @@ type group struct {
 	pairs []pair
 	diag  bool
 	v     []complex128 // of each error, at an entry with sign 1
+	lead  int          // the first error that has it
 }
 
 // A pair is the entry (k, l) of V, k <= l.
@@ -83,10 +84,10 @@ func (g *gram) place(p pair, v []complex128) {
 			if gr.diag != diag {
 				continue
 			}
-			plus, minus := true, true
-			for e, x := range gr.v {
-				plus = plus && v[e] == x
-				minus = minus && v[e] == -x
+			plus, minus := v[gr.lead] == gr.v[gr.lead], v[gr.lead] == -gr.v[gr.lead]
+			for e := 0; e < len(v) && (plus || minus); e++ {
+				plus = plus && v[e] == gr.v[e]
+				minus = minus && v[e] == -gr.v[e]
 			}
 			if plus || minus {
 				if !plus {
@@ -97,7 +98,11 @@ func (g *gram) place(p pair, v []complex128) {
 			}
 		}
 	}
-	g.groups = append(g.groups, group{pairs: []pair{p}, diag: diag, v: v})
+	lead := 0
+	for v[lead] == 0 {
+		lead++
+	}
+	g.groups = append(g.groups, group{pairs: []pair{p}, diag: diag, v: v, lead: lead})
 }
 
 func (g *gram) clear() { clear(g.s) }
