@@ -19,6 +19,7 @@ import (
 	"holdfast/design/replay"
 	"holdfast/design/solve"
 	"holdfast/filter"
+	"holdfast/hardware"
 	"holdfast/shape"
 )
 
@@ -328,5 +329,45 @@ func TestMeasureLines(t *testing.T) {
 			fmt.Printf("  over %d lines: average infidelity %.2e, worst %.2e\n", lines, mean[i], worst)
 		}
 		fmt.Printf("  %.1f times lower\n", mean[0]/mean[1])
+	}
+}
+
+// TestMeasureLadder designs the X90 on three levels of -220 MHz: unheld, held
+// against detuning, and unheld with a looser ring-out limit.
+func TestMeasureLadder(t *testing.T) {
+	for _, c := range []struct {
+		ns           int
+		held         []string
+		ringOut      float64
+		coefficients int
+	}{{40, nil, 0.001, 0}, {64, []string{detuning}, 0.001, 0}, {24, nil, 0.006, 0}, {24, nil, 0.006, 4}, {24, nil, 0.006, 5}, {32, nil, 0.001, 0}, {32, nil, 0.001, 6}, {32, nil, 0.006, 0}, {56, []string{detuning}, 0.001, 0}} {
+		in := wanted(t, "X90", c.ns, c.held, "")
+		in.Device.Sites[0].Levels, in.Device.Sites[0].Anharmonicity, in.Device.Sites[0].Zero = 3, -2*math.Pi*0.22, "lower"
+		in.Profile.Channels[0].Mixing = hardware.PlusSin
+		in.Profile.Channels[0].RingOut.Limit = c.ringOut
+		in.Brief.Basis.Coefficients = c.coefficients
+		begun := time.Now()
+		p, err := Run(context.Background(), in, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		took := time.Since(begun)
+		src, err := ReadSources(in)
+		if err != nil {
+			t.Fatal(err)
+		}
+		dir := t.TempDir()
+		if err := p.Write(dir, src); err != nil {
+			t.Fatal(err)
+		}
+		f, err := replay.Open(dir)
+		if err != nil {
+			t.Fatal(err)
+		}
+		s, _, _, err := f.Model.BeforeRounding().Figures(context.Background())
+		if err != nil {
+			t.Fatal(err)
+		}
+		fmt.Printf("three levels, %2d ns, held %v, ring-out %v: %s; infidelity %.1e, leakage %.1e; %v\n", c.ns, c.held, c.ringOut, p.Summary(), s.Infidelity, s.Leakage, took.Round(time.Millisecond))
 	}
 }
