@@ -371,6 +371,11 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 	r.Claim.InfidelityOtherEnds = g.InfidelityAt(u, f.Before, f.After)
 	gate := func(ends string) dynamics.Quat {
 		g, u := spin(ends)
+		// What arrives before the window, of channels that are early, is no ring-out.
+		a := axes[ends]
+		for c := 0; c < len(u); c += a.nodes() {
+			clear(u[c : c+len(dynamics.GaussNodes)*a.First])
+		}
 		return g.Unitary(u)
 	}
 	tail := gate(brief.Settled).Mul(gate(brief.Window).Conj())

@@ -161,7 +161,9 @@ func NewStaging(final string, force bool) (*Staging, error) {
 	if name == "." || name == ".." || name == string(filepath.Separator) {
 		return nil, fmt.Errorf("%s: not a name for a new folder", final)
 	}
-	if info, err := os.Stat(parent); err != nil {
+	if info, err := os.Stat(parent); errors.Is(err, fs.ErrNotExist) {
+		return nil, fmt.Errorf("%s: found no folder %s to make it in; allowed: a new name in a folder that is there (make %s first)", final, parent, parent)
+	} else if err != nil {
 		return nil, fileError(parent, err)
 	} else if !info.IsDir() {
 		return nil, fmt.Errorf("%s: not a folder", parent)

@@ -203,7 +203,7 @@ func TestStagingRefuses(t *testing.T) {
 		{"file", false, "file: exists and is not a folder"},
 		{"file", true, "file: exists and is not a folder"},
 		{"file/a", false, "file: not a folder"},
-		{"missing/a", false, "missing: no such file or directory"},
+		{"missing/a", false, "missing/a: found no folder missing to make it in; allowed: a new name in a folder that is there (make missing first)"},
 		{"empty", false, "empty: exists already; choose another name, or -force, which keeps the old folder as empty.before-N"},
 	} {
 		if s, err := NewStaging(test.final, test.force); err == nil || err.Error() != test.want {

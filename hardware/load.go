@@ -66,6 +66,11 @@ func profileOf(doc *quantity.Document) (*Profile, error) {
 	} else if p.Longest/p.Block*p.Block < p.Shortest {
 		in.Fail("longest", "found %d to %d samples; allowed: a range that holds a multiple of the block, %d", p.Shortest, p.Longest, p.Block)
 	}
+	root.Has("channel") // so that it is known to whatever is said about the instrument
+	// Ranges of the channels follow from the sample rate: without one they would be blamed, wherever they stand.
+	if err := doc.Mistake(); err != nil {
+		return nil, err
+	}
 	tables := root.Tables("channel", maxChannels)
 	if len(tables) == 0 {
 		root.Fail("channel", "found no channel; allowed: 1 to %d, each [[channel]]", maxChannels)

@@ -280,6 +280,27 @@ func TestLoadRefuses(t *testing.T) {
 	}
 }
 
+// Channels may stand before the instrument; a fault of its sample rate is not theirs.
+func TestInstrumentFaultFirst(t *testing.T) {
+	const channel = "[[channel]]\nname = \"a\"\nkind = \"quadrature\"\nmixing = \"I cos - Q sin\"\nfull_scale = \"40 MHz\"\nband = \"100 MHz\"\n"
+	for rate, want := range map[string]string{
+		`sample_rate = "1 GHz"`:      `p.toml:10: instrument.sample_rate: found "1 GHz"; allowed: a sample rate such as "1 GS/s", 1 MS/s to 100 GS/s ("GHz" is a unit of frequency)`,
+		`Sample_rate = "1 GS/s"`:     `p.toml:10: instrument.Sample_rate: found an unknown key; allowed: name, sample_rate, resolution, block, shortest, longest, align (keys are case-sensitive: write sample_rate)`,
+		`resolution = "12 bit"`:      `p.toml:8: instrument.sample_rate: found nothing; allowed: a sample rate such as "1 GS/s", 1 MS/s to 100 GS/s`,
+		`sample_rate = "100 MS/s"`:   `p.toml:7: channel[0].band: found "100 MHz"; allowed: a frequency such as "40 MHz", 1 kHz to 50 MHz`,
+		"sample_rate = \"1 GS/s\"\n": ``,
+	} {
+		text := "format = 1\n" + channel + "[instrument]\nname = \"a\"\n" + rate + "\n"
+		if !strings.Contains(rate, "resolution") {
+			text += "resolution = \"14 bit\"\n"
+		}
+		_, err := Parse("p.toml", []byte(text))
+		if got := fmt.Sprint(err); want == "" && err != nil || want != "" && got != want {
+			t.Errorf("%s:\n got    %v\n needed %s", rate, err, want)
+		}
+	}
+}
+
 func TestWaveformRangeHoldsABlock(t *testing.T) {
 	_, err := Parse("p.toml", []byte(`format = 1
 [instrument]

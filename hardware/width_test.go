@@ -1029,3 +1029,38 @@ func TestTwoBudgets(t *testing.T) {
 		t.Errorf("the nearest met are %g and %g of the limits; needed: 0.995", nearFast, nearTail)
 	}
 }
+
+// The first row behind a single pole by hand: its reserves for the time between rows and for what a compression makes of
+// rounding; and with a box the row is there as long as a quadrature can reach its limit.
+func TestRingOutRowByHand(t *testing.T) {
+	line, err := filter.SinglePole(2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	worst := 0.9 * math.Exp(-3.0/2) * (1 - math.Exp(-9.0/2)) // of a quadrature, after 9 samples at 90 % and 3 guards
+	p := &Profile{Name: "by hand", SamplePeriod: 1, Bits: 14, Block: 1, Shortest: 1, Longest: 100}
+	p.Channels = []Channel{{Name: "a", Kind: Quadrature, Envelope: Box, AmplitudeLimit: 0.9, SlewLimit: math.Inf(1), Band: math.Inf(1), GuardTrail: 3, Line: line,
+		RingOut: RingOut{Limit: 0.995 * worst, Fast: 8}}}
+	s, err := p.Playable(0, 12)
+	if err != nil || len(s.Rows) != 1 {
+		t.Fatalf("%+v, %v", s, err)
+	}
+	c := &p.Channels[0]
+	c.Envelope, c.Compression, c.RingOut.Limit = Disc, Compression{{0, 0}, {0.5, 0.8}, {1, 0.9}}, 0.1
+	for _, test := range []struct {
+		kind string
+		gain float64
+	}{{Quadrature, 0.9 + 1.4/math.Sqrt2}, {Baseband, 1.6}} { // slopes 0.2 and 1.6
+		c.Kind = test.kind
+		if s, err = p.Playable(0, 12); err != nil || len(s.Rows) != 1 {
+			t.Fatalf("%+v, %v", s, err)
+		}
+		sum := 0.0
+		for k := range 9 { // weights of a held sample behind 1/(1 + 2 s)
+			sum += math.Exp(-float64(11-k)/2) - math.Exp(-float64(12-k)/2)
+		}
+		if want := 0.1*0.995 - test.gain/2/8192*sum; !(math.Abs(s.Rows[0].Bound-want) <= 1e-14) {
+			t.Errorf("%s: bound %g; by hand %g", test.kind, s.Rows[0].Bound, want)
+		}
+	}
+}

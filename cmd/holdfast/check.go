@@ -12,6 +12,7 @@ import (
 
 	"holdfast/design/brief"
 	"holdfast/design/device"
+	"holdfast/design/replay"
 	"holdfast/hardware"
 	"holdfast/hardware/quantity"
 )
@@ -99,28 +100,19 @@ func kindOf(path string) (fileKind, error) {
 	if info, err := os.Stat(filepath.Join(path, hardware.RecordName)); err == nil && info.Mode().IsRegular() {
 		return "", fmt.Errorf("%s: found a pulse folder; allowed: a profile, a device or a brief ('holdfast replay' takes the folder)", path)
 	}
-	doc, err := quantity.ReadFile(path)
+	kind, err := brief.KindOf(path)
 	if err != nil {
 		return "", err
 	}
-	root := doc.Root()
-	for _, s := range []struct {
-		kind   fileKind
-		tables []string
-	}{
-		{pulseKind, []string{"model", "claim"}},
-		{profileKind, []string{"instrument", "channel"}},
-		{deviceKind, []string{"site", "drive"}},
-		{briefKind, []string{"target", "require", "error", "span"}},
-	} {
-		for _, name := range s.tables {
-			// a name in capitals tells the kind too: the loader then says how it is written
-			for _, spelt := range []string{name, strings.ToUpper(name), strings.ToUpper(name[:1]) + name[1:]} {
-				if root.Has(spelt) {
-					return s.kind, nil
-				}
-			}
-		}
+	switch kind {
+	case brief.RecordFile:
+		return pulseKind, nil
+	case brief.ProfileFile:
+		return profileKind, nil
+	case brief.DeviceFile:
+		return deviceKind, nil
+	case brief.BriefFile:
+		return briefKind, nil
 	}
 	return "", fmt.Errorf("%s: found none of the tables that tell what a file is; allowed: [instrument] in a profile, [[site]] in a device, [target] in a brief", path)
 }
@@ -140,7 +132,7 @@ func describeDevice(w io.Writer, d *device.Device) {
 		list := []fact{
 			{"|0>", fmt.Sprintf("the %s of the two energies, and the +1 state of Z", s.Zero)},
 			{"transition", stated(s.Frequency, quantity.Frequency)},
-			{"detuning", quantity.Format(s.Detuning/(2*math.Pi), quantity.Frequency) + " of the transition from the frame of the drive, constant: it adds 2 pi f Z/2"},
+			{"detuning", detuningInWords(s)},
 		}
 		for _, drive := range d.Drives {
 			if drive.Site == s.Name {
@@ -154,7 +146,7 @@ func describeDevice(w io.Writer, d *device.Device) {
 		}
 		list = append(list, fact{"T1", stated(s.T1, quantity.Time)}, fact{"T2", stated(s.T2, quantity.Time)})
 		if loss := decoherence(s, 100); loss > 0 {
-			list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: T/6 (1/T1 + 2/T2)", loss)})
+			list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: T/6 (1/T1 + 2/T2)%s", loss, unstatedT(s))})
 		} else {
 			list = append(list, fact{"decoherence", "is left out of every figure, as neither T1 nor T2 is stated"})
 		}
@@ -163,19 +155,32 @@ func describeDevice(w io.Writer, d *device.Device) {
 	}
 }
 
-// decoherence is what a gate of T ns loses: T/6 (1/T1 + 2/T2), with what is not
-// stated left out. It is the first order of the average infidelity of relaxation
-// and dephasing that act during any gate.
-func decoherence(s device.Site, T float64) float64 {
-	loss := 0.0
-	if s.T1 > 0 {
-		loss += T / 6 / s.T1
+// detuningInWords says where the transition lies and what that adds.
+func detuningInWords(s device.Site) string {
+	f := quantity.Format(s.Detuning/(2*math.Pi), quantity.Frequency)
+	if s.Detuning == 0 {
+		return f + " of the transition from the frame of the drive"
 	}
-	if s.T2 > 0 {
-		loss += T / 6 * 2 / s.T2
+	sign := ""
+	if s.Zero == device.Lower {
+		sign = "-"
 	}
-	return loss
+	return fmt.Sprintf("%s of the transition from the frame of the drive (positive: above it), constant: as |0> is the %s energy, it adds %s2 pi f Z/2", f, s.Zero, sign)
 }
+
+// unstatedT says what is taken for the one of T1 and T2 that the device does not state.
+func unstatedT(s device.Site) string {
+	switch {
+	case s.T2 == 0:
+		return " with T2 = 2 T1, the longest that it can be, as it is not stated"
+	case s.T1 == 0:
+		return " with T1 endless, as it is not stated"
+	}
+	return ""
+}
+
+// decoherence is what a gate of T ns loses, as replay has it.
+func decoherence(s device.Site, T float64) float64 { return replay.Decoherence(T, s.T1, s.T2) }
 
 // stated formats a figure of which zero says that the file is silent.
 func stated(v float64, k quantity.Kind) string {
@@ -203,7 +208,7 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	list := []fact{
 		{"profile", fmt.Sprintf("%s, %q", p.File, p.Name)},
 		{"device", fmt.Sprintf("%s, %q", d.File, d.Name)},
-		{"target", fmt.Sprintf("%s on %s: %s", b.Target.Label, b.Target.Site, turn(b.Target))},
+		{"target", targetInWords(b.Target)},
 		{"span", fmt.Sprintf("%s: %s in %s of %d; %d held at zero before and %d after, %d free",
 			quantity.Format(b.Span, quantity.Time), count(samples, "sample"), count(samples/p.Block, "block"), p.Block, ch.GuardLead, ch.GuardTrail, r.free)},
 		{"ends", endsInWords(b.Ends)},
@@ -244,11 +249,15 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
 		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
 	}
-	if off := math.Abs(site.Frequency - ch.Carrier); ch.Kind != hardware.Baseband && site.Frequency > 0 && ch.Carrier > 0 {
-		stated := math.Abs(site.Detuning) / (2 * math.Pi)
+	if off := site.Frequency - ch.Carrier; ch.Kind != hardware.Baseband && site.Frequency > 0 && ch.Carrier > 0 {
+		stated := site.Detuning / (2 * math.Pi)
 		if !(math.Abs(off-stated) <= 1e-6*site.Frequency) {
-			warn = append(warn, fmt.Sprintf("The transition, %s, lies %s from the carrier, %s, and the device states a detuning of %s: the pulse is designed for the detuning.",
-				quantity.Format(site.Frequency, quantity.Frequency), quantity.Format(off, quantity.Frequency), quantity.Format(ch.Carrier, quantity.Frequency), quantity.Format(stated, quantity.Frequency)))
+			side := "above"
+			if off < 0 {
+				side = "below"
+			}
+			warn = append(warn, fmt.Sprintf("The transition, %s, lies %s %s the carrier, %s, and the device states a detuning of %s (positive: above): the pulse is designed for the detuning.",
+				quantity.Format(site.Frequency, quantity.Frequency), quantity.Format(math.Abs(off), quantity.Frequency), side, quantity.Format(ch.Carrier, quantity.Frequency), quantity.Format(stated, quantity.Frequency)))
 		}
 	}
 	printCautions(w, warn)
@@ -298,11 +307,13 @@ func carrier(ch *hardware.Channel) string {
 	return quantity.Format(ch.Carrier, quantity.Frequency)
 }
 
-func turn(t brief.Target) string {
-	if t.Angle == 0 {
-		return "no turn"
+// targetInWords names the gate, and says its rotation where the name does not.
+func targetInWords(t brief.Target) string {
+	words := fmt.Sprintf("%s on %s", t.Label, t.Site)
+	if turn := t.Turn(); turn != t.Label {
+		words += ": " + turn
 	}
-	return fmt.Sprintf("%s about (%.4g, %.4g, %.4g)", quantity.Format(t.Angle, quantity.Angle), t.Axis[0], t.Axis[1], t.Axis[2])
+	return words
 }
 
 func endsInWords(ends string) string {

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"math"
 	"path/filepath"
 	"strings"
@@ -25,7 +26,7 @@ func TestCheckProfile(t *testing.T) {
 		"0 samples at zero before the pulse and 4 after", "0.1 % of full scale may arrive", "Bessel low-pass of order 2", "tail of -1.5 %", "10-90 % transition: 1.7", "overshoot: ", "settles to 1 %: 13.", "settles to 0.1 %: 8", "corner (-3.01 dB): 19",
 		"window begins at the device 3.2 ns after the trigger", "0 ns of latency and 3.2 ns of pure delay",
 		"quarter turn in 10 ns and a half turn in 16 ns",
-		"playable in spans from 8 ns up", "40 ns 40 6 12 5 the gate alone", "64 ns 64 11 22 15 any static error and amplitude",
+		"playable in spans from 8 ns up", "equations = together - 1 - 6: one more coefficient than equations is wanted, and 6 for the ring-out limit", "40 ns 40 6 12 5 the gate alone", "64 ns 64 11 22 15 any static error and amplitude",
 		"500 mV", "burn and blind")
 	for l := range strings.Lines(stdout) {
 		if n := len([]rune(l)); n > 115 && !strings.Contains(l, dir) {
@@ -46,7 +47,7 @@ func TestCheckProfile(t *testing.T) {
 	}
 	mustHave(t, "check", stdout, "Q plus its sine", "about -Y when its |0> is the upper energy, about +Y when it is the lower", "(5.1 GHz)",
 		"slew no limit", "no limit below half the sample rate, 500 MHz", "no limit on what arrives", "103.2 ns after the trigger: 100 ns of latency", "does not state the level",
-		"8 ns 8 4 8 7 one named error") // 4 free samples, each a coefficient
+		"equations = together - 1: one more", "8 ns 8 4 8 7 one named error") // 4 free samples, each a coefficient
 }
 
 // Channels of unlike delay stay apart, and check says by how much.
@@ -122,9 +123,21 @@ func TestCheckDevice(t *testing.T) {
 	change(t, path, `zero = "upper"`, `zero = "lower"`)
 	_, stdout, _ = play("check", path)
 	mustHave(t, "check", stdout, "the lower of the two energies", "transition not stated", "T1 not stated", "left out of every figure")
-	if got, want := decoherence(device.Site{T1: 60000, T2: 40000}, 100), 100./6*(1./60000+2./40000); !(math.Abs(got-want) <= 1e-15) {
-		t.Errorf("decoherence %g, want %g", got, want)
+	// With T1 alone T2 is 2 T1 at most: T/6 (1/T1 + 1/T1). With T2 alone T1 is endless.
+	for _, c := range []struct{ T1, T2, want float64 }{
+		{60000, 40000, 100. / 6 * (1./60000 + 2./40000)}, {60000, 0, 100. / 6 * 2 / 60000}, {0, 40000, 100. / 6 * 2 / 40000}, {0, 0, 0},
+	} {
+		if got := decoherence(device.Site{T1: c.T1, T2: c.T2}, 100); !(math.Abs(got-c.want) <= 1e-15) {
+			t.Errorf("T1 %g, T2 %g: decoherence %g, want %g", c.T1, c.T2, got, c.want)
+		}
 	}
+	change(t, path, "# T1 =", "T1 =")
+	change(t, path, `detuning = "0 MHz"`, `detuning = "2 MHz"`)
+	_, stdout, _ = play("check", path)
+	mustHave(t, "check", stdout, "adds 0.000556", "with T2 = 2 T1", "positive: above it", "the lower energy, it adds -2 pi f Z/2")
+	change(t, path, `zero = "lower"`, `zero = "upper"`)
+	_, stdout, _ = play("check", path)
+	mustHave(t, "check", stdout, "the upper energy, it adds 2 pi f Z/2")
 }
 
 func TestCheckBrief(t *testing.T) {
@@ -150,10 +163,16 @@ func TestCheckBrief(t *testing.T) {
 		{"default", "", []string{"detuning up to 3 MHz, amplitude up to 3 %, any static error up to 1 MHz (the brief names none, so these)", "18: 3 of the gate and 15 of the errors, of which 3 repeat others"}, ""},
 		{"a margin of an amplitude", "[[error]]\namplitude = \"q1 drive\"\n[require]\n[[require.margin]]\nerror = \"amplitude\"\nsize = \"1 %\"\n", []string{"up to ±1 % of amplitude"}, ""},
 		{"samples", "[basis]\nfamily = \"samples\"\n", []string{"72 coefficients, 36 per quadrature, family samples"}, "coefficients:"},
+		{"axis and angle", "axis = [-0.0, 0, 1]\nangle = \"90 deg\"\n", []string{"target 90 deg about (0, 0, 1) on q1 span"}, "(-0"},
+		{"matrix", "matrix = [[[0.70710678, -0.70710678], 0], [0, [0.70710678, 0.70710678]]]\n", []string{"target matrix on q1: 90 deg about (0, 0, 1)"}, "-0,"},
 		{"own number", "[basis]\ncoefficients = 30\n", []string{"60 coefficients, 30 per quadrature, family slepian"}, "oo few"},
 	} {
 		path := filepath.Join(dir, "other.toml")
-		write(t, path, strings.Replace(quick, `hold = "nothing"`, "", 1)+c.text)
+		text := strings.Replace(quick, `hold = "nothing"`, "", 1) + c.text
+		if strings.HasPrefix(c.text, "axis") || strings.HasPrefix(c.text, "matrix") { // in the place of the gate
+			text = strings.Replace(text, "gate = \"X90\"\n", "", 1)
+		}
+		write(t, path, text)
 		status, stdout, stderr := play("check", path)
 		if status != exitMet || stderr != "" {
 			t.Errorf("%s: %d, %s", c.name, status, stderr)
@@ -174,7 +193,16 @@ func TestCheckBrief(t *testing.T) {
 	mustHave(t, "check", stdout, "108 per quadrature, family samples", "basis.coefficients = 5 has no effect")
 	change(t, filepath.Join(dir, "rack-b.toml"), "# band =", "band =")
 	_, stdout, _ = play("check", filepath.Join(dir, "quick.toml"))
-	mustHave(t, "check", stdout, `nothing (hold = "nothing")`, "3: 3 of the gate; against them 12 coefficients", "Q about -Y", "turns about -Z with the carrier (5 GHz)", "5.1 GHz, lies 100 MHz from the carrier, 5 GHz")
+	mustHave(t, "check", stdout, `nothing (hold = "nothing")`, "3: 3 of the gate; against them 12 coefficients", "Q about -Y", "turns about -Z with the carrier (5 GHz)", "5.1 GHz, lies 100 MHz above the carrier, 5 GHz")
+	// the right distance on the wrong side is told too
+	for detuning, warned := range map[string]bool{"100 MHz": false, "-100 MHz": true} {
+		change(t, filepath.Join(dir, "skerry.toml"), `detuning = "0 MHz"`, fmt.Sprintf("detuning = %q", detuning))
+		_, stdout, _ = play("check", filepath.Join(dir, "quick.toml"))
+		if strings.Contains(stdout, "lies 100 MHz above") != warned {
+			t.Errorf("detuning %s, transition 100 MHz above the carrier: warned %v, want %v", detuning, !warned, warned)
+		}
+		change(t, filepath.Join(dir, "skerry.toml"), fmt.Sprintf("detuning = %q", detuning), `detuning = "0 MHz"`)
+	}
 }
 
 // A bad file does not keep check from the others.
@@ -196,7 +224,7 @@ func TestCheckGoesOn(t *testing.T) {
 	for i, wanted := range [][]string{
 		{at("what.toml"), "[instrument] in a profile"},
 		{at("none.toml"), "no such file"},
-		{at("lost.toml"), "what it names is at fault", at("gone.toml"), "no such file"},
+		{at("lost.toml") + ":", "device: found \"gone.toml\"", at("gone.toml"), "no such file"},
 		{at("capitals.toml"), "Instrument", "instrument"},
 	} {
 		for _, s := range wanted {

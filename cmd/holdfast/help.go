@@ -271,7 +271,7 @@ func profileKeys() []key {
 		{"channel[].ring_out.fast", `"8 ns"`, "0 ns to 1 s", "8 samples", "the first part after the span, told apart from the slow rest"},
 		{"channel[].ring_out.tail", `"0.05 %"`, "1 ppm to 100 %", "the same as limit", "what counts instead of limit at every instant after that first part"},
 		{"channel[].compression", `[["0 %", "0 %"], ["50 %", "49 %"], ["100 %", "95 %"]]`, "an array of at most 64 pairs of texts", "none", "share at the converter, share of full scale reached: from 0 to 100 % at the converter, both rising, linear between, on the length of (I, Q); undone before codes; not with a box"},
-		{"channel[].shift", `"12 kHz"`, "-1 GHz to 1 GHz", "0 Hz", "by how much the drive shifts the device's transition at steady full scale; in proportion to the power, as a detuning"},
+		{"channel[].shift", `"12 kHz"`, "-1 GHz to 1 GHz", "0 Hz", "what the drive does to the device by its power: at steady full scale H += 2 pi f Z/2, with |0> the +1 state of Z, else in proportion to the power"},
 		{"channel[].line.delay", `"3.2 ns"`, "0 ns to 1 ms", "required beside delay_known_to, else 0 ns", "pure delay between converter and device; no [channel.line]: straight through"},
 		{"channel[].line.delay_known_to", `"1 %"`, "0 % to 100 %", "not stated", "how well the delay is known, relative to itself"},
 		{"channel[].line.lowpass[].family", `"bessel"`, `"single-pole", "bessel", "butterworth", "critical" or "gaussian"`, must, "one table or a list of up to 4, in series; critical is critically damped, gaussian near to a Gaussian"},
@@ -302,10 +302,11 @@ func deviceKeys() []key {
 		{"format", "1", "1, and nothing else", must, "of this file"},
 		{"name", `"Skerry"`, "a text in quotes", must, "of the device, for people"},
 		{"site[].name", `"q1"`, "a text in quotes", must, "by which drive and brief name the spin"},
-		{"site[].levels", "2", "a whole number, 2 to 16", "2", "this version plays 2"},
+		{"site[].levels", "2", "a whole number, 2 to 8", "2", "2 is a spin, more an anharmonic ladder whose two lowest levels are the code space"},
+		{"site[].anharmonicity", `"-220 MHz"`, "-1 GHz to 1 GHz", "must be given for more than 2 levels", "of a ladder: by how much the 1-2 transition lies above the 0-1 one; of no effect for 2 levels"},
 		{"site[].zero", `"lower"`, `"lower" or "upper"`, `"lower"`, "which of the two energies |0> has, the +1 state of Z; with the profile's mixing it settles whether Q turns about +Y or -Y"},
 		{"site[].frequency", `"5.1 GHz"`, "1 Hz to 10000 GHz", "not stated", "of the transition; for messages only"},
-		{"site[].detuning", `"0 Hz"`, "-1 GHz to 1 GHz", "0 Hz", "of the transition from the frame of the drive, constant: H0 = 2 pi f Z/2"},
+		{"site[].detuning", `"0 Hz"`, "-1 GHz to 1 GHz", "0 Hz", "of the transition from the frame of the drive, positive above it, constant: H0 = 2 pi f Z/2 when |0> has the upper energy, -2 pi f Z/2 when it has the lower"},
 		{"site[].T1", `"60 us"`, "1 ns to 1e+06 s", "not stated", "relaxation; for the cost of decoherence, T/6 (1/T1 + 2/T2)"},
 		{"site[].T2", `"40 us"`, "1 ns to 1e+06 s", "not stated", "coherence; at most 2 T1"},
 		{"drive[].site", `"q1"`, "a text in quotes", must, "which site is driven"},
@@ -355,7 +356,7 @@ func briefKeys() []key {
 		{"error[].offset", `"q1 drive"`, "a text in quotes", "another of the eight", "a channel: a constant at the converter"},
 		{"error[].quadrature", `"I"`, `"I" or "Q"`, "both; offsets as two errors, named with I and Q at the end", "of an amplitude or an offset: that quadrature alone"},
 		{"error[].name", `"slow field"`, "a text in quotes", `"detuning", "amplitude", "X", "Y", "Z", "matrix", "any static error", "amplitude I", "offset I", "quadrature angle", or channel and parameter`, "of the error; each its own"},
-		{"error[].size", `"3 MHz"`, size, `"3 MHz"; "3 %" for an amplitude; "1 MHz" for any; known_to or "5 %" for a line; "0.1 %" of full scale for an offset; "1 deg" for an angle`, "how large it may be, for the refinement: f is the rotation frequency that the error causes; shares are 1 ppm to 50 %, angles up to 30 deg"},
+		{"error[].size", `"3 MHz"`, size, `"3 MHz", or 7.5 % of the fastest drive's full scale where that is less; "3 %" for an amplitude; "1 MHz" or 2.5 % for any; known_to or "5 %" for a line; "0.1 %" of full scale for an offset; "1 deg" for an angle`, "how large it may be, for the refinement: f is the rotation frequency that the error causes; shares are 1 ppm to 50 %, angles up to 30 deg"},
 		{"error[].weight", "1", "a number, 1e-06 to 1e+06", "1", "relative to the gate itself"},
 		{"require.infidelity", "1e-4", "a number, 1e-12 to 1", "1e-4", "average gate infidelity for the stated ends, at most"},
 		{"require.susceptibility", "1e-3", "a number, 1e-09 to 1", "1e-3", "the share of each held error that may survive the gate"},
@@ -365,7 +366,8 @@ func briefKeys() []key {
 }
 
 const briefFoot = `A brief without [[error]] and without hold is held against detuning, amplitude and any static error. There may be
-16 [[error]] and 16 [[require.margin]].
+16 [[error]] and 16 [[require.margin]]. Margins are searched up to 50 MHz, 50 % and 50 degrees; of static errors no
+farther than twice the largest full scale, unless a margin beyond is required.
 `
 
 const pulseHead = `A pulse is a folder:

@@ -79,7 +79,7 @@ func TestEditedInputs(t *testing.T) {
 		// the device
 		{"energy", dev, `"upper"`, `"middle"`, "site[0].zero", `"lower" or "upper"`},
 		{"T2 beyond 2 T1", dev, `"40 us"`, `"121 us"`, "site[0].T2", "twice T1"},
-		{"three levels", dev, `levels = 2`, `levels = 3`, "site[0].levels", "one spin"},
+		{"thirty levels", dev, `levels = 2`, `levels = 30`, "site[0].levels", "2 to 8"},
 		{"driven site unknown", dev, `site = "q1"`, `site = "q2"`, "drive[0].site", `"q1"`},
 		{"time in MHz", dev, `"60 us"`, `"60 MHz"`, "site[0].T1", "unit of frequency"},
 		// the brief, alone and against the others
@@ -98,11 +98,11 @@ func TestEditedInputs(t *testing.T) {
 		{"seed below zero", quickName, `refine = false`, `seed = -1`, "seed", "0 to"},
 		{"truth in quotes", quickName, `refine = false`, `refine = "false"`, "refine", "without quotes"},
 		{"coefficients beyond the samples", quickName, `[target]`, "basis = { coefficients = 37 }\n[target]", "basis.coefficients", "at most 36"},
-		{"profile unknown", quickName, `"rack-b.toml"`, `"rack-c.toml"`, "", "rack-c.toml: found no such file"},
-		{"profile is a folder", quickName, `"rack-b.toml"`, `"."`, "", "a folder"},
-		{"profile is a device", quickName, `"rack-b.toml"`, `"skerry.toml"`, "", "skerry.toml:"},
-		{"device is no file", quickName, `"skerry.toml"`, `"/dev/zero"`, "", "not a regular file"},
-		{"device is the brief", quickName, `"skerry.toml"`, `"quick.toml"`, "", "quick.toml:"},
+		{"profile unknown", quickName, `"rack-b.toml"`, `"rack-c.toml"`, "profile", "no such file"},
+		{"profile is a folder", quickName, `"rack-b.toml"`, `"."`, "profile", "a folder"},
+		{"profile is a device", quickName, `"rack-b.toml"`, `"skerry.toml"`, "profile", "which looks like a device file; allowed: a hardware profile"},
+		{"device is no file", quickName, `"skerry.toml"`, `"/dev/zero"`, "device", "not a regular file"},
+		{"device is the brief", quickName, `"skerry.toml"`, `"quick.toml"`, "device", "which looks like a brief; allowed: a device file"},
 	} {
 		if c.name == "unknown key" {
 			c.old, c.new, c.key, c.says = "slew_limit =", "slow_limit =", "channel[0].slow_limit", "unknown key"
@@ -111,21 +111,10 @@ func TestEditedInputs(t *testing.T) {
 			dir := newLab(t)
 			path := filepath.Join(dir, c.file)
 			at := change(t, path, c.old, c.new)
-			switch {
-			case c.name == "key twice":
+			if c.name == "key twice" {
 				at++
-			case strings.HasPrefix(c.says, "rack-c"), strings.Contains(c.name, " is "):
-				at = 0 // about another file as a whole, or about its first key
 			}
-			wanted := []string{c.says}
-			if at > 0 {
-				wanted = append(wanted, fmt.Sprintf("%s:%d: %s", path, at, c.key))
-			} else {
-				wanted = append(wanted, dir)
-			}
-			if c.name == "device is no file" {
-				wanted = []string{"/dev/zero: ", c.says}
-			}
+			wanted := []string{c.says, fmt.Sprintf("%s:%d: %s", path, at, c.key)}
 			refused(t, dir, wanted, "design", filepath.Join(dir, quickName), "-out", filepath.Join(dir, "pulse"))
 			refused(t, dir, wanted, "check", path)
 		})
@@ -175,7 +164,7 @@ func TestHostileFiles(t *testing.T) {
 			if err := os.Symlink(filepath.Base(path), path); err != nil {
 				t.Fatal(err)
 			}
-		}, "rack-b.toml: "},
+		}, `profile: found "rack-b.toml", and at `},
 		{"dangling link", "quick.toml", func(t *testing.T, path string) {
 			os.Remove(path)
 			if err := os.Symlink("nowhere", path); err != nil {
@@ -352,7 +341,7 @@ func TestHostileFolders(t *testing.T) {
 			rehash(t, p, "inputs/profile.toml")
 		}, "profile.toml:1: "},
 		{"no inputs", func(t *testing.T, p string) { os.RemoveAll(filepath.Join(p, "inputs")) }, "inputs"},
-		{"no record", func(t *testing.T, p string) { os.Remove(record(p)) }, "pulse.toml: found no such file"},
+		{"no record", func(t *testing.T, p string) { os.Remove(record(p)) }, "found a folder without pulse.toml"},
 		{"record cut off", func(t *testing.T, p string) { write(t, record(p), good["pulse.toml"][:1500]) }, "pulse.toml"},
 		{"record is binary", func(t *testing.T, p string) { write(t, record(p), "\x7fELF\x02\x01\x01") }, "pulse.toml:1: "},
 		{"unknown key in the model", func(t *testing.T, p string) { change(t, record(p), "bits = 14", "bits = 14\nbytes = 2") }, ": model.bytes: "},
@@ -383,10 +372,13 @@ func TestHostileFolders(t *testing.T) {
 	dir := t.TempDir()
 	file := filepath.Join(dir, "file")
 	write(t, file, quick)
-	refused(t, dir, []string{file, "not a folder"}, "replay", file)
-	refused(t, dir, []string{filepath.Join(dir, "none")}, "replay", filepath.Join(dir, "none"))
-	refused(t, dir, []string{filepath.Join(dir, "pulse.toml")}, "replay", dir)
+	refused(t, dir, []string{file, "found a file; allowed: a pulse folder"}, "replay", file)
+	refused(t, dir, []string{filepath.Join(dir, "none"), "found no such folder; allowed: a pulse folder", "holdfast design"}, "replay", filepath.Join(dir, "none"))
+	refused(t, dir, []string{dir, "found a folder without pulse.toml"}, "replay", dir)
 	refused(t, dir, []string{dir, "folder"}, "design", dir)
+	lab := newLab(t)
+	refused(t, lab, []string{filepath.Join(lab, "a", "b", "c"), "found no folder " + filepath.Join(lab, "a", "b"), "allowed: a new name in a folder that is there"}, "start", filepath.Join(lab, "a", "b", "c"))
+	refused(t, lab, []string{filepath.Join(lab, "rack-b.toml"), "found what looks like a hardware profile; allowed: a brief"}, "design", filepath.Join(lab, "rack-b.toml"))
 	refused(t, made, []string{made, "replay"}, "check", made)
 	refused(t, made, []string{"pulse.toml", "replay"}, "check", filepath.Join(made, "pulse.toml"))
 }

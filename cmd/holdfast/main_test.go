@@ -299,7 +299,7 @@ func TestArguments(t *testing.T) {
 		{[]string{"start"}, exitBadInput, "start: found 0 operands"},
 		{[]string{"start", ""}, exitBadInput, "no name"},
 		{[]string{"start", "/"}, exitBadInput, "/"},
-		{[]string{"start", filepath.Join(t.TempDir(), "no", "such")}, exitBadInput, "no such"},
+		{[]string{"start", filepath.Join(t.TempDir(), "no", "such")}, exitBadInput, "found no folder"},
 		{[]string{"help", "nothing"}, exitBadInput, `the topic "nothing"; allowed: `},
 		{[]string{"help", "a", "b"}, exitBadInput, "help: found 2 operands"},
 		{[]string{"version", "a"}, exitBadInput, "version: found 1 operands"},

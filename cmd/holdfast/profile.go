@@ -255,6 +255,14 @@ func spansOf(p *hardware.Profile, c int) (first int, lines []spanLine, err error
 	return first, lines, nil
 }
 
+// spareInWords says what carries takes off beside the one.
+func spareInWords(ch *hardware.Channel) string {
+	if n := spare(ch, ringOutEasy); n > 0 {
+		return fmt.Sprintf(" - %d: one more coefficient than equations is wanted, and %d for the ring-out limit", n, n)
+	}
+	return ": one more coefficient than equations is wanted"
+}
+
 // describeSpans tables them.
 func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
 	ch := &p.Channels[c]
@@ -269,7 +277,8 @@ func describeSpans(w io.Writer, p *hardware.Profile, c int) error {
 	}
 	fmt.Fprintf(w, " This table counts the coefficients that a span carries and the\n"+
 		"  equations for which they are enough: %d for the gate, %d for each named error, %d for any static error. That many\n"+
-		"  are needed; the limits may ask for a longer span, which only design can tell.\n\n", gateEquations, namedEquations, anyEquations)
+		"  are needed; the limits may ask for a longer span, which only design can tell.\n", gateEquations, namedEquations, anyEquations)
+	fmt.Fprintf(w, "  equations = together - 1%s.\n\n", spareInWords(ch))
 	const longTable = 12 // lines; beyond, only those at which something changes
 	t := tabwriter.NewWriter(w, 0, 0, 3, ' ', tabwriter.AlignRight)
 	fmt.Fprint(t, "span\tsamples\tin I, in Q\ttogether\tequations\t  enough for\n")

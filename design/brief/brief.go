@@ -326,8 +326,10 @@ func readTarget(t *quantity.Table) Target {
 			t.Fail("axis", "found an axis of no length; allowed: 3 components that are not all 0, as in [1, 0, 0]")
 			break
 		}
-		target.Axis = [3]float64{axis[0] / norm, axis[1] / norm, axis[2] / norm}
-		target.Label = fmt.Sprintf("%s about (%.4g, %.4g, %.4g)", quantity.Format(target.Angle, quantity.Angle), target.Axis[0], target.Axis[1], target.Axis[2])
+		for i, v := range axis {
+			target.Axis[i] = v/norm + 0 // 0 and not -0
+		}
+		target.Label = target.Turn()
 	case "matrix":
 		rows := t.Matrix("matrix", 2)
 		if rows == nil {
@@ -346,6 +348,14 @@ func readTarget(t *quantity.Table) Target {
 	}
 	target.Matrix = device.Rotation(target.Axis, target.Angle)
 	return target
+}
+
+// Turn says the rotation in words, "no turn" where there is none.
+func (t Target) Turn() string {
+	if t.Angle == 0 {
+		return "no turn"
+	}
+	return fmt.Sprintf("%s about (%.4g, %.4g, %.4g)", quantity.Format(t.Angle, quantity.Angle), t.Axis[0], t.Axis[1], t.Axis[2])
 }
 
 func (b *Brief) readErrors(root *quantity.Table) {

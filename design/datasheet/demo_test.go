@@ -21,20 +21,22 @@ func demoSheet() *Sheet {
 	}
 	s := &Sheet{
 		Name: "X90 held against any static error", Target: "X90 on q1", Span: n, Ends: "settled", Held: []string{"any static error"},
-		Instrument: "rack B", Channel: "q1 drive", SamplePeriod: 1, Bits: 14, FullScale: 40, FullScaleLevel: 0.5,
-		Band: 0.1, GuardTrail: 4, AmplitudeLimit: 0.95, RingOutLimit: 0.001, WindowStart: 3.2,
-		Samples: x, Arrives: demoArrivals(x), T1: 60e3, T2: 40e3,
-		Line: func(mhz float64) complex128 {
-			f := mhz / 200
-			return 1 / complex(1-0.618*f*f, 1.36*f)
-		},
-		LineFacts:   []string{"Delay of 3.2 ns.", "Bessel low-pass of order 2, corner 200 MHz.", "Settling tail of -1.5 % with 30 ns."},
-		LineFigures: []Row{{"transition time, 10 to 90 %", "1.73 ns"}, {"overshoot", "0.39 %"}, {"settles to 0.1 %", "81.2 ns"}},
-		Basis:       []Row{{"family", "Slepian, ±100 MHz"}, {"coefficients", "20 per quadrature"}},
-		Search:      []Row{{"seed", "1"}, {"starts tried", "3 of 60"}, {"stopped", "converged"}, {"evaluations", "412"}},
-		Provenance:  []Row{{"program", "holdfast 0.1"}, {"inputs", "profile.toml, device.toml, brief.toml"}},
-		Files:       []Row{{"q1-drive.npy", "9f86d081884c7d659a2feaa0c55ad015a3bf4f1b2b0b822cd15d6c15b0f00a08"}},
-		Cautions:    []string{"The channel gives up to 0.5 V at full code before any amplifier."},
+		Instrument: "rack B", SamplePeriod: 1, Bits: 14, WindowStart: 3.2, T1: 60e3, T2: 40e3,
+		Channels: []Channel{{
+			Name: "q1 drive", FullScale: 40, FullScaleLevel: 0.5, Band: 0.1, GuardTrail: 4, AmplitudeLimit: 0.95, RingOutLimit: 0.001,
+			Samples: x, Arrives: demoArrivals(x),
+			Line: func(mhz float64) complex128 {
+				f := mhz / 200
+				return 1 / complex(1-0.618*f*f, 1.36*f)
+			},
+			LineFacts:   []string{"Delay of 3.2 ns.", "Bessel low-pass of order 2, corner 200 MHz.", "Settling tail of -1.5 % with 30 ns."},
+			LineFigures: []Row{{"transition time, 10 to 90 %", "1.73 ns"}, {"overshoot", "0.39 %"}, {"settles to 0.1 %", "81.2 ns"}},
+		}},
+		Basis:      []Row{{"family", "Slepian, ±100 MHz"}, {"coefficients", "20 per quadrature"}},
+		Search:     []Row{{"seed", "1"}, {"starts tried", "3 of 60"}, {"stopped", "converged"}, {"evaluations", "412"}},
+		Provenance: []Row{{"program", "holdfast 0.1"}, {"inputs", "profile.toml, device.toml, brief.toml"}},
+		Files:      []Row{{"q1-drive.npy", "9f86d081884c7d659a2feaa0c55ad015a3bf4f1b2b0b822cd15d6c15b0f00a08"}},
+		Cautions:   []string{"The channel gives up to 0.5 V at full code before any amplifier."},
 	}
 	for k := range 20 {
 		s.CoefficientsI = append(s.CoefficientsI, math.Round(1e6*math.Cos(float64(3*k)))/1e6)

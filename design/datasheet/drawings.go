@@ -13,6 +13,7 @@ import (
 // Sizes of the drawings, in px.
 const (
 	fullWidth, fullHeight   = 1000, 320
+	severalHeight           = 230 // of each of several channels
 	halfWidth, halfHeight   = 480, 320
 	thirdWidth, thirdHeight = 330, 240
 )
@@ -21,7 +22,7 @@ const (
 // narrow ones.
 func both(p plot, title, note string) figureView {
 	f := figureView{Title: title, Note: note, Wide: p.svg()}
-	p.id, p.width, p.height = p.id+"n", halfWidth, halfHeight
+	p.id, p.width, p.height = p.id+"n", halfWidth, min(p.height, halfHeight)
 	f.Narrow = p.svg()
 	return f
 }
@@ -59,57 +60,105 @@ func around(size float64, label string) axis {
 	return axis{lo: -1.12 * size, hi: 1.12 * size, label: label}
 }
 
-// rabi returns the right-hand scale in MHz that goes with a scale in shares.
-func (s *Sheet) rabi(y axis, scale float64) *axis {
-	if !positive(s.FullScale) {
+// rate returns the right-hand scale in MHz that goes with a scale in shares.
+func (c *Channel) rate(y axis) *axis {
+	if !positive(c.FullScale) {
 		return nil
 	}
-	return &axis{lo: y.lo * s.FullScale * scale, hi: y.hi * s.FullScale * scale, label: "Rabi frequency (MHz)"}
+	label := "Rabi frequency (MHz)"
+	if c.Baseband {
+		label = "turns of the device (MHz)"
+	}
+	return &axis{lo: y.lo * c.FullScale, hi: y.hi * c.FullScale, label: label}
+}
+
+// pair gives the curves of the quadratures, or the one of a baseband channel.
+func (c *Channel) pair(i, q []point) []series {
+	if c.Baseband {
+		return []series{{label: "output", points: i, class: 0}}
+	}
+	return []series{{label: "I", points: i, class: 0}, {label: "Q", points: q, class: 1}}
+}
+
+// A drawn is a channel while its figures are drawn.
+type drawn struct {
+	*Channel
+	sheet  *Sheet
+	suffix string // of ids
+	of     string // of titles
+	height int
 }
 
 func (s *Sheet) drawings(v *view) {
-	if len(s.Samples) > 0 && positive(s.SamplePeriod) {
-		v.Played = s.playedFigure()
-	}
-	if len(s.Arrives) > 1 {
-		v.Arriving = s.arrivingFigure()
-		v.After = s.afterFigure()
-	}
-	if sp := NewSpectrum(s.Samples, s.SamplePeriod, s.Band, s.Line); sp != nil {
-		v.Spectrum = s.spectrumFigure(sp)
+	for n := range s.Channels {
+		c := drawn{Channel: &s.Channels[n], sheet: s, height: fullHeight}
+		var f channelView
+		if s.several() {
+			f.Name = clean(c.Name)
+			c.suffix, c.of, c.height = fmt.Sprintf("-%d", n), " of "+f.Name, severalHeight
+		}
+		if len(c.Samples) > 0 && positive(s.SamplePeriod) {
+			f.Played = c.playedFigure()
+		}
+		if len(c.Arrives) > 1 {
+			f.Arriving = c.arrivingFigure()
+			f.After = c.afterFigure()
+		}
+		if sp := NewSpectrum(c.entering(), s.SamplePeriod, c.Band, c.Line); sp != nil {
+			f.Spectrum = c.spectrumFigure(sp)
+		}
+		if f.Played.Wide != "" || f.Arriving.Wide != "" {
+			v.Channels = append(v.Channels, f)
+		}
 	}
 }
 
-func (s *Sheet) playedFigure() figureView {
+func (s drawn) playedFigure() figureView {
 	i, q := quadratures(s.Samples)
-	h := s.SamplePeriod
+	h := s.sheet.SamplePeriod
 	length := float64(len(i)) * h
 	size := largest(i, q)
 	p := plot{
-		id: "played", title: "Samples played", width: fullWidth, height: fullHeight,
-		x: axis{lo: -0.02 * length, hi: 1.02 * length, label: "time at the converter (ns)"},
-		series: []series{
-			{label: "I", points: steps(i, 0, h), class: 0},
-			{label: "Q", points: steps(q, 0, h), class: 1},
-		},
+		id: "played" + s.suffix, title: "Samples played" + s.of, width: fullWidth, height: s.height,
+		x:      axis{lo: -0.02 * length, hi: 1.02 * length, label: "time at the converter (ns)"},
+		series: s.pair(steps(i, 0, h), steps(q, 0, h)),
 	}
 	if a := s.AmplitudeLimit; positive(a) && a <= 2 {
 		size = math.Max(size, a)
 		p.rules = append(p.rules, rule{at: a, label: "amplitude limit", class: "limit"}, rule{at: -a, class: "limit"})
 	}
 	p.y = around(size, "share of full scale")
-	p.right = s.rabi(p.y, 1)
+	note := ""
+	if s.Reached == nil {
+		p.right = s.rate(p.y)
+	} else { // a share at the converter is no share of the rate
+		note = fmt.Sprintf("At the converter: the drive's compression leaves at most %s of full scale of them.", percent(peak(s.Reached)))
+	}
 	lead, trail := float64(s.GuardLead)*h, float64(s.GuardTrail)*h
 	p.spans = []span{{0, lead, "guard", "guard"}, {length - trail, length, "guard", "guard"}}
 	p.desc = fmt.Sprintf("Two step lines over %d samples of %s ns: the in-phase quadrature I, at most %s of full scale in size, and the quadrature Q, at most %s.",
 		len(i), digits(h, 4), digits(largest(i), 3), digits(largest(q), 3))
-	return both(p, "Samples played", "")
+	if s.Baseband {
+		p.desc = fmt.Sprintf("A step line over %d samples of %s ns, at most %s of full scale in size.", len(i), digits(h, 4), digits(largest(i), 3))
+	}
+	return both(p, "Samples played"+s.of, typographic(note))
+}
+
+// peak returns the largest finite |x|.
+func peak(x []complex128) float64 {
+	m := 0.0
+	for _, v := range x {
+		if a := cmplx.Abs(v); finite(a) {
+			m = math.Max(m, a)
+		}
+	}
+	return m
 }
 
 // window returns where the window begins and ends at the device, in ns.
 func (s *Sheet) window() (lo, hi float64) { return s.WindowStart, s.WindowStart + s.Span }
 
-func (s *Sheet) arrivals(scale float64) (i, q []point, t0, t1 float64) {
+func (s *Channel) arrivals(scale float64) (i, q []point, t0, t1 float64) {
 	t0, t1 = math.Inf(1), math.Inf(-1)
 	for _, a := range s.Arrives {
 		i = append(i, point{a.Time, scale * real(a.U)})
@@ -133,26 +182,36 @@ func sizes(pts ...[]point) float64 {
 	return m
 }
 
-func (s *Sheet) arrivingFigure() figureView {
+func (s drawn) arrivingFigure() figureView {
 	i, q, t0, t1 := s.arrivals(1)
-	lo, hi := s.window()
+	lo, hi := s.sheet.window()
 	p := plot{
-		id: "arrives", title: "What arrives at the device", width: fullWidth, height: fullHeight,
+		id: "arrives" + s.suffix, title: "What arrives at the device" + s.from(), width: fullWidth, height: s.height,
 		x:      axis{lo: t0, hi: t1, label: "time after the edge of sample 0 (ns)"},
 		y:      around(sizes(i, q), "share of full scale"),
-		series: []series{{label: "I", points: i, class: 0}, {label: "Q", points: q, class: 1}},
+		series: s.pair(i, q),
 		spans:  []span{{lo, hi, fmt.Sprintf("window, %s to %s ns", digits(lo, 4), digits(hi, 4)), "window"}},
-		desc: fmt.Sprintf("Two curves, I and Q, of the drive after hold and line. The window of the gate, %s to %s ns, is shaded; what is outside it is ring-out.",
+		desc: fmt.Sprintf(s.curves()+" after hold and line. The window of the gate, %s to %s ns, is shaded; what is outside it is ring-out.",
 			digits(lo, 4), digits(hi, 4)),
 	}
-	p.right = s.rabi(p.y, 1)
-	return both(p, "What arrives at the device", "")
+	p.right = s.rate(p.y)
+	return both(p, "What arrives at the device"+s.from(), "")
+}
+
+// from names the channel in a title about the device.
+func (s drawn) from() string { return strings.Replace(s.of, " of ", " from ", 1) }
+
+func (c *Channel) curves() string {
+	if c.Baseband {
+		return "The curve of what the channel puts out"
+	}
+	return "Two curves, I and Q, of the drive"
 }
 
 // afterFigure magnifies what arrives after the window.
-func (s *Sheet) afterFigure() figureView {
+func (s drawn) afterFigure() figureView {
 	i, q, _, t1 := s.arrivals(100)
-	_, hi := s.window()
+	_, hi := s.sheet.window()
 	after := func(pts []point) []point {
 		var out []point
 		for _, v := range pts {
@@ -168,22 +227,24 @@ func (s *Sheet) afterFigure() figureView {
 		return figureView{}
 	}
 	p := plot{
-		id: "after", title: "After the window", width: halfWidth, height: halfHeight,
+		id: "after" + s.suffix, title: "After the window" + s.from(), width: halfWidth, height: min(s.height, halfHeight),
 		x:      axis{lo: hi, hi: t1, label: "time after the edge of sample 0 (ns)"},
-		series: []series{{label: "I", points: i, class: 0}, {label: "Q", points: q, class: 1}},
+		series: s.pair(i, q),
 	}
 	note := "What the device still sees after the window, magnified."
 	if r := 100 * s.RingOutLimit; positive(r) {
 		size = math.Max(size, r)
 		p.rules = []rule{{at: r, label: "ring-out limit", class: "limit"}, {at: -r, class: "limit"}}
 		note += " The limit holds for each quadrature at every instant."
+	} else {
+		note += " The instrument states no limit."
 	}
 	p.y = around(1.1*size, "% of full scale")
-	p.desc = fmt.Sprintf("I and Q from the end of the window at %s ns on, at most %s %% of full scale.", digits(hi, 4), digits(sizes(i, q), 3))
-	return one(p, "After the window", note)
+	p.desc = fmt.Sprintf("What arrives from the end of the window at %s ns on, at most %s %% of full scale.", digits(hi, 4), digits(sizes(i, q), 3))
+	return one(p, "After the window"+s.from(), note)
 }
 
-func (s *Sheet) spectrumFigure(sp *Spectrum) figureView {
+func (s drawn) spectrumFigure(sp *Spectrum) figureView {
 	curve := func(y []float64) []point {
 		var pts []point
 		for k, f := range sp.Frequency {
@@ -193,10 +254,14 @@ func (s *Sheet) spectrumFigure(sp *Spectrum) figureView {
 		}
 		return pts
 	}
-	half := 500 / s.SamplePeriod // MHz
+	half := 500 / s.sheet.SamplePeriod // MHz
+	about, offset := "about the carrier", "offset from the carrier (MHz)"
+	if s.Baseband {
+		about, offset = "about zero", "frequency (MHz)"
+	}
 	p := plot{
-		id: "spectrum", title: "Spectrum of the samples", fine: true, width: halfWidth, height: halfHeight,
-		x:      axis{lo: -half, hi: half, label: "offset from the carrier (MHz)"},
+		id: "spectrum" + s.suffix, title: "Spectrum of the samples" + s.of, fine: true, width: halfWidth, height: min(s.height, halfHeight),
+		x:      axis{lo: -half, hi: half, label: offset},
 		y:      axis{lo: -100, hi: 5, label: "dB of the largest"},
 		series: []series{{label: "played", points: curve(sp.Played), class: 0}},
 	}
@@ -205,7 +270,10 @@ func (s *Sheet) spectrumFigure(sp *Spectrum) figureView {
 		p.series = []series{{label: "arriving", points: curve(sp.Arriving), class: 1}, p.series[0]} // the lower one on top
 		note = "Arriving: with the converter's hold and the line. "
 	}
-	p.desc = fmt.Sprintf("Energy against frequency from %s to %s MHz about the carrier, in dB of the largest.", digits(-half, 4), digits(half, 4))
+	if s.Reached != nil {
+		note += "Both are of what the drive's compression leaves. "
+	}
+	p.desc = fmt.Sprintf("Energy against frequency from %s to %s MHz %s, in dB of the largest.", digits(-half, 4), digits(half, 4), about)
 	if b := 1e3 * s.Band; positive(b) {
 		p.spans = []span{{-b, b, "", "window"}}
 		p.rules = []rule{{at: -b, vertical: true, class: "limit"}, {at: b, vertical: true, label: "band edge", class: "limit"}}
@@ -213,7 +281,7 @@ func (s *Sheet) spectrumFigure(sp *Spectrum) figureView {
 		note += share
 		p.desc += " " + share
 	}
-	return one(p, "Spectrum of the samples", note)
+	return one(p, "Spectrum of the samples"+s.of, note)
 }
 
 func percentSmall(share float64) string {
@@ -227,21 +295,17 @@ func percentSmall(share float64) string {
 // the sign of the sheet.
 func (s *Sheet) blade() template.HTML {
 	const width, height = 300, 64
-	size := 0.0
-	for _, v := range s.Samples {
-		if a := cmplx.Abs(v); finite(a) {
-			size = math.Max(size, a)
-		}
-	}
-	if size == 0 || len(s.Samples) < 2 {
+	samples := s.first().Samples
+	size := peak(samples)
+	if size == 0 || len(samples) < 2 {
 		return ""
 	}
 	// At most one value a px: the largest of the samples that fall there.
-	n := min(len(s.Samples), width)
+	n := min(len(samples), width)
 	tops := make([]float64, n)
-	for k, v := range s.Samples {
+	for k, v := range samples {
 		if a := cmplx.Abs(v); finite(a) {
-			tops[k*n/len(s.Samples)] = math.Max(tops[k*n/len(s.Samples)], a/size)
+			tops[k*n/len(samples)] = math.Max(tops[k*n/len(samples)], a/size)
 		}
 	}
 	var up, down []mark
@@ -267,11 +331,11 @@ func (s *Sheet) errors(v *view) {
 	y := s.infidelityAxis()
 	for n, e := range verdict.Errors {
 		row := errorRow{Name: clean(e.Name), Kind: clean(e.Kind), Held: e.Held,
-			Cells: []errorCell{{typographic(figure(e.Susceptibility)), typographic(margin(e))}}}
+			Cells: []errorCell{{typographic(figure(e.Susceptibility)), typographic(s.margin(e))}}}
 		for _, r := range s.Rivals {
 			cell := errorCell{"–", "–"}
 			if re, ok := find(r.Errors, e); ok {
-				cell = errorCell{typographic(figure(re.Susceptibility)), typographic(margin(re))}
+				cell = errorCell{typographic(figure(re.Susceptibility)), typographic(s.margin(re))}
 			}
 			row.Cells = append(row.Cells, cell)
 		}
@@ -335,11 +399,13 @@ func (s *Sheet) weaker(e replay.Error) string {
 	if len(better) == 0 || math.IsNaN(mine) {
 		return ""
 	}
-	own := withUnit("±"+digits(mine, 3), clean(e.Unit))
-	if mine <= 0 {
-		own = "nothing"
+	own := "withstands " + withUnit("±"+digits(mine, 3), clean(e.Unit)) + ", less than a plain one"
+	if broken(e) {
+		own = "is " + s.margin(e) + ", and a plain one withstands some"
+	} else if mine <= 0 {
+		own = "withstands nothing, less than a plain one"
 	}
-	return fmt.Sprintf("Against %s this pulse withstands %s, less than a plain one: %s.", clean(e.Name), own, strings.Join(better, ", "))
+	return fmt.Sprintf("Against %s this pulse %s: %s.", clean(e.Name), own, strings.Join(better, ", "))
 }
 
 // infidelityAxis is shared by all margin curves, so that they can be compared.
@@ -413,7 +479,10 @@ func (s *Sheet) marginFigure(n int, e replay.Error, y axis) figureView {
 		id: fmt.Sprintf("margin%d", n), title: "Infidelity against " + name, width: halfWidth, height: halfHeight,
 		x: axis{lo: -reach, hi: reach, label: fmt.Sprintf("%s (%s)", name, unit)}, y: y,
 		series: []series{{label: "this pulse", points: curve(e), class: 0}},
-		desc:   fmt.Sprintf("This pulse withstands %s.", margin(e)),
+		desc:   fmt.Sprintf("This pulse %s.", s.withstandsText(e)),
+	}
+	if e.Name == "detuning" && e.Unit == "MHz" {
+		p.x.label = s.detuningText("detuning")
 	}
 	if lo, _, _ := curveRange(e.Curve); lo >= 0 { // sizes without a sign
 		p.x.lo = 0
@@ -421,7 +490,7 @@ func (s *Sheet) marginFigure(n int, e replay.Error, y axis) figureView {
 	for i, r := range s.Rivals {
 		if re, ok := find(r.Errors, e); ok {
 			p.series = append(p.series, series{label: clean(r.Name), points: curve(re), class: 1 + i%4})
-			p.desc += fmt.Sprintf(" %s withstands %s.", clean(r.Name), margin(re))
+			p.desc += fmt.Sprintf(" %s: %s.", clean(r.Name), s.withstandsText(re))
 		}
 	}
 	if r := s.required(); r > 0 {
@@ -439,7 +508,15 @@ func (s *Sheet) marginFigure(n int, e replay.Error, y axis) figureView {
 	if e.Held {
 		title += " (held)"
 	}
-	return one(p, title, "withstands "+typographic(margin(e)))
+	return one(p, title, typographic(s.withstandsText(e)))
+}
+
+// detuningText captions an axis or a table of detunings with their unit, and says on top of what they are.
+func (s *Sheet) detuningText(name string) string {
+	if s.Detuning == 0 || !finite(s.Detuning) {
+		return name + " (MHz)"
+	}
+	return typographic(fmt.Sprintf("%s on top of the device's own %s MHz (MHz)", name, digits(s.Detuning, 4)))
 }
 
 func curve(e replay.Error) []point {
@@ -456,23 +533,19 @@ func (s *Sheet) rivals(v *view) {
 		return
 	}
 	p := plot{id: "rivals", title: "Shapes of the rivals", width: 400, height: 290}
+	c := s.channelOf(s.Rivals[0])
 	length, size := 0.0, 0.0
 	for n, r := range s.Rivals {
-		row := rivalRow{Name: clean(r.Name), Infidelity: typographic(figure(r.Infidelity)), Breaks: r.BreaksRingOut,
-			Span: digits(r.Span, 5) + " ns", Pair: "–", Decoherence: "–"}
+		row := rivalRow{Name: clean(r.Name), Infidelity: short(r.Infidelity), Breaks: r.BreaksRingOut,
+			Span: duration(r.Span), Pair: "–", Decoherence: "–"}
 		if r.PairInfidelity != 0 {
-			row.Pair = typographic(figure(r.PairInfidelity))
+			row.Pair = short(r.PairInfidelity)
 		}
 		if d := s.Verdict.Decoherence; positive(d) && positive(s.Span) && positive(r.Span) {
-			row.Decoherence = figure(d * r.Span / s.Span)
+			row.Decoherence = short(d * r.Span / s.Span)
 		}
-		row.RingOut = percent(r.RingOut)
-		if r.BreaksRingOut {
-			row.RingOut += ", breaks the limit"
-			if positive(s.RingOutLimit) {
-				row.RingOut += " of " + percent(s.RingOutLimit)
-			}
-		}
+		row.RingOut = s.ringOutText(r)
+		row.Infidelity, row.Pair = typographic(row.Infidelity), typographic(row.Pair)
 		row.RingOut, row.Span, row.Decoherence = typographic(row.RingOut), typographic(row.Span), typographic(row.Decoherence)
 		v.Rivals = append(v.Rivals, row)
 		if len(r.Samples) > 0 && positive(s.SamplePeriod) {
@@ -497,10 +570,34 @@ func (s *Sheet) rivals(v *view) {
 			}
 		}
 		p.y.lo = math.Min(p.y.lo, 1.12*low)
-		p.right = s.rabi(p.y, 1)
+		if c.Reached == nil {
+			p.right = c.rate(p.y)
+		}
 		p.desc = "Step lines of the samples of the textbook pulses: " + list(v.RivalNames) + "."
 		v.RivalShapes = one(p, "Shapes of the rivals", "")
 	}
+}
+
+// channelOf gives the channel that plays a rival.
+func (s *Sheet) channelOf(r Rival) *Channel {
+	if r.Channel >= 0 && r.Channel < len(s.Channels) {
+		return &s.Channels[r.Channel]
+	}
+	return &Channel{}
+}
+
+// ringOutText says how much of a rival arrives after its window, and what the instrument says to that.
+func (s *Sheet) ringOutText(r Rival) string {
+	limit := s.channelOf(r).RingOutLimit
+	switch {
+	case !positive(limit) && !positive(r.RingOut):
+		return "no limit stated"
+	case !positive(limit):
+		return percent(r.RingOut) + ", no limit stated"
+	case r.BreaksRingOut:
+		return percent(r.RingOut) + ", over " + percent(limit)
+	}
+	return percent(r.RingOut)
 }
 
 // bringUp fills the populations that a bench should read.
@@ -536,7 +633,12 @@ func (s *Sheet) bringUp(v *view) {
 		v.BringUp = append(v.BringUp, u)
 	}
 	add("bring-amplitude", "Amplitude scale", "amplitude scale", "amplitude scale (ratio)", b.Amplitude, false)
-	add("bring-detuning", "Detuning", "detuning (MHz)", "detuning (MHz)", b.Detuning, false)
+	on := s.detuningText("detuning")
+	short := on
+	if s.Detuning != 0 {
+		short = strings.TrimPrefix(on, "detuning ")
+	}
+	add("bring-detuning", "Detuning", on, short, b.Detuning, false)
 	add("bring-repeats", "Repeats", "repeats", "pulses back to back (count)", b.Repeats, true)
 	if len(v.BringUp) > 0 {
 		v.BringUpNote = "Prepare |0⟩, play the pulse, and read how often |1⟩ is found. Set the carrier and the amplitude so that the readings follow these columns, coarse first by a single pulse, then fine by the repeats, which multiply what is left of an error; " +

@@ -8,6 +8,7 @@ import (
 	"unicode/utf8"
 
 	"holdfast/design/replay"
+	"holdfast/hardware/quantity"
 )
 
 // notComputed stands where a figure is not a number.
@@ -67,6 +68,22 @@ func signed(v float64) string {
 	return digits(v, 3)
 }
 
+// short is figure for columns that are narrow.
+func short(v float64) string {
+	if finite(v) && math.Abs(v) < tiny {
+		return "< 1e-9"
+	}
+	return figure(v)
+}
+
+// duration prints a time in ns with the unit that suits it.
+func duration(ns float64) string {
+	if !finite(ns) {
+		return notComputed
+	}
+	return strings.Replace(quantity.Format(ns, quantity.Time), " us", " µs", 1)
+}
+
 // percent prints a share as a percentage.
 func percent(share float64) string {
 	if !finite(share) {
@@ -83,15 +100,34 @@ func withUnit(value, unit string) string {
 	return value + " " + unit
 }
 
+// broken reports whether a pulse breaks the required infidelity without any error.
+func broken(e replay.Error) bool { return e.Low == 0 && e.High == 0 }
+
+// already says so.
+func (s *Sheet) already() string {
+	if r := s.required(); r > 0 {
+		return "already above " + digits(r, 3) + " without error"
+	}
+	return "already above what is required without error"
+}
+
+// withstandsText says in a phrase what a pulse withstands of an error.
+func (s *Sheet) withstandsText(e replay.Error) string {
+	if broken(e) {
+		return s.already()
+	}
+	return "withstands " + s.margin(e)
+}
+
 // margin prints the range of error sizes that a pulse withstands. Where one
 // side holds to the end of the searched range the end of its curve is named.
-func margin(e replay.Error) string {
+func (s *Sheet) margin(e replay.Error) string {
 	unit := clean(e.Unit)
 	switch {
 	case math.IsNaN(e.Low) || math.IsNaN(e.High):
 		return notComputed
-	case e.Low == 0 && e.High == 0:
-		return "nothing"
+	case broken(e):
+		return s.already()
 	case math.IsInf(e.Low, -1) && math.IsInf(e.High, 1):
 		switch lo, hi, ok := curveRange(e.Curve); {
 		case ok && lo == -hi:
@@ -190,7 +226,7 @@ func typographic(s string) string {
 
 // startsUnit reports whether s begins with a unit that the page uses.
 func startsUnit(s string) bool {
-	for _, u := range [...]string{"%", "MHz", "GHz", "ns", "µs", "mV", "V", "rad", "deg", "dB"} {
+	for _, u := range [...]string{"%", "Hz", "kHz", "MHz", "GHz", "ps", "ns", "µs", "ms", "s", "mV", "V", "rad", "deg", "dB"} {
 		if rest, ok := strings.CutPrefix(s, u); ok {
 			r, _ := utf8.DecodeRuneInString(rest)
 			return !unicode.IsLetter(r) || r == utf8.RuneError

@@ -40,37 +40,65 @@ type Sheet struct {
 	Held   []string // error classes that the design was held against; empty: nothing
 	Status string   // one phrase where the design did not end as asked, such as "interrupted: the best so far"
 
-	Instrument     string  // name of the profile
-	Channel        string  // that plays the samples
-	SamplePeriod   float64 // ns
-	Bits           int     // of the converter
-	FullScale      float64 // MHz, steady Rabi frequency at full code
+	Instrument   string    // name of the profile
+	SamplePeriod float64   // ns
+	Bits         int       // of the converters
+	WindowStart  float64   // ns from the leading edge of sample 0
+	Channels     []Channel // that play; the first one's shape is the sign of the sheet
+
+	T1, T2   float64 // ns, of the device; 0 = not stated
+	Detuning float64 // MHz, of the device itself: what it adds is 2 pi Detuning Z/2, and errors come on top
+	Required float64 // infidelity that the brief requires; 0 takes the verdict's requirement of that name
+	Verdict  *replay.Verdict
+	Rivals   []Rival // textbook pulses for the same target through the same line
+
+	Basis         []Row     // family, coefficients per quadrature, ...
+	CoefficientsI []float64 // of the first channel
+	CoefficientsQ []float64
+	Search        []Row // seed, starts, stopping reason, ...
+	Provenance    []Row // version, inputs, ...
+	Files         []Row // file names and their SHA-256
+	Cautions      []string
+}
+
+// A Channel is one output of the instrument, with what it plays and what its line makes of that.
+type Channel struct {
+	Name           string
+	Baseband       bool    // one converter without a carrier: samples are real
+	FullScale      float64 // MHz, steady Rabi frequency at full code; of a baseband channel the frequency by which it turns the device
 	FullScaleLevel float64 // V at the connector at full code, 0 = not stated
 	Band           float64 // GHz, the band is [-Band, Band]; 0 or +Inf = none
 	GuardLead      int     // samples held at zero at the start of the span
 	GuardTrail     int     // samples held at zero at its end
 	AmplitudeLimit float64 // share of full scale; 0 or +Inf = none
 	RingOutLimit   float64 // share of full scale per quadrature; 0 or +Inf = none
-	WindowStart    float64 // ns from the leading edge of sample 0
 
-	Samples []complex128                 // x_I + i x_Q of the rounded codes, share of full scale
+	Samples []complex128                 // x_I + i x_Q of the rounded codes, as the converter plays them, share of full scale
+	Reached []complex128                 // what the drive's compression leaves of them, which enters the line; nil without compression
 	Arrives []Arrival                    // at the device, ascending in time, from a little before the window to well after it
 	Line    func(mhz float64) complex128 // frequency response of the line at an offset from the carrier, its unit steady gain kept; nil = not known
 
-	T1, T2   float64 // ns, of the device; 0 = not stated
-	Required float64 // infidelity that the brief requires; 0 takes the verdict's requirement of that name
-	Verdict  *replay.Verdict
-	Rivals   []Rival // textbook pulses for the same target through the same line
+	LineFacts   []string // sentences about the line, one a section
+	LineFigures []Row    // transition time, settling, ...
+}
 
-	LineFacts     []string // sentences about the line, one a section
-	LineFigures   []Row    // transition time, settling, ...
-	Basis         []Row    // family, coefficients per quadrature, ...
-	CoefficientsI []float64
-	CoefficientsQ []float64
-	Search        []Row // seed, starts, stopping reason, ...
-	Provenance    []Row // version, inputs, ...
-	Files         []Row // file names and their SHA-256
-	Cautions      []string
+// first gives the first channel, or an empty one.
+func (s *Sheet) first() *Channel {
+	if len(s.Channels) == 0 {
+		return &Channel{}
+	}
+	return &s.Channels[0]
+}
+
+// several reports whether channels need to be told apart.
+func (s *Sheet) several() bool { return len(s.Channels) > 1 }
+
+// entering is what enters the line.
+func (c *Channel) entering() []complex128 {
+	if c.Reached != nil {
+		return c.Reached
+	}
+	return c.Samples
 }
 
 // An Arrival is what the device sees at one time.
@@ -83,11 +111,12 @@ type Arrival struct {
 // and judged by replay in the same way.
 type Rival struct {
 	Name           string
-	Span           float64 // ns
-	Infidelity     float64 // without any error, for the ends of the sheet
-	BreaksRingOut  bool
-	RingOut        float64        // share of full scale, the largest that arrives after its window, per quadrature
-	Samples        []complex128   // share of full scale
+	Span           float64        // ns
+	Infidelity     float64        // without any error, for the ends of the sheet
+	Channel        int            // that plays it, of the sheet's
+	BreaksRingOut  bool           // the limit of that channel
+	RingOut        float64        // share of full scale, the largest that arrives after its window, per quadrature; NaN = not known
+	Samples        []complex128   // as the converter plays them, share of full scale
 	Errors         []replay.Error // names and units as in the sheet's verdict, so that curves overlay
 	PairInfidelity float64        // two without a gap, worst phase; 0 = not computed
 }

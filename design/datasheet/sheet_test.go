@@ -153,7 +153,7 @@ func TestPageSaysWhatIsAsked(t *testing.T) {
 		"0.00612 rad (0.351 deg)", "1.24e-5 (second pulse at 90 deg)", "0.488 % free",
 		"Of any static error, 0.83 X − 0.41 Y survives most",
 		"Against X this pulse withstands ±0.18 MHz, less than a plain one", // the honest half
-		"breaks the limit", "Population of |1⟩ against repeats", "Amplified radio-frequency power burns",
+		"0.62 %, over 0.1 %", "kept at zero", "T1 60 µs and T2 40 µs", "Population of |1⟩ against repeats", "Amplified radio-frequency power burns",
 		"seed", "9f86d081", "0.5 V at the connector",
 	} {
 		if !strings.Contains(text, want) {
@@ -184,11 +184,12 @@ func TestMissed(t *testing.T) {
 	v := s.Verdict
 	v.Requirements[2].Found, v.Requirements[2].Met = 0.4, false
 	v.Limits[1].OK, v.Limits[1].Found, v.Limits[1].Headroom = false, 0.26, -0.04
-	v.Agreement = replay.Agreement{Infidelity: 1e-3}
+	v.Agreement = replay.Agreement{Infidelity: 1e-3, Worst: replay.Disagreement{Figure: "infidelity, settled", Found: 2.71e-9, Recorded: 0.0010000271}}
 	v.Inputs = []replay.Difference{{Key: "channel[0].delay_ns", Recorded: "3.2", Rebuilt: "3.4"}}
 	for name, text := range map[string]string{"page": wellFormed(t, page(t, s)), "text": summary(t, s)} {
 		for _, want := range []string{"does not meet its requirements", "margin against detuning: found ±0.4 MHz, required at least ±1 MHz",
-			"slew: 0.26 of full scale per sample where 0.25", "interrupted", "replay does not agree", "1 of its numbers differ"} {
+			"slew: 0.26 of full scale per sample where 0.25", "It does not meet its requirements (interrupted: the best so far).",
+			"replay does not agree with the record in the folder: infidelity, settled is 2.71e-9 by replay and 0.001 in the record", "1 of its numbers differ"} {
 			if !strings.Contains(text, want) {
 				t.Errorf("%s does not say %q", name, want)
 			}
@@ -203,12 +204,12 @@ func TestMissed(t *testing.T) {
 func TestHostileText(t *testing.T) {
 	const evil = "</title></style><script>alert(1)</script><svg onload=\"x\">\"'&]]>\x00\x1b[31m\u202e\xff{{.}}"
 	s := demoSheet()
-	s.Name, s.Target, s.Ends, s.Status, s.Instrument, s.Channel = evil, evil, evil, evil, evil, evil
+	s.Name, s.Target, s.Ends, s.Status, s.Instrument, s.Channels[0].Name = evil, evil, evil, evil, evil, evil
 	s.Held = []string{evil}
-	for _, rows := range [][]Row{s.LineFigures, s.Basis, s.Search, s.Provenance, s.Files} {
+	for _, rows := range [][]Row{s.Channels[0].LineFigures, s.Basis, s.Search, s.Provenance, s.Files} {
 		rows[0] = Row{evil, evil}
 	}
-	s.LineFacts, s.Cautions = []string{evil}, []string{evil}
+	s.Channels[0].LineFacts, s.Cautions = []string{evil}, []string{evil}
 	v := s.Verdict
 	v.Ends, v.Warnings = evil, []string{evil}
 	v.Inputs = []replay.Difference{{Key: evil, Recorded: evil, Rebuilt: evil}}
@@ -240,8 +241,9 @@ func TestNotNumbers(t *testing.T) {
 	nan, inf := math.NaN(), math.Inf(1)
 	for _, bad := range []float64{nan, inf, -inf, 1e308, -1e308, 1e-320, 0} {
 		s := demoSheet()
-		s.Span, s.SamplePeriod, s.FullScale, s.FullScaleLevel, s.Band = bad, bad, bad, bad, bad
-		s.AmplitudeLimit, s.RingOutLimit, s.WindowStart, s.Required, s.T1, s.T2 = bad, bad, bad, bad, bad, bad
+		c := &s.Channels[0]
+		s.Span, s.SamplePeriod, c.FullScale, c.FullScaleLevel, c.Band = bad, bad, bad, bad, bad
+		c.AmplitudeLimit, c.RingOutLimit, s.WindowStart, s.Required, s.T1, s.T2, s.Detuning = bad, bad, bad, bad, bad, bad, bad
 		spoil(s, bad)
 		check(t, bad, s)
 
@@ -252,14 +254,15 @@ func TestNotNumbers(t *testing.T) {
 }
 
 func spoil(s *Sheet, bad float64) {
-	s.Samples[7], s.Arrives[9].U, s.Arrives[30].Time = complex(bad, 0), complex(0, bad), bad
+	c := &s.Channels[0]
+	c.Samples[7], c.Arrives[9].U, c.Arrives[30].Time = complex(bad, 0), complex(0, bad), bad
 	s.CoefficientsI[0] = bad
-	s.Line = func(float64) complex128 { return complex(bad, bad) }
+	c.Line = func(float64) complex128 { return complex(bad, bad) }
 	v := s.Verdict
 	v.Settled = replay.Figures{Infidelity: bad, Leakage: bad}
 	v.Window, v.TailAngle, v.Decoherence = v.Settled, bad, bad
 	v.Pair = replay.Pair{Infidelity: bad, Phase: bad}
-	v.Agreement = replay.Agreement{Infidelity: bad, Susceptibility: bad, TailAngle: bad}
+	v.Agreement = replay.Agreement{Infidelity: bad, Susceptibility: bad, TailAngle: bad, Worst: replay.Disagreement{Figure: "leakage", Found: bad, Recorded: bad}}
 	for i := range v.Requirements {
 		v.Requirements[i].Found, v.Requirements[i].Allowed = bad, bad
 	}
@@ -327,12 +330,13 @@ func TestSizeLimit(t *testing.T) {
 // The longest pulse that an instrument plays still gives a page of usual size.
 func TestLongPulse(t *testing.T) {
 	s := demoSheet()
-	s.Samples = make([]complex128, 65536)
-	s.Arrives = nil
-	for k := range s.Samples {
+	c := &s.Channels[0]
+	c.Samples = make([]complex128, 65536)
+	c.Arrives = nil
+	for k := range c.Samples {
 		f := float64(k)
-		s.Samples[k] = complex(0.9*math.Sin(f*f/1e5), 0.9*math.Cos(f))
-		s.Arrives = append(s.Arrives, Arrival{f, s.Samples[k]})
+		c.Samples[k] = complex(0.9*math.Sin(f*f/1e5), 0.9*math.Cos(f))
+		c.Arrives = append(c.Arrives, Arrival{f, c.Samples[k]})
 	}
 	s.Span = 65536
 	if p := page(t, s); len(p) > 1_200_000 {
@@ -344,5 +348,195 @@ func TestSameBytes(t *testing.T) {
 	a, b := page(t, demoSheet()), page(t, demoSheet())
 	if a != b {
 		t.Error("the same sheet gave two pages")
+	}
+}
+
+// A disagreement in a late digit is told to that digit.
+func TestWorstDigits(t *testing.T) {
+	for _, c := range []struct {
+		d    replay.Disagreement
+		want string
+	}{
+		{replay.Disagreement{Figure: "tail angle in rad", Found: 0.0061234, Recorded: 0.0061239}, ": tail angle in rad is 0.006123 by replay and 0.006124 in the record"},
+		{replay.Disagreement{Figure: "leakage", Found: 0.5, Recorded: 0.5}, ": leakage is 0.5 by replay and 0.5 in the record"},
+		{replay.Disagreement{}, ""},
+	} {
+		if got := worst(c.d); got != c.want {
+			t.Errorf("%q, want %q", got, c.want)
+		}
+	}
+}
+
+// Both outputs of a sheet.
+func outputs(t *testing.T, s *Sheet) map[string]string {
+	t.Helper()
+	return map[string]string{"page": wellFormed(t, page(t, s)), "text": summary(t, s)}
+}
+
+func mustSay(t *testing.T, name, text string, wanted ...string) {
+	t.Helper()
+	for _, want := range wanted {
+		if !strings.Contains(text, want) {
+			t.Errorf("the %s does not say %q", name, want)
+		}
+	}
+}
+
+func mustNotSay(t *testing.T, name, text string, unwanted ...string) {
+	t.Helper()
+	for _, bad := range unwanted {
+		if strings.Contains(text, bad) {
+			t.Errorf("the %s says %q", name, bad)
+		}
+	}
+}
+
+// Without a limit on ring-out the rivals' ring-out is a value, or it is said that there is no limit; never a share of nothing.
+func TestNoRingOutLimit(t *testing.T) {
+	for _, found := range []float64{0.0062, 0, math.NaN()} {
+		s := demoSheet()
+		s.Channels[0].RingOutLimit = 0
+		for i := range s.Rivals {
+			s.Rivals[i].RingOut, s.Rivals[i].BreaksRingOut = found, false
+		}
+		p := outputs(t, s)["page"]
+		mustSay(t, "page", p, "no limit stated", "The instrument states no limit.")
+		mustNotSay(t, "page", p, ">0 %<", "not computed", "0 %, no limit", "over 0 %")
+		if found > 0 {
+			mustSay(t, "page", p, "0.62 %, no limit stated")
+		}
+	}
+}
+
+// Where the required infidelity is broken before any error comes, that is what stands in the place of a margin.
+func TestAlreadyAbove(t *testing.T) {
+	s := demoSheet()
+	s.Required = 1e-9
+	v := s.Verdict
+	v.Requirements[0].Allowed, v.Requirements[0].Met = 1e-9, false
+	v.Requirements[2].Found, v.Requirements[2].Met = 0, false
+	for i := range v.Errors {
+		v.Errors[i].Low, v.Errors[i].High = 0, 0
+	}
+	for name, text := range outputs(t, s) {
+		mustSay(t, name, text, "already above 1e-9 without error", "margin against detuning: found already above 1e-9 without error",
+			"Against X this pulse is already above 1e-9 without error, and a plain one withstands some: square")
+		mustNotSay(t, name, text, "withstands nothing", "withstands already", "±0 MHz")
+	}
+	mustSay(t, "page", wellFormed(t, page(t, s)), "of any static error: already above 1e-9 without error")
+}
+
+// Detunings are on top of the device's own, and captions say so where it has one.
+func TestDetunedDevice(t *testing.T) {
+	mustNotSay(t, "page", outputs(t, demoSheet())["page"], "on top of the device")
+	s := demoSheet()
+	s.Detuning = -2.5
+	p := outputs(t, s)["page"]
+	if n := strings.Count(p, "on top of the device's own −2.5 MHz (MHz)"); n < 3 { // the curve, the bench's figure and its table
+		t.Errorf("the page says %d times that detunings are on top of the device's", n)
+	}
+	mustSay(t, "page", p, "detuning on top of the device's own −2.5 MHz (MHz)")
+}
+
+// Guards are kept at zero or they are not: no share of nothing.
+func TestGuards(t *testing.T) {
+	s := demoSheet()
+	p := outputs(t, s)["page"]
+	mustSay(t, "page", p, "kept at zero")
+	mustNotSay(t, "page", p, "0 of full scale")
+	s = demoSheet()
+	l := &s.Verdict.Limits[4]
+	l.Found, l.OK = 0.01, false
+	for name, text := range outputs(t, s) {
+		mustSay(t, name, text, "guards: 0.01 of full scale where zero is asked")
+		mustNotSay(t, name, text, "kept at zero", "where 0")
+	}
+}
+
+// Times carry the unit that suits them, the same in every place.
+func TestDurations(t *testing.T) {
+	s := demoSheet()
+	s.T1, s.T2, s.Span = 5e6, 2.5e3, 12500
+	s.Rivals[0].Span = 1600
+	for name, text := range outputs(t, s) {
+		mustSay(t, name, text, "12.5 µs, held against")
+	}
+	mustSay(t, "page", outputs(t, s)["page"], "T1 5 ms and T2 2.5 µs", "1.6 µs", "24 ns")
+}
+
+// Several channels: each with its samples, arrivals, spectrum and figures, under its name.
+func TestSeveralChannels(t *testing.T) {
+	s := demoSheet()
+	flux := s.Channels[0]
+	flux.Name, flux.Baseband, flux.FullScale, flux.FullScaleLevel, flux.RingOutLimit = "q1 <flux>", true, 10, 1, 0
+	flux.Samples = make([]complex128, len(flux.Samples))
+	for k := range flux.Samples {
+		flux.Samples[k] = complex(0.3*math.Sin(float64(k)/18), 0)
+	}
+	flux.Arrives = demoArrivals(flux.Samples)
+	flux.LineFacts, flux.LineFigures = []string{"A single pole."}, []Row{{"overshoot", "0 %"}}
+	s.Channels = append(s.Channels, flux)
+	html := page(t, s)
+	p := wellFormed(t, html)
+	mustSay(t, "page", p, "Samples played of q1 drive", "Samples played of q1 <flux>", "What arrives at the device from q1 drive", "What arrives at the device from q1 <flux>",
+		"Spectrum of the samples of q1 <flux>", "After the window from q1 <flux>", "turns of the device (MHz)", "frequency (MHz)", "output",
+		"The line of q1 drive: Delay of 3.2 ns.", "The line of q1 <flux>: A single pole.", "Output of q1 drive", "Output of q1 <flux>", "Line of q1 <flux>",
+		"0.5 V (q1 drive) and 1 V (q1 <flux>) at the connector", "10 MHz steady turns of the device")
+	for _, heading := range []string{"<h3>q1 drive</h3>", "<h3>q1 &lt;flux&gt;</h3>"} {
+		if strings.Count(html, heading) != 1 {
+			t.Errorf("the heading %s stands %d times", heading, strings.Count(html, heading))
+		}
+	}
+	if n := strings.Count(html, "<svg class=\"plot"); n != strings.Count(page(t, demoSheet()), "<svg class=\"plot")+6 { // played and arriving twice each, spectrum, after
+		t.Errorf("%d drawings", n)
+	}
+	mustNotSay(t, "page", wellFormed(t, page(t, demoSheet())), "Samples played of", "Output of", "The line of")
+	// a rival is judged by the limit of the channel that plays it
+	s.Rivals[0].Channel, s.Rivals[0].BreaksRingOut = 1, false
+	mustSay(t, "page", wellFormed(t, page(t, s)), "0.62 %, no limit stated", "0.41 %, over 0.1 %")
+}
+
+// Where the drive compresses, what is played is at the converter, without a scale of rates, and the spectrum is of what is left.
+func TestCompression(t *testing.T) {
+	s := demoSheet()
+	c := &s.Channels[0]
+	c.Reached = make([]complex128, len(c.Samples))
+	for k, x := range c.Samples {
+		c.Reached[k] = x * complex(1-0.2*math.Hypot(real(x), imag(x)), 0)
+	}
+	html := page(t, s)
+	p := wellFormed(t, html)
+	mustSay(t, "page", p, "At the converter: the drive's compression leaves at most "+percent(peak(c.Reached))+" of full scale", "Both are of what the drive's compression leaves.", "undone before the codes")
+	if n, before := strings.Count(p, "Rabi frequency (MHz)"), strings.Count(wellFormed(t, page(t, demoSheet())), "Rabi frequency (MHz)"); n != before-3 { // wide, narrow, rivals
+		t.Errorf("%d scales of rates, %d without compression", n, before)
+	}
+	got, want := *c, *c
+	want.Samples, want.Reached = c.Reached, nil
+	if a, b := NewSpectrum(got.entering(), 1, 0.1, c.Line), NewSpectrum(want.entering(), 1, 0.1, c.Line); a.Outside != b.Outside {
+		t.Errorf("share outside the band %g, of what is reached %g", a.Outside, b.Outside)
+	}
+}
+
+// The table of the rivals stands beside a drawing: what does not break must be short, or its last column is cut off on a page of usual width.
+func TestRivalsFit(t *testing.T) {
+	const most, mostBroken = 14, 9 // characters: of a cell that may not break, and of a word in one that may
+	s := demoSheet()
+	s.Rivals[0].Infidelity, s.Rivals[0].PairInfidelity = 3e-15, 1e-20
+	s.Rivals[1].Span, s.Rivals[1].RingOut = 123456.7, 0.00219
+	v := newView(s)
+	for _, r := range v.Rivals {
+		for _, cell := range []string{r.Span, r.Infidelity, r.Pair, r.Decoherence} {
+			if n := len([]rune(cell)); n > most {
+				t.Errorf("a cell of %d characters: %q", n, cell)
+			}
+		}
+		for _, word := range strings.Fields(r.RingOut) {
+			if n := len([]rune(word)); n > mostBroken && !strings.ContainsRune(word, noBreak) || n > most {
+				t.Errorf("a word of %d characters: %q", n, word)
+			}
+		}
+		if len(strings.Fields(strings.ReplaceAll(r.RingOut, string(noBreak), "_"))) > 3 {
+			t.Errorf("many words: %q", r.RingOut)
+		}
 	}
 }

@@ -28,18 +28,15 @@ func Text(w io.Writer, s *Sheet) error {
 	if !v.Met() {
 		answer = "MISSED. "
 	}
-	line("%s", answer+verdictSentence(v))
-	for _, r := range reasons(v) {
+	line("%s", answer+s.verdictSentence())
+	for _, r := range s.reasons() {
 		line("  %s", hyphens(r))
-	}
-	if st := clean(s.Status); st != "" {
-		line("%s", st)
 	}
 
 	if len(v.Requirements) > 0 {
 		rows := [][]string{{"requirement", "found", "required", ""}}
 		for _, r := range v.Requirements {
-			found, allowed := requirementText(r)
+			found, allowed := s.requirementText(r)
 			met := "met"
 			if !r.Met {
 				met = "MISSED"
@@ -60,11 +57,11 @@ func Text(w io.Writer, s *Sheet) error {
 			if e.Held {
 				name += " (held)"
 			}
-			row := []string{name, figure(e.Susceptibility), margin(e)}
+			row := []string{name, figure(e.Susceptibility), s.margin(e)}
 			for _, r := range s.Rivals {
 				cell := "-"
 				if re, ok := find(r.Errors, e); ok {
-					cell = margin(re)
+					cell = s.margin(re)
 				}
 				row = append(row, cell)
 			}

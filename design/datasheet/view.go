@@ -14,20 +14,19 @@ import (
 type view struct {
 	Style template.CSS
 
-	Name, Sentence, Status string
-	Met                    bool
-	Verdict                string   // the answer in one sentence
-	Reasons                []string // why not
-	Plate                  []plate
-	Blade                  template.HTML
+	Name, Sentence string
+	Met            bool
+	Verdict        string   // the answer in one sentence
+	Reasons        []string // why not
+	Plate          []plate
+	Blade          template.HTML
 
 	Requirements []requirement
 	Warnings     []string
 	Agreement    []string
 	Differences  []replay.Difference
 
-	Played, Arriving         figureView
-	Spectrum, After          figureView
+	Channels                 []channelView
 	Margins                  []figureView
 	MarginNote, MarginKey    string
 	Errors                   []errorRow
@@ -40,12 +39,25 @@ type view struct {
 	Limits                   []limitRow
 	BringUp                  []bringUp
 	BringUpNote              string
-	Line                     []string
+	Lines                    []lineView
 	Facts                    []facts
 	CoefficientsI            string
 	CoefficientsQ            string
 	Cautions                 []string
 	Decoherence, FullScaleMV string
+}
+
+// A channelView is what one channel plays and what arrives; its name stands there where there are several.
+type channelView struct {
+	Name             string
+	Played, Arriving figureView
+	Spectrum, After  figureView
+}
+
+// A lineView describes the line of one channel.
+type lineView struct {
+	Title     string
+	Sentences []string
 }
 
 type plate struct{ Name, Value, Note string }
@@ -99,13 +111,11 @@ func newView(s *Sheet) *view {
 		Style:    template.CSS(pageStyle),
 		Name:     clean(s.Name),
 		Sentence: s.sentence(),
-		Status:   clean(s.Status),
 		Met:      v.Met(),
-		Verdict:  verdictSentence(v),
-		Reasons:  reasons(v),
+		Verdict:  s.verdictSentence(),
+		Reasons:  s.reasons(),
 		Plate:    s.plate(),
 		Blade:    s.blade(),
-		Line:     typographicAll(cleanAll(s.LineFacts)),
 		Cautions: typographicAll(cleanAll(s.Cautions)),
 		Warnings: typographicAll(cleanAll(v.Warnings)),
 	}
@@ -113,7 +123,7 @@ func newView(s *Sheet) *view {
 		view.Name = "a pulse without a name"
 	}
 	for _, r := range v.Requirements {
-		found, allowed := requirementText(r)
+		found, allowed := s.requirementText(r)
 		view.Requirements = append(view.Requirements, requirement{clean(r.Name), typographic(found), typographic(allowed), r.Met})
 	}
 	view.Agreement = agreement(v)
@@ -123,9 +133,25 @@ func newView(s *Sheet) *view {
 	if v.Decoherence > 0 && finite(v.Decoherence) {
 		view.Decoherence = s.decoherenceSentence()
 	}
-	if positive(s.FullScaleLevel) {
-		view.FullScaleMV = digits(s.FullScaleLevel, 3) + " V"
+	var levels []string
+	for i := range s.Channels {
+		c := &s.Channels[i]
+		if positive(c.FullScaleLevel) {
+			level := digits(c.FullScaleLevel, 3) + " V"
+			if s.several() {
+				level += " (" + clean(c.Name) + ")"
+			}
+			levels = append(levels, level)
+		}
+		if len(c.LineFacts) > 0 {
+			l := lineView{"The line", typographicAll(cleanAll(c.LineFacts))}
+			if s.several() {
+				l.Title += " of " + clean(c.Name)
+			}
+			view.Lines = append(view.Lines, l)
+		}
 	}
+	view.FullScaleMV = typographic(list(levels))
 	s.drawings(view)
 	s.errors(view)
 	s.rivals(view)
@@ -145,7 +171,7 @@ func (s *Sheet) sentence() string {
 		parts = append(parts, t)
 	}
 	if positive(s.Span) {
-		parts = append(parts, digits(s.Span, 6)+" ns")
+		parts = append(parts, duration(s.Span))
 	}
 	return strings.Join(append(parts, "held against "+s.heldText()), ", ")
 }
@@ -167,33 +193,41 @@ func (s *Sheet) endsText() string {
 	return clean(s.ends())
 }
 
-func verdictSentence(v *replay.Verdict) string {
+// verdictSentence gives the answer, and with it how the design ended where that is not as asked.
+func (s *Sheet) verdictSentence() string {
+	answer := "It meets its requirements, and every limit of the instrument is kept"
 	switch {
-	case !v.Met():
-		return "It does not meet its requirements."
-	case len(v.Requirements) == 0:
-		return "Nothing was required of it; every limit of the instrument is kept."
+	case !s.Verdict.Met():
+		answer = "It does not meet its requirements"
+	case len(s.Verdict.Requirements) == 0:
+		answer = "Nothing was required of it; every limit of the instrument is kept"
 	}
-	return "It meets its requirements, and every limit of the instrument is kept."
+	if status := clean(s.Status); status != "" {
+		answer += " (" + status + ")"
+	}
+	return answer + "."
 }
 
 // reasons lists what keeps a verdict from being met.
-func reasons(v *replay.Verdict) []string {
+func (s *Sheet) reasons() []string {
 	var out []string
+	v := s.Verdict
 	for _, r := range v.Requirements {
 		if !r.Met {
-			found, allowed := requirementText(r)
+			found, allowed := s.requirementText(r)
 			out = append(out, fmt.Sprintf("%s: found %s, required %s", clean(r.Name), found, allowed))
 		}
 	}
 	for _, l := range v.Limits {
-		if !l.OK {
+		if !l.OK && l.Allowed == 0 {
+			out = append(out, fmt.Sprintf("%s, %s: %s where zero is asked", clean(l.Channel), clean(string(l.Reading.Limit)), withUnit(digits(l.Found, 5), clean(l.Unit))))
+		} else if !l.OK {
 			out = append(out, fmt.Sprintf("%s, %s: %s where %s is allowed", clean(l.Channel), clean(string(l.Reading.Limit)),
 				withUnit(digits(l.Found, 5), clean(l.Unit)), withUnit(digits(l.Allowed, 5), clean(l.Unit))))
 		}
 	}
 	if !v.Agreement.OK {
-		out = append(out, "replay does not agree with the record in the folder")
+		out = append(out, "replay does not agree with the record in the folder"+worst(v.Agreement.Worst))
 	}
 	if n := len(v.Inputs); n > 0 {
 		out = append(out, fmt.Sprintf("the model in the folder is not the one that its inputs give (%d of its numbers differ)", n))
@@ -204,8 +238,20 @@ func reasons(v *replay.Verdict) []string {
 	return out
 }
 
+// worst names the figure of which replay and the record differ most, and both numbers, to as many digits as tell them apart.
+func worst(d replay.Disagreement) string {
+	if d.Figure == "" {
+		return ""
+	}
+	found, recorded := digits(d.Found, 3), digits(d.Recorded, 3)
+	for n := 4; found == recorded && n <= 17; n++ {
+		found, recorded = digits(d.Found, n), digits(d.Recorded, n)
+	}
+	return fmt.Sprintf(": %s is %s by replay and %s in the record", clean(d.Figure), found, recorded)
+}
+
 // requirementText says what was found and what is allowed.
-func requirementText(r replay.Requirement) (found, allowed string) {
+func (s *Sheet) requirementText(r replay.Requirement) (found, allowed string) {
 	unit := clean(r.Unit)
 	if r.Margin {
 		found = withUnit("±"+digits(r.Found, 3), unit)
@@ -214,12 +260,24 @@ func requirementText(r replay.Requirement) (found, allowed string) {
 			found = "all that was tried"
 		case math.IsNaN(r.Found):
 			found = notComputed
+		case r.Found == 0 && s.brokenOf(r):
+			found = s.already()
 		case r.Found == 0:
 			found = "nothing"
 		}
 		return found, withUnit("at least ±"+digits(r.Allowed, 3), unit)
 	}
 	return withUnit(figure(r.Found), unit), withUnit("at most "+digits(r.Allowed, 3), unit)
+}
+
+// brokenOf reports whether the error of a required margin is one of which nothing is withstood because the infidelity is broken already.
+func (s *Sheet) brokenOf(r replay.Requirement) bool {
+	for _, e := range s.Verdict.Errors {
+		if strings.HasSuffix(r.Name, " "+e.Name) && e.Unit == r.Unit {
+			return broken(e)
+		}
+	}
+	return false
 }
 
 // plate returns the figures of the head block. A nominal infidelity never
@@ -241,10 +299,17 @@ func (s *Sheet) plate() []plate {
 		note += ", in the window"
 	}
 	add("infidelity", figure(v.Required().Infidelity), note)
+	withstands := func(e replay.Error) {
+		if broken(e) {
+			add("withstands", "nothing", "of "+clean(e.Name)+": "+s.already())
+			return
+		}
+		add("withstands", s.margin(e), clean(e.Name))
+	}
 	var held *replay.Error
 	for i, e := range v.Errors {
 		if e.Held {
-			add("withstands", margin(e), clean(e.Name))
+			withstands(e)
 			if held == nil || e.Susceptibility > held.Susceptibility {
 				held = &v.Errors[i]
 			}
@@ -252,7 +317,7 @@ func (s *Sheet) plate() []plate {
 	}
 	if held == nil { // a nominal figure alone would flatter
 		for _, e := range v.Errors[:min(2, len(v.Errors))] {
-			add("withstands", margin(e), clean(e.Name))
+			withstands(e)
 		}
 	} else {
 		add("susceptibility", figure(held.Susceptibility), "share of "+clean(held.Name)+" that survives; 1 = all")
@@ -286,8 +351,8 @@ func tightest(limits []replay.Limit) (replay.Limit, bool) {
 func agreement(v *replay.Verdict) []string {
 	a := v.Agreement
 	if !a.OK {
-		return []string{typographic(fmt.Sprintf("Replay does not agree with the record: infidelity differs by %s, susceptibility by %s, tail angle by %s rad. Do not play this pulse before that is explained.",
-			figure(a.Infidelity), figure(a.Susceptibility), figure(a.TailAngle)))}
+		return []string{typographic(fmt.Sprintf("Replay does not agree with the record%s. At most, infidelity differs by %s, susceptibility by %s, tail angle by %s rad. Do not play this pulse before that is explained.",
+			worst(a.Worst), figure(a.Infidelity), figure(a.Susceptibility), figure(a.TailAngle)))}
 	}
 	return []string{"Every figure here was computed by replay from the integer codes in the folder, by other means than the design's. It agrees with the record within 1e-9 in infidelity, 1e-5 in susceptibility and 1e-4 rad in tail angle."}
 }
@@ -297,10 +362,10 @@ func (s *Sheet) decoherenceSentence() string {
 	text := "Decoherence adds " + figure(v.Decoherence)
 	var of []string
 	if positive(s.T1) {
-		of = append(of, "T1 "+digits(s.T1/1e3, 4)+" µs")
+		of = append(of, "T1 "+duration(s.T1))
 	}
 	if positive(s.T2) {
-		of = append(of, "T2 "+digits(s.T2/1e3, 4)+" µs")
+		of = append(of, "T2 "+duration(s.T2))
 	}
 	if len(of) > 0 {
 		text += " (" + list(of) + ")"
@@ -329,7 +394,10 @@ func newLimitRow(l replay.Limit) limitRow {
 	case !finite(l.Headroom):
 		r.Headroom = "–"
 	case l.Allowed == 0:
-		r.Headroom = "kept"
+		r.Headroom, r.Allowed = "–", "zero"
+		if l.Found == 0 {
+			r.Found, r.Allowed = "kept at zero", "–"
+		}
 	default:
 		r.Bar = digits(100*math.Max(0, math.Min(1, 1-l.Headroom)), 3)
 	}
@@ -395,26 +463,49 @@ func (s *Sheet) provenance(view *view) {
 		}
 	}
 	text("instrument", s.Instrument)
-	text("channel", s.Channel)
-	if n := len(s.Samples); n > 0 {
+	if !s.several() {
+		text("channel", s.first().Name)
+	}
+	if n := len(s.first().Samples); n > 0 {
 		text("samples", fmt.Sprintf("%d", n))
 	}
 	number("sample period", s.SamplePeriod, "ns")
 	if s.Bits > 0 {
 		text("converter", fmt.Sprintf("%d bit", s.Bits))
 	}
-	number("full scale", s.FullScale, "MHz steady Rabi frequency")
-	number("level at full scale", s.FullScaleLevel, "V")
-	if positive(s.Band) {
-		text("band", "±"+digits(1e3*s.Band, 4)+" MHz about the carrier")
+	output := func(c *Channel) {
+		kind, about := "steady Rabi frequency", "about the carrier"
+		if c.Baseband {
+			kind, about = "steady turns of the device", "about zero"
+		}
+		number("full scale", c.FullScale, "MHz "+kind)
+		number("level at full scale", c.FullScaleLevel, "V")
+		if positive(c.Band) {
+			text("band", "±"+digits(1e3*c.Band, 4)+" MHz "+about)
+		}
+		if c.GuardLead > 0 || c.GuardTrail > 0 {
+			text("guard samples", fmt.Sprintf("%d before, %d after", c.GuardLead, c.GuardTrail))
+		}
+		if c.Reached != nil {
+			text("compression", "undone before the codes; arrivals and spectrum are behind it")
+		}
 	}
-	if s.GuardLead > 0 || s.GuardTrail > 0 {
-		text("guard samples", fmt.Sprintf("%d before, %d after", s.GuardLead, s.GuardTrail))
+	if !s.several() {
+		output(s.first())
 	}
 	number("window begins", s.WindowStart, "ns after sample 0")
 	text("judged", s.endsText())
 	add("Waveform", false, wave)
-	add("Line", false, s.LineFigures)
+	for i := range s.Channels {
+		c, of := &s.Channels[i], ""
+		if s.several() {
+			of = " of " + clean(c.Name)
+			wave = nil
+			output(c)
+			add("Output"+of, false, wave)
+		}
+		add("Line"+of, false, c.LineFigures)
+	}
 	add("Basis", false, s.Basis)
 	add("Search", false, s.Search)
 	add("Provenance", false, s.Provenance)

@@ -25,7 +25,7 @@ type Site struct {
 	Frequency float64 // of the transition, GHz, cyclic; 0 when not stated
 	T1, T2    float64 // ns; 0 when not stated; T2 <= 2 T1 where both are
 	Detuning  float64 // static, of the transition from the frame of the drive, rad/ns, positive above it: H0 = Detuning Z/2 when |0> is Upper, -Detuning Z/2 when it is Lower
-	// Anharmonicity of a ladder, rad/ns: by how much the 1-2 transition lies above the 0-1 one. Zero for two levels.
+	// Anharmonicity of a ladder, rad/ns: by how much the 1-2 transition lies above the 0-1 one; of no effect on two levels.
 	Anharmonicity float64
 }
 
@@ -131,14 +131,13 @@ func readSite(t *quantity.Table) Site {
 		T2:        t.Quantity("T2", quantity.Time, shortestLife, longestLife, 0),
 		Detuning:  2 * math.Pi * t.Quantity("detuning", quantity.Frequency, -largestDetuning, largestDetuning, 0),
 	}
-	switch {
-	case s.Levels > 2:
+	if s.Levels > 2 {
 		s.Anharmonicity = 2 * math.Pi * t.Quantity("anharmonicity", quantity.Frequency, -largestDetuning, largestDetuning)
 		if s.Zero == Upper {
 			t.Fail("zero", "found \"upper\"; allowed: \"lower\" for more than two levels, the ladder stands on |0>")
 		}
-	case t.Has("anharmonicity"):
-		t.Fail("anharmonicity", "found for two levels; allowed: with levels above 2")
+	} else { // of no effect, so that a file need not change with the levels
+		s.Anharmonicity = 2 * math.Pi * t.Quantity("anharmonicity", quantity.Frequency, -largestDetuning, largestDetuning, 0)
 	}
 	if s.T1 > 0 && s.T2 > 2*s.T1 {
 		t.Fail("T2", "found %s; allowed: at most twice T1, %s", quantity.Format(s.T2, quantity.Time), quantity.Format(2*s.T1, quantity.Time))

@@ -135,7 +135,7 @@ func TestRefuses(t *testing.T) {
 		{`name = "Skerry"`, `name = 7`, `d.toml:2: name: found 7; allowed: a text in quotes`},
 		{"levels = 2", "levels = 3", `d.toml:4: site[0].anharmonicity: found nothing; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz`},
 		{"levels = 2", "levels = 3\nanharmonicity = \"-220 MHz\"", `d.toml:8: site[0].zero: found "upper"; allowed: "lower" for more than two levels, the ladder stands on |0>`},
-		{"levels = 2", "levels = 2\nanharmonicity = \"-220 MHz\"", `d.toml:7: site[0].anharmonicity: found for two levels; allowed: with levels above 2`},
+		{"levels = 2", "levels = 2\nanharmonicity = \"-220\"", `d.toml:7: site[0].anharmonicity: found "-220"; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz (the unit is missing)`},
 		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 8"},
 		{"levels = 2", "level = 2", "d.toml:6: site[0].level: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, anharmonicity (did you mean levels?)"},
 		{`zero = "upper"`, `zero = "ground"`, `d.toml:7: site[0].zero: found "ground"; allowed: "lower" or "upper"`},

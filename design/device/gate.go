@@ -101,7 +101,9 @@ func AxisAngle(m Matrix) (axis [3]float64, angle, defect float64, ok bool) {
 		return [3]float64{0, 0, 1}, 0, defect, true
 	}
 	for i := range axis {
-		axis[i] = sign * q[i+1] / sine
+		if axis[i] = sign * q[i+1] / sine; math.Abs(axis[i]) <= tiny {
+			axis[i] = 0 // and not -0
+		}
 	}
 	return axis, 2 * math.Atan2(sine, math.Abs(q[0])), defect, true
 }

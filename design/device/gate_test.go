@@ -123,6 +123,12 @@ func TestAxisAngle(t *testing.T) {
 			if !ok || !(math.Abs(angle-math.Pi) <= 1e-15) || !(math.Abs(axis[i]-1) <= 1e-15) {
 				t.Errorf("%s: %v about %v", name, angle, axis)
 			}
+			quarter, _, _, _ := AxisAngle(Rotation(axis, math.Pi/2).Scale(phase))
+			for _, v := range append(axis[:], quarter[:]...) {
+				if v == 0 && math.Signbit(v) {
+					t.Errorf("%s: an axis with -0, %v or %v", name, axis, quarter)
+				}
+			}
 		}
 	}
 	// Typed with eight digits it is the gate; with four it is refused.

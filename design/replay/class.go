@@ -17,8 +17,41 @@ const (
 	perPercent = 0.01
 	perDegree  = math.Pi / 180 // rad
 
-	searchEnd = 50.0 // MHz, % or deg: how far margins are searched
+	searchEnd   = 50.0 // MHz, % or deg: how far margins are searched
+	searchScale = 2    // of the largest full scale: how far margins of static errors are searched, where that is less
 )
+
+// fastest gives the largest full scale of the channels, MHz.
+func (m *Model) fastest() float64 {
+	most := 0.0
+	for i := range m.Channels {
+		most = math.Max(most, m.Channels[i].FullScale/perMHz)
+	}
+	return most
+}
+
+// farthest gives how far margins of static errors are searched, MHz: no pulse withstands an error of twice the fastest drive, and to integrate long
+// pulses under faster errors would cost minutes. A margin that is required is searched for wherever it is within searchEnd.
+func (m *Model) farthest(required []Margin) float64 {
+	end := math.Inf(1)
+	if most := m.fastest(); most > 0 {
+		end = searchScale * most
+	}
+	for _, r := range required {
+		if !r.Share && !r.Angle {
+			end = math.Max(end, r.Size/perMHz)
+		}
+	}
+	return math.Min(searchEnd, end)
+}
+
+// end gives how far margins of errors with this unit are searched, in it.
+func (e *engine) end(unit float64) float64 {
+	if unit == perMHz {
+		return e.farthest
+	}
+	return searchEnd
+}
 
 // unitOf gives the unit of an error's sizes, and the lambda of one of it.
 func unitOf(kind string) (name string, lambda float64) {
@@ -219,7 +252,7 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 			r.Low, r.High = s.one.low, s.one.high
 		} else {
 			e.rms(&r, s.all, names)
-			end := searchEnd
+			end := e.farthest
 			for _, o := range s.all {
 				end = math.Min(end, math.Min(-o.low, o.high))
 			}
@@ -231,7 +264,7 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 				for _, o := range s.sides {
 					r.High = math.Min(r.High, math.Min(-o.low, o.high))
 				}
-				if r.High >= searchEnd {
+				if r.High >= e.farthest {
 					r.High = math.Inf(1)
 				}
 			}
@@ -240,7 +273,8 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 		if r.Low == 0 {
 			r.Low = 0 // not -0
 		}
-		values := e.curveValues(&r, like)
+		_, unit := unitOf(r.Kind)
+		values := curveValues(&r, e.end(unit), like)
 		if r.Curve, err = e.curve(ctx, &s, values); err != nil {
 			return nil, err
 		}
@@ -569,7 +603,7 @@ func (c *crossing) learn(f float64) {
 	}
 }
 
-// search finds the margins of all probes up to end, in their units, all of them one step at a time.
+// search finds the margins of all probes, all of them one step at a time, each as far as its unit goes and no farther than end.
 func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold, end float64) error {
 	if !(nominal <= threshold) {
 		for _, o := range list {
@@ -579,7 +613,7 @@ func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold,
 	}
 	sides := make([]crossing, 0, 2*len(list))
 	for _, o := range list {
-		grid := o.searchGrid(end)
+		grid := o.searchGrid(math.Min(end, e.end(o.unit)))
 		for _, sign := range []float64{-1, 1} {
 			c := crossing{o: o, sign: sign, threshold: threshold, grid: grid, ask: grid[0]}
 			c.flo = c.level(nominal)
@@ -612,8 +646,8 @@ func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold,
 }
 
 // curveValues chooses where the curve of an error is drawn: 61 values both ways, or 21 sizes for a class without a sign,
-// to the round number that lies half as far again as the margin.
-func (e *engine) curveValues(r *Error, like []Error) []float64 {
+// to the round number that lies half as far again as the margin, and no farther than margins are searched.
+func curveValues(r *Error, farthest float64, like []Error) []float64 {
 	for _, o := range like {
 		if o.Name == r.Name {
 			values := make([]float64, len(o.Curve))
@@ -624,13 +658,15 @@ func (e *engine) curveValues(r *Error, like []Error) []float64 {
 		}
 	}
 	widest := math.Max(-r.Low, r.High)
-	end := searchEnd
+	end := farthest
 	if widest == 0 {
-		end = 5 // nothing is withstood: show the surroundings
+		end = farthest / 10 // nothing is withstood: show the surroundings
 	} else {
-		for _, round := range []float64{20, 10, 5, 2, 1, 0.5, 0.2, 0.1} {
-			if round >= 1.5*widest {
-				end = round
+		for _, power := range []float64{1e1, 1, 1e-1, 1e-2, 1e-3, 1e-4, 1e-5, 1e-6} {
+			for _, digit := range []float64{5, 2, 1} {
+				if round := digit * power; round >= 1.5*widest && round < end {
+					end = round
+				}
 			}
 		}
 	}

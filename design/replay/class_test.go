@@ -183,6 +183,62 @@ func TestMargins(t *testing.T) {
 	}
 }
 
+// A drive a thousand times slower with samples a thousand times longer is the same gate, so its margins are a thousandth of the others'; and neither they nor
+// the tables reach far beyond what such a drive can feel.
+func TestSlowDrive(t *testing.T) {
+	const threshold, slower = 1e-4, 1000
+	fast := composite(plain)
+	fast.Errors = []Class{{Name: "any", Kind: "any"}}
+	m := composite(plain)
+	m.Errors = fast.Errors
+	m.SamplePeriod *= slower
+	m.Channels[0].FullScale /= slower
+	full := m.Channels[0].FullScale / perMHz
+	want, got := judged(t, fast, threshold), judged(t, m, threshold)
+	for name, w := range want {
+		g, scale := got[name], 1.0
+		if w.Unit == "MHz" {
+			scale = slower
+		}
+		if !(math.Abs(g.High*scale/w.High-1) <= 1e-6) || !(math.Abs(g.Low*scale/w.Low-1) <= 1e-6) || !(math.Abs(g.Susceptibility-w.Susceptibility) <= 1e-9) {
+			t.Errorf("%s: margins %g and %g, want those of %g and %g over %g", name, g.Low, g.High, w.Low, w.High, scale)
+		}
+		if last := g.Curve[len(g.Curve)-1].Value; w.Unit == "MHz" && !(last >= 1.5*g.High && last <= 5*g.High) {
+			t.Errorf("%s: withstands %g MHz, and the curve ends at %g", name, g.High, last)
+		}
+	}
+	for name, e := range judged(t, m, 1) { // nothing is required, so the whole range is searched and drawn
+		end := searchEnd
+		if e.Unit == "MHz" {
+			end = searchScale * full
+		}
+		if last := e.Curve[len(e.Curve)-1].Value; !math.IsInf(e.High, 1) || !(math.Abs(last/end-1) <= 1e-12) {
+			t.Errorf("%s: margin %g, the curve ends at %g, want %g", name, e.High, last, end)
+		}
+	}
+	// A margin that is required is looked for wherever it lies.
+	for _, c := range []struct{ required, end float64 }{{full, 2 * full}, {7 * full, 7 * full}, {80, searchEnd}} {
+		list := []Margin{{Error: "X", Size: c.required * perMHz}, {Error: "amplitude", Size: 0.4, Share: true}, {Error: "skew", Size: 0.3, Angle: true}}
+		if end := m.farthest(list); !(math.Abs(end/c.end-1) <= 1e-12) {
+			t.Errorf("with %g MHz required margins are searched up to %g, want %g", c.required, end, c.end)
+		}
+	}
+	m.Target = rotation(1, 0)
+	e := judged(t, m, threshold)["X"]
+	if last := e.Curve[len(e.Curve)-1].Value; e.High != 0 || !(math.Abs(last/(0.2*full)-1) <= 1e-12) {
+		t.Errorf("a wrong gate: margin %g, the curve ends at %g, want %g", e.High, last, 0.2*full)
+	}
+	b, err := newTestEngine(t, m).bringUp(context.Background())
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i, p := range b.Detuning {
+		if want := full / 2 * float64(i-20) / 20; !(math.Abs(p.Value-want) <= 1e-12*full) {
+			t.Errorf("detuning %d of the table is %g MHz, want %g", i, p.Value, want)
+		}
+	}
+}
+
 // The first of several crossings: near a full turn the infidelity of a pulse returns to nothing.
 func TestFirstCrossing(t *testing.T) {
 	x := make([]complex128, 200) // 200 ns of nothing, the target being nothing: X of 5 MHz turns once

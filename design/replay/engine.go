@@ -56,6 +56,7 @@ type drive struct {
 type engine struct {
 	m          *Model
 	dim        int
+	farthest   float64 // MHz: how far margins of static errors are searched
 	start      float64 // of the window, ns
 	span       float64 // ns
 	drives     []drive
@@ -131,7 +132,7 @@ func (e *engine) takeDrives() {
 // newEngine walks the pulse once and integrates what surrounds the window.
 func newEngine(ctx context.Context, m *Model) (*engine, error) {
 	n := m.Dim
-	e := &engine{m: m, dim: n, start: m.WindowStart, span: m.Span()}
+	e := &engine{m: m, dim: n, farthest: m.farthest(nil), start: m.WindowStart, span: m.Span()}
 	e.static = append([]complex128(nil), m.Static...)
 	dropTrace(e.static, n)
 	e.staticNorm, e.elements = operatorNorm(e.static, n), sparsely(e.static, n)

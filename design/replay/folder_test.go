@@ -93,16 +93,18 @@ func TestDisagreement(t *testing.T) {
 		return got
 	}
 	for name, change := range map[string]func(v *Verdict){
-		"infidelity":     func(v *Verdict) { v.Settled.Infidelity += 2e-9 },
-		"other ends":     func(v *Verdict) { v.Window.Infidelity += 2e-9 },
-		"tail angle":     func(v *Verdict) { v.TailAngle += 2e-4 },
-		"susceptibility": func(v *Verdict) { v.Errors[1].Susceptibility += 2e-5 },
+		"infidelity, settled":                   func(v *Verdict) { v.Settled.Infidelity += 2e-9 },
+		"infidelity, in the window":             func(v *Verdict) { v.Window.Infidelity += 2e-9; v.Settled.Infidelity += 1e-9 },
+		"tail angle in rad":                     func(v *Verdict) { v.TailAngle += 2e-4 },
+		"susceptibility to " + v.Errors[1].Name: func(v *Verdict) { v.Errors[1].Susceptibility += 2e-5 },
 	} {
 		wrong := *v
 		wrong.Errors = append([]Error(nil), v.Errors...)
 		change(&wrong)
 		if got := reopened(m, &wrong); got.Agreement.OK || got.Met() {
 			t.Errorf("%s: a wrong claim passes: %+v", name, got.Agreement)
+		} else if w := got.Agreement.Worst; w.Figure != name || !(math.Abs(math.Abs(w.Found-w.Recorded)/w.Allowed-2) <= 0.01) {
+			t.Errorf("%s: the worst disagreement is %+v", name, w)
 		}
 	}
 	for key, change := range map[string]func(m *Model){
@@ -210,7 +212,7 @@ func TestMalformedFolders(t *testing.T) {
 		{"codes of another type", codes(func(d []byte) []byte { return bytes.Replace(d, []byte("<i2"), []byte("<i4"), 1) }, true), `channel-0\.npy: NPY type`},
 		{"a code that does not exist", codes(func(d []byte) []byte { d[len(d)-1] = 0x7f; return d }, true), `channel-0\.npy: sample 31 has code 32512`},
 		{"no codes", func(t *testing.T, dir string) { os.Remove(filepath.Join(dir, "channel-0.npy")) }, `channel-0\.npy: no such file`},
-		{"no record", func(t *testing.T, dir string) { os.Remove(filepath.Join(dir, "pulse.toml")) }, `pulse\.toml: found no such file`},
+		{"no record", func(t *testing.T, dir string) { os.Remove(filepath.Join(dir, "pulse.toml")) }, `: found a folder without pulse\.toml; allowed: a pulse folder`},
 		{"no inputs", func(t *testing.T, dir string) { os.RemoveAll(filepath.Join(dir, "inputs")) }, `inputs.*: no such file`},
 		{"wrong hash", record(`^sha256 = "....`, `sha256 = "0000`), `changed since the pulse was written`},
 		{"no hashes", record(`(?s)\[\[file\]\].*`, ``), `pulse\.toml: file: found nothing`},
@@ -246,8 +248,8 @@ func TestMalformedFolders(t *testing.T) {
 		{"a key twice", record(`^bits = 14`, "bits = 14\nbits = 12"), `pulse\.toml:\d+: .*bits`},
 		{"no name", record(`^name = "test pulse"\n`, ""), `pulse\.toml:\d+: pulse\.name: found nothing`},
 		{"nothing at all", func(t *testing.T, dir string) { os.WriteFile(filepath.Join(dir, "pulse.toml"), nil, 0o666) }, `pulse\.toml: pulse: found nothing`},
-		{"no folder", func(t *testing.T, dir string) { os.RemoveAll(dir) }, `pulse: no such file or directory`},
-		{"a file", func(t *testing.T, dir string) { os.RemoveAll(dir); os.WriteFile(dir, []byte("x"), 0o666) }, `pulse: not a folder`},
+		{"no folder", func(t *testing.T, dir string) { os.RemoveAll(dir) }, `pulse: found no such folder; allowed: a pulse folder, which 'holdfast design BRIEF' makes`},
+		{"a file", func(t *testing.T, dir string) { os.RemoveAll(dir); os.WriteFile(dir, []byte("x"), 0o666) }, `pulse: found a file; allowed: a pulse folder`},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			dir := filepath.Join(t.TempDir(), "pulse")

@@ -348,7 +348,7 @@ func (c *comparison) wantedOf(e brief.Error, p *hardware.Profile, d *device.Devi
 	w := wanted{Class: Class{Name: e.Name, Kind: e.Kind, Held: true, Channels: e.Channels, Quadrature: e.Quadrature}}
 	switch e.Kind {
 	case brief.Static:
-		w.Operator = e.Operator.Data
+		w.Operator = d.Lift(e.Operator).Data
 	case brief.Line:
 		if k, ok := p.Channel(e.Channels[0]); ok {
 			if q, ok := p.Channels[k].Parameter(e.Parameter); ok {

@@ -23,7 +23,8 @@ const verdictFormat = 1
 //	errors          [{ name, kind, held, unit ("MHz", "%" or "deg"), susceptibility, low, high, curve [{ value, infidelity }],
 //	                and of kind "any" worst_direction, worst_susceptibility, direction }]
 //	bring_up        populations of |1>: { amplitude [{ scale, one }], detuning [{ mhz, one }], repeats [{ pulses, one }] }
-//	agreement       with the record's claim, largest differences: { infidelity, susceptibility, tail_angle_rad, ok }
+//	agreement       with the record's claim, largest differences: { infidelity, susceptibility, tail_angle_rad, ok,
+//	                worst { figure, found, recorded, allowed } }: the figure that differs most for what is allowed, "" when nothing is claimed
 //	inputs          what inputs/ do not bear out: [{ key, recorded, rebuilt }]
 //	requirements    [{ name, unit, found, allowed, margin, met }]; found must be at most allowed, for a margin at least
 //	warnings        sentences
@@ -35,8 +36,9 @@ func (v *Verdict) MarshalJSON() ([]byte, error) {
 		Pair:        pairJSON{figure(v.Pair.Infidelity), figure(v.Pair.Phase)},
 		Decoherence: figure(v.Decoherence),
 		Limits:      []limitJSON{}, Errors: []errorJSON{}, Inputs: []differenceJSON{}, Requirements: []requirementJSON{}, Warnings: []string{},
-		BringUp:   bringUpJSON{[]scaleJSON{}, []detuningJSON{}, []repeatJSON{}},
-		Agreement: agreementJSON{figure(v.Agreement.Infidelity), figure(v.Agreement.Susceptibility), figure(v.Agreement.TailAngle), v.Agreement.OK},
+		BringUp: bringUpJSON{[]scaleJSON{}, []detuningJSON{}, []repeatJSON{}},
+		Agreement: agreementJSON{figure(v.Agreement.Infidelity), figure(v.Agreement.Susceptibility), figure(v.Agreement.TailAngle), v.Agreement.OK,
+			disagreementJSON{v.Agreement.Worst.Figure, figure(v.Agreement.Worst.Found), figure(v.Agreement.Worst.Recorded), figure(v.Agreement.Worst.Allowed)}},
 	}
 	for _, l := range v.Limits {
 		j.Limits = append(j.Limits, limitJSON{l.Channel, string(l.Limit), l.Unit, figure(l.Found), figure(l.Allowed), figure(l.Headroom), l.OK})
@@ -171,6 +173,15 @@ type agreementJSON struct {
 	Susceptibility figure `json:"susceptibility"`
 	TailAngle      figure `json:"tail_angle_rad"`
 	OK             bool   `json:"ok"`
+
+	Worst disagreementJSON `json:"worst"`
+}
+
+type disagreementJSON struct {
+	Figure   string `json:"figure"`
+	Found    figure `json:"found"`
+	Recorded figure `json:"recorded"`
+	Allowed  figure `json:"allowed"`
 }
 
 type differenceJSON struct {

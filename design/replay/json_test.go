@@ -56,6 +56,7 @@ func TestVerdictJSON(t *testing.T) {
 	}
 	want := strings.Fields(`
 		agreement.infidelity agreement.ok agreement.susceptibility agreement.tail_angle_rad
+		agreement.worst.allowed agreement.worst.figure agreement.worst.found agreement.worst.recorded
 		bring_up.amplitude[].one bring_up.amplitude[].scale bring_up.detuning[].mhz bring_up.detuning[].one bring_up.repeats[].one bring_up.repeats[].pulses
 		decoherence ends
 		errors[].curve[].infidelity errors[].curve[].value errors[].direction[] errors[].held errors[].high errors[].kind errors[].low errors[].name

@@ -60,7 +60,7 @@ func (m *Model) Curves(ctx context.Context, infidelity float64, like []Error) ([
 // Judge recomputes everything that the verdict tells. The only errors are those of the context and of lines that cannot be integrated; what
 // is wrong with the pulse stands in the verdict.
 func Judge(ctx context.Context, f *Folder) (*Verdict, error) {
-	v, err := f.Model.judge(ctx, f.Require.Infidelity)
+	v, err := f.Model.judge(ctx, f.Require.Infidelity, f.Require.Margins)
 	if err != nil {
 		return nil, err
 	}
@@ -77,14 +77,15 @@ func Judge(ctx context.Context, f *Folder) (*Verdict, error) {
 // Judge recomputes what can be told of a model alone: no agreement, inputs, requirements or decoherence. Margins are
 // against the given infidelity.
 func (m *Model) Judge(ctx context.Context, infidelity float64) (*Verdict, error) {
-	return m.judge(ctx, infidelity)
+	return m.judge(ctx, infidelity, nil)
 }
 
-func (m *Model) judge(ctx context.Context, infidelity float64) (*Verdict, error) {
+func (m *Model) judge(ctx context.Context, infidelity float64, required []Margin) (*Verdict, error) {
 	e, err := newEngine(ctx, m)
 	if err != nil {
 		return nil, err
 	}
+	e.farthest = m.farthest(required)
 	v := &Verdict{Ends: m.Ends}
 	if v.Settled, v.Window, v.TailAngle, err = e.both(ctx); err != nil {
 		return nil, err
@@ -145,23 +146,33 @@ func Decoherence(span, t1, t2 float64) float64 {
 // agree compares the verdict with the record's claim.
 func (v *Verdict) agree(f *Folder) {
 	a := &v.Agreement
-	apart := func(worst *float64, found, claimed float64) {
-		if !math.IsNaN(claimed) {
-			*worst = math.Max(*worst, math.Abs(found-claimed))
+	most := math.Inf(-1)
+	apart := func(worst *float64, figure string, found, claimed, allowed float64) {
+		if math.IsNaN(claimed) {
+			return
+		}
+		off := math.Abs(found - claimed)
+		*worst = math.Max(*worst, off)
+		if math.IsNaN(off) { // nothing is worse
+			off = math.Inf(1)
+		}
+		if off/allowed > most {
+			most = off / allowed
+			a.Worst = Disagreement{figure, found, claimed, allowed}
 		}
 	}
-	stated, other := v.Settled, v.Window
+	stated, other, ends := v.Settled, v.Window, [2]string{"settled", "in the window"}
 	if v.Ends == "window" {
-		stated, other = other, stated
+		stated, other, ends = other, stated, [2]string{ends[1], ends[0]}
 	}
-	apart(&a.Infidelity, stated.Infidelity, f.Claim.Infidelity)
-	apart(&a.Infidelity, other.Infidelity, f.Claim.InfidelityOtherEnds)
-	apart(&a.Infidelity, stated.Leakage, f.Claim.Leakage)
-	apart(&a.TailAngle, v.TailAngle, f.Claim.TailAngle)
+	apart(&a.Infidelity, "infidelity, "+ends[0], stated.Infidelity, f.Claim.Infidelity, infidelityAgreement)
+	apart(&a.Infidelity, "infidelity, "+ends[1], other.Infidelity, f.Claim.InfidelityOtherEnds, infidelityAgreement)
+	apart(&a.Infidelity, "leakage, "+ends[0], stated.Leakage, f.Claim.Leakage, infidelityAgreement)
+	apart(&a.TailAngle, "tail angle in rad", v.TailAngle, f.Claim.TailAngle, tailAgreement)
 	for _, c := range f.Model.Errors {
 		for _, e := range v.Errors {
 			if c.claimed && e.Name == c.Name {
-				apart(&a.Susceptibility, e.Susceptibility, c.Susceptibility)
+				apart(&a.Susceptibility, "susceptibility to "+e.Name, e.Susceptibility, c.Susceptibility, susceptibilityAgreement)
 			}
 		}
 	}

@@ -7,7 +7,11 @@ import (
 	"math/cmplx"
 )
 
-const repeats = 32 // of the bring-up table
+const (
+	repeats        = 32  // of the bring-up table
+	benchDetuning  = 5.0 // MHz: how far that of detuning goes,
+	benchFullScale = 2   // or this part of the largest full scale, where it is less
+)
 
 // A follow says how pulses follow one another without a gap.
 type follow struct {
@@ -172,9 +176,14 @@ func (e *engine) bringUp(ctx context.Context) (BringUp, error) {
 			continue
 		}
 		p := newStatic(c.Operator, e.dim)
+		end := benchDetuning
+		if slow := e.m.fastest() / benchFullScale; slow > 0 {
+			end = math.Min(end, slow)
+		}
 		for i := -20; i <= 20; i++ {
-			b.Detuning = append(b.Detuning, Population{Value: float64(i) / 4})
-			gates = append(gates, gate{p, float64(i) / 4 * perMHz})
+			f := end * float64(i) / 20
+			b.Detuning = append(b.Detuning, Population{Value: f})
+			gates = append(gates, gate{p, f * perMHz})
 		}
 	}
 	found := make([]float64, len(gates))

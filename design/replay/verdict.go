@@ -94,7 +94,8 @@ type Error struct {
 	// Low and High are the error sizes, negative and positive, at which the
 	// required infidelity is first broken, found by root search; -Inf and +Inf
 	// when it holds to the end of the searched range, 0 when it is broken
-	// without any error. For "any" the margin is over the direction found worst
+	// without any error. The range is 50 MHz, 50 % or 50 degrees; of static errors
+	// no more than twice the largest full scale, or a margin that is required. For "any" the margin is over the direction found worst
 	// of a fixed set (for a spin the axes, both ways, and the eight directions
 	// between them) and Low = -High; a size f means f times a rotation of one turn
 	// a microsecond for 1 MHz about that direction.
@@ -122,7 +123,7 @@ type Point struct {
 // the required ends, so that a bench can see that the right pulse plays.
 type BringUp struct {
 	Amplitude []Population // Value: amplitude scale, 0.9 to 1.1
-	Detuning  []Population // Value: detuning in MHz, -5 to 5
+	Detuning  []Population // Value: detuning in MHz, -5 to 5, or half of the largest full scale either way where that is less
 	Repeats   []Population // Value: number of pulses back to back, 1 to 32
 }
 
@@ -139,6 +140,15 @@ type Agreement struct {
 	Susceptibility float64 // largest absolute difference over the errors
 	TailAngle      float64 // rad
 	OK             bool    // within 1e-9, 1e-5 and 1e-4 rad
+
+	Worst Disagreement // the figure that differs most for what is allowed; without a name when the record claims nothing
+}
+
+// Disagreement is one figure as the verdict and the record have it.
+type Disagreement struct {
+	Figure          string // such as "infidelity, settled" or "susceptibility to detuning"
+	Found, Recorded float64
+	Allowed         float64 // how far they may be apart
 }
 
 // Difference is one number of [model] that inputs/ do not bear out.

@@ -190,6 +190,24 @@ func (d *Document) Root() *Table {
 // complained of by Table.Fail, which may follow from the former; the first key that nobody asked for. Where a key is missing, or
 // the loader complains, in a table that also holds a key misspelt, the misspelt key is the complaint.
 func (d *Document) Err() error {
+	if err := d.Mistake(); err != nil {
+		return err
+	}
+	for _, n := range d.index.keys {
+		if stray := n.stray(); stray != nil {
+			meant := ""
+			if m, key := misspelt(stray.parent); m == stray {
+				meant = key
+			}
+			return d.unknown(stray, meant)
+		}
+	}
+	return nil
+}
+
+// Mistake is Err for what has been met so far, without a complaint about keys that nobody has asked for yet: for a loader of which
+// the next part depends on what it has read.
+func (d *Document) Mistake() error {
 	var first *mistake
 	for i := range d.mistakes {
 		m := &d.mistakes[i]
@@ -204,15 +222,6 @@ func (d *Document) Err() error {
 			}
 		}
 		return first.err
-	}
-	for _, n := range d.index.keys {
-		if stray := n.stray(); stray != nil {
-			meant := ""
-			if m, key := misspelt(stray.parent); m == stray {
-				meant = key
-			}
-			return d.unknown(stray, meant)
-		}
 	}
 	return nil
 }
