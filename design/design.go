@@ -134,7 +134,9 @@ func newTask(in Inputs, family string) (*problem, error) {
 		family:  family, count: b.Basis.Coefficients, degree: b.Basis.Degree,
 		settled: b.Ends == brief.Settled,
 		target:  dynamics.Vec{b.Target.Axis[0] * b.Target.Angle, b.Target.Axis[1] * b.Target.Angle, b.Target.Axis[2] * b.Target.Angle},
-		turns:   turns(b),
+	}
+	if w.turns, err = turns(in, d); err != nil {
+		return nil, err
 	}
 	if in.Device.Dim() == 2 {
 		w.spin.Static = scale(pauli(in.Device.Static()), 2)
@@ -181,19 +183,44 @@ func newTask(in Inputs, family string) (*problem, error) {
 	return q, nil
 }
 
-// turns are the angles that the samples are emitted at: none, and those that the
-// brief asks for.
-func turns(b *brief.Brief) []complex128 {
+// turns are the phases by which the samples are turned for the angles that they
+// are emitted at: none, and those that the brief asks for.
+func turns(in Inputs, d []driven) ([]complex128, error) {
 	list := []complex128{1}
-	if b.PhaseBy != brief.BySamples {
-		return list
+	if in.Brief.PhaseBy != brief.BySamples {
+		return list, nil
 	}
-	for _, phase := range b.Phases {
-		if z := cmplx.Rect(1, phase); cmplx.Abs(z-1) > 1e-12 {
+	for i, x := range d {
+		// what does not turn with the samples must not mind: a bias along Z alone
+		if v := pauli(x.operators[0]); len(x.operators) == 1 && v[0]*v[0]+v[1]*v[1] > 0 {
+			return nil, fmt.Errorf("phase_by: found \"samples\" beside a bias along %s by channel %q, which does not turn with them; allowed: with biases along Z, or phase_by = \"instrument\"",
+				axisName(v), in.Profile.Channels[d[i].channel].Name)
+		}
+	}
+	for _, phase := range in.Brief.Phases {
+		if z := cmplx.Rect(1, sense(d)*phase); cmplx.Abs(z-1) > 1e-12 {
 			list = append(list, z)
 		}
 	}
-	return list
+	return list, nil
+}
+
+func axisName(v dynamics.Vec) string {
+	if v[1] != 0 {
+		return "Y"
+	}
+	return "X"
+}
+
+// sense is the way in which a phase of the samples turns the gate's axis about Z: 1
+// where Q turns about +Y, -1 where it turns about -Y.
+func sense(d []driven) float64 {
+	for _, x := range d {
+		if len(x.operators) == 2 && pauli(x.operators[1])[1] < 0 {
+			return -1
+		}
+	}
+	return 1
 }
 
 // A driven channel of the target's site, and what its controls do there.

@@ -74,6 +74,20 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	if math.IsInf(out.miss, 0) {
 		record.Search.Miss = 1e300 // nothing was evaluated
 	}
+	for i, l := range q.lanes {
+		ch := &in.Profile.Channels[l.channel]
+		if n := in.Profile.Shift(l.channel); n > 0 {
+			record.Pulse.Delays = append(record.Pulse.Delays, DelayFacts{Channel: ch.Name, Samples: n})
+		}
+		if i > 0 {
+			n := l.basis.Count
+			more := MoreBasis{Channel: ch.Name, Family: l.basis.Family, I: out.c[l.first : l.first+n]}
+			if l.quadratures == 2 {
+				more.Q = out.c[l.first+n : l.first+2*n]
+			}
+			record.Basis.More = append(record.Basis.More, more)
+		}
+	}
 	for _, e := range b.Errors {
 		record.Pulse.Held = append(record.Pulse.Held, e.Name)
 	}
@@ -107,14 +121,14 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	}
 	p.Record = record
 	if b.PhaseBy == brief.BySamples {
-		return p, q.turn(p, in, exact)
+		return p, q.turn(p, in, d, exact)
 	}
 	return p, nil
 }
 
 // turn adds the waveforms of the gate at the angles that the brief asks for. The
 // search kept the limits of every one of them.
-func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
+func (q *problem) turn(p *Pulse, in Inputs, d []driven, exact [][]complex128) error {
 	for _, angle := range in.Brief.Phases {
 		t := Turned{Angle: angle}
 		facts := PhaseFacts{Angle: angle * 180 / math.Pi, Kept: true}
@@ -125,7 +139,7 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 			if l.quadratures == 2 {
 				x = make([]complex128, len(exact[i]))
 				for k, v := range exact[i] {
-					x[k] = v * cmplx.Rect(1, angle)
+					x[k] = v * cmplx.Rect(1, sense(d)*angle)
 				}
 			}
 			codes, err := in.Profile.Codes(l.channel, x)
@@ -144,24 +158,31 @@ func (q *problem) turn(p *Pulse, in Inputs, exact [][]complex128) error {
 			rounded = append(rounded, y)
 			t.Channels = append(t.Channels, Waveform{Channel: l.channel, Exact: played(ch, x), Codes: codes})
 		}
-		// the axis of the target turns by the angle, with the sense in which Q drives
-		sense := 1.0
-		if q.spin.Axes[q.lanes[0].control+1][1] < 0 {
-			sense = -1
-		}
-		z := dynamics.Turn(dynamics.Vec{0, 0, sense * angle})
 		a, err := q.axis(claimShare, q.settled)
 		if err != nil {
 			return err
 		}
-		s := q.spin
-		s.Grid, s.Held, s.Target = a.Grid, nil, z.Mul(q.spin.Target).Mul(z.Conj())
 		u, _ := q.controls(&a, rounded)
-		facts.Infidelity = robust.NewGate(s, robust.Response{}, 0).Figures(u, nil).Infidelity
+		facts.Infidelity = q.turned(angle).evaluator(a.Grid, robust.Response{}, nil, 0).Figures(u, nil).Infidelity
 		p.Turned = append(p.Turned, t)
 		p.Record.Pulse.Phases = append(p.Record.Pulse.Phases, facts)
 	}
 	return nil
+}
+
+// turned is the problem of the same gate with its axis turned about Z.
+func (q *problem) turned(angle float64) *problem {
+	o := *q
+	z := dynamics.Turn(dynamics.Vec{0, 0, angle})
+	o.spin.Target = z.Mul(q.spin.Target).Mul(z.Conj())
+	if q.levels != nil { // D T D', D = exp(-i angle Z/2)
+		l := *q.levels
+		l.Target = append([]complex128(nil), l.Target...)
+		l.Target[1] *= cmplx.Rect(1, -angle)
+		l.Target[2] *= cmplx.Rect(1, angle)
+		o.levels = &l
+	}
+	return &o
 }
 
 // named finds an error of the brief by its name, or makes one of those that are

@@ -39,6 +39,14 @@ type PulseFacts struct {
 	HeldByDefault bool         `toml:"held_by_default"`
 	Status        string       `toml:"status"` // a Status in words
 	Phases        []PhaseFacts `toml:"phase,omitempty"`
+	Delays        []DelayFacts `toml:"delay,omitempty"`
+}
+
+// DelayFacts say that a channel's first sample has to leave some sample periods
+// after the trigger, so that channels of unlike delay arrive together.
+type DelayFacts struct {
+	Channel string `toml:"channel"`
+	Samples int    `toml:"samples"`
 }
 
 // PhaseFacts are the same gate emitted turned by an angle about Z: its axis is
@@ -57,6 +65,16 @@ type BasisFacts struct {
 	Band    string    `toml:"band,omitempty"`
 	I       []float64 `toml:"i"`
 	Q       []float64 `toml:"q"`
+	// More are those of the channels after the first.
+	More []MoreBasis `toml:"channel,omitempty"`
+}
+
+// MoreBasis are the coefficients of one more channel; a baseband one has no Q.
+type MoreBasis struct {
+	Channel string    `toml:"name"`
+	Family  string    `toml:"family"`
+	I       []float64 `toml:"i"`
+	Q       []float64 `toml:"q,omitempty"`
 }
 
 // SearchFacts tell how the coefficients were found.
@@ -212,6 +230,17 @@ func finite(v float64) *float64 {
 const recordHead = `# The record of one pulse, written by holdfast. [model] and the waveform files are all that is needed to
 # recompute the gate: times in ns, rates in rad/ns, matrices as rows of [re, im].
 `
+
+// TurnedMet says whether every waveform that was turned keeps the limits and the
+// required infidelity; true when there is none.
+func (r *Record) TurnedMet() bool {
+	for _, p := range r.Pulse.Phases {
+		if !p.Kept || !(p.Infidelity <= r.Require.Infidelity) {
+			return false
+		}
+	}
+	return true
+}
 
 // Encode writes the record as TOML.
 func (r *Record) Encode(w io.Writer) error {

@@ -3,6 +3,7 @@ package design
 import (
 	"context"
 	"fmt"
+	"math/cmplx"
 	"os"
 	"path/filepath"
 	"strings"
@@ -56,6 +57,10 @@ latency = "1.3 ns"
 delay = "2.4 ns"
 lowpass = { family = "single-pole", corner = "250 MHz" }
 `, device: "[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n", errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\""},
+	{name: "by samples, the other way", site: "levels = 2", ns: 64, head: "phase_by = \"samples\"\nphases = [\"90 deg\", \"180 deg\", \"37 deg\"]", errors: "[[error]]\ndetuning = \"q1\""},
+	{name: "by samples, three levels", site: "levels = 3\nanharmonicity = \"-220 MHz\"", ns: 40, head: "hold = \"nothing\"\nphase_by = \"samples\"\nphases = [\"90 deg\"]"},
+	{name: "many errors", ns: 160, head: "refine = false\nhold = \"profile\"", line: strings.NewReplacer("\"200 MHz\"", "\"200 MHz\", known_to = \"5 %\"", "\"30 ns\", known_to", "\"30 ns\", known_to").Replace(plainLine),
+		errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\nquadrature_angle = \"q1 drive\"\n[[error]]\namplitude = \"q1 drive\"\nquadrature = \"I\"\n[[error]]\namplitude = \"q1 drive\"\nquadrature = \"Q\"\nname = \"Q\"\n[[error]]\nline = \"q1 drive\"\nparameter = \"delay\""},
 	{name: "three levels", ns: 40, site: "levels = 3\nanharmonicity = \"-220 MHz\"", head: "hold = \"nothing\""},
 	{name: "three levels, detuning", ns: 64, head: "refine = false", site: "levels = 3\nanharmonicity = \"-220 MHz\"", errors: "[[error]]\ndetuning = \"q1\""},
 	{name: "by samples", ns: 64, head: "phase_by = \"samples\"\nphases = [\"90 deg\", \"180 deg\", \"37 deg\"]", errors: "[[error]]\ndetuning = \"q1\""},
@@ -167,9 +172,18 @@ func TestWidth(t *testing.T) {
 					t.Errorf("%s: susceptibility %.2g", e.Name, e.Susceptibility)
 				}
 			}
-			for _, ph := range p.Record.Pulse.Phases {
+			for i, ph := range p.Record.Pulse.Phases {
 				if !ph.Kept || !(ph.Infidelity <= 1e-7) || len(ph.Files) != 4 {
 					t.Errorf("turned by %v: %+v", ph.Angle, ph)
+				}
+				// by replay: D T D' with D = exp(-i angle Z/2)
+				turned := f.Model.WithSamples(f.Model.Samples, p.Turned[i].Channels[0].Exact)
+				turned.Target = append([]complex128(nil), turned.Target...)
+				turned.Target[1] *= cmplx.Rect(1, -p.Turned[i].Angle)
+				turned.Target[2] *= cmplx.Rect(1, p.Turned[i].Angle)
+				g, _, _, err := turned.Figures(context.Background())
+				if err != nil || !(g.Infidelity <= 1e-9) {
+					t.Errorf("turned by %v: infidelity %.2g by replay, %v", ph.Angle, g.Infidelity, err)
 				}
 			}
 		})

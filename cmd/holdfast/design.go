@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 	"strings"
@@ -85,13 +86,14 @@ func designPulse(c *call) (int, error) {
 	if err := stage.Commit(); err != nil {
 		return exitBadInput, err
 	}
-	status := pulseStatus(pulse.Status, verdict)
+	status := pulseStatus(&pulse.Record, verdict)
 	if c.json {
 		return status, c.emit(pulseFormOf(*out, filepath.Join(*out, datasheetFile), status, &pulse.Record, sheet))
 	}
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
+	printPlayback(c.stdout, &pulse.Record)
 	fmt.Fprintf(c.stdout, "\nsearch:    %s\n", pulse.Summary())
 	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
 	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
@@ -108,14 +110,51 @@ func judged(ctx context.Context, in design.Inputs, r *design.Record, f *replay.F
 	return s, v, err
 }
 
-func pulseStatus(s design.Status, v *replay.Verdict) int {
+// pulseStatus is the exit status that a pulse deserves.
+func pulseStatus(r *design.Record, v *replay.Verdict) int {
 	switch {
-	case s == design.Interrupted:
+	case r.Pulse.Status == string(design.Interrupted):
 		return exitInterrupted
-	case s != design.Found || !v.Met():
+	case r.Pulse.Status != string(design.Found) || !v.Met() || !r.TurnedMet():
 		return exitMissed
 	}
 	return exitMet
+}
+
+// printPlayback says what whoever plays the pulse must know besides the samples.
+func printPlayback(w io.Writer, r *design.Record) {
+	list := playback(r)
+	if len(list) == 0 {
+		return
+	}
+	fmt.Fprintln(w)
+	for _, f := range list {
+		fmt.Fprintf(w, "%s: %s\n", f.Name, f.Value)
+	}
+}
+
+// playback lists delays between channels, the angles to track, and the waveforms
+// that were turned.
+func playback(r *design.Record) (list []fact) {
+	for _, d := range r.Pulse.Delays {
+		list = append(list, fact{fmt.Sprintf("channel %q", d.Channel), fmt.Sprintf("starts %d samples after the trigger, to arrive with the others", d.Samples)})
+	}
+	for _, z := range []struct {
+		side   string
+		angles []float64
+	}{{"before", r.Model.FreeZBefore}, {"after", r.Model.FreeZAfter}} {
+		for _, a := range z.angles {
+			list = append(list, fact{"turn about Z " + z.side + " the gate", fmt.Sprintf("%.6f rad (%.4f deg), to be tracked in software: exp(-i angle Z/2)", a, a*180/math.Pi)})
+		}
+	}
+	for _, p := range r.Pulse.Phases {
+		kept := "every limit kept"
+		if !p.Kept {
+			kept = "a LIMIT IS BROKEN"
+		}
+		list = append(list, fact{fmt.Sprintf("turned by %.6g deg", p.Angle), fmt.Sprintf("infidelity %s, %s; %s", smallFigure(p.Infidelity), kept, strings.Join(p.Files, ", "))})
+	}
+	return list
 }
 
 func writeSheet(path string, s *datasheet.Sheet) error {

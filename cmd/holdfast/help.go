@@ -392,8 +392,9 @@ writes it, and replay refuses a folder of which a file was changed. [model] and 
 needed to recompute the gate:
 
   dU/dt = -i H U,  H = static + sum over channels of full_scale (u_I operators[0] + u_Q operators[1]),
-  u_I + i u_Q: what the held samples x = (I + i Q) / 2^(bits-1) become behind
-  G(s) = e^(-s delay) (direct + sum residue/(s - pole)^power)`
+  u_I + i u_Q: what y, held for one period a sample, becomes behind
+  G(s) = e^(-s delay) (direct + sum residue/(s - pole)^power),
+  y = x/|x| f(|x|) with the compression table f, else y = x, and x = (I + i Q) / 2^(bits-1)`
 
 func pulseKeys() []key {
 	const share = "share of full scale"
@@ -406,14 +407,20 @@ func pulseKeys() []key {
 		{"pulse.held_by_default", "false", "", "", "true when the brief named no error"},
 		{"pulse.status", `"found"`, "", "", `or "not found: the best miss", or "interrupted: the best so far"`},
 		{"pulse.phase[].angle_deg", "90.0", "", "the brief asks for no phases", "the same gate with its axis turned about Z by this, in files of its own"},
-		{"pulse.phase[].files", `["q1-drive-90deg.npy"]`, "", "", "the codes, one file for each channel"},
+		{"pulse.phase[].files", `["q1-drive-turned-90deg.npy"]`, "", "", "in every format, of each quadrature channel; the codes are the base ones turned in phase by this angle, with the sense in which Q drives, and rounded again"},
 		{"pulse.phase[].infidelity", "4.9e-9", "0 to 1", "", "of these codes, to the gate turned likewise, for the stated ends"},
 		{"pulse.phase[].limits_kept", "true", "", "", "whether these codes are within every limit"},
-		{"basis.family", `"slepian"`, "", "", "slepian or samples: samples = basis times coefficients"},
+		{"pulse.delay[].channel", `"q1 flux"`, "", "no channel has to wait", "a channel that has to start later than the trigger, to arrive with the others"},
+		{"pulse.delay[].samples", "5", "", "", "by how many sample periods; delay_ns of [model] counts them in"},
+		{"basis.family", `"slepian"`, "", "", "slepian, fourier, tapered-fourier, b-spline or samples: samples = basis times coefficients, of the first channel"},
 		{"basis.coefficients_per_quadrature", "20", "", "", "their number"},
 		{"basis.band", `"100 MHz"`, "", "no limit", "either side of the carrier"},
 		{"basis.i", "[0.1, -0.2]", "", "", "the coefficients of I, " + share},
 		{"basis.q", "[0.1, -0.2]", "", "", "the coefficients of Q, " + share},
+		{"basis.channel[].name", `"q1 flux"`, "", "one channel plays", "a further channel"},
+		{"basis.channel[].family", `"slepian"`, "", "", "of its shapes"},
+		{"basis.channel[].i", "[0.1, -0.2]", "", "", "its coefficients"},
+		{"basis.channel[].q", "[0.1, -0.2]", "", "a baseband channel has none", "those of its Q"},
 		{"search.seed", "1", "", "", "of the random starts"},
 		{"search.starts_allowed", "60", "", "", "by the brief"},
 		{"search.starts_tried", "9", "", "", "before enough had succeeded"},

@@ -54,7 +54,7 @@ func replayPulse(c *call) (int, error) {
 		}
 	}
 	status := exitMet
-	if record.Pulse.Status != string(design.Found) || !verdict.Met() {
+	if pulseStatus(record, verdict) != exitMet { // an interrupted design is not interrupted again
 		status = exitMissed
 	}
 	if c.json {
@@ -63,6 +63,7 @@ func replayPulse(c *call) (int, error) {
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
+	printPlayback(c.stdout, record)
 	for i, d := range verdict.Inputs {
 		if i == mostDifferences {
 			fmt.Fprintf(c.stdout, "... and %d more\n", len(verdict.Inputs)-i)

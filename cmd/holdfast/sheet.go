@@ -72,6 +72,9 @@ func newSheet(ctx context.Context, in design.Inputs, r *design.Record, folder *r
 		{Name: "device", Value: r.Provenance.Device},
 		{Name: "site", Value: r.Provenance.Site},
 	}
+	for _, f := range playback(r) {
+		s.Provenance = append(s.Provenance, datasheet.Row(f))
+	}
 	for _, f := range r.Files {
 		s.Files = append(s.Files, datasheet.Row{Name: f.Name, Value: f.SHA256})
 	}

@@ -201,9 +201,19 @@ func TestStatusCounts(t *testing.T) {
 		{design.NotFound, met, exitMissed}, {design.NotFound, missed, exitMissed},
 		{design.Interrupted, met, exitInterrupted}, {design.Interrupted, missed, exitInterrupted},
 	} {
-		if got := pulseStatus(c.status, c.v); got != c.want {
+		if got := pulseStatus(&design.Record{Pulse: design.PulseFacts{Status: string(c.status)}}, c.v); got != c.want {
 			t.Errorf("%s, met %v: exit %d, want %d", c.status, c.v.Met(), got, c.want)
 		}
+	}
+	// a waveform that was turned counts as much as the base one
+	turned := &design.Record{Pulse: design.PulseFacts{Status: string(design.Found), Phases: []design.PhaseFacts{{Infidelity: 1e-9, Kept: true}}}}
+	turned.Require.Infidelity = 1e-6
+	if got := pulseStatus(turned, met); got != exitMet {
+		t.Errorf("turned: exit %d", got)
+	}
+	turned.Pulse.Phases = append(turned.Pulse.Phases, design.PhaseFacts{Infidelity: 0.1, Kept: true})
+	if got := pulseStatus(turned, met); got != exitMissed {
+		t.Errorf("turned and off: exit %d, want %d", got, exitMissed)
 	}
 	_, pulse := newPulse(t)
 	if status, _, _ := play("replay", pulse); status != exitMet {

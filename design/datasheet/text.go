@@ -24,10 +24,7 @@ func Text(w io.Writer, s *Sheet) error {
 	}
 	line("%s", name)
 	line("%s.", s.sentence())
-	answer := "MET. "
-	if !v.Met() {
-		answer = "MISSED. "
-	}
+	answer := strings.ToUpper(s.word()) + ". "
 	line("%s", answer+s.verdictSentence())
 	for _, r := range s.reasons() {
 		line("  %s", hyphens(r))

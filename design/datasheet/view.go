@@ -15,6 +15,7 @@ type view struct {
 	Style template.CSS
 
 	Name, Sentence string
+	Word           string // Met, Missed, or Unfinished where the verdict is good and the design not at its end
 	Met            bool
 	Verdict        string   // the answer in one sentence
 	Reasons        []string // why not
@@ -111,7 +112,8 @@ func newView(s *Sheet) *view {
 		Style:    template.CSS(pageStyle),
 		Name:     clean(s.Name),
 		Sentence: s.sentence(),
-		Met:      v.Met(),
+		Met:      v.Met() && clean(s.Status) == "",
+		Word:     s.word(),
 		Verdict:  s.verdictSentence(),
 		Reasons:  s.reasons(),
 		Plate:    s.plate(),
@@ -206,6 +208,18 @@ func (s *Sheet) verdictSentence() string {
 		answer += " (" + status + ")"
 	}
 	return answer + "."
+}
+
+// word is the verdict in one word: a design that did not end as asked is
+// unfinished even where the requirements are met.
+func (s *Sheet) word() string {
+	switch {
+	case !s.Verdict.Met():
+		return "Missed"
+	case clean(s.Status) != "":
+		return "Unfinished"
+	}
+	return "Met"
 }
 
 // reasons lists what keeps a verdict from being met.

@@ -50,7 +50,7 @@ type share struct {
 }
 
 // MaxToggles bounds the static and control-borne errors of one Spin together.
-const MaxToggles = 12
+const MaxToggles = 24
 
 const gauss = 0.14433756729740643 // √3/12
 
