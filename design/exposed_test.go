@@ -110,8 +110,7 @@ func TestRoundedPulses(t *testing.T) {
 }
 
 // A pulse for a line that is not there, played through the one that is: its record
-// promises what its sibling keeps, and replay exposes it. A prototype left 3e-4 to
-// 1.4e-3 in infidelity and 2e-2 to 3e-2 in susceptibility. The infidelity depends on
+// promises what its sibling keeps, and replay exposes it. The infidelity depends on
 // which pulse is found: a line of unit gain leaves the area of the drive as it is, and
 // settled ends count all of it, so a pulse that turns nearly about one axis hides
 // the line (area 90 degrees: 1e-6), while the refined ones, which need both axes, do

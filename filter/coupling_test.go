@@ -7,7 +7,7 @@ import (
 	"testing"
 )
 
-// CHECKS: a bias tee of 1 ms droops by 1.000e-4 in 100 ns (CALC); a single pole
+// A bias tee of 1 ms droops by 1.000e-4 in 100 ns (CALC); a single pole
 // settles to 1e-3 in 6.908 tau (CALC), and so does the droop to 1 - 1e-3.
 func TestDroop(t *testing.T) {
 	tee := line(t)(ACCoupling(1e6))

@@ -154,7 +154,7 @@ func slowHeld(l Line, x []complex128, h, t float64) complex128 {
 }
 
 // The definition, transcribed slowly, agrees with Held and with Weights at every
-// kind of time. Lines on which the transcription itself loses digits (its
+// kind of time. Lines on which the slow form itself loses digits (its
 // antiderivative cancels when |p|h is tiny, powers make it worse) get the room
 // that this loss needs.
 func TestHeldIsTheConvolution(t *testing.T) {

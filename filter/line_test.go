@@ -13,7 +13,7 @@ import (
 
 func relative(got, want float64) float64 { return math.Abs(got-want) / math.Abs(want) }
 
-// From CHECKS: transition time times corner (10-90 %, IEEE Std 181), overshoot.
+// Transition time times corner (10-90 %, IEEE Std 181), overshoot.
 // CALC: independent computation of a published definition.
 func TestTransitionTimesFromOutside(t *testing.T) {
 	one := pole(t, 1.7)
@@ -49,7 +49,7 @@ func TestTransitionTimesFromOutside(t *testing.T) {
 		}
 	}
 	// Butterworth 2, its poles written out: checks the figures on a stronger
-	// overshoot, exp(-pi) in closed form (CHECKS, CALC: 0.34187, 4.32 %).
+	// overshoot, exp(-pi) in closed form (CALC: 0.34187, 4.32 %).
 	p := complex(-1, 1) / complex(math.Sqrt2, 0)
 	r := 1 / (p - cmplx.Conj(p))
 	butter := Line{Terms: []Term{{p, 1, r}, {cmplx.Conj(p), 1, cmplx.Conj(r)}}}
@@ -68,7 +68,7 @@ func TestTransitionTimesFromOutside(t *testing.T) {
 	}
 }
 
-// CHECKS: hold droop at .25, .4, .5 of the sample rate, dB (CALC).
+// Hold droop at .25, .4, .5 of the sample rate, dB (CALC).
 func TestHoldDroop(t *testing.T) {
 	for _, c := range []struct{ share, dB float64 }{{0.25, -0.91210}, {0.4, -2.42007}, {0.5, -3.92240}} {
 		if got := 20 * math.Log10(HoldDroop(c.share/2.5, 2.5)); !(math.Abs(got-c.dB) <= 5e-6) {
@@ -80,7 +80,7 @@ func TestHoldDroop(t *testing.T) {
 	}
 }
 
-// CHECKS: a bias tee of 1 ms droops 1.000e-4 in 100 ns (CALC): the AC-coupling
+// A bias tee of 1 ms droops 1.000e-4 in 100 ns (CALC): the AC-coupling
 // corner s T/(1+s T) is a line of this form with a tail of amplitude one.
 func TestBiasTee(t *testing.T) {
 	l := line(t)(ACCoupling(1e6))

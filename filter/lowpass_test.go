@@ -47,7 +47,7 @@ var lowPasses = map[string]func(int, float64) (Line, error){
 	"butterworth": Butterworth, "bessel": Bessel, "damped": CriticallyDamped, "gaussian": GaussianLike,
 }
 
-// From CHECKS (CALC: independent computation of a published definition), 10-90 %
+// CALC (independent computation of a published definition), 10-90 %
 // transition (IEEE Std 181) times corner, and overshoot: Butterworth 2 and 4.
 func TestButterworthFromOutside(t *testing.T) {
 	for _, c := range []struct {
@@ -189,7 +189,7 @@ func furthest(end float64, f func(float64) float64) float64 {
 }
 
 // The table in GaussianLike's documentation is what the filters do, its last column
-// but one above the Gaussian's 0.339624 (CHECKS, CALC) and nearer with every order
+// but one above the Gaussian's 0.339624 (CALC) and nearer with every order
 // from 4 on.
 func TestGaussianTable(t *testing.T) {
 	source, err := os.ReadFile("gaussian.go")

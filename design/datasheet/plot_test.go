@@ -286,7 +286,7 @@ func TestSpectrum(t *testing.T) {
 	if !(math.Abs(s.Outside-out/all) <= 1e-12) {
 		t.Errorf("%g of the energy outside, want %g", s.Outside, out/all)
 	}
-	// Hold droop, CALC in CHECKS: -2.42007 dB at 0.4 of the sample rate.
+	// Hold droop, CALC: -2.42007 dB at 0.4 of the sample rate.
 	if got := decibels(sinc(0.4) * sinc(0.4)); !(math.Abs(got+2.42007) <= 1e-5) {
 		t.Errorf("droop at 0.4 fs is %g dB", got)
 	}

@@ -217,7 +217,7 @@ func near(a, b Matrix, tolerance float64) bool {
 	return a.N == b.N && a.Add(-1, b).Norm() <= tolerance
 }
 
-// TestLadder checks a ladder of four levels against its definition in PHYSICS: quadratures (a+a')/2 and i(a'-a)/2, energies
+// TestLadder checks a ladder of four levels against its definition: quadratures (a+a')/2 and i(a'-a)/2, energies
 // delta n + alpha n(n-1)/2, and a detuning of Z/2 on the lowest two that is -n.
 func TestLadder(t *testing.T) {
 	d := &Device{

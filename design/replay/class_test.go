@@ -91,7 +91,7 @@ func judged(t testing.TB, m *Model, threshold float64) map[string]Error {
 }
 
 // What survives: a square pi pulse turns Z and Y once over half a circle, of which 2/pi is left, and leaves X and its own
-// amplitude error whole. Frame potential of a square pi pulse 2 + 8/pi^2 (closed form), so that with PHYSICS' equal form
+// amplitude error whole. Frame potential of a square pi pulse 2 + 8/pi^2 (closed form), so that with the equal form
 // 3 s^2 + 1 = 2 + 8/pi^2. Short CORPSE cancels detuning, and so does CORPSE, to first order (Cummins, Llewellyn, Jones 2003).
 func TestSusceptibility(t *testing.T) {
 	m := composite(plain)

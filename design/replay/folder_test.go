@@ -353,7 +353,7 @@ func TestDecoherence(t *testing.T) {
 			t.Errorf("T1 %g, T2 %g: %g, want %g", c.t1, c.t2, got, c.want)
 		}
 	}
-	// The published example of the table: T1 60 us, T2 40 us, 64 ns: about 7.1e-4 (16 ns: 1.8e-4), in NUMERICS with the coherent part added.
+	// By the formula: T1 60 us, T2 40 us, 64 ns: about 7.1e-4 (16 ns: 1.8e-4).
 	if got := Decoherence(64, 60e3, 40e3); !(math.Abs(got-7.111e-4) <= 1e-6) {
 		t.Errorf("64 ns: %g", got)
 	}

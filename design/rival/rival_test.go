@@ -64,7 +64,7 @@ func TestSpans(t *testing.T) {
 			}
 		}
 	}
-	// NUMERICS of the project: 1/4, 1/2, 3/4, then 0.89286 of the top.
+	// The least plateau of ten samples (package shape): 1/4, 1/2, 3/4, then 0.89286 of the top.
 	if got := real(list[0].Samples[4]) / real(list[0].Samples[1]); !(math.Abs(got-2) <= 1e-9) {
 		t.Errorf("the plateau is %v of the second ramp step, want 2", got)
 	}

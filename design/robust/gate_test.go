@@ -216,7 +216,7 @@ func matrixOf(q dynamics.Quat) matrix {
 }
 
 // TestFiguresAgainstDefinition compares figures and residuals with the slow
-// transcription of their definitions.
+// writing-out of their definitions.
 func TestFiguresAgainstDefinition(t *testing.T) {
 	rng := rand.New(rand.NewPCG(6, 2))
 	const tol = 1e-12

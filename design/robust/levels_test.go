@@ -146,7 +146,7 @@ func TestLevelsOfTwo(t *testing.T) {
 }
 
 // TestLevelsLosses compares with the formulas of Pedersen, Moeller, Moelmer 2007,
-// Phys. Lett. A 367, 47, and the identity of PHYSICS between average and process
+// Phys. Lett. A 367, 47, and the identity between average and process
 // infidelity.
 func TestLevelsLosses(t *testing.T) {
 	rng := rand.New(rand.NewPCG(11, 3))

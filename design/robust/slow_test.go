@@ -106,7 +106,7 @@ func (s slow) unitary(offset [3]float64, scale float64) matrix {
 }
 
 // infidelity is the average gate infidelity 1 - (Tr M'M + |Tr W'M|²)/(d(d+1)) of
-// PHYSICS: Pedersen, Moeller, Moelmer 2007, Phys. Lett. A 367, 47.
+// Pedersen, Moeller, Moelmer 2007, Phys. Lett. A 367, 47.
 func infidelity(w, m matrix) float64 {
 	tr := cmplx.Abs(w.adjoint().mul(m).trace())
 	return 1 - (real(m.adjoint().mul(m).trace())+tr*tr)/6
