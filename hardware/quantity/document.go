@@ -7,6 +7,7 @@ import (
 	"os"
 	"regexp"
 	"strings"
+	"unicode/utf8"
 
 	"github.com/BurntSushi/toml"
 )
@@ -166,7 +167,7 @@ func syntaxError(file, text string, ix *index, pe toml.ParseError) *Error {
 			case "true", "false", "yes", "no", "on", "off":
 				e.Found, e.Allowed = m[1], "true or false where it answers a question, and text in quotes"
 			default:
-				e.Found, e.Allowed, e.Hint = m[1]+" without quotes", "text and quantities in quotes", "write "+quote(m[1])
+				e.Found, e.Allowed, e.Hint = clipped(m[1])+" without quotes", "text and quantities in quotes", "write "+quote(m[1])
 			}
 		}
 	}
@@ -174,7 +175,20 @@ func syntaxError(file, text string, ix *index, pe toml.ParseError) *Error {
 }
 
 // oneLine makes a library's message part of one sentence.
-func oneLine(s string) string { return strings.Join(strings.Fields(s), " ") }
+func oneLine(s string) string { return clippedTo(strings.Join(strings.Fields(s), " "), 4*foundLength) }
+
+// clipped cuts text that stands without quotes to the length that quote keeps.
+func clipped(s string) string { return clippedTo(s, foundLength) }
+
+func clippedTo(s string, most int) string {
+	if len(s) <= most {
+		return s
+	}
+	for most > 0 && !utf8.RuneStart(s[most]) {
+		most--
+	}
+	return s[:most] + "..."
+}
 
 // File gives the name of the file, as the caller of ReadFile or ParseDocument gave it.
 func (d *Document) File() string { return d.file }
