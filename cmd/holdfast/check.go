@@ -182,6 +182,26 @@ func unstatedT(s device.Site) string {
 // decoherence is what a gate of T ns loses, as replay has it.
 func decoherence(s device.Site, T float64) float64 { return replay.Decoherence(T, s.T1, s.T2) }
 
+// belowRounding warns of limits that rounding to codes can break by itself: the search keeps them
+// before rounding only, and the finished codes are judged.
+func belowRounding(p *hardware.Profile, samples int) (warn []string) {
+	for c := range p.Channels {
+		set, err := p.Playable(c, samples)
+		if err != nil {
+			continue // said elsewhere
+		}
+		for _, l := range []struct {
+			name string
+			kept bool
+		}{{"ring_out", set.Reserved}, {"out_of_band", set.OutOfBandReserved}} {
+			if !l.kept {
+				warn = append(warn, fmt.Sprintf("Channel %q: rounding to %d bit can use more than a fifth of %s by itself: the search keeps the limit before rounding, and the codes may break it.", p.Channels[c].Name, p.Bits, l.name))
+			}
+		}
+	}
+	return warn
+}
+
 // stated formats a figure of which zero says that the file is silent.
 func stated(v float64, k quantity.Kind) string {
 	if v == 0 {
@@ -249,6 +269,7 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
 		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
 	}
+	warn = append(warn, belowRounding(p, samples)...)
 	if off := site.Frequency - ch.Carrier; ch.Kind != hardware.Baseband && site.Frequency > 0 && ch.Carrier > 0 {
 		stated := site.Detuning / (2 * math.Pi)
 		if !(math.Abs(off-stated) <= 1e-6*site.Frequency) {

@@ -271,3 +271,25 @@ func TestWrap(t *testing.T) {
 		t.Errorf("%q", got)
 	}
 }
+
+// A limit that rounding alone can break is said before the search, and only then.
+func TestCheckLimitBelowRounding(t *testing.T) {
+	dir := t.TempDir()
+	for name, edit := range map[string][2]string{"rack-b.toml": {`limit = "0.1 %"`, `limit = "1 ppm"`}, "skerry.toml": {}, "x90.toml": {}} {
+		text := read(t, filepath.Join("starter", name))
+		if edit[0] != "" {
+			edited := strings.Replace(text, edit[0], edit[1], 1)
+			if edited == text {
+				t.Fatalf("%s has no %s", name, edit[0])
+			}
+			text = edited
+		}
+		write(t, filepath.Join(dir, name), text)
+	}
+	if _, out, _ := play("check", filepath.Join(dir, "x90.toml")); !strings.Contains(strings.Join(strings.Fields(out), " "), "more than a fifth of ring_out by itself") {
+		t.Errorf("no word of rounding:\n%s", out)
+	}
+	if _, out, _ := play("check", filepath.Join("starter", "x90.toml")); strings.Contains(out, "a fifth of") {
+		t.Errorf("a word of rounding without a reason:\n%s", out)
+	}
+}
