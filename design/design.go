@@ -1,6 +1,7 @@
 package design
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -106,10 +107,12 @@ func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error
 	}
 	var q *problem
 	var out outcome
+	var refused error // of the first family that the span has no room for
 	for _, family := range families {
 		next, err := newTask(in, family)
 		if err != nil {
-			return nil, err
+			refused = cmp.Or(refused, err)
+			continue
 		}
 		o := next.find(ctx, in.Brief, progress)
 		if q == nil || o.better(out) {
@@ -118,6 +121,9 @@ func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error
 		if ctx.Err() != nil {
 			break
 		}
+	}
+	if q == nil {
+		return nil, refused
 	}
 	return q.finish(in, out)
 }

@@ -60,24 +60,7 @@ func wanted(t *testing.T, gate string, ns int, held []string, extra string) Inpu
 // before rounding with what they were judged from.
 func judged(t *testing.T, in Inputs) (*Pulse, *replay.Folder, *replay.Verdict, time.Duration) {
 	t.Helper()
-	begun := time.Now()
-	p, err := Run(context.Background(), in, nil)
-	if err != nil {
-		t.Fatal(err)
-	}
-	took := time.Since(begun)
-	src, err := ReadSources(in)
-	if err != nil {
-		t.Fatal(err)
-	}
-	dir := t.TempDir()
-	if err := p.Write(dir, src); err != nil {
-		t.Fatal(err)
-	}
-	f, err := replay.Open(dir)
-	if err != nil {
-		t.Fatal(err)
-	}
+	p, f, took := folderOf(t, in)
 	v, err := f.Model.BeforeRounding().Judge(context.Background(), 1e-4)
 	if err != nil {
 		t.Fatal(err)
@@ -346,24 +329,7 @@ func TestMeasureLadder(t *testing.T) {
 		in.Profile.Channels[0].Mixing = hardware.PlusSin
 		in.Profile.Channels[0].RingOut.Limit = c.ringOut
 		in.Brief.Basis.Coefficients = c.coefficients
-		begun := time.Now()
-		p, err := Run(context.Background(), in, nil)
-		if err != nil {
-			t.Fatal(err)
-		}
-		took := time.Since(begun)
-		src, err := ReadSources(in)
-		if err != nil {
-			t.Fatal(err)
-		}
-		dir := t.TempDir()
-		if err := p.Write(dir, src); err != nil {
-			t.Fatal(err)
-		}
-		f, err := replay.Open(dir)
-		if err != nil {
-			t.Fatal(err)
-		}
+		p, f, took := folderOf(t, in)
 		s, _, _, err := f.Model.BeforeRounding().Figures(context.Background())
 		if err != nil {
 			t.Fatal(err)

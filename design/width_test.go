@@ -8,6 +8,7 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+	"time"
 
 	"holdfast/design/brief"
 	"holdfast/design/replay"
@@ -113,26 +114,36 @@ ring_out = { limit = "0.1 %", fast = "8 ns" }
 	return Inputs{Brief: b, Profile: p, Device: d, Version: "test"}
 }
 
+// folderOf designs and writes a pulse, and opens its folder as replay does. It
+// returns how long the design took, for those that print it.
+func folderOf(t *testing.T, in Inputs) (*Pulse, *replay.Folder, time.Duration) {
+	t.Helper()
+	begun := time.Now()
+	p, err := Run(context.Background(), in, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	took := time.Since(begun)
+	src, err := ReadSources(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := t.TempDir()
+	if err := p.Write(dir, src); err != nil {
+		t.Fatal(err)
+	}
+	f, err := replay.Open(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return p, f, took
+}
+
 func TestWidth(t *testing.T) {
 	for _, s := range scenes {
 		t.Run(s.name, func(t *testing.T) {
 			in := s.inputs(t)
-			p, err := Run(context.Background(), in, nil)
-			if err != nil {
-				t.Fatal(err)
-			}
-			src, err := ReadSources(in)
-			if err != nil {
-				t.Fatal(err)
-			}
-			dir := t.TempDir()
-			if err := p.Write(dir, src); err != nil {
-				t.Fatal(err)
-			}
-			f, err := replay.Open(dir)
-			if err != nil {
-				t.Fatal(err)
-			}
+			p, f, _ := folderOf(t, in)
 			v, err := replay.Judge(context.Background(), f)
 			if err != nil {
 				t.Fatal(err)
@@ -195,23 +206,7 @@ func TestWidth(t *testing.T) {
 // the design for the ladder itself leaves.
 func TestTwoLevelsOnThree(t *testing.T) {
 	run := func(s scene) (*Pulse, *replay.Model) {
-		in := s.inputs(t)
-		p, err := Run(context.Background(), in, nil)
-		if err != nil {
-			t.Fatal(err)
-		}
-		src, err := ReadSources(in)
-		if err != nil {
-			t.Fatal(err)
-		}
-		dir := t.TempDir()
-		if err := p.Write(dir, src); err != nil {
-			t.Fatal(err)
-		}
-		f, err := replay.Open(dir)
-		if err != nil {
-			t.Fatal(err)
-		}
+		p, f, _ := folderOf(t, s.inputs(t))
 		return p, f.Model
 	}
 	detuning := "[[error]]\ndetuning = \"q1\""
