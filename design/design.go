@@ -1,7 +1,6 @@
 package design
 
 import (
-	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -107,12 +106,10 @@ func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error
 	}
 	var q *problem
 	var out outcome
-	var refused error // of the first family that the span has no room for
 	for _, family := range families {
 		next, err := newTask(in, family)
 		if err != nil {
-			refused = cmp.Or(refused, err)
-			continue
+			return nil, err
 		}
 		o := next.find(ctx, in.Brief, progress)
 		if q == nil || o.better(out) {
@@ -121,9 +118,6 @@ func Run(ctx context.Context, in Inputs, progress func(Progress)) (*Pulse, error
 		if ctx.Err() != nil {
 			break
 		}
-	}
-	if q == nil {
-		return nil, refused
 	}
 	return q.finish(in, out)
 }

@@ -3,6 +3,7 @@ package design
 import (
 	"context"
 	"fmt"
+	"math"
 	"math/cmplx"
 	"os"
 	"path/filepath"
@@ -183,6 +184,9 @@ func TestWidth(t *testing.T) {
 					t.Errorf("%s: susceptibility %.2g", e.Name, e.Susceptibility)
 				}
 			}
+			if n := len(in.Brief.Phases); len(p.Turned) != n || len(p.Record.Pulse.Phases) != n {
+				t.Fatalf("%d waveforms turned, %d recorded, want %d", len(p.Turned), len(p.Record.Pulse.Phases), n)
+			}
 			for i, ph := range p.Record.Pulse.Phases {
 				if !ph.Kept || !(ph.Infidelity <= 1e-7) || len(ph.Files) != 4 {
 					t.Errorf("turned by %v: %+v", ph.Angle, ph)
@@ -226,5 +230,19 @@ func TestTwoLevelsOnThree(t *testing.T) {
 	}
 	if !(strange.Infidelity >= 1e-3 && strange.Infidelity <= 1e-2) {
 		t.Errorf("designed for a spin: infidelity %.2g on the ladder; want 1e-3 to 1e-2", strange.Infidelity)
+	}
+}
+
+// TestSizes: an error of size f adds a field of 2π f, whatever its operator.
+func TestSizes(t *testing.T) {
+	in := scene{ns: 64, errors: "[[error]]\ndetuning = \"q1\"\nsize = \"2 MHz\"\n[[error]]\noperator = \"X\"\nsize = \"2 MHz\"\n[[error]]\nany = \"all\"\nsize = \"2 MHz\""}.inputs(t)
+	q, err := newTask(in, brief.Slepian)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, c := range q.spin.Held {
+		if want := 2 * math.Pi * 2e-3; !(math.Abs(c.Size-want) <= 1e-15) {
+			t.Errorf("%s: size %v rad/ns, want %v", c.Name, c.Size, want)
+		}
 	}
 }
