@@ -11,9 +11,12 @@ import (
 	"sync"
 	"time"
 
+	"gonum.org/v1/gonum/integrate/quad"
+
 	"holdfast/design/brief"
 	"holdfast/design/device"
 	"holdfast/design/dynamics"
+	"holdfast/design/noise"
 	"holdfast/design/robust"
 	"holdfast/design/solve"
 	"holdfast/hardware"
@@ -138,6 +141,7 @@ func newTask(in Inputs, family string) (*problem, error) {
 	if w.turns, err = turns(in, d); err != nil {
 		return nil, err
 	}
+	w.plain = plain(in)
 	if in.Device.Dim() == 2 {
 		w.spin.Static = scale(pauli(in.Device.Static()), 2)
 	} // a ladder's detuning is in its levels
@@ -148,8 +152,11 @@ func newTask(in Inputs, family string) (*problem, error) {
 	for _, x := range d {
 		ch := &in.Profile.Channels[x.channel]
 		w.channels = append(w.channels, x.channel)
+		w.paths = append(w.paths, x.paths)
 		for _, op := range x.operators {
-			w.spin.Axes = append(w.spin.Axes, scale(pauli(op), 2*ch.FullScale))
+			if len(in.Device.Sites) == 1 {
+				w.spin.Axes = append(w.spin.Axes, scale(pauli(op), 2*x.full))
+			}
 			// H += Shift |u|² Z/2
 			w.spin.Shifts = append(w.spin.Shifts, dynamics.Vec{0, 0, ch.Shift})
 			shifted = shifted || ch.Shift != 0
@@ -158,28 +165,19 @@ func newTask(in Inputs, family string) (*problem, error) {
 	if !shifted {
 		w.spin.Shifts = nil
 	}
-	if in.Device.Dim() > 2 {
-		if b.Target.FreeZ != brief.NoFreeZ && b.Target.FreeZ != "" {
-			return nil, fmt.Errorf("target.free_z: found %q on a ladder; allowed: \"none\" with more than two levels", b.Target.FreeZ)
-		}
-		if shifted {
-			return nil, fmt.Errorf("%s: found a drive-induced shift; allowed: none on a ladder of more than two levels", in.Profile.File)
-		}
-		w.levels = &robust.Levels{Dim: in.Device.Dim(), Code: 2, Static: in.Device.Static().Data, Target: b.Target.Matrix.Data}
-		for _, x := range d {
-			for _, op := range x.operators {
-				w.levels.Axes = append(w.levels.Axes, op.Scale(complex(in.Profile.Channels[x.channel].FullScale, 0)).Data)
-			}
-		}
-	}
-	if w.spin.Held, w.slopes, err = classes(in, d); err != nil {
+	w.spin.Maps = curves(d)
+	w.spin.Held, w.slopes, w.phantoms, err = classes(in, d, w.plain)
+	if err != nil {
 		return nil, err
+	}
+	if !w.plain {
+		w.levels = levels(in, d, shifted, w.phantoms)
 	}
 	q, err := newProblem(in.Profile, w)
 	if err != nil {
 		return nil, err
 	}
-	q.seed, q.starts = b.Seed, b.Starts
+	q.seed, q.starts, q.require = b.Seed, b.Starts, b.Require
 	return q, nil
 }
 
@@ -189,6 +187,9 @@ func turns(in Inputs, d []driven) ([]complex128, error) {
 	list := []complex128{1}
 	if in.Brief.PhaseBy != brief.BySamples {
 		return list, nil
+	}
+	if len(in.Device.Sites) > 1 || in.Brief.Target.From != nil {
+		return nil, errors.New(`phase_by: found "samples" for several sites, or for states; allowed: for a gate on a device of one site, or phase_by = "instrument"`)
 	}
 	for i, x := range d {
 		// what does not turn with the samples must not mind: a bias along Z alone
@@ -223,131 +224,295 @@ func sense(d []driven) float64 {
 	return 1
 }
 
-// A driven channel of the target's site, and what its controls do there.
+// plain tells whether the problem is one of a spin alone, for which there is a kernel of
+// its own: a gate, held against single static errors or all of them.
+func plain(in Inputs) bool {
+	if in.Device.Dim() != 2 || in.Brief.Target.From != nil {
+		return false
+	}
+	for _, e := range in.Brief.Errors {
+		if e.Kind == brief.Any && len(e.Members) != 3 || e.Leak || e.Noise != nil {
+			return false
+		}
+		for _, m := range e.Members {
+			if m.Weight != 1 {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// levels is the problem of a register or a ladder, without grid and errors. phantoms are
+// what else is driven, by errors alone.
+func levels(in Inputs, d []driven, shifted bool, phantoms []device.Matrix) *robust.Levels {
+	t := &in.Brief.Target
+	l := &robust.Levels{
+		Dim: in.Device.Dim(), Code: in.Device.CodeSpace(), Static: in.Device.Static().Data, Target: t.Whole.Data, From: t.From, To: t.To,
+		FreeBefore: t.FreeZ == brief.Before || t.FreeZ == brief.Both, FreeAfter: t.FreeZ == brief.After || t.FreeZ == brief.Both, Local: t.Local,
+		Maps: curves(d),
+	}
+	for _, r := range in.Device.Rotating() {
+		l.Rotating = append(l.Rotating, robust.Rotating{Frequency: r.Frequency, Cosine: r.Cosine.Data, Sine: r.Sine.Data})
+	}
+	none := device.Zero(l.Dim)
+	for _, x := range d {
+		ch := &in.Profile.Channels[x.channel]
+		full := complex(x.full, 0)
+		shift := in.Device.ShiftOperatorOf(ch.Name).Scale(complex(ch.Shift, 0))
+		for _, op := range x.operators {
+			l.Axes, l.Shifts = append(l.Axes, op.Scale(full).Data), append(l.Shifts, shift.Data)
+		}
+		for _, path := range x.paths {
+			for _, op := range path.operators {
+				l.Axes, l.Shifts = append(l.Axes, op.Scale(full).Data), append(l.Shifts, none.Data)
+			}
+		}
+	}
+	for _, op := range phantoms {
+		l.Axes, l.Shifts = append(l.Axes, op.Data), append(l.Shifts, none.Data)
+	}
+	if !shifted {
+		l.Shifts = nil
+	}
+	return l
+}
+
+// A driven channel, and what its controls do to the device.
 type driven struct {
 	channel   int
 	control   int // the first of its controls
 	operators []device.Matrix
+	paths     []path     // of other frequencies
+	full      float64    // rate that a control of 1 drives, rad/ns: full scale, or what the curve has
+	curve     robust.Map // of a bias that has a map
 }
 
-// drives finds the channels that drive the target's site: quadrature channels
-// first, then baseband ones.
+// A path is a channel's crosstalk to a site of another frame: u e^{-i frequency t} stands
+// in the place of u.
+type path struct {
+	frequency float64 // rad/ns, t from the start of the window
+	control   int     // the first of its two
+	operators []device.Matrix
+}
+
+// drives finds the channels that drive the device: quadrature channels first, then
+// baseband ones.
 func drives(in Inputs) (list []driven, err error) {
 	control := 0
-	add := func(name string, operators func(ch *hardware.Channel) []device.Matrix) error {
+	for _, name := range in.Device.Channels() {
 		i, ok := in.Profile.Channel(name)
 		if !ok {
-			return fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, name)
+			err = errors.Join(err, fmt.Errorf("%s: channel %q is not in the profile", in.Device.File, name))
+			continue
 		}
-		d := driven{i, control, operators(&in.Profile.Channels[i])}
-		control += len(d.operators)
+		ch := &in.Profile.Channels[i]
+		d := driven{channel: i, control: control, full: ch.FullScale}
+		if b := in.Device.Map(name); b != nil {
+			if ch.Shift != 0 {
+				err = errors.Join(err, fmt.Errorf("%s: channel %q: found a polynomial or a loop beside the shift of the channel in %s; allowed: one of the two", in.Device.File, name, in.Profile.File))
+			}
+			d.full, d.curve = curve(b, ch)
+		}
+		for k, p := range in.Device.Paths(name, string(ch.Mixing)) {
+			if k == 0 {
+				d.operators = p.Operators
+			} else {
+				d.paths = append(d.paths, path{p.Frequency, control, p.Operators})
+			}
+			control += len(p.Operators)
+		}
 		list = append(list, d)
-		return nil
-	}
-	for i, d := range in.Device.Drives {
-		if d.Site == in.Brief.Target.Site {
-			err = errors.Join(err, add(d.Channel, func(ch *hardware.Channel) []device.Matrix {
-				ops := in.Device.Operators(i, string(ch.Mixing))
-				return ops[:]
-			}))
-		}
-	}
-	for i, d := range in.Device.Biases {
-		if d.Site == in.Brief.Target.Site {
-			err = errors.Join(err, add(d.Channel, func(*hardware.Channel) []device.Matrix { return []device.Matrix{in.Device.BiasOperator(i)} }))
-		}
-	}
-	if err == nil && len(list) == 0 {
-		err = fmt.Errorf("%s: nothing drives site %q", in.Device.File, in.Brief.Target.Site)
 	}
 	return list, err
 }
 
-// classes turns the brief's errors into those of package robust, with the lines
-// of those that are errors of a line.
-func classes(in Inputs, d []driven) (held []robust.Class, slopes []*slope, err error) {
-	controls := 0
+// controls counts those of all channels.
+func controls(d []driven) (n int) {
 	for _, x := range d {
-		controls += len(x.operators)
+		n += len(x.operators)
+		for _, p := range x.paths {
+			n += len(p.operators)
+		}
 	}
-	on := func(name string) (lane int) {
-		return slices.IndexFunc(d, func(x driven) bool { return in.Profile.Channels[x.channel].Name == name })
-	}
+	return n
+}
+
+// classes turns the brief's errors into those of package robust, with the lines
+// of those that are errors of a line, and what errors alone drive.
+func classes(in Inputs, d []driven, plain bool) (held []robust.Class, slopes []*slope, phantoms []device.Matrix, err error) {
 	opening := opening(in.Profile, d)
+	count := controls(d)
+	first := count // of the phantoms
 	for _, e := range in.Brief.Errors {
-		c := robust.Class{Name: e.Name, Weight: e.Weight, Size: e.Size}
+		if e.Kind == brief.Crosstalk {
+			count += len(e.Reach)
+		}
+	}
+	for _, e := range in.Brief.Errors {
+		c := robust.Class{Name: e.Name, Weight: e.Weight, Size: e.Size, Order: e.Order}
+		c.Values, c.Shares = spread(&e)
+		c.Worst = e.Spread == brief.Corners
+		if e.Noise != nil {
+			c.Noise, c.Size = nodes(e.Noise, in.Brief.Span, searchNodes), 0
+		}
 		var s *slope
 		lane := -1
 		if len(e.Channels) > 0 {
-			if lane = on(e.Channels[0]); lane < 0 {
-				return nil, nil, fmt.Errorf("error %q: channel %q does not drive site %q", e.Name, e.Channels[0], in.Brief.Target.Site)
+			if lane = on(in.Profile, d, e.Channels[0]); lane < 0 {
+				return nil, nil, nil, fmt.Errorf("error %q: channel %q does not drive the device", e.Name, e.Channels[0])
 			}
 		}
 		mix := func() [][]float64 {
-			m := make([][]float64, controls)
+			m := make([][]float64, count)
 			for i := range m {
-				m[i] = make([]float64, controls)
+				m[i] = make([]float64, count)
 			}
 			return m
 		}
 		switch e.Kind {
-		case brief.Static:
-			c.Kind, c.Vector = robust.Static, pauli(e.Operator)
-			if in.Device.Dim() > 2 {
-				c.Operator = in.Device.Lift(e.Operator).Data
-				c.Vector = dynamics.Vec{0, 0, length(c.Vector)} // its length along the operator is what counts
+		case brief.Static, brief.Any:
+			if c.Kind = robust.Static; e.Kind == brief.Any {
+				c.Kind = robust.Any
 			}
-			// the field that an operator of that size adds: H = F·σ/2
-			c.Size = 2 * e.Size * length(c.Vector)
-		case brief.Any:
-			c.Kind = robust.Any
+			if plain {
+				if e.Kind == brief.Static {
+					c.Vector = pauli(e.Operator)
+					// the field that an operator of that size adds: H = F·σ/2
+					c.Size = 2 * e.Size * length(c.Vector)
+					scaleAll(c.Values, 2*length(c.Vector))
+				}
+				break
+			}
+			c.Leak = e.Leak
+			for _, m := range e.Members {
+				c.Operators, c.Factors, c.Names = append(c.Operators, m.Operator.Data), append(c.Factors, m.Weight), append(c.Names, m.Name)
+			}
 		case brief.Amplitude:
 			if c.Kind = robust.Amplitude; e.Quadrature == "" && (len(e.Channels) == 0 || len(e.Channels) == len(d)) {
 				break
 			}
 			c.Kind, c.Mix = robust.Mixed, mix()
 			for _, name := range e.Channels {
-				i := on(name)
+				i := on(in.Profile, d, name)
 				if i < 0 {
-					return nil, nil, fmt.Errorf("error %q: channel %q does not drive site %q", e.Name, name, in.Brief.Target.Site)
+					return nil, nil, nil, fmt.Errorf("error %q: channel %q does not drive the device", e.Name, name)
 				}
-				for k := range d[i].operators {
-					if e.Quadrature == "" || e.Quadrature == "IQ"[k:k+1] {
-						c.Mix[d[i].control+k][d[i].control+k] = 1
+				if e.Quadrature != "" && len(d[i].paths) > 0 {
+					return nil, nil, nil, fmt.Errorf("error %q: found a quadrature of %q, whose crosstalk turns against it; allowed: both quadratures", e.Name, name)
+				}
+				diagonal := func(first, n int) {
+					for k := range n {
+						if e.Quadrature == "" || e.Quadrature == "IQ"[k:k+1] {
+							c.Mix[first+k][first+k] = 1
+						}
 					}
+				}
+				diagonal(d[i].control, len(d[i].operators))
+				for _, p := range d[i].paths {
+					diagonal(p.control, len(p.operators))
 				}
 			}
 		case brief.Skew:
+			if len(d[lane].paths) > 0 {
+				return nil, nil, nil, fmt.Errorf("error %q: found the quadratures of %q, whose crosstalk turns against them; allowed: a channel without", e.Name, e.Channels[0])
+			}
 			c.Kind, c.Mix = robust.Mixed, mix()
 			c.Mix[d[lane].control][d[lane].control+1] = -1
+		case brief.Crosstalk:
+			if d[lane].curve != nil {
+				return nil, nil, nil, fmt.Errorf("error %q: found channel %q, whose bias has a polynomial or a loop; allowed: a channel without (what reaches another site has a map of its own)", e.Name, e.Channels[0])
+			}
+			c.Kind, c.Mix = robust.Mixed, mix()
+			full := complex(in.Profile.Channels[d[lane].channel].FullScale, 0)
+			for k, op := range e.Reach {
+				c.Mix[first+len(phantoms)][d[lane].control+k] = 1
+				phantoms = append(phantoms, op.Scale(full))
+			}
 		case brief.Offset: // what a constant at the converter makes of H, per rad/ns
 			i := 0
 			if e.Quadrature == "Q" {
 				i = 1
 			}
 			ch := &in.Profile.Channels[d[lane].channel]
-			c.Kind, c.Vector = robust.Static, pauli(d[lane].operators[i])
-			c.Size = 2 * e.Size * ch.FullScale * cmplx.Abs(ch.Line.DC()) * length(c.Vector)
-			if in.Device.Dim() > 2 {
-				c.Operator, c.Vector = d[lane].operators[i].Data, dynamics.Vec{0, 0, 1}
+			rate := atRest(in, ch) * cmplx.Abs(ch.Line.DC())
+			if math.Abs(atRest(in, ch)) <= flat*d[lane].full {
+				return nil, nil, nil, fmt.Errorf("error %q: found channel %q, whose bias is flat where nothing is played; allowed: a channel of which an offset does something to first order", e.Name, e.Channels[0])
+			}
+			op := d[lane].operators[i]
+			if plain {
+				c.Vector = pauli(op)
+				rate *= 2 * length(c.Vector)
+			}
+			c.Kind, c.Size = robust.Static, e.Size*math.Abs(rate)
+			if scaleAll(c.Values, rate); !plain {
+				c.Operators, c.Names = [][]complex128{op.Data}, []string{e.Name}
 			}
 		case brief.Line:
 			ch := &in.Profile.Channels[d[lane].channel]
 			p, ok := ch.Parameter(e.Parameter)
 			if !ok || p.Refused != "" {
-				return nil, nil, fmt.Errorf("error %q: parameter %q of channel %q has no derivative", e.Name, e.Parameter, ch.Name)
+				return nil, nil, nil, fmt.Errorf("error %q: parameter %q of channel %q has no derivative", e.Name, e.Parameter, ch.Name)
 			}
 			c.Kind = robust.Line
-			s = &slope{lane, feed{p.Slope, in.Profile.Start(d[lane].channel) - opening}}
+			s = &slope{lane, feed{line: p.Slope, at: in.Profile.Start(d[lane].channel) - opening}}
 		default:
-			return nil, nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
+			return nil, nil, nil, fmt.Errorf("error %q: kind %q is not known here", e.Name, e.Kind)
 		}
 		held, slopes = append(held, c), append(slopes, s)
 	}
-	if n := toggles(held); n > dynamics.MaxToggles {
-		return nil, nil, fmt.Errorf("found %d errors that a search must follow at once; allowed: up to %d, any number of static ones counting as three", n, dynamics.MaxToggles)
+	if n := toggles(held); plain && n > dynamics.MaxToggles {
+		return nil, nil, nil, fmt.Errorf("found %d errors that a search must follow at once; allowed: up to %d, any number of static ones counting as three", n, dynamics.MaxToggles)
 	}
-	return held, slopes, nil
+	return held, slopes, phantoms, nil
+}
+
+// searchNodes and claimNodes are how many frequencies stand for a noise: they reach to
+// 2.8 times their number over the span.
+const (
+	searchNodes = 16
+	claimNodes  = 64
+)
+
+// nodes gives the frequencies by which a noise is judged, with their weights.
+func nodes(s *noise.Spectrum, span float64, n int) (list []robust.Node) {
+	rule := s.Nodes(span, n)
+	for i, w := range rule.Frequency {
+		list = append(list, robust.Node{Frequency: w, Weight: rule.Weight[i]})
+	}
+	return list
+}
+
+// spread gives the sizes of an error over which the exact infidelity is to be low, with
+// their weights: those of the brief, alike; or the worst of none and the error's size of
+// either sign; or a normal distribution, by Gauss and Hermite.
+func spread(e *brief.Error) (values, shares []float64) {
+	switch {
+	case e.Spread == "":
+		return nil, nil
+	case e.Values != nil:
+		values = slices.Clone(e.Values)
+	case e.Spread == brief.Corners:
+		values = []float64{-e.Size, 0, e.Size}
+	default:
+		const points = 7
+		x, w := make([]float64, points), make([]float64, points)
+		quad.Hermite{}.FixedLocations(x, w, math.Inf(-1), math.Inf(1))
+		for i := range x {
+			values, shares = append(values, math.Sqrt2*e.Size*x[i]), append(shares, w[i]/math.Sqrt(math.Pi))
+		}
+		return values, shares
+	}
+	for range values {
+		shares = append(shares, 1/float64(len(values)))
+	}
+	return values, shares
+}
+
+func scaleAll(list []float64, f float64) {
+	for i := range list {
+		list[i] *= f
+	}
 }
 
 // toggles counts what dynamics has to follow for the classes: see robust.NewGate.
@@ -367,6 +532,11 @@ func toggles(held []robust.Class) int {
 		statics = 3
 	}
 	return min(statics, 3) + others
+}
+
+// on finds the channel of a name among those that drive; -1 for none.
+func on(p *hardware.Profile, d []driven, name string) int {
+	return slices.IndexFunc(d, func(x driven) bool { return p.Channels[x.channel].Name == name })
 }
 
 // opening is the instant of the gate's window: that of the last channel to arrive.
@@ -420,10 +590,14 @@ func (o outcome) better(p outcome) bool {
 // find searches from many starts, refines the lowest-numbered successes and
 // keeps the best of them.
 func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progress)) outcome {
-	want := 1
-	refine := b.Refine && len(q.spin.Held) > 0
+	want, pool := 1, candidates
+	refine := b.Refine && slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Values == nil && c.Noise == nil })
 	if refine {
-		want = candidates
+		pool = q.pool()
+		refine = pool > 0
+	}
+	if refine || q.spread() {
+		want = max(1, pool)
 	}
 	workers := runtime.GOMAXPROCS(0)
 	progress(Progress{Stage: "search", Of: q.starts, Expected: q.expected() * time.Duration(q.starts) / time.Duration(workers)})
@@ -452,12 +626,10 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 		}
 		return out
 	}
-	if !refine {
-		won = won[:1]
-	}
-	pool := q.refine(ctx, won, refine, progress)
-	best := pool[0]
-	for _, c := range pool {
+	won = won[:min(want, len(won))]
+	refined := q.refine(ctx, won, refine, progress)
+	best := refined[0]
+	for _, c := range refined {
 		out.evaluations += c.evaluations
 		if c.better(best) {
 			best = c
@@ -476,19 +648,107 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 // expected is a rough upper bound of the time of one start: that of its
 // evaluations, were they all used. It is shown, and nothing depends on it.
 func (q *problem) expected() time.Duration {
-	g := q.gate(false)
+	p := q.residuals(q.gate(false))
 	c := q.start(0).c
-	r, jac := make([]float64, g.Rows()), make([]float64, g.Rows()*g.Dim())
+	r := make([]float64, p.Rows)
 	begun := time.Now()
-	g.Residuals(c, r)
-	g.Jacobian(jac)
+	p.Residuals(c, r)
+	if p.Jacobian == nil {
+		p.Gradient(r, make([]float64, p.Dim))
+		return 4000 * time.Since(begun)
+	}
+	p.Jacobian(make([]float64, p.Rows*p.Dim))
 	return 300 * time.Since(begun)
 }
 
-// solve runs one start on the coarse grid.
+// solve runs one start on the coarse grid. A start that ends at a small miss instead of a
+// zero is a success too where that meets what is required, and there is no zero, as of a
+// spread, or it would cost hours.
 func (q *problem) solve(ctx context.Context, number int) solve.Result {
 	st := q.start(number)
-	return solve.GaussNewton(ctx, q.residuals(q.gate(false)), q.set, st.c, solve.Options{Kappa: st.kappa})
+	return q.descend(ctx, false, st.c, solve.Options{Kappa: st.kappa})
+}
+
+// What a quasi-Newton search has brought close, some steps of Gauss-Newton finish: they are dear, and see
+// the narrow valleys in which the other creeps.
+const (
+	landing      = 0.1 // the miss under which they are worth it
+	landingSteps = 150
+)
+
+// descend solves from c on the coarse or the fine grid, by what serves the number of residuals.
+func (q *problem) descend(ctx context.Context, fine bool, c []float64, o solve.Options) solve.Result {
+	g := q.gate(fine)
+	p := q.residuals(g)
+	if l, ok := g.(*robust.LevelsGate); ok && fine && l.Fits() { // near the end already
+		p.Jacobian = g.Jacobian
+	}
+	r := solve.GaussNewton(ctx, p, q.set, c, o)
+	if p.Jacobian == nil && r.Status != solve.Converged && r.Miss < landing && g.(*robust.LevelsGate).Fits() && ctx.Err() == nil {
+		p.Jacobian = g.Jacobian
+		o.Iterations = landingSteps
+		next := solve.GaussNewton(ctx, p, q.set, r.C, o)
+		next.Evaluations += r.Evaluations
+		next.Iterations += r.Iterations
+		if r.Evaluations = next.Evaluations; next.Miss <= r.Miss {
+			r = next
+		}
+	}
+	if r.Status == solve.Stalled || r.Status == solve.Exhausted {
+		if (q.spread() || p.Gradient != nil) && q.meets(fine, g, r.C) {
+			r.Status = solve.Converged
+		}
+	}
+	return r
+}
+
+// withinRequired is the share of what is required that a miss may use up before rounding.
+const withinRequired = 0.5
+
+// meets tells whether the samples of c reach what the brief requires of infidelity and
+// susceptibilities, on the grid of g.
+func (q *problem) meets(fine bool, g evaluator, c []float64) bool {
+	a := &q.coarse
+	if fine {
+		a = &q.fine
+	}
+	u, v := q.controls(a, q.sampled(c))
+	f := g.Figures(u, v)
+	if !(f.Infidelity <= withinRequired*q.require.Infidelity) {
+		return false
+	}
+	for i := range q.spin.Held {
+		if c := &q.spin.Held[i]; c.Values == nil && c.Noise == nil && !(f.Susceptibility[i] <= withinRequired*q.require.Susceptibility) {
+			return false
+		}
+	}
+	return true
+}
+
+// spread tells whether the search has no zero to find: with an error that is held over a
+// spread of its sizes, or that fluctuates.
+func (q *problem) spread() bool {
+	return slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Values != nil || c.Noise != nil })
+}
+
+// finishWork is how many multiplications the refinement of all candidates may take, roughly: some minutes.
+const finishWork = 3e11
+
+// pool is how many successes are refined: fewer of dear problems, and none where even one would take too long.
+func (q *problem) pool() int {
+	l, ok := q.finite(rounds[0][0]).(*robust.LevelsGate)
+	if !ok {
+		return candidates
+	}
+	iterations := 0
+	for _, st := range rounds[0] {
+		iterations += st.iterations
+	}
+	jacobian, gradient := l.Work()
+	if l.Many() {
+		jacobian = gradient
+	}
+	return int(math.Min(candidates, finishWork/(jacobian*float64(iterations))))
 }
 
 // A candidate is a success on its way to the finish.
@@ -555,6 +815,9 @@ func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
 	if c.c == nil {
 		q.polish(ctx, c)
 	}
+	if slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Worst }) {
+		q.even(ctx, c)
+	}
 	if len(stages) == 0 {
 		return
 	}
@@ -570,11 +833,53 @@ func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
 // polish brings the first order back to zero on the fine grid. It is short, and
 // ends what was begun even when interrupted.
 func (q *problem) polish(ctx context.Context, c *candidate) {
-	r := solve.GaussNewton(context.WithoutCancel(ctx), q.residuals(q.gate(true)), q.set, c.wide, solve.Options{Iterations: 100})
+	r := q.descend(context.WithoutCancel(ctx), true, c.wide, solve.Options{Iterations: 100})
 	c.evaluations += r.Evaluations
 	next := candidate{zero: r.Status == solve.Converged, loss: q.loss(r.C)}
 	if c.c == nil || next.better(*c) {
 		c.c, c.miss, c.zero, c.loss = r.C, r.Miss, next.zero, next.loss
+	}
+}
+
+// even lowers the largest infidelity over the sizes of errors of which the worst counts:
+// those that lose most weigh more the next time (Lawson 1961, thesis, University of
+// California, Los Angeles; for least squares in the place of linear problems).
+func (q *problem) even(ctx context.Context, c *candidate) {
+	const tries = 10
+	o := *q
+	o.spin.Held = slices.Clone(q.spin.Held)
+	x := c.c
+	for range tries {
+		u, v := q.controls(&q.fine, q.sampled(x))
+		for i := range o.spin.Held {
+			h := &o.spin.Held[i]
+			if !h.Worst {
+				continue
+			}
+			shares, sum := make([]float64, len(h.Values)), 0.0
+			for k := range h.Values {
+				one := *h
+				one.Values, one.Shares = h.Values[k:k+1], []float64{1}
+				held := slices.Clone(o.spin.Held)
+				held[i] = one
+				shares[k] = h.Shares[k] * math.Sqrt(q.evaluator(q.fine.Grid, robust.Response{}, held, 0).MeanInfidelity(u, v, i))
+				sum += shares[k]
+			}
+			if !(sum > 0) {
+				return
+			}
+			for k := range shares {
+				shares[k] /= sum
+			}
+			h.Shares = shares
+		}
+		r := o.descend(ctx, true, x, solve.Options{Iterations: 60})
+		c.evaluations += r.Evaluations
+		x = r.C
+		next := candidate{zero: r.Status == solve.Converged, loss: q.loss(x)}
+		if next.better(*c) {
+			c.c, c.miss, c.loss = x, r.Miss, next.loss
+		}
 	}
 }
 
@@ -586,6 +891,9 @@ func (q *problem) loss(c []float64) float64 {
 	sum := 0.0
 	for i := range q.spin.Held {
 		sum += g.MeanInfidelity(u, v, i)
+	}
+	for _, x := range g.Figures(u, v).Noise {
+		sum += x
 	}
 	return sum
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"strings"
 
 	"holdfast/design/brief"
 	"holdfast/design/device"
@@ -53,11 +54,11 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	record := Record{
 		Format: 1,
 		Pulse: PulseFacts{
-			Name: b.Name, Target: b.Target.Label + " on " + b.Target.Site,
+			Name: b.Name, Target: b.Target.Label + " on " + sites(in),
 			Span: quantity.Format(b.Span, quantity.Time), HeldByDefault: b.Defaulted, Status: string(out.status),
 			Held: []string{},
 		},
-		Basis: BasisFacts{Family: first.basis.Family, PerQuad: n, I: out.c[:n], Q: out.c[n : 2*n]},
+		Basis: BasisFacts{Family: first.basis.Family, PerQuad: n, I: out.c[:n], Q: []float64{}},
 		Search: SearchFacts{
 			Seed: b.Seed, Starts: b.Starts, Tried: out.tried, Successes: out.successes, Winner: out.winner,
 			Evaluations: out.evaluations, Equations: q.gate(false).Rows(), Refined: out.refined, Miss: out.miss,
@@ -65,8 +66,11 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		Require: RequireFacts{Infidelity: b.Require.Infidelity, Susceptibility: b.Require.Susceptibility},
 		Provenance: ProvenanceFacts{
 			Program: "holdfast", Version: in.Version, Instrument: in.Profile.Name, Device: in.Device.Name,
-			Site: b.Target.Site, Channel: ch.Name,
+			Site: sites(in), Channel: ch.Name,
 		},
+	}
+	if first.quadratures == 2 {
+		record.Basis.Q = out.c[n : 2*n]
 	}
 	if !math.IsInf(ch.Band, 1) {
 		record.Basis.Band = quantity.Format(ch.Band, quantity.Frequency)
@@ -102,7 +106,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		case brief.Offset: // a share of full scale at the converter, as the rate that it drives
 			if i, ok := in.Profile.Channel(e.Channels[0]); ok {
 				ch := &in.Profile.Channels[i]
-				f.Rate = m.Size * ch.FullScale * cmplx.Abs(ch.Line.DC())
+				f.Rate = m.Size * math.Abs(atRest(in, ch)) * cmplx.Abs(ch.Line.DC())
 			}
 		default:
 			f.Rate = m.Size
@@ -110,8 +114,8 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		record.Require.Margins = append(record.Require.Margins, f)
 	}
 	for _, s := range in.Device.Sites {
-		if s.Name == b.Target.Site && (s.T1 > 0 || s.T2 > 0) {
-			record.Decoherence = &DecayFacts{T1: s.T1, T2: s.T2}
+		if s.T1 > 0 || s.T2 > 0 {
+			record.Decoherence = append(record.Decoherence, DecayFacts{Site: s.Name, T1: s.T1, T2: s.T2})
 		}
 	}
 	record.Headroom = headroom
@@ -124,6 +128,18 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		return p, q.turn(p, in, d, exact)
 	}
 	return p, nil
+}
+
+// sites names the sites of the target: of states all of the device.
+func sites(in Inputs) string {
+	names := in.Brief.Target.Sites
+	if in.Brief.Target.From != nil {
+		names = nil
+		for _, s := range in.Device.Sites {
+			names = append(names, s.Name)
+		}
+	}
+	return strings.Join(names, ", ")
 }
 
 // turn adds the waveforms of the gate at the angles that the brief asks for. The
@@ -203,9 +219,17 @@ func named(b *brief.Brief, name string) brief.Error {
 func (q *problem) model(in Inputs, d []driven) Model {
 	m := Model{
 		SamplePeriod: in.Profile.SamplePeriod, Samples: q.samples, Bits: in.Profile.Bits, Ends: in.Brief.Ends,
-		WindowStart: opening(in.Profile, d), Dim: in.Device.Dim(), CodeSpace: []int{0, 1},
-		Static: rowsOf(in.Device.Static()), Target: rowsOf(in.Brief.Target.Matrix),
-		FreeZBefore: []float64{}, FreeZAfter: []float64{},
+		WindowStart: opening(in.Profile, d), Dim: in.Device.Dim(), CodeSpace: in.Device.CodeSpace(),
+		Static: rowsOf(in.Device.Static()), FreeZBefore: []float64{}, FreeZAfter: []float64{},
+		Rotating: turning(in.Device.Rotating()), Dropped: turning(in.Device.Dropped()),
+	}
+	if len(in.Device.Sites) > 1 {
+		m.Sites = in.Device.Levels()
+	}
+	if t := &in.Brief.Target; t.From == nil {
+		m.Target = rowsOf(t.Whole)
+	} else {
+		m.From, m.To = vectors(t.From), vectors(t.To)
 	}
 	stems := map[string]bool{}
 	for i, l := range q.lanes {
@@ -242,7 +266,20 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			mc.Compression = append(mc.Compression, [2]float64{pt.Converter, pt.Reached})
 		}
 		if ch.Shift != 0 {
-			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(in.Device.ShiftOperator())
+			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(in.Device.ShiftOperatorOf(ch.Name))
+		}
+		if b := in.Device.Map(ch.Name); b != nil {
+			mc.MapPolynomial = b.Polynomial
+			if l := b.Loop; l != nil {
+				mc.MapLoop = []float64{l.Highest, l.Bias, l.FullScale, l.Asymmetry}
+			}
+		}
+		for _, p := range d[i].paths {
+			mp := ModelPath{Frequency: p.frequency}
+			for _, op := range p.operators {
+				mp.Operators = append(mp.Operators, rowsOf(op))
+			}
+			mc.Paths = append(mc.Paths, mp)
 		}
 		for _, op := range d[i].operators {
 			mc.Operators = append(mc.Operators, rowsOf(op))
@@ -255,7 +292,20 @@ func (q *problem) model(in Inputs, d []driven) Model {
 		r := ModelError{Name: e.Name, Held: true, Kind: e.Kind, Channels: e.Channels, Quadrature: e.Quadrature}
 		switch e.Kind {
 		case brief.Static:
-			r.Operator = rowsOf(in.Device.Lift(e.Operator))
+			r.Operator = rowsOf(e.Members[0].Operator)
+		case brief.Any:
+			if q.levels == nil {
+				break
+			}
+			r.Leaks = e.Leak
+			for _, m := range e.Members {
+				r.Operators, r.Names, r.Weights = append(r.Operators, rowsOf(m.Operator)), append(r.Names, m.Name), append(r.Weights, m.Weight)
+			}
+		case brief.Crosstalk:
+			r.Channels, r.Channel = nil, e.Channels[0]
+			for _, op := range e.Reach {
+				r.Operators = append(r.Operators, rowsOf(op))
+			}
 		case brief.Offset: // a static error along what the quadrature drives
 			r.Kind, r.Channels, r.Quadrature = brief.Static, nil, ""
 			for k, x := range d {
@@ -272,10 +322,23 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			l := lineOf(q.slopes[i].feed.line)
 			r.LineModel = &l
 		}
+		if e.Spread != "" {
+			r.Spread = e.Spread
+			r.SpreadValues, r.SpreadShares = spread(&e)
+			if e.Kind == brief.Offset {
+				ch := &in.Profile.Channels[d[on(in.Profile, d, e.Channels[0])].channel]
+				scaleAll(r.SpreadValues, atRest(in, ch)*cmplx.Abs(ch.Line.DC()))
+			}
+		}
+		if e.Noise != nil {
+			for _, n := range nodes(e.Noise, in.Brief.Span, claimNodes) {
+				r.NoiseFrequencies, r.NoiseWeights = append(r.NoiseFrequencies, n.Frequency), append(r.NoiseWeights, n.Weight)
+			}
+		}
 		m.Errors = append(m.Errors, r)
 	}
 	for _, name := range []string{"detuning", "amplitude", "X", "Y", "Z"} {
-		if known[name] || in.Device.Dim() > 2 { // of one spin all of these are judged
+		if known[name] || in.Device.Dim() > 2 || q.levels != nil { // of one spin all of these are judged
 			continue
 		}
 		r := ModelError{Name: name, Kind: brief.Static}
@@ -298,6 +361,25 @@ func lineOf(l filter.Line) LineModel {
 		m.Poles = append(m.Poles, pair(t.Pole))
 		m.Powers = append(m.Powers, t.Power)
 		m.Residues = append(m.Residues, pair(t.Residue))
+	}
+	return m
+}
+
+// turning writes down terms that rotate.
+func turning(list []device.Rotating) (m []ModelRotating) {
+	for _, r := range list {
+		m = append(m, ModelRotating{r.Frequency, rowsOf(r.Cosine), rowsOf(r.Sine)})
+	}
+	return m
+}
+
+func vectors(list [][]complex128) (m [][]Complex) {
+	for _, v := range list {
+		row := make([]Complex, len(v))
+		for i, z := range v {
+			row[i] = pair(z)
+		}
+		m = append(m, row)
 	}
 	return m
 }
@@ -330,6 +412,9 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		if i < declared {
 			c := q.spin.Held[i]
 			c.Weight = 1
+			if b := &in.Brief.Errors[i]; b.Noise != nil {
+				c.Noise = nodes(b.Noise, in.Brief.Span, claimNodes)
+			}
 			s.Held, slopes = append(s.Held, c), append(slopes, q.slopes[i])
 			continue
 		}
@@ -337,8 +422,7 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		if e.Kind == brief.Amplitude {
 			c.Kind = robust.Amplitude
 		} else {
-			m := matrixOf(e.Operator)
-			c.Vector, c.Operator = pauli(m), m.Data
+			c.Vector = pauli(matrixOf(e.Operator))
 		}
 		s.Held, slopes = append(s.Held, c), append(slopes, nil)
 	}
@@ -365,14 +449,39 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 	if in.Brief.Ends == brief.Window {
 		other = brief.Settled
 	}
-	f := figures(in.Brief.Ends, rounded)
+	g, u, v := on(in.Brief.Ends, rounded)
+	f := g.Figures(u, v)
+	for i := range in.Brief.Errors {
+		e, c := &r.Model.Errors[i], &s.Held[i]
+		if c.Noise != nil {
+			e.NoiseInfidelity = &f.Noise[i]
+		}
+		if c.Values == nil {
+			continue
+		}
+		loss := g.MeanInfidelity(u, v, i)
+		e.SpreadInfidelity = &loss
+	}
 	r.Claim.Infidelity, r.Claim.Leakage = f.Infidelity, f.Leakage
 	r.Search.Before = figures(in.Brief.Ends, exact).Infidelity
 	for i := range r.Model.Errors {
 		r.Model.Errors[i].Susceptibility = f.Susceptibility[i]
 	}
 	if q.levels != nil { // whose ring-out turns by no single angle
-		r.Claim.InfidelityOtherEnds = figures(other, rounded).Infidelity
+		if q.levels.Local {
+			r.Model.LocalBefore, r.Model.LocalAfter = locals(f.Rotations.Before), locals(f.Rotations.After)
+		} else {
+			r.Model.FreeZBefore = append(r.Model.FreeZBefore, robust.Angles(f.Rotations.Before)...)
+			r.Model.FreeZAfter = append(r.Model.FreeZAfter, robust.Angles(f.Rotations.After)...)
+		}
+		if len(in.Device.CodeSpace()) < in.Device.Dim() {
+			for i := range r.Model.Errors {
+				r.Model.Errors[i].Leak = &f.Leak[i]
+			}
+		}
+		// the free rotations are those of the stated ends, whatever the ends
+		g, u, _ = on(other, rounded)
+		r.Claim.InfidelityOtherEnds = g.(*robust.LevelsGate).InfidelityAt(u, f.Rotations)
 		return nil
 	}
 	if s.FreeBefore {
@@ -388,8 +497,8 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		return robust.NewGate(t, robust.Response{}, 0), u
 	}
 	// the free angles are those of the stated ends, whatever the ends
-	g, u := spin(other)
-	r.Claim.InfidelityOtherEnds = g.InfidelityAt(u, f.Before, f.After)
+	elsewhere, arrives := spin(other)
+	r.Claim.InfidelityOtherEnds = elsewhere.InfidelityAt(arrives, f.Before, f.After)
 	gate := func(ends string) dynamics.Quat {
 		g, u := spin(ends)
 		// What arrives before the window, of channels that are early, is no ring-out.
@@ -403,6 +512,14 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 	angle := 2 * math.Atan2(math.Sqrt(tail[1]*tail[1]+tail[2]*tail[2]+tail[3]*tail[3]), math.Abs(tail[0]))
 	r.Claim.TailAngle = &angle
 	return nil
+}
+
+// locals writes down rotations of the sites.
+func locals(list [][4]complex128) (m [][][]Complex) {
+	for _, r := range list {
+		m = append(m, [][]Complex{{pair(r[0]), pair(r[1])}, {pair(r[2]), pair(r[3])}})
+	}
+	return m
 }
 
 func matrixOf(rows [][]Complex) device.Matrix {
@@ -420,6 +537,9 @@ func (p *Pulse) Summary() string {
 	s := p.Record.Search
 	switch p.Status {
 	case Found:
+		if s.Miss > 1e-12 { // of a spread or a noise, or of very many residuals
+			return fmt.Sprintf("found: %d of %d starts ended where the requirements are met; start %d was kept, at a miss of %.3g", s.Successes, s.Tried, s.Winner, math.Sqrt(s.Miss))
+		}
 		return fmt.Sprintf("found: %d of %d starts ended at a zero; start %d was kept", s.Successes, s.Tried, s.Winner)
 	case Interrupted:
 		return fmt.Sprintf("interrupted after %d starts; the best so far misses by %.3g", s.Tried, math.Sqrt(s.Miss))

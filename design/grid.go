@@ -14,18 +14,18 @@ import (
 // A feed is a line with the instant at which its first sample arrives, in ns
 // from the start of the gate's window; it is never later than the window.
 type feed struct {
-	line filter.Line
-	at   float64
+	line   filter.Line
+	at     float64
+	curved bool // what it drives is no multiple of what arrives
 }
 
 // An axis is the time grid of one span: the steps of the propagation, and the
 // instants (ns from the start of the window) at which the fields are wanted.
 type axis struct {
-	robust.Grid
-	times []float64 // of the Gauss nodes of all steps but the last cell
-	cell  bool      // the last step stands for everything after the last time
-	end   float64   // of the last true step
-	h     float64   // sample period
+	robust.Grid         // its Times are of all steps but the last cell
+	cell        bool    // the last step stands for everything after the last time
+	end         float64 // of the last true step
+	h           float64 // sample period
 }
 
 const (
@@ -107,8 +107,8 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 	}
 	// After the span: until every pole but the slowest has died when nothing
 	// else turns the device and there is but one feed (its field then keeps its
-	// axis, and one cell carries it to infinity); else until all have died.
-	alone := static == 0 && spread == 0 && len(feeds) == 1
+	// axis, and one cell carries it to infinity, unless the rate is curved); else until all have died.
+	alone := static == 0 && spread == 0 && len(feeds) == 1 && !feeds[0].curved
 	until := 0.0
 	for _, t := range poles {
 		tau := -1 / real(t.Pole)
@@ -133,7 +133,7 @@ func newAxis(feeds []feed, n int, h, share float64, settled bool, full, static, 
 func (a *axis) extend(at float64, steps []float64) {
 	for _, s := range steps {
 		for _, g := range dynamics.GaussNodes {
-			a.times = append(a.times, at+g*s)
+			a.Times = append(a.Times, at+g*s)
 		}
 		a.Steps = append(a.Steps, s)
 		at += s
@@ -198,10 +198,10 @@ func (a *axis) nodes() int { return 2 * len(a.Steps) }
 // field returns what arrives at the nodes for samples x, in dst when it has the
 // room; the last cell's two nodes carry the integral of all that is left.
 func (a *axis) field(f feed, x []complex128, dst []complex128) []complex128 {
-	times := a.times
+	times := a.Times
 	if f.at != 0 {
-		times = make([]float64, len(a.times))
-		for i, t := range a.times {
+		times = make([]float64, len(a.Times))
+		for i, t := range a.Times {
 			times[i] = t - f.at
 		}
 	}
@@ -213,25 +213,37 @@ func (a *axis) field(f feed, x []complex128, dst []complex128) []complex128 {
 	return dst
 }
 
-// block gives the response of one lane at the nodes.
-func (a *axis) block(l *lane, f feed) robust.Block {
+// blocks give the response of one lane at the nodes, of each of its ways to the device.
+func (a *axis) blocks(l *lane, f feed) []robust.Block {
 	n, nodes := len(l.columns), a.nodes()
-	b := robust.Block{First: l.first, N: n, Control: l.control, Quadrature: l.quadratures == 2, Re: make([]float64, nodes*n)}
-	if b.Quadrature && !f.line.Real() {
-		b.Im = make([]float64, nodes*n)
+	list := []robust.Block{{First: l.first, N: n, Control: l.control, Quadrature: l.quadratures == 2, Re: make([]float64, nodes*n)}}
+	if list[0].Quadrature && !f.line.Real() {
+		list[0].Im = make([]float64, nodes*n)
+	}
+	for _, p := range l.paths {
+		list = append(list, robust.Block{First: l.first, N: n, Control: p.control, Quadrature: true, Re: make([]float64, nodes*n), Im: make([]float64, nodes*n)})
 	}
 	var u []complex128
 	for j, x := range l.columns {
 		u = a.field(f, x, u)
-		for i, v := range u {
-			b.Re[j*nodes+i] = real(v)
-			if b.Im != nil {
-				b.Im[j*nodes+i] = imag(v)
+		for k := range list {
+			b := &list[k]
+			for i, v := range u {
+				if k > 0 {
+					v *= a.phase(l.paths[k-1], i)
+				}
+				b.Re[j*nodes+i] = real(v)
+				if b.Im != nil {
+					b.Im[j*nodes+i] = imag(v)
+				}
 			}
 		}
 	}
-	return b
+	return list
 }
+
+// phase is what a path turns a channel by at a node. A grid with paths has no last cell.
+func (a *axis) phase(p path, node int) complex128 { return cmplx.Rect(1, -p.frequency*a.Times[node]) }
 
 // put stores the field of one lane in the controls u.
 func (a *axis) put(l *lane, f feed, x []complex128, u []float64) {
@@ -240,6 +252,10 @@ func (a *axis) put(l *lane, f feed, x []complex128, u []float64) {
 		u[l.control*n+i] = real(v)
 		if l.quadratures == 2 {
 			u[(l.control+1)*n+i] = imag(v)
+		}
+		for _, p := range l.paths {
+			w := v * a.phase(p, i)
+			u[p.control*n+i], u[(p.control+1)*n+i] = real(w), imag(w)
 		}
 	}
 }

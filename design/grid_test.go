@@ -68,12 +68,12 @@ func TestAxis(t *testing.T) {
 		if got := sum(steps[a.Last:]); !(math.Abs(got-a.Trail) <= 1e-9*(1+got)) || !(math.Abs(n*h+got-a.end) <= 1e-9*(1+got)) {
 			t.Errorf("%s: %v after the window, Trail says %v and end %v", c.name, got, a.Trail, a.end)
 		}
-		if len(a.times) != 2*len(steps) {
-			t.Fatalf("%s: %d nodes for %d steps", c.name, len(a.times), len(steps))
+		if len(a.Times) != 2*len(steps) {
+			t.Fatalf("%s: %d nodes for %d steps", c.name, len(a.Times), len(steps))
 		}
 		at := -a.Lead
 		for j, s := range steps {
-			if x, y := a.times[2*j]-at, a.times[2*j+1]-at; !(x > 0 && x < y && y < s) {
+			if x, y := a.Times[2*j]-at, a.Times[2*j+1]-at; !(x > 0 && x < y && y < s) {
 				t.Errorf("%s: step %d of %v has its nodes at %v and %v", c.name, j, s, x, y)
 			}
 			for _, f := range c.feeds { // no edge inside a step

@@ -61,6 +61,12 @@ func TestMinimalTimes(t *testing.T) {
 // playable drive. What is found is judged by replay, before rounding.
 func minimal(t *testing.T, head, tail string, time float64, starts int) *Pulse {
 	t.Helper()
+	_, p := minimalInputs(t, head, tail, time, starts)
+	return p
+}
+
+func minimalInputs(t *testing.T, head, tail string, time float64, starts int) (Inputs, *Pulse) {
+	t.Helper()
 	const n = 192
 	ideal, err := hardware.Parse("ideal.toml", []byte(textFile(t, "ideal/ideal.toml")))
 	if err != nil {
@@ -85,7 +91,7 @@ func minimal(t *testing.T, head, tail string, time float64, starts int) *Pulse {
 		t.Errorf("the drive of a pulse of %.6g pi would turn by %.9g pi", time, angle)
 	}
 	if p.Status != Found {
-		return p
+		return in, p
 	}
 	src, err := ReadSources(in)
 	if err != nil {
@@ -103,5 +109,5 @@ func minimal(t *testing.T, head, tail string, time float64, starts int) *Pulse {
 			t.Errorf("replay finds susceptibility %.3g to %s in a pulse of %.6g pi", e.Susceptibility, e.Name, time)
 		}
 	}
-	return p
+	return in, p
 }

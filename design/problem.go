@@ -3,11 +3,13 @@ package design
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 	"math/rand/v2"
 
 	"gonum.org/v1/gonum/mat"
 
 	"holdfast/design/brief"
+	"holdfast/design/device"
 	"holdfast/design/dynamics"
 	"holdfast/design/robust"
 	"holdfast/design/solve"
@@ -24,6 +26,7 @@ type problem struct {
 	target  dynamics.Vec // rotation vector of the target, rad
 	lanes   []lane
 	dim     int // coefficients in all
+	count   int // controls
 
 	set   *solve.Set
 	quiet *mat.Dense // orthonormal columns: the directions that ring out; nil without such a limit
@@ -35,6 +38,7 @@ type problem struct {
 	slopes         []*slope       // by held class: the line of an error of a line; nil for the others
 	coarseR, fineR robust.Response
 	starts         int
+	require        brief.Require
 	seed           uint64
 	visit          func(c []float64) // of every point evaluated; nil outside tests
 	turns          []complex128      // e^{iφ} of the angles that the samples are emitted at; 1 comes first
@@ -46,7 +50,8 @@ type lane struct {
 	channel     int // of the profile
 	first       int
 	quadratures int // 2, or 1 for a baseband channel
-	control     int // the first of its controls in the spin
+	control     int // the first of its controls
+	paths       []path
 	feed        feed
 	basis       *shape.Basis
 	limit       *hardware.Set
@@ -65,7 +70,10 @@ const mostEntries = 8 << 20
 
 // A wish is what newProblem needs to know of a brief.
 type wish struct {
-	channels []int // of the profile, in the order of the spin's controls
+	channels []int // of the profile, in the order of the controls
+	paths    [][]path
+	plain    bool // a spin's
+	phantoms []device.Matrix
 	samples  int
 	family   string
 	count    int // coefficients per quadrature; 0: what the band carries
@@ -88,16 +96,22 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 	for _, c := range w.channels {
 		opening = math.Max(opening, p.Start(c))
 	}
-	for _, c := range w.channels {
+	for i, c := range w.channels {
 		l, err := newLane(p, c, w, opening)
 		if err != nil {
 			return nil, err
 		}
 		l.first, l.control = q.dim, control
+		l.feed.curved = control < len(w.spin.Maps) && w.spin.Maps[control] != nil
 		q.dim += l.quadratures * l.basis.Count
 		control += l.quadratures
+		if w.paths != nil {
+			l.paths = w.paths[i]
+			control += len(l.paths) * l.quadratures
+		}
 		q.lanes = append(q.lanes, l)
 	}
+	q.count = control + len(w.phantoms)
 	var err error
 	if q.coarse, err = q.axis(stepShare, w.settled); err != nil {
 		return nil, err
@@ -175,35 +189,70 @@ func (q *problem) axis(share float64, settled bool) (axis, error) {
 	for _, l := range q.lanes {
 		feeds = append(feeds, l.feed)
 	}
+	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, q.fastest(), length(q.spin.Static), q.reach())
+}
+
+// fastest is the largest rate at which one control turns the code space, rad/ns; of a mapped one
+// the axis has the steepest slope.
+func (q *problem) fastest() float64 {
 	full := 0.0
 	for _, a := range q.spin.Axes {
 		full = math.Max(full, length(a))
 	}
-	return newAxis(feeds, q.samples, q.profile.SamplePeriod, share, settled, full, length(q.spin.Static), q.spread())
+	if q.spin.Axes != nil || q.levels == nil {
+		return full
+	}
+	for _, a := range q.levels.Axes {
+		for _, i := range q.levels.Code {
+			row := 0.0
+			for _, j := range q.levels.Code {
+				row += cmplx.Abs(a[i*q.levels.Dim+j])
+			}
+			full = math.Max(full, 2*row)
+		}
+	}
+	return full
 }
 
-// spread is the largest difference of a ladder's energies, rad/ns; zero for a spin.
-func (q *problem) spread() float64 {
+// reach bounds the largest difference of the energies of the undriven levels (Gershgorin),
+// or how fast its terms rotate, rad/ns; zero for a spin.
+func (q *problem) reach() float64 {
 	if q.levels == nil {
 		return 0
 	}
 	low, high := math.Inf(1), math.Inf(-1)
-	for i := range q.levels.Dim {
-		e := real(q.levels.Static[i*q.levels.Dim+i])
-		low, high = math.Min(low, e), math.Max(high, e)
+	d := q.levels.Dim
+	for i := range d {
+		row := 0.0
+		for j := range d {
+			if j != i {
+				row += cmplx.Abs(q.levels.Static[i*d+j])
+			}
+		}
+		e := real(q.levels.Static[i*d+i])
+		low, high = math.Min(low, e-row), math.Max(high, e+row)
 	}
-	return high - low
+	turning := 0.0
+	for _, r := range q.levels.Rotating {
+		turning = math.Max(turning, r.Frequency)
+	}
+	for _, l := range q.lanes {
+		for _, p := range l.paths {
+			turning = math.Max(turning, math.Abs(p.frequency))
+		}
+	}
+	return high - low + turning
 }
 
 // response gives every coefficient's field at the nodes, and every slope's.
 func (q *problem) response(a *axis) robust.Response {
 	r := robust.Response{Dim: q.dim, Slopes: make([][]robust.Block, len(q.slopes))}
 	for i := range q.lanes {
-		r.Blocks = append(r.Blocks, a.block(&q.lanes[i], q.lanes[i].feed))
+		r.Blocks = append(r.Blocks, a.blocks(&q.lanes[i], q.lanes[i].feed)...)
 	}
 	for i, s := range q.slopes {
 		if s != nil {
-			r.Slopes[i] = []robust.Block{a.block(&q.lanes[s.lane], s.feed)}
+			r.Slopes[i] = a.blocks(&q.lanes[s.lane], s.feed)
 		}
 	}
 	return r
@@ -418,6 +467,9 @@ func (q *problem) start(number int) start {
 // addArea moves c along the lowest shapes so that the areas of the controls turn
 // a resonant spin by want about the target's axis, as far as they can.
 func (q *problem) addArea(c []float64, want, angle float64) {
+	if q.spin.Axes == nil { // a register's starts have no area in common
+		return
+	}
 	for _, l := range q.lanes {
 		n := l.basis.Count
 		sums := make([]float64, n)
@@ -468,7 +520,9 @@ type evaluator interface {
 func (q *problem) evaluator(grid robust.Grid, r robust.Response, held []robust.Class, refine float64) evaluator {
 	if q.levels != nil {
 		s := *q.levels
-		s.Grid, s.Held = grid, held
+		if s.Grid, s.Held = grid, held; len(grid.Steps) == len(q.coarse.Steps) {
+			s.Within = 1e-9
+		}
 		g, err := robust.NewLevelsGate(s, r, refine)
 		if err != nil {
 			panic("design: " + err.Error())
@@ -502,6 +556,9 @@ func (q *problem) finite(st stage) evaluator {
 // residuals makes the solver's problem of a gate.
 func (q *problem) residuals(g evaluator) solve.Problem {
 	p := solve.Problem{Dim: g.Dim(), Rows: g.Rows(), Residuals: g.Residuals, Jacobian: g.Jacobian}
+	if l, ok := g.(*robust.LevelsGate); ok && l.Many() {
+		p.Jacobian, p.Gradient = nil, l.Gradient
+	}
 	if q.visit != nil {
 		p.Residuals = func(c, r []float64) {
 			q.visit(c)
@@ -531,10 +588,10 @@ func (q *problem) sampled(c []float64) [][]complex128 {
 	return list
 }
 
-// controls returns what arrives at the nodes of a grid for the samples of every
+// controls returns what arrives at the nodes of a grid, in shares of full scale, for the samples of every
 // lane, and for every held class that is an error of a line what λ multiplies.
 func (q *problem) controls(a *axis, x [][]complex128) (u []float64, v [][]float64) {
-	u = make([]float64, len(q.spin.Axes)*a.nodes())
+	u = make([]float64, q.count*a.nodes())
 	v = make([][]float64, len(q.slopes))
 	for i := range q.lanes {
 		a.put(&q.lanes[i], q.lanes[i].feed, x[i], u)

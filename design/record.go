@@ -21,7 +21,7 @@ type Record struct {
 	Basis       BasisFacts      `toml:"basis"`
 	Search      SearchFacts     `toml:"search"`
 	Require     RequireFacts    `toml:"require"`
-	Decoherence *DecayFacts     `toml:"decoherence,omitempty"`
+	Decoherence []DecayFacts    `toml:"decoherence,omitempty"`
 	Provenance  ProvenanceFacts `toml:"provenance"`
 	Claim       Claim           `toml:"claim"`
 	Model       Model           `toml:"model"`
@@ -107,10 +107,11 @@ type MarginFacts struct {
 	Angle float64 `toml:"size_rad,omitzero"`
 }
 
-// DecayFacts are the device's times; absent where not stated.
+// DecayFacts are a site's times; absent where not stated.
 type DecayFacts struct {
-	T1 float64 `toml:"t1_ns,omitzero"`
-	T2 float64 `toml:"t2_ns,omitzero"`
+	Site string  `toml:"site"`
+	T1   float64 `toml:"t1_ns,omitzero"`
+	T2   float64 `toml:"t2_ns,omitzero"`
 }
 
 // ProvenanceFacts say what made the pulse, without date, host or path.
@@ -161,11 +162,32 @@ type Model struct {
 	Dim          int            `toml:"dim"`
 	CodeSpace    []int          `toml:"code_space"`
 	Static       [][]Complex    `toml:"static_rad_per_ns"`
-	Target       [][]Complex    `toml:"target"`
+	Target       [][]Complex    `toml:"target,omitempty"` // absent where states go to states
 	FreeZBefore  []float64      `toml:"free_z_before"`
 	FreeZAfter   []float64      `toml:"free_z_after"`
 	Channels     []ModelChannel `toml:"channel"`
 	Errors       []ModelError   `toml:"error"`
+
+	Sites       []int           `toml:"sites,omitempty"` // levels of each; absent for one
+	From        [][]Complex     `toml:"from,omitempty"`
+	To          [][]Complex     `toml:"to,omitempty"`
+	LocalBefore [][][]Complex   `toml:"local_before,omitempty"`
+	LocalAfter  [][][]Complex   `toml:"local_after,omitempty"`
+	Rotating    []ModelRotating `toml:"rotating,omitempty"`
+	Dropped     []ModelRotating `toml:"dropped,omitempty"`
+}
+
+// ModelRotating is H += cos(w (t - window_start)) cosine + sin(w (t - window_start)) sine.
+type ModelRotating struct {
+	Frequency float64     `toml:"frequency_rad_per_ns"`
+	Cosine    [][]Complex `toml:"cosine"`
+	Sine      [][]Complex `toml:"sine"`
+}
+
+// ModelPath is crosstalk to a site of another frame.
+type ModelPath struct {
+	Frequency float64       `toml:"frequency_rad_per_ns"`
+	Operators [][][]Complex `toml:"operators"`
 }
 
 // ModelChannel is one [[model.channel]]. A limit that the instrument does not
@@ -196,6 +218,12 @@ type ModelChannel struct {
 	Compression   [][2]float64 `toml:"compression,omitempty"`
 	Shift         *float64     `toml:"shift_rad_per_ns,omitempty"`
 	ShiftOperator [][]Complex  `toml:"shift_operator,omitempty"`
+	Paths         []ModelPath  `toml:"path,omitempty"`
+	// Of a bias that is no straight one, H += rate(s) operators[0] with s = Re u / FullScale: FullScale (c_1 s + c_2 s² + ...), or of a loop
+	// the change of highest (cos²(πf) + asymmetry² sin²(πf))^(1/4) with f = bias + full scale s flux quanta; the loop's
+	// operator has the sign of a detuning.
+	MapPolynomial []float64 `toml:"map_polynomial,omitempty"`
+	MapLoop       []float64 `toml:"map_loop,omitempty"` // highest in rad/ns, bias, full scale, asymmetry
 }
 
 // LineModel are the poles of a line: G(s) = direct + sum residue/(s - pole)^power.
@@ -217,6 +245,25 @@ type ModelError struct {
 	Channel        string      `toml:"channel,omitempty"`    // of kind "line"
 	*LineModel                 // of kind "line": what u gains per lambda, over full scale
 	Susceptibility float64     `toml:"susceptibility"`
+
+	// Of kind "any" in a register, and of kind "crosstalk".
+	Operators [][][]Complex `toml:"operators,omitempty"`
+	Names     []string      `toml:"names,omitempty"`
+	Weights   []float64     `toml:"weights,omitempty"`
+	Leaks     bool          `toml:"leak,omitempty"`
+	Leak      *float64      `toml:"leak_susceptibility,omitempty"` // where there are levels outside the code space
+
+	// Of an error that is held over a spread of its sizes: these, their weights, and the mean
+	// infidelity over them, or the worst.
+	Spread           string    `toml:"spread,omitempty"`
+	SpreadValues     []float64 `toml:"spread_values,omitempty"`
+	SpreadShares     []float64 `toml:"spread_shares,omitempty"`
+	SpreadInfidelity *float64  `toml:"spread_infidelity,omitempty"`
+	// Of an error that fluctuates: the quadrature over its spectrum, and what it adds to the
+	// infidelity to first order in it.
+	NoiseFrequencies []float64 `toml:"noise_frequencies_rad_per_ns,omitempty"`
+	NoiseWeights     []float64 `toml:"noise_weights,omitempty"`
+	NoiseInfidelity  *float64  `toml:"noise_infidelity,omitempty"`
 }
 
 // finite returns nil for a limit that is not there.

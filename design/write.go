@@ -14,11 +14,27 @@ import (
 // inputFiles are the copies of what a pulse was designed from, below inputs/.
 var inputFiles = [3]string{"profile.toml", "device.toml", "brief.toml"}
 
-// Sources are the bytes of the three input files.
-type Sources struct{ Profile, Device, Brief []byte }
+// Sources are the bytes of the three input files, and by name of those that lie beside the brief.
+type Sources struct {
+	Profile, Device, Brief []byte
+	Beside                 map[string][]byte
+}
 
-// ReadSources reads the three files that the inputs were loaded from.
+// ReadSources reads the files that the inputs were loaded from.
 func ReadSources(in Inputs) (s Sources, err error) {
+	s.Beside = map[string][]byte{}
+	for _, e := range in.Brief.Errors {
+		name := e.Rates
+		if e.Noise != nil {
+			name = e.Noise.File
+		}
+		if name == "" {
+			continue
+		}
+		if s.Beside[name], err = os.ReadFile(filepath.Join(filepath.Dir(in.Brief.File), name)); err != nil {
+			return s, err
+		}
+	}
 	for _, f := range []struct {
 		dst  *[]byte
 		path string
@@ -38,6 +54,11 @@ func (p *Pulse) Write(dir string, s Sources) error {
 	}
 	for i, data := range [][]byte{s.Profile, s.Device, s.Brief} {
 		if err := os.WriteFile(filepath.Join(dir, "inputs", inputFiles[i]), data, 0o666); err != nil {
+			return err
+		}
+	}
+	for name, data := range s.Beside { // brief.Load has seen to it that they are plain names, and end in .csv
+		if err := os.WriteFile(filepath.Join(dir, "inputs", name), data, 0o666); err != nil {
 			return err
 		}
 	}

@@ -25,6 +25,7 @@ func card(c *call) (int, error) {
 	out := f.String("out", "card", "the folder to make")
 	force := f.Bool("force", false, "keep an existing folder as NAME.before-N")
 	detuning := f.String("detuning", "", "between carrier and transition; default: of the channel's full scale")
+	channel := f.String("channel", "", "the drive whose card it is; default: the only one, of one site the first")
 	operands, err := c.parse(f, 2, 2)
 	if err != nil {
 		return exitBadInput, err
@@ -37,7 +38,7 @@ func card(c *call) (int, error) {
 	if err != nil {
 		return exitBadInput, err
 	}
-	b, err := newBench(p, d)
+	b, err := newBench(p, d, *channel)
 	if err != nil {
 		return exitBadInput, err
 	}
@@ -67,7 +68,14 @@ func card(c *call) (int, error) {
 		}
 		return exitBadInput, err
 	}
-	k := &conventionCard{bench: b, predictions: table, sequences: sequences}
+	rest, err := b.alone(c.ctx, sequences, table.table)
+	if err != nil {
+		if c.ctx.Err() != nil {
+			return exitInterrupted, fmt.Errorf("card: interrupted; nothing is written")
+		}
+		return exitBadInput, err
+	}
+	k := &conventionCard{bench: b, predictions: table, sequences: sequences, rest: rest}
 	if err := k.write(stage.Dir(), operands); err != nil {
 		return exitBadInput, err
 	}
@@ -90,6 +98,7 @@ type conventionCard struct {
 	*predictions
 	sequences []sequence
 	files     [][]string // of each sequence
+	rest      float64    // how far the rest of the device moves a population
 }
 
 // write fills the folder.
@@ -182,6 +191,10 @@ func (k *conventionCard) print(w io.Writer) error {
 	if err := t.Flush(); err != nil {
 		return err
 	}
+	if n := len(k.device.Sites); n > 1 {
+		fmt.Fprintf(w, "\n  %s\n", wrap(fmt.Sprintf("This is the table of site %q by itself, with all %d sites in |0> first. What couples it to the others, and crosstalk, move the row of the files by at most %.3f.",
+			site.Name, n, k.rest), 106, 2))
+	}
 	fmt.Fprintf(w, "\n  Any two groups differ by at least %.2f in one of the columns. What fits calls for:\n", k.distance)
 	facts = nil
 	for _, group := range k.groups() {
@@ -265,6 +278,7 @@ type (
 		SmallestDistance number         `json:"smallest_distance"`
 		Remedies         []remedyForm   `json:"groups"`
 		Cautions         []string       `json:"cautions"`
+		Rest             *number        `json:"moved_by_other_sites,omitempty"` // of several sites
 	}
 	sequenceForm struct {
 		Name    string   `json:"name"`
@@ -293,6 +307,9 @@ func (k *conventionCard) form(folder string) cardForm {
 		Format: jsonFormat, Folder: folder, Channel: k.profile.Channels[k.channel].Name, Site: k.site().Name,
 		Detuning: number(1e3 * k.detuning), Carrier: unless(k.carrierAt(), 0), Unmoved: numbers(k.unmoved[:]), SmallestDistance: number(k.distance),
 		Cautions: cautions(k.profile, k.channel),
+	}
+	if rest := number(k.rest); len(k.device.Sites) > 1 {
+		v.Rest = &rest
 	}
 	for i, q := range k.sequences {
 		v.Sequences = append(v.Sequences, sequenceForm{q.name, q.says, number(k.span(i)), len(q.codes) / 2, k.files[i]})

@@ -31,7 +31,7 @@ func starterBench(t *testing.T) *bench {
 	if err != nil {
 		t.Fatal(err)
 	}
-	b, err := newBench(p, d)
+	b, err := newBench(p, d, "")
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -8,6 +8,7 @@ import (
 	"math/cmplx"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"holdfast/design/brief"
@@ -125,15 +126,18 @@ func inBrief(path string, err error) error {
 	return fmt.Errorf("%s: what it names is at fault: %w", path, err)
 }
 
-// describeDevice says what is driven, and what waiting costs.
+// describeDevice says what is driven, what couples it, and what waiting costs.
 func describeDevice(w io.Writer, d *device.Device) {
 	fmt.Fprintf(w, "%s: device %q\n", d.File, d.Name)
-	for _, s := range d.Sites {
-		list := []fact{
-			{"|0>", fmt.Sprintf("the %s of the two energies, and the +1 state of Z", s.Zero)},
-			{"transition", stated(s.Frequency, quantity.Frequency)},
-			{"detuning", detuningInWords(s)},
-		}
+	if len(d.Sites) > 1 {
+		fmt.Fprintln(w)
+		printFacts(w, []fact{
+			{"in all", fmt.Sprintf("%s, %d levels in their product, of which %d are the code space; %s", count(len(d.Sites), "site"), d.Dim(), len(d.CodeSpace()), count(len(d.Channels()), "channel"))},
+			{"decoherence", waiting(together(d, 100), fmt.Sprintf("the sum over the sites of d/(d+1) T/4 (1/T1 + 2/T2), d = %d code states", len(d.CodeSpace())))},
+		})
+	}
+	for i, s := range d.Sites {
+		list := siteFacts(d, i)
 		for _, drive := range d.Drives {
 			if drive.Site == s.Name {
 				list = append(list, fact{"driven by", fmt.Sprintf("channel %q of the hardware profile", drive.Channel)})
@@ -141,18 +145,35 @@ func describeDevice(w io.Writer, d *device.Device) {
 		}
 		for _, bias := range d.Biases {
 			if bias.Site == s.Name {
-				list = append(list, fact{"turned by", fmt.Sprintf("channel %q of the hardware profile, about %s", bias.Channel, bias.Axis)})
+				list = append(list, fact{"turned by", fmt.Sprintf("channel %q of the hardware profile, about %s%s", bias.Channel, bias.Axis, mapInWords(&bias))})
 			}
 		}
 		list = append(list, fact{"T1", stated(s.T1, quantity.Time)}, fact{"T2", stated(s.T2, quantity.Time)})
-		if loss := decoherence(s, 100); loss > 0 {
-			list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: T/6 (1/T1 + 2/T2)%s", loss, unstatedT(s))})
-		} else {
-			list = append(list, fact{"decoherence", "is left out of every figure, as neither T1 nor T2 is stated"})
+		loss, how := decoherence(s, 100), "T/6 (1/T1 + 2/T2)"
+		if len(d.Sites) > 1 {
+			loss, how = together(d, 100, i), "its share of that of the device"
 		}
+		list = append(list, fact{"decoherence", waiting(loss, how+unstatedT(s))})
 		fmt.Fprintf(w, "\nsite %q, %d levels\n", s.Name, s.Levels)
 		printFacts(w, list)
 	}
+	for _, part := range []struct {
+		title string
+		facts []fact
+	}{{"couplings", couplingFacts(d)}, {"crosstalk", crosstalkFacts(d)}} {
+		if len(part.facts) > 0 {
+			fmt.Fprintf(w, "\n%s\n", part.title)
+			printFacts(w, part.facts)
+		}
+	}
+}
+
+// waiting says what decoherence costs a gate of 100 ns.
+func waiting(loss float64, how string) string {
+	if loss > 0 {
+		return fmt.Sprintf("adds %.3g to the infidelity for every 100 ns of a gate, whatever the pulse: %s", loss, how)
+	}
+	return "is left out of every figure, as neither T1 nor T2 is stated"
 }
 
 // detuningInWords says where the transition lies and what that adds.
@@ -181,6 +202,17 @@ func unstatedT(s device.Site) string {
 
 // decoherence is what a gate of T ns loses, as replay has it.
 func decoherence(s device.Site, T float64) float64 { return replay.Decoherence(T, s.T1, s.T2) }
+
+// together is what a gate of T ns on all sites of a device loses, as replay has it, or what the given ones contribute to that.
+func together(d *device.Device, T float64, only ...int) float64 {
+	f := replay.Folder{Model: &replay.Model{SamplePeriod: T, Samples: 1, CodeSpace: d.CodeSpace()}}
+	for i, s := range d.Sites {
+		if len(only) == 0 || slices.Contains(only, i) {
+			f.Decay = append(f.Decay, replay.Decay{Site: s.Name, T1: s.T1, T2: s.T2})
+		}
+	}
+	return f.Decoherence()
+}
 
 // belowRounding warns of limits that rounding to codes can break by itself: the search keeps them
 // before rounding only, and the finished codes are judged.
@@ -212,11 +244,16 @@ func stated(v float64, k quantity.Kind) string {
 
 // describeBrief says what is wanted, and whether there is room for it, in words and as a form.
 func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.Device) (*briefForm, error) {
-	site, channels, words := driven(b, p, d)
-	ch := &p.Channels[channels[0]]
+	if b.PhaseBy == brief.BySamples && (len(d.Sites) > 1 || b.Target.From != nil) { // as design has it
+		return nil, fmt.Errorf(`%s: phase_by: found "samples" for several sites, or for states; allowed: for a gate on a device of one site, or phase_by = "instrument"`, b.File)
+	}
+	driven := drivenBy(p, d)
+	ch := &p.Channels[driven[0].channel]
+	var channels []int
 	samples := int(math.Round(b.Span / p.SamplePeriod))
-	for _, c := range channels {
-		if _, err := p.Playable(c, samples); err != nil {
+	for _, x := range driven {
+		channels = append(channels, x.channel)
+		if _, err := p.Playable(x.channel, samples); err != nil {
 			return nil, fmt.Errorf("%s: %w", b.File, err)
 		}
 	}
@@ -228,25 +265,32 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	list := []fact{
 		{"profile", fmt.Sprintf("%s, %q", p.File, p.Name)},
 		{"device", fmt.Sprintf("%s, %q", d.File, d.Name)},
-		{"target", targetInWords(b.Target)},
+		{"target", targetInWords(b.Target, d)},
 		{"span", fmt.Sprintf("%s: %s in %s of %d; %d held at zero before and %d after, %d free",
 			quantity.Format(b.Span, quantity.Time), count(samples, "sample"), count(samples/p.Block, "block"), p.Block, ch.GuardLead, ch.GuardTrail, r.free)},
 		{"ends", endsInWords(b.Ends)},
-		{"held against", heldInWords(b)},
+		{"held against", heldInWords(b, d)},
 		{"equations", r.String()},
 		{"requires", requiredInWords(b)},
 		{"search", searchInWords(b)},
 	}
-	for i, line := range words {
+	for i, x := range driven {
 		name := "drive"
 		if i > 0 {
 			name = ""
 		}
-		list = append(list, fact{name, line})
+		list = append(list, fact{name, x.words})
 	}
 	if z := b.Target.FreeZ; z != brief.NoFreeZ && z != "" {
-		list = append(list, fact{"free Z", fmt.Sprintf("rotations about Z cost nothing %s the gate: the design chooses them, the record says which", map[string]string{
+		of := ""
+		if len(d.Sites) > 1 {
+			of = " of every site"
+		}
+		list = append(list, fact{"free Z", fmt.Sprintf("rotations about Z%s cost nothing %s the gate: the design chooses them, the record says which", of, map[string]string{
 			brief.Before: "before", brief.After: "after", brief.Both: "before and after"}[z])})
+	}
+	if b.Target.Local {
+		list = append(list, fact{"free", "every rotation of a single site costs nothing before and after the gate: the design chooses them, the record says which"})
 	}
 	if len(b.Phases) > 0 {
 		var angles []string
@@ -255,8 +299,13 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 		}
 		list = append(list, fact{"phases", "the gate is written turned about Z by " + strings.Join(angles, ", ")})
 	}
-	if loss := decoherence(site, b.Span); loss > 0 {
-		list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity in this span, whatever the pulse", loss)})
+	loss := together(d, b.Span)
+	if loss > 0 {
+		of := ""
+		if len(d.Sites) > 1 {
+			of = " on all sites"
+		}
+		list = append(list, fact{"decoherence", fmt.Sprintf("adds %.3g to the infidelity in this span%s, whatever the pulse", loss, of)})
 	}
 	printFacts(w, list)
 	var warn []string
@@ -266,59 +315,81 @@ func describeBrief(w io.Writer, b *brief.Brief, p *hardware.Profile, d *device.D
 	if n := b.Basis.Coefficients; n > 0 && n != r.perQuad {
 		warn = append(warn, fmt.Sprintf("basis.coefficients = %d has no effect: without a band below half the sample rate every free sample is a coefficient.", n))
 	}
-	if loss := decoherence(site, b.Span); loss > b.Require.Infidelity {
+	if loss > b.Require.Infidelity {
 		warn = append(warn, fmt.Sprintf("Decoherence alone costs %.3g, more than the infidelity of %.3g that is required: the requirement is judged without it, a bench will not see it met.", loss, b.Require.Infidelity))
 	}
 	warn = append(warn, belowRounding(p, samples)...)
-	if off := site.Frequency - ch.Carrier; ch.Kind != hardware.Baseband && site.Frequency > 0 && ch.Carrier > 0 {
-		stated := site.Detuning / (2 * math.Pi)
-		if !(math.Abs(off-stated) <= 1e-6*site.Frequency) {
-			side := "above"
-			if off < 0 {
-				side = "below"
-			}
-			warn = append(warn, fmt.Sprintf("The transition, %s, lies %s %s the carrier, %s, and the device states a detuning of %s (positive: above): the pulse is designed for the detuning.",
-				quantity.Format(site.Frequency, quantity.Frequency), quantity.Format(math.Abs(off), quantity.Frequency), side, quantity.Format(ch.Carrier, quantity.Frequency), quantity.Format(stated, quantity.Frequency)))
-		}
+	for _, x := range driven {
+		warn = append(warn, offCarrier(x.site, &p.Channels[x.channel], len(d.Sites) > 1)...)
 	}
 	printCautions(w, warn)
-	return briefFormOf(b, p, samples, r, decoherence(site, b.Span), warn), nil
+	return briefFormOf(b, p, d, samples, r, loss, warn), nil
 }
 
-// driven finds the site of the target, the channels that turn it, and says what each does there. brief.LoadAll has seen to it that
-// all exist and that there is one.
-func driven(b *brief.Brief, p *hardware.Profile, d *device.Device) (site device.Site, channels []int, words []string) {
-	for _, s := range d.Sites {
-		if s.Name == b.Target.Site {
-			site = s
-		}
+// offCarrier warns of a transition that does not lie where the carrier and the detuning put it; named says which site it is.
+func offCarrier(site *device.Site, ch *hardware.Channel, named bool) []string {
+	off := site.Frequency - ch.Carrier
+	if ch.Kind == hardware.Baseband || site.Frequency == 0 || ch.Carrier == 0 {
+		return nil
 	}
+	stated := site.Detuning / (2 * math.Pi)
+	if math.Abs(off-stated) <= 1e-6*site.Frequency {
+		return nil
+	}
+	side, of := "above", ""
+	if off < 0 {
+		side = "below"
+	}
+	if named {
+		of = " of " + site.Name
+	}
+	return []string{fmt.Sprintf("The transition%s, %s, lies %s %s the carrier, %s, and the device states a detuning of %s (positive: above): the pulse is designed for the detuning.", of,
+		quantity.Format(site.Frequency, quantity.Frequency), quantity.Format(math.Abs(off), quantity.Frequency), side, quantity.Format(ch.Carrier, quantity.Frequency), quantity.Format(stated, quantity.Frequency))}
+}
+
+// A turner is a channel of the profile, the site that it is meant for, and what it does there.
+type turner struct {
+	site    *device.Site
+	channel int
+	words   string
+}
+
+// drivenBy finds the channels that act on a device. brief.LoadAll has seen to it that all exist and that there is one.
+func drivenBy(p *hardware.Profile, d *device.Device) (list []turner) {
+	several := len(d.Sites) > 1
 	for i, drive := range d.Drives {
 		c, ok := p.Channel(drive.Channel)
-		if drive.Site != site.Name || !ok {
+		s, known := d.Site(drive.Site)
+		if !ok || !known {
 			continue
 		}
-		ch := &p.Channels[c]
-		sign, sense := "+", "+"
+		site, ch := &d.Sites[s], &p.Channels[c]
+		sign, sense, of := "+", "+", ""
 		if imag(d.Operators(i, string(ch.Mixing))[1].At(0, 1)) > 0 { // +Y/2 has -i/2 there
 			sign = "-"
 		}
 		if site.Zero == device.Lower {
 			sense = "-"
 		}
-		channels = append(channels, c)
-		words = append(words, fmt.Sprintf("%q mixes %s, and |0> of %s is the %s energy: I turns about +X and Q about %sY, in the frame that turns about %sZ with the carrier (%s)",
-			ch.Name, ch.Mixing, site.Name, site.Zero, sign, sense, carrier(ch)))
+		if several {
+			of = " of " + site.Name
+		}
+		list = append(list, turner{site, c, fmt.Sprintf("%q mixes %s, and |0> of %s is the %s energy: I turns about +X and Q about %sY%s, in the frame that turns about %sZ with the carrier (%s)",
+			ch.Name, ch.Mixing, site.Name, site.Zero, sign, of, sense, carrier(ch))})
 	}
 	for _, bias := range d.Biases {
 		c, ok := p.Channel(bias.Channel)
-		if bias.Site != site.Name || !ok {
+		s, known := d.Site(bias.Site)
+		if !ok || !known {
 			continue
 		}
-		channels = append(channels, c)
-		words = append(words, fmt.Sprintf("%q turns about +%s by what it puts out, without a carrier", bias.Channel, bias.Axis))
+		of := ""
+		if several {
+			of = " of " + bias.Site
+		}
+		list = append(list, turner{&d.Sites[s], c, fmt.Sprintf("%q turns about +%s%s by what it puts out, without a carrier", bias.Channel, bias.Axis, of)})
 	}
-	return site, channels, words
+	return list
 }
 
 func carrier(ch *hardware.Channel) string {
@@ -328,13 +399,40 @@ func carrier(ch *hardware.Channel) string {
 	return quantity.Format(ch.Carrier, quantity.Frequency)
 }
 
-// targetInWords names the gate, and says its rotation where the name does not.
-func targetInWords(t brief.Target) string {
-	words := fmt.Sprintf("%s on %s", t.Label, t.Site)
-	if turn := t.Turn(); turn != t.Label {
+// targetInWords names the gate, or the states, and says its rotation where the name does not.
+func targetInWords(t brief.Target, d *device.Device) string {
+	switch {
+	case len(t.From) > 1:
+		return fmt.Sprintf("%s, the span of these %d states of %s to that of the others", t.Label, len(t.From), siteNames(d))
+	case t.From != nil:
+		return fmt.Sprintf("%s, states of %s", t.Label, siteNames(d))
+	}
+	words := fmt.Sprintf("%s on %s", t.Label, strings.Join(t.Sites, ", "))
+	if turn := t.Turn(); len(t.Sites) == 1 && turn != t.Label {
 		words += ": " + turn
 	}
+	if t.Local {
+		words += ", up to local rotations"
+	}
+	var others []string
+	for _, s := range d.Sites {
+		if !slices.Contains(t.Sites, s.Name) {
+			others = append(others, s.Name)
+		}
+	}
+	if len(others) > 0 {
+		words += "; to be left alone: " + strings.Join(others, ", ")
+	}
 	return words
+}
+
+// siteNames lists the sites of a device.
+func siteNames(d *device.Device) string {
+	var names []string
+	for _, s := range d.Sites {
+		names = append(names, s.Name)
+	}
+	return strings.Join(names, ", ")
 }
 
 func endsInWords(ends string) string {
@@ -347,7 +445,7 @@ func endsInWords(ends string) string {
 // sizeInWords gives the size of an error: a rotation frequency, a share, or an angle.
 func sizeInWords(kind string, size float64) string {
 	switch kind {
-	case brief.Amplitude, brief.Line, brief.Offset:
+	case brief.Amplitude, brief.Line, brief.Offset, brief.Crosstalk:
 		return quantity.Format(size, quantity.Ratio)
 	case brief.Skew:
 		return quantity.Format(size, quantity.Angle)
@@ -355,13 +453,29 @@ func sizeInWords(kind string, size float64) string {
 	return quantity.Format(size/(2*math.Pi), quantity.Frequency)
 }
 
-func heldInWords(b *brief.Brief) string {
+func heldInWords(b *brief.Brief, d *device.Device) string {
 	if len(b.Errors) == 0 {
 		return `nothing (hold = "nothing")`
 	}
 	var list []string
 	for _, e := range b.Errors {
-		s := fmt.Sprintf("%s up to %s", e.Name, sizeInWords(e.Kind, e.Size))
+		s := e.Name
+		if e.Kind == brief.Any && !plainSpin(b, d) {
+			s += fmt.Sprintf(" (%s%s)", count(len(e.Members), "operator"), weighed(&e))
+		}
+		switch {
+		case e.Noise != nil:
+			s += fmt.Sprintf(", noise of %s rms", sizeInWords(e.Kind, math.Sqrt(e.Noise.Variance())))
+		case e.Spread != "" && len(e.Values) > 0:
+			s += fmt.Sprintf(", the %s over %s", e.Spread, count(len(e.Values), "size"))
+		case e.Spread != "":
+			s += fmt.Sprintf(", the %s over a spread of %s", e.Spread, sizeInWords(e.Kind, e.Size))
+		default:
+			s += " up to " + sizeInWords(e.Kind, e.Size)
+		}
+		if e.Order == 2 {
+			s += " to second order"
+		}
 		if e.Weight != 1 {
 			s += fmt.Sprintf(" with weight %.4g", e.Weight)
 		}
@@ -372,6 +486,14 @@ func heldInWords(b *brief.Brief) string {
 		words += " (the brief names none, so these)"
 	}
 	return words
+}
+
+// weighed says where the weights of the operators of a class come from.
+func weighed(e *brief.Error) string {
+	if e.Rates == "" {
+		return ""
+	}
+	return ", weighed by " + e.Rates
 }
 
 func requiredInWords(b *brief.Brief) string {

@@ -162,6 +162,7 @@ func TestCheckBrief(t *testing.T) {
 			[]string{"21: 3 of the gate and 18 of the errors, of which 6 repeat others", "Too few coefficients: 15 equations", "amplitude up to 2 % with weight 0.5"}, ""},
 		{"default", "", []string{"detuning up to 3 MHz, amplitude up to 3 %, any static error up to 1 MHz (the brief names none, so these)", "18: 3 of the gate and 15 of the errors, of which 3 repeat others"}, ""},
 		{"a margin of an amplitude", "[[error]]\namplitude = \"q1 drive\"\n[require]\n[[require.margin]]\nerror = \"amplitude\"\nsize = \"1 %\"\n", []string{"up to ±1 % of amplitude"}, ""},
+		{"a spread", "[[error]]\ndetuning = \"q1\"\nspread = \"worst\"\n", []string{"detuning, the worst over a spread of 3 MHz", "3: 3 of the gate; second orders, spreads and noise are not counted; against them"}, "oo few"},
 		{"samples", "[basis]\nfamily = \"samples\"\n", []string{"72 coefficients, 36 per quadrature, family samples"}, "coefficients:"},
 		{"axis and angle", "axis = [-0.0, 0, 1]\nangle = \"90 deg\"\n", []string{"target 90 deg about (0, 0, 1) on q1 span"}, "(-0"},
 		{"matrix", "matrix = [[[0.70710678, -0.70710678], 0], [0, [0.70710678, 0.70710678]]]\n", []string{"target matrix on q1: 90 deg about (0, 0, 1)"}, "-0,"},
@@ -249,13 +250,21 @@ func TestCheckDemonstrations(t *testing.T) {
 }
 
 func TestRank(t *testing.T) {
-	x, y, z := [3]float64{1}, [3]float64{0, 1}, [3]float64{0, 0, 1}
+	of := func(x ...float64) (v vector) {
+		for i, f := range x {
+			if f != 0 {
+				v = append(v, entry{i, f})
+			}
+		}
+		return v
+	}
+	x, y, z := of(1), of(0, 1), of(0, 0, 1)
 	for _, c := range []struct {
-		list [][3]float64
+		list []vector
 		want int
 	}{
-		{nil, 0}, {[][3]float64{z}, 1}, {[][3]float64{z, {0, 0, -0.5}}, 1}, {[][3]float64{x, {1, 1e-3}}, 2},
-		{[][3]float64{x, y, {1, 1}}, 2}, {[][3]float64{x, y, z, {1, 2, 3}}, 3}, {[][3]float64{{}, x}, 1},
+		{nil, 0}, {[]vector{z}, 1}, {[]vector{z, of(0, 0, -0.5)}, 1}, {[]vector{x, of(1, 1e-3)}, 2}, {[]vector{x, of(1, 1e-9)}, 1},
+		{[]vector{x, y, of(1, 1)}, 2}, {[]vector{x, y, z, of(1, 2, 3)}, 3}, {[]vector{nil, x}, 1}, {[]vector{of(1, 2, 3), of(4, 5, 6), of(7, 8, 9)}, 2},
 	} {
 		if got := rank(c.list); got != c.want {
 			t.Errorf("rank(%v) = %d, want %d", c.list, got, c.want)

@@ -77,6 +77,12 @@ type (
 	deviceForm struct {
 		Name  string     `json:"name"`
 		Sites []siteForm `json:"sites"`
+		// Of several sites.
+		Levels      int             `json:"levels,omitempty"`
+		CodeStates  int             `json:"code_states,omitempty"`
+		Decoherence *number         `json:"decoherence_infidelity_per_100_ns,omitempty"`
+		Couplings   []couplingForm  `json:"couplings,omitempty"`
+		Crosstalk   []crosstalkForm `json:"crosstalk,omitempty"`
 	}
 	siteForm struct {
 		Name      string   `json:"name"`
@@ -87,6 +93,28 @@ type (
 		T1        number   `json:"t1_ns"`
 		T2        number   `json:"t2_ns"`
 		Channels  []string `json:"channels"`
+		// Of more than two levels.
+		Kind          string   `json:"kind,omitempty"`
+		Code          []int    `json:"code_levels,omitempty"`
+		Anharmonicity *number  `json:"anharmonicity_mhz,omitempty"`
+		Higher        []number `json:"higher_mhz,omitempty"`
+		Quadratic     *number  `json:"quadratic_mhz,omitempty"`
+	}
+	couplingForm struct {
+		Kind     string   `json:"kind"`
+		Sites    []string `json:"sites"`
+		Axes     []string `json:"axes,omitempty"`
+		Strength number   `json:"strength_mhz"`
+		Still    bool     `json:"stands_still"`
+		Turning  []number `json:"turning_mhz"`
+		Dropped  []number `json:"left_out_mhz"`
+	}
+	crosstalkForm struct {
+		Channel string `json:"channel"`
+		Site    string `json:"site"`
+		Share   number `json:"share"`
+		Phase   number `json:"phase_deg"`
+		Turning number `json:"turning_mhz"`
 	}
 	briefForm struct {
 		Name           string       `json:"name"`
@@ -115,6 +143,11 @@ type (
 		Refine         bool         `json:"refine"`
 		Decoherence    number       `json:"decoherence_infidelity"`
 		Warnings       []string     `json:"warnings"`
+		// Of several sites, or states.
+		Sites  []string `json:"sites,omitempty"`
+		FreeZ  string   `json:"free_z,omitempty"`
+		Local  bool     `json:"up_to_local_rotations,omitempty"`
+		States int      `json:"states,omitempty"`
 	}
 	// Of the three sizes those that do not apply are null.
 	heldForm struct {
@@ -124,6 +157,8 @@ type (
 		Share  number `json:"size_share"`
 		Angle  number `json:"size_rad"`
 		Weight number `json:"weight"`
+
+		Operators int `json:"operators,omitempty"` // of a class, on more than one spin
 	}
 	marginForm struct {
 		Error string `json:"error"`
@@ -171,10 +206,22 @@ func profileFormOf(p *hardware.Profile) (*profileForm, error) {
 
 func deviceFormOf(d *device.Device) *deviceForm {
 	f := &deviceForm{Name: d.Name}
-	for _, s := range d.Sites {
+	for i := range d.Sites {
+		s := &d.Sites[i]
 		v := siteForm{
 			Name: s.Name, Levels: s.Levels, Zero: s.Zero, Frequency: unless(s.Frequency, 0), Detuning: mhz(s.Detuning),
 			T1: unless(s.T1, 0), T2: unless(s.T2, 0), Channels: []string{},
+		}
+		if s.Levels > 2 {
+			v.Kind, v.Code = s.Kind, s.Code[:]
+			if a, q := mhz(s.Anharmonicity), mhz(s.Quadratic); s.Kind == device.Ladder {
+				v.Anharmonicity = &a
+			} else {
+				v.Quadratic = &q
+			}
+			for _, h := range s.Higher {
+				v.Higher = append(v.Higher, mhz(h))
+			}
 		}
 		for _, drive := range d.Drives {
 			if drive.Site == s.Name {
@@ -188,14 +235,34 @@ func deviceFormOf(d *device.Device) *deviceForm {
 		}
 		f.Sites = append(f.Sites, v)
 	}
+	if len(d.Sites) > 1 {
+		loss := number(together(d, 100))
+		f.Levels, f.CodeStates, f.Decoherence = d.Dim(), len(d.CodeSpace()), &loss
+	}
+	for i, c := range d.Couplings {
+		x := framed(d, i)
+		f.Couplings = append(f.Couplings, couplingForm{c.Kind, c.Sites, c.Axes, mhz(c.Strength), x.still, frequencies(x.turning), frequencies(x.dropped)})
+	}
+	for _, c := range d.Crosstalk {
+		f.Crosstalk = append(f.Crosstalk, crosstalkForm{c.Channel, c.Site, number(c.Share), number(c.Phase * 180 / math.Pi), mhz(crosstalkTurns(d, &c))})
+	}
 	return f
+}
+
+// frequencies lists those of turning terms.
+func frequencies(terms []device.Rotating) []number {
+	out := []number{}
+	for _, r := range terms {
+		out = append(out, mhz(r.Frequency))
+	}
+	return out
 }
 
 // sizes gives the size of an error as a rate, as a share or as an angle.
 func sizes(kind string, size float64) (rate, share, angle number) {
 	none := number(math.NaN())
 	switch kind {
-	case brief.Amplitude, brief.Line, brief.Offset:
+	case brief.Amplitude, brief.Line, brief.Offset, brief.Crosstalk:
 		return none, number(size), none
 	case brief.Skew:
 		return none, none, number(size)
@@ -203,7 +270,7 @@ func sizes(kind string, size float64) (rate, share, angle number) {
 	return mhz(size), none, none
 }
 
-func briefFormOf(b *brief.Brief, p *hardware.Profile, samples int, r room, loss float64, warn []string) *briefForm {
+func briefFormOf(b *brief.Brief, p *hardware.Profile, d *device.Device, samples int, r room, loss float64, warn []string) *briefForm {
 	f := &briefForm{
 		Name: b.Name, Profile: b.ProfilePath, Device: b.DevicePath, Site: b.Target.Site, Gate: b.Target.Label, Angle: number(b.Target.Angle), Axis: numbers(b.Target.Axis[:]),
 		Span: number(b.Span), Samples: samples, Free: r.free, Ends: b.Ends, Held: []heldForm{}, HeldByDefault: b.Defaulted,
@@ -213,7 +280,18 @@ func briefFormOf(b *brief.Brief, p *hardware.Profile, samples int, r room, loss 
 	}
 	for _, e := range b.Errors {
 		rate, share, angle := sizes(e.Kind, e.Size)
-		f.Held = append(f.Held, heldForm{e.Name, e.Kind, rate, share, angle, number(e.Weight)})
+		h := heldForm{Name: e.Name, Kind: e.Kind, Rate: rate, Share: share, Angle: angle, Weight: number(e.Weight)}
+		if e.Kind == brief.Any && !plainSpin(b, d) {
+			h.Operators = len(e.Members)
+		}
+		f.Held = append(f.Held, h)
+	}
+	if len(d.Sites) > 1 || b.Target.From != nil {
+		f.Sites, f.FreeZ, f.Local = list(b.Target.Sites), b.Target.FreeZ, b.Target.Local
+		if len(b.Target.Sites) != 1 {
+			f.Angle, f.Axis = number(math.NaN()), []number{}
+		}
+		f.States = len(b.Target.From)
 	}
 	for _, m := range b.Require.Margins {
 		rate, share, angle := sizes(marginKind(b, m.Error), m.Size)

@@ -14,6 +14,7 @@ import (
 	"holdfast/design"
 	"holdfast/design/brief"
 	"holdfast/design/datasheet"
+	"holdfast/design/device"
 	"holdfast/design/replay"
 	"holdfast/hardware"
 )
@@ -48,7 +49,12 @@ func designPulse(c *call) (int, error) {
 	}
 	defer stage.Discard()
 	if b.Defaulted && !c.json {
-		fmt.Fprintln(c.stdout, "The brief names no [[error]]: held against detuning, amplitude and any static error.")
+		names := make([]string, len(b.Errors))
+		for i, e := range b.Errors {
+			names[i] = e.Name
+		}
+		last := len(names) - 1
+		fmt.Fprintf(c.stdout, "The brief names no [[error]]: held against %s and %s.\n", strings.Join(names[:last], ", "), names[last])
 	}
 
 	show := newProgress(c.stderr)
@@ -93,7 +99,7 @@ func designPulse(c *call) (int, error) {
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
-	printPlayback(c.stdout, &pulse.Record)
+	printPlayback(c.stdout, &pulse.Record, d)
 	fmt.Fprintf(c.stdout, "\nsearch:    %s\n", pulse.Summary())
 	fmt.Fprintf(c.stdout, "pulse:     %s\n", *out)
 	fmt.Fprintf(c.stdout, "datasheet: %s\n", filepath.Join(*out, datasheetFile))
@@ -122,8 +128,8 @@ func pulseStatus(r *design.Record, v *replay.Verdict) int {
 }
 
 // printPlayback says what whoever plays the pulse must know besides the samples.
-func printPlayback(w io.Writer, r *design.Record) {
-	list := playback(r)
+func printPlayback(w io.Writer, r *design.Record, d *device.Device) {
+	list := playback(r, d)
 	if len(list) == 0 {
 		return
 	}
@@ -133,26 +139,80 @@ func printPlayback(w io.Writer, r *design.Record) {
 	}
 }
 
-// playback lists delays between channels, the angles to track, and the waveforms
+// A note is a fact about playback; site is whose it is, of a device of several.
+type note struct {
+	fact
+	site string
+}
+
+// playback lists delays between channels, the angles or rotations to track, and the waveforms
 // that were turned.
-func playback(r *design.Record) (list []fact) {
+func playback(r *design.Record, d *device.Device) (list []note) {
+	add := func(name, value string) { list = append(list, note{fact: fact{name, value}}) }
 	for _, d := range r.Pulse.Delays {
-		list = append(list, fact{fmt.Sprintf("channel %q", d.Channel), fmt.Sprintf("starts %d samples after the trigger, to arrive with the others", d.Samples)})
+		add(fmt.Sprintf("channel %q", d.Channel), fmt.Sprintf("starts %d samples after the trigger, to arrive with the others", d.Samples))
 	}
-	for _, z := range []struct {
-		side   string
-		angles []float64
-	}{{"before", r.Model.FreeZBefore}, {"after", r.Model.FreeZAfter}} {
-		for _, a := range z.angles {
-			list = append(list, fact{"turn about Z " + z.side + " the gate", fmt.Sprintf("%.6f rad (%.4f deg), to be tracked in software: exp(-i angle Z/2)", a, a*180/math.Pi)})
+	several := len(d.Sites) > 1
+	for _, t := range turns(r, d) {
+		side := "before"
+		if t.after {
+			side = "after"
 		}
+		if !several {
+			add("turn about Z "+side+" the gate", t.words+", to be tracked in software: exp(-i angle Z/2)")
+			continue
+		}
+		name := d.Sites[t.site].Name
+		list = append(list, note{fact{fmt.Sprintf("turn of %s %s the gate", name, side), t.words}, name})
 	}
 	for _, p := range r.Pulse.Phases {
 		kept := "every limit kept"
 		if !p.Kept {
 			kept = "a LIMIT IS BROKEN"
 		}
-		list = append(list, fact{fmt.Sprintf("turned by %.6g deg", p.Angle), fmt.Sprintf("infidelity %s, %s; %s", smallFigure(p.Infidelity), kept, strings.Join(p.Files, ", "))})
+		add(fmt.Sprintf("turned by %.6g deg", p.Angle), fmt.Sprintf("infidelity %s, %s; %s", smallFigure(p.Infidelity), kept, strings.Join(p.Files, ", ")))
+	}
+	return list
+}
+
+// A turn is a rotation of one site that belongs to the gate and is not in the samples.
+type turn struct {
+	site  int
+	after bool
+	words string
+}
+
+// turns lists those of a record: free turns about Z, or free rotations.
+func turns(r *design.Record, d *device.Device) (list []turn) {
+	for side, angles := range [][]float64{r.Model.FreeZBefore, r.Model.FreeZAfter} {
+		for i, a := range angles {
+			words := fmt.Sprintf("%.6f rad (%.4f deg)", a, a*180/math.Pi)
+			if len(d.Sites) > 1 {
+				words = fmt.Sprintf("%.6f rad = %.4f deg about Z", math.Round(a*1e6)/1e6+0, math.Round(a*180/math.Pi*1e4)/1e4+0) // 0 and not -0
+			}
+			if i < len(d.Sites) {
+				list = append(list, turn{i, side == 1, words})
+			}
+		}
+	}
+	for side, rotations := range [][][][]design.Complex{r.Model.LocalBefore, r.Model.LocalAfter} {
+		for i, rows := range rotations {
+			m := make([][]complex128, len(rows))
+			for k, row := range rows {
+				for _, z := range row {
+					m[k] = append(m[k], complex(z[0], z[1]))
+				}
+			}
+			axis, angle, _, ok := device.AxisAngle(device.FromRows(m))
+			if i >= len(d.Sites) || !ok {
+				continue
+			}
+			words := "none"
+			if angle != 0 {
+				words = strings.ReplaceAll(fmt.Sprintf("%.6f rad = %.4f deg about %.6f X + %.6f Y + %.6f Z", angle, angle*180/math.Pi, axis[0], axis[1], axis[2]), "+ -", "- ")
+			}
+			list = append(list, turn{i, side == 1, words})
+		}
 	}
 	return list
 }

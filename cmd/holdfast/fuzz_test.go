@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"io"
 	"os"
 	"path/filepath"
@@ -81,6 +82,10 @@ func FuzzDevice(f *testing.F) {
 	seeds(f, "skerry.toml",
 		`[[drive]]`, "[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\naxis = \"Z\"\n[[drive]]",
 		`"upper"`, `"lower"`)
+	seeds(f, "skerry-pair.toml",
+		`kind = "exchange"`, `kind = "dipolar"`,
+		`"5 MHz"`, "\"5 MHz\"\n[[crosstalk]]\nchannel = \"q1 drive\"\nsite = \"q2\"\nshare = \"3 %\"\nphase = \"40 deg\"")
+	f.Add([]byte(mixed))
 	path := filepath.Join(f.TempDir(), "d.toml")
 	f.Fuzz(func(t *testing.T, data []byte) {
 		if len(data) > small {
@@ -107,8 +112,21 @@ func FuzzBrief(f *testing.F) {
 		`any = "all"`, `line = "q1 drive"`+"\nparameter = \"lowpass[0].corner\"",
 		`size = "1 MHz"`, "\n[[error]]\namplitude = \"q1 drive\"\nquadrature = \"I\"\n[[error]]\noffset = \"q1 drive\"\n[[error]]\nquadrature_angle = \"q1 drive\"",
 		`seed = 1`, "seed = 1\nphase_by = \"samples\"\nphases = [\"0 deg\", \"90 deg\"]\nbasis = { family = \"b-spline\", degree = 4 }")
+	seeds(f, "sqrt-iswap.toml",
+		`gate = "sqrt-iSWAP"`, `controlled = "X90"`,
+		`sites = ["q1", "q2"]`, "#", // no site, and a gate
+		`hold = "nothing"`, "#",
+		`free_z = "both"`, `up_to = "local rotations"`,
+		`[require]`, "[[error]]\nany = \"two-body\"\nexcept = [{ q1 = \"Z\", q2 = \"Z\" }]\n[require]")
+	for _, text := range []string{
+		"hold = \"nothing\"\n[target]\nfrom = [\"00\", \"11\"]\nto = [\"01\", \"10\"]\n", "[target]\nfrom = \"00\"\nto = [0.6, 0, 0, [0, 0.8]]\n[[error]]\ncollective = \"Z\"\n",
+		"[target]\ngates = { q1 = \"X90\", q2 = \"H\" }\n[[error]]\nany = \"all\"\nrates = \"rates.csv\"\n[[error]]\non = { q1 = \"X\" }\n[[error]]\ncrosstalk = \"q1 drive\"\nsite = \"q2\"\n",
+	} {
+		f.Add([]byte(fmt.Sprintf(pair, text)))
+	}
 	dir := f.TempDir()
-	for _, name := range []string{"rack-b.toml", "skerry.toml"} {
+	write(f, filepath.Join(dir, "rates.csv"), "pauli,rate\nZZ,1e-4\nIX,2e-4\n")
+	for _, name := range []string{"rack-b.toml", "skerry.toml", "rack-b-pair.toml", "skerry-pair.toml"} {
 		write(f, filepath.Join(dir, name), read(f, filepath.Join("starter", name)))
 	}
 	path := filepath.Join(dir, "b.toml")

@@ -75,6 +75,7 @@ func verbHelp(name string) string {
 		return `Makes the folder DIR with an invented example: rack-b.toml (hardware profile), skerry.toml (device) and
 x90.toml (brief), each with comments, to be changed into yours. DIR must not exist yet.
 
+  -pair   an example of two coupled spins instead: rack-b-pair.toml, skerry-pair.toml and sqrt-iswap.toml
   -json   print one JSON object instead of text ('help json')
 
 Exit status: 0 done, 2 bad input.
@@ -83,7 +84,8 @@ Exit status: 0 done, 2 bad input.
 		return `Reads each FILE strictly, tells by its tables whether it is a profile, a device or a brief, and says what it means:
   profile   sign of the mixer and frame, limits, what the line does to a step, the window at the device, the
             coefficients that each span carries and what they are enough for, cautions
-  device    which energy |0> has, what drives it, what relaxation costs
+  device    which energy |0> has, what drives it, what relaxation costs; of several sites also what couples them, and
+            what of that turns in their frames
   brief     the profile and the device that it names are read too: gate, span, what it is held against,
             equations against coefficients, requirements
 Lines that begin with ! want your attention.
@@ -122,13 +124,16 @@ Exit status: 0 found, and every requirement, limit and the record are borne out;
 or a file was changed since it was written; 3 interrupted.
 `
 	case "card":
-		return `Writes the convention card of a bench into a folder: three short sequences for the first channel with a mixer that
+		return `Writes the convention card of a bench into a folder: three short sequences for a channel with a mixer that
 DEVICE names, and card.txt, a table of the populations that they give through the line of PROFILE for each of 16 ways
 in which signs can be wrong: mixing, cables of I and Q, energy of |0>, side of the carrier. One run on the bench tells
 which group of rows it is; what no population can tell stands in one group, and the card says so. Nothing is designed.
+The card is that of one site by itself; of a device of several it is refused where what couples them, or crosstalk,
+would move a population by more than 0.02.
 
   -out FOLDER     the folder to make; without it card, in the working folder
   -force          when the folder exists: rename the old one to FOLDER.before-N (without -force it is refused)
+  -channel NAME   the drive whose card it is; without it the first of a device of one site, or the only one
   -detuning "F"   how far the carrier will lie below the transition ("2 MHz"); without it 1/16 of full scale or less
   -json           print one JSON object instead of text ('help json')
 
@@ -225,7 +230,7 @@ const jsonTopic = "json"
 func fileHelps() []fileHelp {
 	return []fileHelp{
 		{"profile", profileHead, profileKeys(), ""},
-		{"device", deviceHead, deviceKeys(), ""},
+		{"device", deviceHead, deviceKeys(), deviceFoot},
 		{"brief", briefHead, briefKeys(), briefFoot},
 		{"pulse", pulseHead, pulseKeys(), pulseFoot},
 		{jsonTopic, jsonHead, nil, jsonText()},
@@ -292,8 +297,9 @@ func profileKeys() []key {
 	}
 }
 
-const deviceHead = `A device file is a TOML file that says what is driven. This version plays one spin: one site, at most one
-drive, up to 8 biases, and at least one of them.
+const deviceHead = `A device file is a TOML file that says what is driven: 1 to 6 sites, spins or ladders of levels, of at most 64 levels in
+their product; what couples them, up to 64 couplings; and the channels that act on them, 1 to 16 drives and biases, each
+channel once, with what they do to sites that they are not meant for.
 
 ` + units
 
@@ -301,12 +307,16 @@ func deviceKeys() []key {
 	return []key{
 		{"format", "1", "1, and nothing else", must, "of this file"},
 		{"name", `"Skerry"`, "a text in quotes", must, "of the device, for people"},
-		{"site[].name", `"q1"`, "a text in quotes", must, "by which drive and brief name the spin"},
-		{"site[].levels", "2", "a whole number, 2 to 8", "2", "2 is a spin, more an anharmonic ladder whose two lowest levels are the code space"},
-		{"site[].anharmonicity", `"-220 MHz"`, "-1 GHz to 1 GHz", "must be given for more than 2 levels", "of a ladder: by how much the 1-2 transition lies above the 0-1 one; of no effect for 2 levels"},
+		{"site[].name", `"q1"`, "a text in quotes", must, "by which all else names the site"},
+		{"site[].kind", `"spin"`, `"spin" or "ladder"`, `"spin" of 2 levels, "ladder" of more`, "what X, Y and Z mean: Pauli matrices on 2 levels; twice the operators Sx, Sy, Sz on a spin of more, whose level 0 is m = s; and a + a', i(a' - a) and -2n on an anharmonic ladder, which stands on |0>"},
+		{"site[].levels", "2", "a whole number, 2 to 16", "2", "how many the model keeps"},
+		{"site[].code", "[0, 1]", "an array of at most 2 numbers", "[0, 1]", "the two levels of the code space, the first of them |0>"},
 		{"site[].zero", `"lower"`, `"lower" or "upper"`, `"lower"`, "which of the two energies |0> has, the +1 state of Z; with the profile's mixing it settles whether Q turns about +Y or -Y"},
-		{"site[].frequency", `"5.1 GHz"`, "1 Hz to 10000 GHz", "not stated", "of the transition; for messages only"},
+		{"site[].frequency", `"5.1 GHz"`, "1 Hz to 10000 GHz", "not stated", "of the transition; of one site for messages only, of several it says how couplings and crosstalk turn, see below"},
 		{"site[].detuning", `"0 Hz"`, "-1 GHz to 1 GHz", "0 Hz", "of the transition from the frame of the drive, positive above it, constant: H0 = 2 pi f Z/2 when |0> has the upper energy, -2 pi f Z/2 when it has the lower"},
+		{"site[].anharmonicity", `"-220 MHz"`, "-1 GHz to 1 GHz", "must be given for a ladder of more than 2 levels", "of a ladder: by how much the 1-2 transition lies above the 0-1 one; of no effect for 2 levels"},
+		{"site[].higher", `["3 MHz"]`, "an array of at most 13 texts", "none", "of a ladder: level n lies by C(n,3) times the first, C(n,4) times the second, ... of these higher than the anharmonicity alone puts it"},
+		{"site[].quadratic", `"1 MHz"`, "-1 GHz to 1 GHz", "0 Hz", "of a spin of more than 2 levels: H0 += 2 pi f (Sz^2 - s(s+1)/3)"},
 		{"site[].T1", `"60 us"`, "1 ns to 1e+06 s", "not stated", "relaxation; for the cost of decoherence, T/6 (1/T1 + 2/T2)"},
 		{"site[].T2", `"40 us"`, "1 ns to 1e+06 s", "not stated", "coherence; at most 2 T1"},
 		{"drive[].site", `"q1"`, "a text in quotes", must, "which site is driven"},
@@ -314,12 +324,39 @@ func deviceKeys() []key {
 		{"bias[].site", `"q1"`, "a text in quotes", must, "which site is turned: H += u O/2 with u what arrives, in rad/ns"},
 		{"bias[].channel", `"q1 flux"`, "a text in quotes", must, "by which baseband channel of the hardware profile; its own for each"},
 		{"bias[].axis", `"Z"`, `"X", "Y" or "Z"`, `"Z"`, "the operator O"},
+		{"bias[].polynomial", "[1, 0.2]", "an array of at most 8 numbers", "[1]", "c1, c2, ...: full scale times c1 s + c2 s^2 + ... stands in the place of u, s the share of full scale that arrives; -10 to 10 each"},
+		{"bias[].loop.highest", `"5.2 GHz"`, "1 MHz to 1000 GHz", must, "the bias is the flux through a loop of two junctions, which tunes the transition, about Z: this is its frequency without flux. At F flux quanta it is so much times (cos^2(pi F) + asymmetry^2 sin^2(pi F))^(1/4), and its change from rest stands in the place of u"},
+		{"bias[].loop.bias", "0.23", "a number, -1 to 1", "0", "F at rest, in flux quanta"},
+		{"bias[].loop.full_scale", "0.15", "a number, -1 to 1", must, "what full scale adds to F"},
+		{"bias[].loop.asymmetry", "0.1", "a number, 0 to 1", "0", "of the junctions, their difference over their sum; at least 0.01 where F comes near half a quantum"},
+		{"coupling[].on", `{ q1 = "Z", q2 = "Z" }`, "a table", "kind and between", "X, Y or Z of two sites or more: H += 2 pi f P/2 with P their product"},
+		{"coupling[].kind", `"exchange"`, `"exchange", "heisenberg", "dipolar" or "dispersive"`, "on", "of two sites, with J = 2 pi f: exchange J (a b' + a' b), of spins J (X X + Y Y)/2; heisenberg J S.S, S = (X, Y, Z)/2; dipolar J (3 Sz Sz - S.S); dispersive J n n, n the number of the level above the ground state (a cross-Kerr shift)"},
+		{"coupling[].between", `["q1", "q2"]`, "an array of at most 2 texts in quotes", "required beside kind", "the two sites"},
+		{"coupling[].strength", `"5 MHz"`, "-1 GHz to 1 GHz", must, "f"},
+		{"coupling[].rotating_wave", "true", "true or false", "false", "leave out of the model whatever of it turns in the frames of the sites, which then state their frequencies; the record keeps what is left out, and replay says what that costs"},
+		{"crosstalk[].channel", `"q1 drive"`, "a text in quotes", must, "a channel of a [[drive]], or of a [[bias]] without polynomial and loop"},
+		{"crosstalk[].site", `"q2"`, "a text in quotes", must, "another site, which it reaches too"},
+		{"crosstalk[].share", `"3 %"`, "-1000 % to 1000 %", must, "how much of it: there share e^(i phase) u stands in the place of u"},
+		{"crosstalk[].phase", `"40 deg"`, "-360 deg to 360 deg", "0 deg", "of that share; a bias has none"},
 	}
 }
+
+const deviceFoot = `Sites that state no frequency are seen from frames that turn alike: couplings and crosstalk between them stand still, as
+they are written. Sites that do are each seen from a frame of their own, which turns with its drive, at frequency less
+detuning, from the start of the gate's window on. What couples sites of unlike frames turns in them, an exchange at the
+difference, and so does crosstalk onto a site of another frame. A coupling needs the frequencies of all its sites, or of
+none.
+`
 
 const briefHead = `A brief is a TOML file that says which gate is wanted, in what time, held against what, and what it must reach.
 
 ` + units
+
+// oneSiteGates and twoSiteGates are the gates that have names.
+const (
+	oneSiteGates = `"X90", "-X90", "X180", "Y90", "-Y90", "Y180", "Z90", "Z180", "H", "S", "T" or "identity"`
+	twoSiteGates = `"CNOT", "CZ", "SWAP", "iSWAP", "sqrt-iSWAP", "sqrt-SWAP" or "identity"`
+)
 
 func briefKeys() []key {
 	const size = "1 Hz to 1 GHz"
@@ -336,38 +373,63 @@ func briefKeys() []key {
 		{"seed", "1", "0 to 9223372036854775807", "1", "of the random starts: the same seed gives the same pulse"},
 		{"starts", "60", "1 to 100000", "60", "how many starts the search may take"},
 		{"refine", "true", "true or false", "true", "after the first order has vanished, lower what errors of the given sizes do"},
-		{"target.site", `"q1"`, "a text in quotes", must, "of the device"},
-		{"target.gate", `"X90"`, `"X90", "-X90", "X180", "Y90", "-Y90", "Y180", "Z90", "Z180", "H", "S", "T" or "identity"`, "axis and angle, or matrix", "the gate by its name"},
-		{"target.free_z", `"none"`, `"none", "before", "after" or "both"`, `"none"`, "where rotations about Z cost nothing, because phases are tracked in software: the design chooses them and the record names them"},
-		{"target.axis", "[1, 0, 0]", "an array of at most 3 numbers", "gate or matrix", "of a rotation exp(-i angle/2 n.(X,Y,Z)); any length but 0"},
+		{"target.site", `"q1"`, "a text in quotes", "required, unless sites, gates, or from and to stand there", "of the device, on which the gate acts; all other sites are to be left alone"},
+		{"target.sites", `["q1", "q2"]`, "an array of at most 6 texts in quotes", "site, gates, or from and to", "on which the gate acts, in its order: the first is the slowest in a matrix"},
+		{"target.gate", `"X90"`, oneSiteGates, "another of the six", "the gate by its name; of two sites " + twoSiteGates + ", of more \"identity\". CNOT turns the second site when the first is |1>, iSWAP is exp(i pi/4 (XX + YY)), sqrt-iSWAP its root"},
+		{"target.gates", `{ q1 = "X90", q2 = "identity" }`, "a table", "another of the six", "a gate of one site for each of several, which it names"},
+		{"target.controlled", `"X90"`, oneSiteGates, "another of the six", "this gate on the last of sites when all others are |1>: of X90, Z180 and the like the rotation by that angle, with its phase, of H, S and T the matrices of these names"},
+		{"target.axis", "[1, 0, 0]", "an array of at most 3 numbers", "another of the six", "of a rotation exp(-i angle/2 n.(X,Y,Z)) of one site; any length but 0"},
 		{"target.angle", `"90 deg"`, "-720 deg to 720 deg", "required beside axis", "of that rotation"},
-		{"target.matrix", "[[1, 0], [0, [0, 1]]]", "a square matrix of at most 2 rows", "gate, or axis and angle", "unitary, rows of numbers or [re, im]; the global phase has no meaning"},
+		{"target.matrix", "[[1, 0], [0, [0, 1]]]", "a square matrix of at most 2 rows", "another of the six", "unitary, on the code levels of the sites, 2^n rows for n of them; rows of numbers or [re, im]; the global phase has no meaning"},
+		{"target.from", `"00"`, "a text in quotes", "another of the six", "states of all sites of the device that are to become those of to: a label of code states, a list of labels, \"GHZ\", \"W\", or 2^n numbers or [re, im] of length 1. Of several their span is to become that of the others, in whatever way"},
+		{"target.to", `"11"`, "a text in quotes", "required beside from", "what they become, as many"},
+		{"target.free_z", `"none"`, `"none", "before", "after" or "both"`, `"none"`, "where rotations about Z, of every site of the device, cost nothing, because phases are tracked in software: the design chooses them and the record names them; of gates"},
+		{"target.up_to", `"local rotations"`, `"local rotations"`, "the gate itself is wanted", "every rotation of a single site, before and after, costs nothing: the design chooses them and the record names them; of gates on a device of two sites or more, without free_z"},
 		{"basis.family", `"slepian"`, `"slepian", "fourier", "tapered", "b-spline", "samples" or "best"`, `"slepian"`, "of what the samples are made: band-limited sequences, sines, sines with soft ends, splines, one coefficient for each free sample, or the best of slepian, fourier and b-spline"},
 		{"basis.coefficients", "20", "1 to 65536", "as many as band and span carry", "per quadrature; refused for family samples"},
 		{"basis.degree", "3", "1 to 5", "3", "of the splines; other families have none"},
-		{"error[].detuning", `"q1"`, "a text in quotes", "another of the eight", "a site: H += 2 pi f Z/2"},
-		{"error[].amplitude", `"q1 drive"`, "a text in quotes", "another of the eight", "a channel: what it delivers is scaled by 1 + size"},
-		{"error[].operator", `"X"`, `"X", "Y" or "Z"`, "another of the eight", "H += 2 pi f X/2, and so for Y and Z"},
-		{"error[].matrix", "[[0, [0, -0.5]], [[0, 0.5], 0]]", "a square matrix of at most 2 rows", "another of the eight", "H += 2 pi f M; Hermitian and traceless, rows of numbers or [re, im]"},
-		{"error[].any", `"all"`, `"all"`, "another of the eight", "any static error: H += 2 pi f n.(X,Y,Z)/2 with a direction n that nobody knows"},
-		{"error[].line", `"q1 drive"`, "a text in quotes", "another of the eight", "a channel: its line is not quite what the profile says, by one parameter"},
+		{"error[].detuning", `"q1"`, "a text in quotes", "another of the eleven", "a site: H += 2 pi f Z/2"},
+		{"error[].amplitude", `"q1 drive"`, "a text in quotes", "another of the eleven", "a channel: what it delivers is scaled by 1 + size"},
+		{"error[].operator", `"X"`, `"X", "Y" or "Z"`, "another of the eleven", "H += 2 pi f X/2, and so for Y and Z, of one site"},
+		{"error[].on", `{ q1 = "Z", q2 = "X" }`, "a table", "another of the eleven", "X, Y or Z of one site or more: H += 2 pi f P/2 with P their product"},
+		{"error[].collective", `"Z"`, `"X", "Y" or "Z"`, "another of the eleven", "the same of every site: H += 2 pi f times the sum of Z/2 over all sites"},
+		{"error[].matrix", "[[0, [0, -0.5]], [[0, 0.5], 0]]", "a square matrix of at most 64 rows", "another of the eleven", "H += 2 pi f M; Hermitian and traceless, of the whole device (of one site of more levels also 2 by 2), rows of numbers or [re, im]"},
+		{"error[].any", `"all"`, "a text in quotes", "another of the eleven", "static errors of which nobody knows which: \"all\" of them, the \"one-body\" or the \"two-body\" ones (products over two sites), those \"on q1, q2\", or \"leakage\" (between the code space and other levels); H += 2 pi f times a sum of c P/2 with products P of X, Y and Z, the squares of all c together 1. Where a site has more levels, operators of the same norm stand for P/2"},
+		{"error[].line", `"q1 drive"`, "a text in quotes", "another of the eleven", "a channel: its line is not quite what the profile says, by one parameter"},
 		{"error[].parameter", `"lowpass[0].corner"`, "a text in quotes", "required beside line", "which: lowpass[0].corner, tails[0].amplitude, tails[0].time, resonance[0].offset, .half_width, .depth, ac_coupling, allpass or delay, counted from 0"},
-		{"error[].quadrature_angle", `"q1 drive"`, "a text in quotes", "another of the eight", "a channel: I and Q are not at right angles, u_I += -size u_Q"},
-		{"error[].offset", `"q1 drive"`, "a text in quotes", "another of the eight", "a channel: a constant at the converter"},
+		{"error[].quadrature_angle", `"q1 drive"`, "a text in quotes", "another of the eleven", "a channel: I and Q are not at right angles, u_I += -size u_Q"},
+		{"error[].offset", `"q1 drive"`, "a text in quotes", "another of the eleven", "a channel: a constant at the converter"},
+		{"error[].crosstalk", `"q1 drive"`, "a text in quotes", "another of the eleven", "a channel: size of it reaches another site too, one whose frame turns as its own"},
 		{"error[].quadrature", `"I"`, `"I" or "Q"`, "both; offsets as two errors, named with I and Q at the end", "of an amplitude or an offset: that quadrature alone"},
-		{"error[].name", `"slow field"`, "a text in quotes", `"detuning", "amplitude", "X", "Y", "Z", "matrix", "any static error", "amplitude I", "offset I", "quadrature angle", or channel and parameter`, "of the error; each its own"},
-		{"error[].size", `"3 MHz"`, size, `"3 MHz", or 7.5 % of the fastest drive's full scale where that is less; "3 %" for an amplitude; "1 MHz" or 2.5 % for any; known_to or "5 %" for a line; "0.1 %" of full scale for an offset; "1 deg" for an angle`, "how large it may be, for the refinement: f is the rotation frequency that the error causes; shares are 1 ppm to 50 %, angles up to 30 deg"},
+		{"error[].site", `"q2"`, "a text in quotes", "required beside crosstalk; of an operator the target's, or the device's, only one", "of crosstalk the site that is reached, of an operator its own"},
+		{"error[].except", `[{ q1 = "Z" }]`, "a list of tables", "none", "of any: the products that it leaves out, of sites of 2 levels"},
+		{"error[].rates", `"rates.csv"`, "a text in quotes", "all operators alike", "of any, for sites of 2 levels: learned Pauli rates, a CSV file beside the brief with the header pauli,rate and rows such as IZ,2.5e-4, a letter I, X, Y or Z a site. An operator weighs as the root of its rate; those without one are left out"},
+		{"error[].name", `"slow field"`, "a text in quotes", `"detuning", "amplitude", "X", "X on q2", "ZX on q1, q2", "collective Z", "matrix", "any static error", "any one-body error", "any two-body error", "any error on q1, q2", "any leakage", "any learned error", "amplitude I", "offset I", "quadrature angle", "q1 drive on q2", or channel and parameter`, "of the error; each its own"},
+		{"error[].size", `"3 MHz"`, size, `"3 MHz", or 7.5 % of the fastest drive's full scale where that is less; "3 %" for an amplitude; "1 MHz" or 2.5 % for any; known_to or "5 %" for a line; "0.1 %" of full scale for an offset; "1 %" for crosstalk; "1 deg" for an angle`, "how large it may be, for the refinement: f is the rotation frequency that the error causes; shares are 1 ppm to 50 %, angles up to 30 deg"},
 		{"error[].weight", "1", "a number, 1e-06 to 1e+06", "1", "relative to the gate itself"},
-		{"require.infidelity", "1e-4", "a number, 1e-12 to 1", "1e-4", "average gate infidelity for the stated ends, at most"},
+		{"error[].order", "1", "a whole number, 1 to 2", "1", "how far the error is cancelled: 2 asks for its square too; of at most 16 operators"},
+		{"error[].spread", `"average"`, `"average" or "worst"`, "the error is cancelled", "lower the exact infidelity over sizes of the error instead: its average over a normal distribution of which size is the standard deviation, or the worst of -size, 0 and size; not of any"},
+		{"error[].values", `["-1 MHz", "1 MHz"]`, "an array of at most 32 texts", "the sizes that spread names", "of a spread: over these sizes, of either sign"},
+		{"error[].noise.form", `"lorentzian"`, `"white", "power-law", "lorentzian", "table" or "trace"`, must, "the error fluctuates, and what that adds to the infidelity is lowered in the place of size; of an amplitude or an error of one operator. White and power-law noise lie between low and high; a table has densities, a trace values in time"},
+		{"error[].noise.sigma", `"50 kHz"`, "1e-06 Hz to 100 GHz", "required but for table and trace", "root mean square over the whole band: a rotation frequency; of an amplitude a share, up to 100 %"},
+		{"error[].noise.exponent", "1", "a number, -4 to 4", "required beside power-law", "a: the density falls as 1/f^a"},
+		{"error[].noise.low", `"1 kHz"`, "1e-09 Hz to 1000 GHz", "required beside power-law; of white noise 0 Hz", "where the band begins"},
+		{"error[].noise.high", `"1 MHz"`, "1e-09 Hz to 1000 GHz", "required beside white and power-law", "where it ends"},
+		{"error[].noise.correlation_time", `"2 us"`, "1 ps to 1e+06 s", "required beside lorentzian", "the correlations fall as exp(-|t|/T)"},
+		{"error[].noise.file", `"noise.csv"`, "a text in quotes", "required beside table and trace", "a CSV file beside the brief; its header is frequency_hz,psd_hz2_per_hz or time_s,value_hz, of an amplitude frequency_hz,psd_per_hz or time_s,value"},
+		{"error[].noise.sided", `"one"`, `"one" or "two"`, "required beside table", "of the densities: over positive frequencies alone, or half as large over both signs"},
+		{"error[].noise.segment", "64", "a whole number, 32 to 524288", "from the length", "of a trace: samples of the pieces of which the spectra are averaged, a power of two"},
+		{"require.infidelity", "1e-4", "a number, 1e-12 to 1", "1e-4", "average gate infidelity for the stated ends, at most; of states the share that is lost of them"},
 		{"require.susceptibility", "1e-3", "a number, 1e-09 to 1", "1e-3", "the share of each held error that may survive the gate"},
-		{"require.margin[].error", `"detuning"`, `"detuning", "amplitude", "X", "Y"`, must, "detuning, amplitude, X, Y, Z or the name of an [[error]] (not of kind any)"},
-		{"require.margin[].size", `"0.3 MHz"`, size, must, "up to this size of the error, either sign, the infidelity above must hold; a share for an amplitude, a line or an offset, 1 ppm to 50 %; an angle for an angle"},
+		{"require.margin[].error", `"detuning"`, `"detuning", "amplitude", "X", "Y"`, must, "the name of an [[error]] that is not of any; of one spin also detuning, amplitude, X, Y or Z"},
+		{"require.margin[].size", `"0.3 MHz"`, size, must, "up to this size of the error, either sign, the infidelity above must hold; a share for an amplitude, a line, an offset or crosstalk, 1 ppm to 50 %; an angle for an angle"},
 	}
 }
 
-const briefFoot = `A brief without [[error]] and without hold is held against detuning, amplitude and any static error. There may be
-16 [[error]] and 16 [[require.margin]]. Margins are searched up to 50 MHz, 50 % and 50 degrees; of static errors no
-farther than twice the largest full scale, unless a margin beyond is required.
+const briefFoot = `A brief without [[error]] and without hold is held against detuning, amplitude and any static error, on a device of
+several sites against amplitude and any one-body error. There may be 16 [[error]] and 16 [[require.margin]]. Margins are
+searched up to 50 MHz, 50 % and 50 degrees; of static errors no farther than twice the largest full scale, unless a
+margin beyond is required.
 `
 
 const pulseHead = `A pulse is a folder:
@@ -384,14 +446,16 @@ const pulseHead = `A pulse is a folder:
                     what the codes become at the device: NPY, float64, shape (rows, 3): ns after the trigger, then I and
                     Q as Rabi frequency in MHz (u_I and u_Q over 2 pi; of a baseband channel u and zero); 8 rows a
                     sample, from the start of the window to one span after its end
-  inputs/           copies of profile.toml, device.toml and brief.toml
+  inputs/           copies of profile.toml, device.toml and brief.toml, and of the files of rates and noise that the
+                    brief names
   datasheet.html    for people
 
 Numbers in pulse.toml are plain, with the unit in the key's name or below; matrices are rows of [re, im]. The program
 writes it, and replay refuses a folder of which a file was changed. [model] and the waveform files are all that is
 needed to recompute the gate:
 
-  dU/dt = -i H U,  H = static + sum over channels of full_scale (u_I operators[0] + u_Q operators[1]),
+  dU/dt = -i H U,  H = static + sum over channels of full_scale (u_I operators[0] + u_Q operators[1])
+                       + sum over rotating of cos(w t) cosine + sin(w t) sine,  t = 0 at window_start_ns,
   u_I + i u_Q: what y, held for one period a sample, becomes behind
   G(s) = e^(-s delay) (direct + sum residue/(s - pole)^power),
   y = x/|x| f(|x|) with the compression table f, else y = x, and x = (I + i Q) / 2^(bits-1)`
@@ -401,7 +465,7 @@ func pulseKeys() []key {
 	return []key{
 		{"format", "1", "", "", "of this file"},
 		{"pulse.name", `"x90-any"`, "", "", "the brief's"},
-		{"pulse.target", `"X90 on q1"`, "", "", "the gate in words"},
+		{"pulse.target", `"X90 on q1"`, "", "", "the gate, or the states, in words"},
 		{"pulse.span", `"112 ns"`, "", "", "guard samples included"},
 		{"pulse.held", `["any static error"]`, "", "", "the errors it is held against"},
 		{"pulse.held_by_default", "false", "", "", "true when the brief named no error"},
@@ -437,18 +501,19 @@ func pulseKeys() []key {
 		{"require.margin[].size_rad_per_ns", "0.0019", "", "another size stands there", "2 pi times the brief's frequency"},
 		{"require.margin[].size_share", "0.01", "", "another size stands there", "of an amplitude, a line's parameter or an offset"},
 		{"require.margin[].size_rad", "0.0175", "rad", "another size stands there", "of a quadrature angle"},
-		{"decoherence.t1_ns", "60000.0", "", "not stated", "the device's"},
-		{"decoherence.t2_ns", "40000.0", "", "not stated", "the device's"},
+		{"decoherence[].site", `"q1"`, "", "", "that states times, one [[decoherence]] for each"},
+		{"decoherence[].t1_ns", "60000.0", "", "not stated", "the device's"},
+		{"decoherence[].t2_ns", "40000.0", "", "not stated", "the device's"},
 		{"provenance.program", `"holdfast"`, "", "", "what wrote the folder"},
 		{"provenance.version", `"` + version + `"`, "", "", "of the program"},
 		{"provenance.instrument", `"rack B, position 3"`, "", "", "the profile's name"},
 		{"provenance.device", `"Skerry"`, "", "", "the device's name"},
-		{"provenance.site", `"q1"`, "", "", "that is driven"},
-		{"provenance.channel", `"q1 drive"`, "", "", "that drives it"},
+		{"provenance.site", `"q1"`, "", "", "of the gate, or its sites"},
+		{"provenance.channel", `"q1 drive"`, "", "", "the first that plays"},
 		{"claim.infidelity", "4.7e-9", "0 to 1", "", "of the rounded codes, for the stated ends"},
 		{"claim.infidelity_other_ends", "1.2e-5", "0 to 1", "", "of the same codes for the other ends"},
 		{"claim.leakage", "0.0", "0 to 1", "", "out of the code space, for the stated ends"},
-		{"claim.tail_angle_rad", "0.0087", "rad", "", "what the ring-out still turns after the window"},
+		{"claim.tail_angle_rad", "0.0087", "rad", "the device is more than one spin", "what the ring-out still turns after the window"},
 		{"model.sample_period_ns", "1.0", "ns", "", "each sample is held that long"},
 		{"model.samples", "112", "", "", "the span, guards included"},
 		{"model.bits", "14", "", "", "x = code / 2^(bits-1)"},
@@ -457,9 +522,20 @@ func pulseKeys() []key {
 		{"model.dim", "2", "", "", "of the device's space"},
 		{"model.code_space", "[0, 1]", "", "", "basis states of the gate"},
 		{"model.static_rad_per_ns", "[[[0.0, 0.0], [0.0, 0.0]], [[0.0, 0.0], [0.0, 0.0]]]", "rad/ns", "", "the Hamiltonian without drive and errors"},
-		{"model.target", "[[[0.7, 0.0], [0.0, -0.7]], [[0.0, -0.7], [0.7, 0.0]]]", "", "", "the gate that is wanted, on the code space"},
-		{"model.free_z_before", "[]", "rad", "", "rotations about Z that cost nothing, before the gate; empty when there are none"},
+		{"model.target", "[[[0.7, 0.0], [0.0, -0.7]], [[0.0, -0.7], [0.7, 0.0]]]", "", "states become others", "the gate that is wanted, on the code space"},
+		{"model.sites", "[2, 2]", "", "one site", "levels of each site; the first is the slowest in a basis state's number"},
+		{"model.from", "[[[1.0, 0.0], [0.0, 0.0], [0.0, 0.0], [0.0, 0.0]]]", "", "a gate is wanted", "states on the code space, the span of which is to become that of to"},
+		{"model.to", "[[[0.0, 0.0], [0.0, 0.0], [0.0, 0.0], [1.0, 0.0]]]", "", "a gate is wanted", "as many others"},
+		{"model.free_z_before", "[]", "rad", "", "rotations about Z that cost nothing, before the gate, of each site; empty when there are none"},
 		{"model.free_z_after", "[]", "rad", "", "the same after it"},
+		{"model.local_before", "[[[[1.0, 0.0], [0.0, 0.0]], [[0.0, 0.0], [1.0, 0.0]]]]", "", "not up to local rotations", "rotations of each site that cost nothing, before the gate: the gate M counts as (product of local_after) M (product of local_before)"},
+		{"model.local_after", "[[[[1.0, 0.0], [0.0, 0.0]], [[0.0, 0.0], [1.0, 0.0]]]]", "", "not up to local rotations", "the same after it"},
+		{"model.rotating[].frequency_rad_per_ns", "0.63", "rad/ns", "nothing turns by itself", "w: H += cos(w t) cosine + sin(w t) sine, t from window_start_ns on, before it negative"},
+		{"model.rotating[].cosine", "[[[0.0, 0.0], [0.0157, 0.0]], [[0.0157, 0.0], [0.0, 0.0]]]", "rad/ns", "", "of the whole device"},
+		{"model.rotating[].sine", "[[[0.0, 0.0], [0.0, 0.0157]], [[0.0, -0.0157], [0.0, 0.0]]]", "rad/ns", "", "the same"},
+		{"model.dropped[].frequency_rad_per_ns", "63.8", "rad/ns", "nothing is left out", "w of what turns and is left out of the model, for rotating_wave = true"},
+		{"model.dropped[].cosine", "[[[0.0, 0.0], [0.0157, 0.0]], [[0.0157, 0.0], [0.0, 0.0]]]", "rad/ns", "", "as in rotating"},
+		{"model.dropped[].sine", "[[[0.0, 0.0], [0.0, 0.0157]], [[0.0, -0.0157], [0.0, 0.0]]]", "rad/ns", "", "as in rotating"},
 		{"model.channel[].name", `"q1 drive"`, "", "", "of the profile"},
 		{"model.channel[].kind", `"quadrature"`, "", "", "two converters into one mixer; or \"baseband\": one converter, one operator, u = Re u"},
 		{"model.channel[].codes", `"q1-drive.npy"`, "", "", "the file to play"},
@@ -487,17 +563,33 @@ func pulseKeys() []key {
 		{"model.channel[].compression", "[[0.0, 0.0], [0.5, 0.49], [1.0, 0.95]]", share, "y = x", "share at the converter, share of the rate reached: y = x/|x| f(|x|) enters the line, f straight between the points"},
 		{"model.channel[].shift_rad_per_ns", "7.5e-5", "rad/ns", "none", "H += shift |u_I + i u_Q|^2 shift_operator, u in shares as it arrives"},
 		{"model.channel[].shift_operator", "[[[0.5, 0.0], [0.0, 0.0]], [[0.0, 0.0], [-0.5, 0.0]]]", "", "no shift", "what it multiplies"},
-		{"model.error[].name", `"detuning"`, "", "", "every held error, and detuning, amplitude, X, Y, Z"},
+		{"model.channel[].map_polynomial", "[1.0, 0.2]", "", "u itself", "of a bias: full_scale (c1 s + c2 s^2 + ...) in the place of u, s = u/full_scale as it arrives"},
+		{"model.channel[].map_loop", "[32.67, 0.23, 0.15, 0.1]", "rad/ns, flux quanta", "u itself", "of a bias by flux: highest w, bias, full scale and asymmetry a; w (g(bias + full scale s) - g(bias)) in the place of u, g(F) = (cos^2(pi F) + a^2 sin^2(pi F))^(1/4)"},
+		{"model.channel[].path[].frequency_rad_per_ns", "0.63", "rad/ns", "no crosstalk turns", "w: u e^(-i w t), t from window_start_ns on, drives these operators too"},
+		{"model.channel[].path[].operators", "[[[[0.0, 0.0], [0.015, 0.0]], [[0.015, 0.0], [0.0, 0.0]]]]", "", "", "what its real and its imaginary part multiply"},
+		{"model.error[].name", `"detuning"`, "", "", "every held error, and of one spin detuning, amplitude, X, Y, Z"},
 		{"model.error[].held", "false", "", "", "whether the pulse is held against it"},
-		{"model.error[].kind", `"static"`, "", "", `"static": H += lambda operator; "amplitude": u of the channels times 1 + lambda; "any": every traceless operator; "skew": u_I += -lambda u_Q of the channels; "line": u += lambda full_scale times what x becomes behind a line`},
+		{"model.error[].kind", `"static"`, "", "", `"static": H += lambda operator; "amplitude": u of the channels times 1 + lambda; "any": H += lambda times a sum of c weight operator, the squares of all c together 1; "skew": u_I += -lambda u_Q of the channels; "line": u += lambda full_scale times what x becomes behind a line; "crosstalk": lambda u of the channel drives operators`},
 		{"model.error[].operator", "[[[0.5, 0.0], [0.0, 0.0]], [[0.0, 0.0], [-0.5, 0.0]]]", "", "not of kind static", "for lambda in rad/ns"},
 		{"model.error[].channels", `["q1 drive"]`, "", "all channels", "of kind amplitude"},
 		{"model.error[].quadrature", `"I"`, "", "both", "of kind amplitude: the one that is scaled"},
-		{"model.error[].channel", `"q1 drive"`, "", "not of kind line", "whose line is not quite what it should be"},
+		{"model.error[].channel", `"q1 drive"`, "", "not of kind line or crosstalk", "whose line is not quite what it should be, or which reaches another site"},
 		{"model.error[].direct", "[0.0, 0.0]", "", "not of kind line", "these four: the line through which lambda full_scale x adds to u, with the delay of the channel"},
 		{"model.error[].poles_per_ns", "[[-0.033, 0.0]]", "1/ns", "not of kind line", "of that line, [re, im]"},
 		{"model.error[].powers", "[1]", "", "not of kind line", "of (s - pole), one for each pole"},
 		{"model.error[].residues", "[[0.0005, 0.0]]", "1/ns to the power", "not of kind line", "one for each pole, [re, im]"},
+		{"model.error[].operators", "[[[[0.5, 0.0], [0.0, 0.0]], [[0.0, 0.0], [-0.5, 0.0]]]]", "", "of kind any every traceless operator, sqrt(dim)/2 the norm of each; not of other kinds", "of kind any for lambda in rad/ns; of kind crosstalk what u_I and u_Q multiply"},
+		{"model.error[].names", `["ZX"]`, "", "as operators", "of kind any: a letter a site, 1 for none, or in words"},
+		{"model.error[].weights", "[1.0]", "", "as operators", "of kind any, root mean square 1"},
+		{"model.error[].leak", "true", "", "false", "the operators couple the code space to other levels, and that is what is not to survive"},
+		{"model.error[].leak_susceptibility", "2.1e-3", "", "no levels lie outside the code space", "the share of the error that leads out of the code space"},
+		{"model.error[].spread", `"average"`, "", "the error is cancelled", "or \"worst\": what was lowered over spread_values"},
+		{"model.error[].spread_values", "[-0.0063, 0.0063]", "as lambda", "no spread", "sizes of the error"},
+		{"model.error[].spread_shares", "[0.5, 0.5]", "", "no spread", "their weights; of the worst all alike"},
+		{"model.error[].spread_infidelity", "2.1e-6", "0 to 1", "no spread", "the average over them, or the worst, by the rounded codes"},
+		{"model.error[].noise_frequencies_rad_per_ns", "[0.0, 0.01]", "rad/ns", "the error does not fluctuate", "nodes of a sum over its spectrum"},
+		{"model.error[].noise_weights", "[1e-9, 2e-9]", "lambda squared", "the error does not fluctuate", "their weights"},
+		{"model.error[].noise_infidelity", "3.4e-7", "0 to 1", "the error does not fluctuate", "what the noise adds to the infidelity, to first order in its spectrum"},
 		{"model.error[].susceptibility", "1.7e-5", "", "", "the share of the error that survives the gate, by the rounded codes"},
 		{"headroom[].channel", `"q1 drive"`, "", "", "one [[headroom]] for each limit of a channel"},
 		{"headroom[].limit", `"amplitude"`, "", "", "which limit"},

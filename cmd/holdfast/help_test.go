@@ -50,8 +50,11 @@ func askedKeys(t *testing.T, files ...string) map[string]bool {
 					args = call.Args[1:]
 				}
 			case *ast.Ident:
-				if f.Name == "oneOf" || f.Name == "wholes" {
+				switch f.Name {
+				case "oneOf", "wholes", "readState":
 					args = call.Args[1:]
+				case "energy": // of a site
+					args = call.Args[:1]
 				}
 			}
 			for _, a := range args {
@@ -87,8 +90,9 @@ func TestHelpHasEveryKey(t *testing.T) {
 		files []string
 	}{
 		"profile": {profileKeys(), []string{"../../hardware/load.go"}},
-		"device":  {deviceKeys(), []string{"../../design/device/device.go"}},
-		"brief":   {briefKeys(), []string{"../../design/brief/brief.go", "../../design/brief/load.go"}},
+		"device":  {deviceKeys(), []string{"../../design/device/device.go", "../../design/device/bias.go"}},
+		"brief": {briefKeys(), []string{"../../design/brief/brief.go", "../../design/brief/target.go", "../../design/brief/errors.go", "../../design/brief/any.go",
+			"../../design/brief/load.go", "../../design/noise/load.go"}},
 	} {
 		asked, documented := askedKeys(t, c.files...), named(c.keys)
 		if len(asked) < 10 {
@@ -226,10 +230,18 @@ func loaded(topic, path string) (string, error) {
 	if err != nil {
 		return "", err
 	}
-	return placeOfKey.ReplaceAllString(fmt.Sprintf("%+v", v), ""), nil
+	text := fmt.Sprintf("%+v", v)
+	if d, ok := v.(*device.Device); ok { // of which only the addresses are printed
+		for _, b := range d.Biases {
+			if b.Loop != nil {
+				text += fmt.Sprintf("%+v", *b.Loop)
+			}
+		}
+	}
+	return placeOfKey.ReplaceAllString(text, ""), nil
 }
 
-var placeOfKey = regexp.MustCompile(`\b[Ll]ine:[0-9]+|lines:\{[^}]*\}|unsized:(true|false)`)
+var placeOfKey = regexp.MustCompile(`\b[Ll]ine\w*:[0-9]+|lines:\{[^}]*\}|unsized:(true|false)|0x[0-9a-f]+`)
 
 // Every key of a profile, a device and a brief as the help shows it is taken; a value that
 // is not allowed gets a message with the range that the help gives; and leaving the key
@@ -241,10 +253,29 @@ func TestHelpIsTrue(t *testing.T) {
 			path := filepath.Join(dir, topic+".toml")
 			full := func() document {
 				d := document{}
+				not := rivalsOf(topic, k.path)
 				for _, other := range keys {
-					if !rivalsOf(k.path)[other.path] {
+					if !not[other.path] {
 						d.set(t, other.path, other.example)
 					}
+				}
+				if form := noiseForms[k.path]; form != "" {
+					d.set(t, "error[].noise.form", strconv.Quote(form))
+					rows := "frequency_hz,psd_hz2_per_hz\n1e3,1\n1e6,1e-3\n"
+					if form == "trace" {
+						rows = "time_s,value_hz\n"
+						for i := range 256 {
+							rows += fmt.Sprintf("%g,%d\n", float64(i)*1e-6, i%7)
+						}
+					}
+					write(t, filepath.Join(dir, "noise.csv"), rows)
+				}
+				if topic == "device" { // what the examples need that is not of one site
+					second := map[string]any{"name": "q2"}
+					if k.path != "site[].frequency" {
+						second["frequency"] = "5.2 GHz"
+					}
+					d["site"] = append(d["site"].([]map[string]any), second)
 				}
 				return d
 			}
@@ -296,39 +327,104 @@ func TestHelpIsTrue(t *testing.T) {
 }
 
 // alternatives are the keys of which one must stand there.
-var alternatives = map[string]bool{"target.gate": true, "target.axis": true, "target.matrix": true,
-	"error[].detuning": true, "error[].amplitude": true, "error[].operator": true, "error[].matrix": true, "error[].any": true,
-	"error[].line": true, "error[].quadrature_angle": true, "error[].offset": true}
+var alternatives = map[string]bool{}
 
-// rivalsOf gives the keys that may not stand beside one: those of the other alternatives.
-func rivalsOf(path string) map[string]bool {
-	not := map[string]bool{"hold": true}
-	target, kind := "target.gate", "error[].detuning"
-	switch {
-	case path == "hold":
-		not = map[string]bool{"error[].name": true, "error[].size": true, "error[].weight": true}
-		kind = ""
-	case path == "target.axis" || path == "target.angle":
-		target = "target.axis"
-	case path == "target.matrix":
-		target = path
-	case alternatives[path] && strings.HasPrefix(path, "error"):
-		kind = path
-	case path == "error[].parameter":
-		kind = "error[].line"
-	case path == "error[].quadrature":
-		kind = "error[].offset"
+func init() {
+	for _, list := range [][]string{targetKinds, errorKinds, couplingKinds} {
+		for _, path := range list {
+			alternatives[path] = true
+		}
 	}
-	switch kind {
-	case "error[].amplitude", "error[].line", "error[].quadrature_angle", "error[].offset":
-		not["error[].size"] = true // its example is a frequency
+	alternatives["target.sites"] = true // or site, or gates, or states
+}
+
+var (
+	couplingKinds = []string{"coupling[].on", "coupling[].kind"}
+	targetKinds   = []string{"target.gate", "target.gates", "target.controlled", "target.axis", "target.matrix", "target.from"}
+	errorKinds    = []string{"error[].detuning", "error[].amplitude", "error[].operator", "error[].on", "error[].collective", "error[].matrix", "error[].any",
+		"error[].line", "error[].quadrature_angle", "error[].offset", "error[].crosstalk"}
+)
+
+// beside gives of a key that has no meaning by itself the alternative beside which it stands in the examples.
+var beside = map[string]string{
+	"coupling[].between": "coupling[].kind",
+	"target.angle":       "target.axis", "target.sites": "target.controlled", "target.up_to": "target.controlled", "target.to": "target.from",
+	"error[].values":    "error[].detuning", // and a spread
+	"error[].parameter": "error[].line", "error[].quadrature": "error[].offset", "error[].site": "error[].crosstalk", "error[].except": "error[].any", "error[].rates": "error[].any",
+}
+
+// noiseForms gives of a key of noise a form beside which it stands.
+var noiseForms = map[string]string{
+	"error[].noise.form": "lorentzian", "error[].noise.sigma": "lorentzian", "error[].noise.correlation_time": "lorentzian",
+	"error[].noise.exponent": "power-law", "error[].noise.low": "power-law", "error[].noise.high": "power-law",
+	"error[].noise.file": "table", "error[].noise.sided": "table", "error[].noise.segment": "trace",
+}
+
+// rivalsOf gives the keys that may not stand beside one: those of the other alternatives, and those that have no meaning there.
+func rivalsOf(topic, path string) map[string]bool {
+	not := map[string]bool{}
+	// pick leaves of the alternatives the one that the key is, or stands beside, or else the first, and what may stand beside that.
+	pick := func(list []string) string {
+		chosen := list[0]
+		for _, k := range list {
+			if path == k || beside[path] == k {
+				chosen = k
+			}
+		}
+		for _, k := range list {
+			not[k] = k != chosen
+		}
+		for k, with := range beside {
+			if slices.Contains(list, with) && with != chosen {
+				not[k] = true
+			}
+		}
+		return chosen
 	}
-	not["error[].parameter"] = kind != "error[].line"
-	not["error[].quadrature"] = kind != "error[].amplitude" && kind != "error[].offset"
-	for k := range alternatives {
-		not[k] = k != target && k != kind
+	switch topic {
+	case "device":
+		pick(couplingKinds)
+		for _, k := range deviceKeys() { // a bias has one map
+			if loop := strings.HasPrefix(path, "bias[].loop"); strings.HasPrefix(k.path, "bias[].loop") {
+				not[k.path] = !loop
+			} else if k.path == "bias[].polynomial" {
+				not[k.path] = loop
+			}
+		}
+		if path == "site[].frequency" { // without it there is no coupling to a site that has one
+			for _, k := range deviceKeys() {
+				not[k.path] = not[k.path] || strings.HasPrefix(k.path, "coupling") || strings.HasPrefix(k.path, "crosstalk")
+			}
+		}
+	case "brief":
+		not["hold"] = path != "hold"
+		kind := pick(errorKinds)
+		switch kind {
+		case "error[].amplitude", "error[].line", "error[].quadrature_angle", "error[].offset", "error[].crosstalk":
+			not["error[].size"] = true // its example is a frequency
+		}
+		not["error[].spread"] = kind == "error[].any"
+		not["error[].values"] = not["error[].values"] || path == "error[].spread" // without which there are none
+		form, noisy := noiseForms[path]
+		for k := range noiseForms {
+			not[k] = noiseForms[k] != form || k == "error[].noise.segment" && path != k // and a table has no segment
+		}
+		not["error[].noise.form"] = !noisy
+		if noisy {
+			not["error[].noise.file"] = form != "table" && form != "trace"
+			not["error[].noise.sigma"] = form == "table" || form == "trace"
+			not["error[].size"], not["error[].spread"], not["error[].values"] = true, true, true
+		}
+		if path == "hold" {
+			for _, k := range briefKeys() {
+				not[k.path] = not[k.path] || strings.HasPrefix(k.path, "error")
+			}
+		}
+		target := pick(targetKinds)
+		not["target.site"] = target == "target.gates" || target == "target.from" || target == "target.controlled" // which names the sites, or stands beside sites
+		not["target.free_z"] = target == "target.from" || path == "target.up_to"
+		not["target.up_to"] = path != "target.up_to"
 	}
-	not["target.angle"] = target != "target.axis"
 	return not
 }
 
@@ -356,6 +452,18 @@ func defaultOf(k key) string {
 		return ""
 	}
 	return text
+}
+
+// The gates of two sites that the help names are those that there are.
+func TestHelpNamesGates(t *testing.T) {
+	names := device.Gate2Names()
+	for i, name := range names {
+		names[i] = strconv.Quote(name)
+	}
+	last := len(names) - 1
+	if want := strings.Join(names[:last], ", ") + " or " + names[last]; twoSiteGates != want {
+		t.Errorf("the help names %s; there are %s", twoSiteGates, want)
+	}
 }
 
 // Each topic of the help is there, its lines fit a terminal, and -h shows the same.
@@ -390,7 +498,7 @@ func TestHelp(t *testing.T) {
 	for _, v := range verbs() {
 		mustHave(t, "help", stdout, "holdfast "+v.name)
 	}
-	for _, c := range []struct{ topic, flag string }{{"design", "-out"}, {"design", "-force"}, {"replay", "-datasheet"}, {"card", "-out"}, {"card", "-force"}, {"card", "-detuning"}} {
+	for _, c := range []struct{ topic, flag string }{{"start", "-pair"}, {"design", "-out"}, {"design", "-force"}, {"replay", "-datasheet"}, {"card", "-out"}, {"card", "-force"}, {"card", "-detuning"}, {"card", "-channel"}} {
 		_, stdout, _ := play("help", c.topic)
 		mustHave(t, "help "+c.topic, stdout, c.flag)
 	}
@@ -400,7 +508,7 @@ func TestHelp(t *testing.T) {
 		mustHave(t, "help "+v.name, stdout, "[-json]", "-json print one JSON object instead of text")
 	}
 	// the flags in the source are the ones above
-	for file, want := range map[string]int{"design.go": 2, "replay.go": 1, "card.go": 3, "check.go": 0, "start.go": 0, "help.go": 0} {
+	for file, want := range map[string]int{"design.go": 2, "replay.go": 1, "card.go": 4, "check.go": 0, "start.go": 1, "help.go": 0} {
 		source, err := os.ReadFile(file)
 		if err != nil {
 			t.Fatal(err)

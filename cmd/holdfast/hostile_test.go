@@ -79,7 +79,7 @@ func TestEditedInputs(t *testing.T) {
 		// the device
 		{"energy", dev, `"upper"`, `"middle"`, "site[0].zero", `"lower" or "upper"`},
 		{"T2 beyond 2 T1", dev, `"40 us"`, `"121 us"`, "site[0].T2", "twice T1"},
-		{"thirty levels", dev, `levels = 2`, `levels = 30`, "site[0].levels", "2 to 8"},
+		{"thirty levels", dev, `levels = 2`, `levels = 30`, "site[0].levels", "2 to 16"},
 		{"driven site unknown", dev, `site = "q1"`, `site = "q2"`, "drive[0].site", `"q1"`},
 		{"time in MHz", dev, `"60 us"`, `"60 MHz"`, "site[0].T1", "unit of frequency"},
 		// the brief, alone and against the others
@@ -108,15 +108,147 @@ func TestEditedInputs(t *testing.T) {
 			c.old, c.new, c.key, c.says = "slew_limit =", "slow_limit =", "channel[0].slow_limit", "unknown key"
 		}
 		t.Run(c.name, func(t *testing.T) {
-			dir := newLab(t)
-			path := filepath.Join(dir, c.file)
-			at := change(t, path, c.old, c.new)
+			below := 0
 			if c.name == "key twice" {
-				at++
+				below = 1
 			}
-			wanted := []string{c.says, fmt.Sprintf("%s:%d: %s", path, at, c.key)}
-			refused(t, dir, wanted, "design", filepath.Join(dir, quickName), "-out", filepath.Join(dir, "pulse"))
-			refused(t, dir, wanted, "check", path)
+			edited(t, newLab(t), quickName, below, c)
+		})
+	}
+}
+
+// edited demands that check of a file that was edited, and design of the brief, name the line of the edit or one so many below it.
+func edited(t *testing.T, dir, brief string, below int, c edit) {
+	t.Helper()
+	path := filepath.Join(dir, c.file)
+	at := change(t, path, c.old, c.new) + below
+	wanted := []string{c.says, fmt.Sprintf("%s:%d: %s", path, at, c.key)}
+	refused(t, dir, wanted, "design", filepath.Join(dir, brief), "-out", filepath.Join(dir, "pulse"))
+	refused(t, dir, wanted, "check", path)
+}
+
+// The same of what only several sites have. What the device or the brief says of the others is at fault by itself or against them.
+func TestEditedPairs(t *testing.T) {
+	const dev, name = "skerry-pair.toml", "sqrt-iswap.toml"
+	coupling := "kind = \"exchange\"          # or \"heisenberg\", \"dipolar\", \"dispersive\", or any product, as in on = { q1 = \"Z\", q2 = \"Z\" }\n"
+	target := "sites = [\"q1\", \"q2\"]       # the gate acts on these, in this order; other sites of the device would be left alone\n"
+	gate := "gate = \"sqrt-iSWAP\"        # or another by its name, controlled = \"X90\", gates = { ... }, a matrix, or from and to for states\n"
+	free := "free_z = \"both\""
+	errors := func(text string) string { return "[[error]]\n" + text + "\n[require]" }
+	for _, c := range []struct {
+		edit
+		below int
+	}{
+		// the device
+		{edit{"two sites of one name", dev, `name = "q2"`, `name = "q1"`, "site[1].name", "a name of its own"}, 0},
+		{edit{"levels beyond 64", dev, "levels = 2", "levels = 16\nkind = \"spin\"\n[[site]]\nname = \"q3\"\nkind = \"spin\"\nlevels = 16", "site[1].levels", "at most 64"}, 5},
+		{edit{"kind", dev, `zero = "upper"             #`, `kind = "atom" #`, "site[0].kind", `"spin" or "ladder"`}, 0},
+		{edit{"ladder upside down", dev, "levels = 2", "kind = \"ladder\"", "site[0].zero", "it stands on |0>"}, 1},
+		{edit{"ladder without anharmonicity", dev, "levels = 2", "levels = 3\nkind = \"ladder\"", "site[0].anharmonicity", "of a ladder"}, -2},
+		{edit{"quadratic of a ladder", dev, "levels = 2", "levels = 3\nkind = \"ladder\"\nanharmonicity = \"-220 MHz\"\nquadratic = \"1 MHz\"", "site[0].quadratic", "quadratic on a spin"}, 3},
+		{edit{"higher of a spin", dev, "levels = 2", "levels = 3\nkind = \"spin\"\nhigher = [\"1 MHz\"]", "site[0].higher", "higher on a ladder"}, 2},
+		{edit{"code out of range", dev, "levels = 2", "code = [0, 2]", "site[0].code", "0 to 1"}, 0},
+		{edit{"code twice the same", dev, "levels = 2", "code = [1, 1]", "site[0].code", "two levels"}, 0},
+		{edit{"a million higher", dev, "levels = 2", "higher = [" + strings.Repeat("\"1 MHz\",", 50000) + "]", "site[0].higher", "at most 13"}, 0},
+		{edit{"coupling of another kind", dev, `"exchange"  `, `"gravity"  `, "coupling[0].kind", `"dispersive"`}, 0},
+		{edit{"coupling on beside kind", dev, coupling, "on = { q1 = \"Z\", q2 = \"Z\" }\n", "coupling[0].on", "on alone"}, 0},
+		{edit{"coupling along W", dev, coupling + "between = [\"q1\", \"q2\"]", "on = { q1 = \"Z\", q2 = \"W\" }", "coupling[0].on.q2", `"X", "Y" or "Z"`}, 0},
+		{edit{"coupling of one site", dev, coupling + "between = [\"q1\", \"q2\"]", "on = { q1 = \"Z\" }", "coupling[0].on", "two or more of"}, 0},
+		{edit{"coupling of an unknown site", dev, coupling + "between = [\"q1\", \"q2\"]", "on = { q1 = \"Z\", q2 = \"Z\", q7 = \"Z\" }", "coupling[0].on.q7", "unknown key"}, 0},
+		{edit{"coupling between a site and itself", dev, `["q1", "q2"]`, `["q1", "q1"]`, "coupling[0].between", "two sites of this device"}, 0},
+		{edit{"coupling of three", dev, `["q1", "q2"]`, `["q1", "q2", "q2"]`, "coupling[0].between", "at most 2"}, 0},
+		{edit{"strength without end", dev, `"5 MHz"`, `"inf MHz"`, "coupling[0].strength", "not a finite"}, 0},
+		{edit{"strength as a number", dev, `"5 MHz"`, `5`, "coupling[0].strength", "bare number"}, 0},
+		{edit{"rotating wave without frequencies", dev, `"5 MHz"`, "\"5 MHz\"\nrotating_wave = true", "coupling[0].rotating_wave", "each of them states its frequency"}, 1},
+		{edit{"one frequency of two", dev, `name = "q1"`, "name = \"q1\"\nfrequency = \"5.1 GHz\"", "coupling[0]", "or for none"}, 24},
+		{edit{"a channel twice", dev, `channel = "q2 drive"`, `channel = "q1 drive"`, "drive[1].channel", "a channel of its own"}, 0},
+		{edit{"channel unknown", dev, `channel = "q2 drive"`, `channel = "q9 drive"`, "drive[1].channel", `"q1 drive", "q2 drive"`}, 0},
+		{edit{"crosstalk onto its own site", dev, `"5 MHz"`, "\"5 MHz\"\n[[crosstalk]]\nchannel = \"q1 drive\"\nsite = \"q1\"\nshare = \"3 %\"", "crosstalk[0].site", "another site"}, 3},
+		{edit{"crosstalk of no channel", dev, `"5 MHz"`, "\"5 MHz\"\n[[crosstalk]]\nchannel = \"q7\"\nsite = \"q2\"\nshare = \"3 %\"", "crosstalk[0].channel", `"q2 drive"`}, 2},
+		{edit{"crosstalk of nan", dev, `"5 MHz"`, "\"5 MHz\"\n[[crosstalk]]\nchannel = \"q1 drive\"\nsite = \"q2\"\nshare = \"nan %\"", "crosstalk[0].share", "not a finite"}, 4},
+		{edit{"phase beyond a turn", dev, `"5 MHz"`, "\"5 MHz\"\n[[crosstalk]]\nchannel = \"q1 drive\"\nsite = \"q2\"\nshare = \"3 %\"\nphase = \"400 deg\"", "crosstalk[0].phase", "-360 deg to 360 deg"}, 5},
+		// the target
+		{edit{"sites twice", name, `["q1", "q2"]`, `["q1", "q1"]`, "target.sites", "each site once"}, 0},
+		{edit{"site unknown", name, `["q1", "q2"]`, `["q1", "q7"]`, "target.sites", `"q1", "q2"`}, 0},
+		{edit{"seven sites", name, `["q1", "q2"]`, `["a", "b", "c", "d", "e", "f", "g"]`, "target.sites", "at most 6"}, 0},
+		{edit{"gate of one site", name, `"sqrt-iSWAP"`, `"X90"`, "target.gate", `"sqrt-iSWAP"`}, 0},
+		{edit{"site beside sites", name, target, "site = \"q1\"\n" + target, "target.sites", "one of the two"}, 1},
+		{edit{"gates beside sites", name, gate, "gates = { q1 = \"X90\", q2 = \"X90\" }\n", "target.sites", "gates alone"}, -1},
+		{edit{"gates of what is none", name, target + gate, "gates = { q1 = \"X90\", q2 = \"X91\" }\n", "target.gates.q2", `"X90"`}, 0},
+		{edit{"gates as a text", name, target + gate, "gates = \"X90\"\n", "target.gates", "a table"}, 0},
+		{edit{"matrix of one site", name, gate, "matrix = [[1, 0], [0, 1]]\n", "target.matrix", "4 rows"}, 0},
+		{edit{"matrix not unitary", name, gate, "matrix = [[1,0,0,0],[0,1,0,0],[0,0,1,0],[0,0,0,2]]\n", "target.matrix", "unitary"}, 0},
+		{edit{"controlled by nothing", name, target + gate, "site = \"q1\"\ncontrolled = \"X90\"\n", "target.controlled", "the controls and then the site"}, 1},
+		{edit{"axis of two sites", name, gate, "axis = [1, 0, 0]\nangle = \"90 deg\"\n", "target.axis", "for one site"}, 0},
+		{edit{"local rotations beside free Z", name, free, free + "\nup_to = \"local rotations\"", "target.free_z", "one of the two"}, 0},
+		{edit{"up to something", name, free, `up_to = "everything"`, "target.up_to", `"local rotations"`}, 0},
+		{edit{"states beside sites", name, gate, "from = \"00\"\nto = \"11\"\n", "target.sites", "all sites of the device"}, -1},
+		{edit{"states of three sites", name, target + gate + free, "from = \"000\"\nto = \"111\"\n#", "target.from", "labels of 2 digits"}, 0},
+		{edit{"states of other digits", name, target + gate + free, "from = \"02\"\nto = \"11\"\n#", "target.from", "labels of 0 and 1"}, 0},
+		{edit{"more states than before", name, target + gate + free, "from = \"00\"\nto = [\"01\", \"10\"]\n#", "target.to", "as many states"}, 1},
+		{edit{"state of nan", name, target + gate + free, "from = [nan, 0, 0, 0]\nto = \"11\"\n#", "target.from", "a number"}, 0},
+		{edit{"state of no length", name, target + gate + free, "from = [0, 0, 0, 0]\nto = \"11\"\n#", "target.from", "length 1"}, 0},
+		{edit{"state of nothing", name, target + gate + free, "from = []\nto = \"11\"\n#", "target.from", "no state"}, 0},
+		{edit{"from without to", name, target + gate + free, "from = \"00\"\n#", "target.to", ""}, -1},
+		{edit{"free Z of states", name, target + gate, "from = \"00\"\nto = \"11\"\n", "target.free_z", "for a gate"}, 2},
+		// what may go wrong
+		{edit{"any of another word", name, `[require]`, errors(`any = "three-body"`), "error[0].any", `"two-body"`}, 1},
+		{edit{"any on an unknown site", name, `[require]`, errors(`any = "on q1, q7"`), "error[0].any", `"q1", "q2"`}, 1},
+		{edit{"leakage of spins", name, `[require]`, errors(`any = "leakage"`), "error[0].any", "more than two levels"}, 1},
+		{edit{"except what is not there", name, `[require]`, errors("any = \"one-body\"\nexcept = [{ q1 = \"Z\", q2 = \"Z\" }]"), "error[0].except[0]", "not of the class"}, 2},
+		{edit{"except everything", name, `[require]`, errors("any = \"on q1\"\nexcept = [{ q1 = \"X\" }, { q1 = \"Y\" }, { q1 = \"Z\" }]"), "error[0].any", "keeps an operator"}, 1},
+		{edit{"except beside another kind", name, `[require]`, errors("detuning = \"q1\"\nexcept = [{ q1 = \"Z\" }]"), "error[0].except", "beside any"}, 2},
+		{edit{"rates elsewhere", name, `[require]`, errors("any = \"all\"\nrates = \"../rates.csv\""), "error[0].rates", "beside the brief"}, 2},
+		{edit{"rates that are not there", name, `[require]`, errors("any = \"all\"\nrates = \"rates.csv\""), "error[0].rates", "no such file"}, 2},
+		{edit{"product of nothing", name, `[require]`, errors(`on = {}`), "error[0].on", "0 sites"}, 1},
+		{edit{"product along W", name, `[require]`, errors(`on = { q1 = "W" }`), "error[0].on.q1", `"X", "Y" or "Z"`}, 1},
+		{edit{"product of an unknown site", name, `[require]`, errors(`on = { q1 = "Z", q9 = "Z" }`), "error[0].on", `"q1", "q2"`}, 1},
+		{edit{"operator of no site", name, `[require]`, errors(`operator = "X"`), "error[0].operator", "a site"}, 1},
+		{edit{"collective W", name, `[require]`, errors(`collective = "W"`), "error[0].collective", `"X", "Y" or "Z"`}, 1},
+		{edit{"matrix of another size", name, `[require]`, errors(`matrix = [[1, 0, 0], [0, -1, 0], [0, 0, 0]]`), "error[0].matrix", "4 rows"}, 1},
+		{edit{"crosstalk without a site", name, `[require]`, errors(`crosstalk = "q1 drive"`), "error[0].site", "a text"}, 0},
+		{edit{"crosstalk onto its own", name, `[require]`, errors("crosstalk = \"q1 drive\"\nsite = \"q1\""), "error[0].site", "another site"}, 2},
+		{edit{"margin of what is not held", name, `infidelity = 1e-6 `, "infidelity = 1e-6\n[[require.margin]]\nerror = \"detuning\"\nsize = \"1 MHz\"\n#", "require.margin[0].error", "not on this device"}, 2},
+		{edit{"phases of two sites", name, "span = \"40 ns\"", "phases = [\"0 deg\", \"90 deg\"]\nspan = \"40 ns\"", "", `phase_by: found "samples" for several sites`}, 0},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			dir := newPair(t)
+			path := filepath.Join(dir, c.file)
+			switch {
+			case strings.HasPrefix(c.new, "[[error]]"): // in the place of nothing
+				change(t, path, "hold = \"nothing\"\n", "")
+			case c.name == "phases of two sites", c.name == "channel unknown": // a sentence without a line; a fault only against the profile
+				at := change(t, path, c.old, c.new)
+				wanted := []string{fmt.Sprintf("%s:%d: %s", path, at, c.key), c.says}
+				if c.key == "" {
+					wanted[0] = path + ": "
+				}
+				for _, args := range [][]string{{"design", filepath.Join(dir, name), "-out", filepath.Join(dir, "pulse")}, {"check", filepath.Join(dir, name)}} {
+					refused(t, dir, wanted, args...)
+				}
+				return
+			}
+			edited(t, dir, name, c.below, c.edit)
+		})
+	}
+}
+
+// Files of rates that are none, through check and design.
+func TestHostileRates(t *testing.T) {
+	for name, c := range map[string]struct{ text, says string }{
+		"empty": {"", "empty file"}, "another header": {"p,r\nZZ,1\n", "pauli,rate"}, "nan": {"pauli,rate\nZZ,nan\n", "0 to"}, "negative": {"pauli,rate\nZZ,-1\n", "0 to"},
+		"another letter": {"pauli,rate\nZW,1\n", "I, X, Y or Z"}, "too many letters": {"pauli,rate\nZZZ,1\n", "2 letters"}, "twice": {"pauli,rate\nZZ,1\nZZ,1\n", "once"},
+		"no rate": {"pauli,rate\nZZ\n", "columns"}, "binary": {"pauli,rate\n\x00\xff,1\n", "I, X, Y or Z"}, "nothing above zero": {"pauli,rate\nZZ,0\n", "above 0"},
+		"too large": {"pauli,rate\n" + strings.Repeat("ZZ,1\n", 300_000), "1 MiB"}, "a quote without end": {"pauli,rate\n\"ZZ,1\n", "comma-separated"},
+	} {
+		t.Run(name, func(t *testing.T) {
+			dir := newPair(t)
+			path := filepath.Join(dir, "b.toml")
+			write(t, path, fmt.Sprintf(pair, "[target]\nsites = [\"q1\", \"q2\"]\ngate = \"CZ\"\n[[error]]\nany = \"all\"\nrates = \"rates.csv\"\n"))
+			write(t, filepath.Join(dir, "rates.csv"), c.text)
+			for _, args := range [][]string{{"design", path, "-out", filepath.Join(dir, "pulse")}, {"check", path}} {
+				refused(t, dir, []string{dir, c.says}, args...)
+			}
 		})
 	}
 }

@@ -3,6 +3,7 @@ package main
 import (
 	"encoding/json"
 	"errors"
+	"fmt"
 	"io"
 	"maps"
 	"math"
@@ -98,6 +99,20 @@ func TestJSONKeys(t *testing.T) {
 	ask(exitMet, "card", at("rack-b.toml"), at("skerry.toml"), "-out", at("card"))
 	ask(exitMissed, "design", at("all.toml"), "-out", at("pulse"))
 	ask(exitMissed, "replay", at("pulse"), "-datasheet="+at("page.html"))
+	// what only several sites have, or more levels: a device with everything, two spins of which the coupling is left out, and a state of a ladder
+	two := newPair(t)
+	in := func(name string) string { return filepath.Join(two, name) }
+	write(t, in("mixed.toml"), mixed)
+	write(t, in("up.toml"), fmt.Sprintf(pair, "hold = \"nothing\"\n[target]\nsites = [\"q1\", \"q2\"]\ngate = \"CZ\"\nup_to = \"local rotations\"\n"))
+	write(t, in("apart.toml"), strings.NewReplacer(`name = "q1"`, "name = \"q1\"\nfrequency = \"5.1 GHz\"", `name = "q2"`, "name = \"q2\"\nfrequency = \"5.3 GHz\"", "\"5 MHz\"", "\"2 MHz\"\nrotating_wave = true").
+		Replace(read(t, in("skerry-pair.toml"))))
+	write(t, in("product.toml"), strings.Replace(fmt.Sprintf(pair, "hold = \"nothing\"\n[require]\ninfidelity = 1e-3\n[target]\ngates = { q1 = \"X90\", q2 = \"X90\" }\nfree_z = \"both\"\n"), "skerry-pair", "apart", 1))
+	write(t, in("ladder.toml"), "format = 1\nname = \"ladder\"\n[[site]]\nname = \"q1\"\nlevels = 3\nanharmonicity = \"-220 MHz\"\n[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n")
+	write(t, in("state.toml"), strings.Replace(fmt.Sprintf(pair, "starts = 1\n[target]\nfrom = \"0\"\nto = \"1\"\n[[error]]\nany = \"leakage\"\n"), "skerry-pair", "ladder", 1))
+	ask(exitMet, "check", in("mixed.toml"), in("up.toml"), in("state.toml"))
+	ask(exitMet, "design", in("product.toml"), "-out", in("product"))
+	ask(exitMissed, "design", in("state.toml"), "-out", in("state"))
+	ask(exitMet, "card", in("rack-b-pair.toml"), in("apart.toml"), "-channel=q1 drive", "-out", in("card"))
 	change(t, filepath.Join(at("pulse"), "pulse.toml"), "guard_trail = 4", "guard_trail = 3")
 	replayed := ask(exitMissed, "replay", at("pulse"))
 

@@ -70,11 +70,11 @@ type verb struct {
 // is one of them.
 func verbs() []verb {
 	return []verb{
-		{"start", "DIR", "write a commented profile, device and brief into a new folder", "[-json]", start},
+		{"start", "DIR", "write a commented profile, device and brief into a new folder", "[-pair] [-json]", start},
 		{"check", "FILE...", "read profiles, devices, briefs and say what they mean", "[-json]", check},
 		{"design", "BRIEF", "design a pulse and write its folder with a datasheet", "[-out FOLDER] [-force] [-json]", designPulse},
 		{"replay", "PULSE", "recompute a pulse folder by other means and judge it", "[-datasheet FILE] [-json]", replayPulse},
-		{"card", "PROFILE DEVICE", "write three sequences that tell how the bench is wired", "[-out FOLDER] [-force] [-detuning F] [-json]", card},
+		{"card", "PROFILE DEVICE", "write three sequences that tell how the bench is wired", "[-out FOLDER] [-force] [-channel NAME] [-detuning F] [-json]", card},
 		{"help", "[VERB | TOPIC]", "explain a verb, or one of: profile, device, brief, pulse, json", "[-json]", help},
 		{"version", "", "print the version", "[-json]", printVersion},
 	}

@@ -336,16 +336,24 @@ func TestArguments(t *testing.T) {
 	}
 }
 
-// Embedding does not reach testdata, so the starter files stand there twice.
+// Embedding does not reach testdata, so the starter files stand there twice; each is of one of the examples.
 func TestStarterIsTheDemonstration(t *testing.T) {
 	demo := tree(t, filepath.Join("..", "..", "testdata", "skerry"))
 	ours := tree(t, "starter")
-	for _, name := range []string{"rack-b.toml", "skerry.toml", "x90.toml"} {
-		if ours[name] == "" || ours[name] != demo[name] {
-			t.Errorf("starter/%s is not testdata/skerry/%s", name, name)
-		}
+	if d := compare(ours, demo); d != nil {
+		t.Errorf("starter and testdata/skerry differ in %v", d)
 	}
-	if d := compare(ours, tree(t, newLabOnly(t))); d != nil {
+	written := tree(t, newLabOnly(t))
+	if len(written) != 1+3 { // and the folder
+		t.Errorf("start writes %d files", len(written)-1)
+	}
+	for name, text := range tree(t, newPair(t)) {
+		if _, twice := written[name]; twice && name != "." {
+			t.Errorf("%s is of both examples", name)
+		}
+		written[name] = text
+	}
+	if d := compare(ours, written); d != nil {
 		t.Errorf("start writes another %v", d)
 	}
 }

@@ -22,6 +22,7 @@ type (
 		Search        searchForm     `json:"search"`
 		Files         []string       `json:"files"`
 		Rivals        []rivalForm    `json:"rivals"`
+		NoRivals      string         `json:"rivals_left_out,omitempty"`
 		Verdict       json.Marshaler `json:"verdict"`
 	}
 	searchForm struct {
@@ -47,10 +48,10 @@ type (
 // pulseFormOf gathers what is told of a pulse. page is the datasheet that was written, if any.
 func pulseFormOf(folder, page string, status int, r *design.Record, s *datasheet.Sheet) pulseForm {
 	f := pulseForm{
-		Format: jsonFormat, Folder: folder, Name: r.Pulse.Name, Target: r.Pulse.Target, Status: r.Pulse.Status, Met: status == exitMet,
+		Format: jsonFormat, Folder: folder, Name: r.Pulse.Name, Target: s.Target, Status: r.Pulse.Status, Met: status == exitMet,
 		Held: list(r.Pulse.Held), HeldByDefault: r.Pulse.HeldByDefault,
 		Search: searchForm{r.Search.Seed, r.Search.Starts, r.Search.Tried, r.Search.Successes, r.Search.Winner, r.Search.Evaluations, number(r.Search.Miss), number(r.Search.Before)},
-		Files:  []string{}, Rivals: []rivalForm{}, Verdict: s.Verdict,
+		Files:  []string{}, Rivals: []rivalForm{}, NoRivals: s.NoRivals, Verdict: s.Verdict,
 	}
 	if page != "" {
 		f.Datasheet = &page

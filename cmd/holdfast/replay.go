@@ -63,7 +63,7 @@ func replayPulse(c *call) (int, error) {
 	if err := datasheet.Text(c.stdout, sheet); err != nil {
 		return exitBadInput, err
 	}
-	printPlayback(c.stdout, record)
+	printPlayback(c.stdout, record, in.Device)
 	for i, d := range verdict.Inputs {
 		if i == mostDifferences {
 			fmt.Fprintf(c.stdout, "... and %d more\n", len(verdict.Inputs)-i)

@@ -38,8 +38,11 @@ type room struct {
 	together    int // of all quadratures of all channels
 	family      string
 	equations   int
-	independent int // fewer when one error contains another
-	spare       int // coefficients that ring-out wants
+	independent int    // fewer when one error contains another
+	gate        int    // of the equations
+	why         string // of other than a gate on one spin: from what those that are not independent follow
+	more        string // what is not counted
+	spare       int    // coefficients that ring-out wants
 	verdict     string
 }
 
@@ -76,7 +79,7 @@ func spare(ch *hardware.Channel, n int) int {
 // roomOf counts for a brief, of which the site is turned by the given channels.
 func roomOf(b *brief.Brief, p *hardware.Profile, d *device.Device, channels []int, samples int) (room, error) {
 	ch := &p.Channels[channels[0]]
-	r := room{free: samples - ch.GuardLead - ch.GuardTrail, equations: gateEquations, independent: gateEquations}
+	r := room{free: samples - ch.GuardLead - ch.GuardTrail, gate: gateEquations, equations: gateEquations, independent: gateEquations}
 	for i, c := range channels {
 		q := &p.Channels[c]
 		perQuad, family := perQuadrature(q, p.SamplePeriod, samples-q.GuardLead-q.GuardTrail, b.Basis.Family)
@@ -92,19 +95,32 @@ func roomOf(b *brief.Brief, p *hardware.Profile, d *device.Device, channels []in
 		}
 		r.together += q.Columns() * perQuad
 	}
-	var directions [][3]float64
+	for _, e := range b.Errors {
+		if e.Order == 2 || lowered(&e) {
+			r.more = "second orders, spreads and noise are not counted"
+		}
+	}
+	if !plainSpin(b, d) {
+		r.countRegister(b, p, d, ch)
+		return r, nil
+	}
+	var directions []vector
 	scaled := map[string]int{} // amplitude errors of a channel: of three, I, Q and both, one is the sum of the others
 	for _, e := range b.Errors {
+		if lowered(&e) {
+			continue
+		}
 		if e.Kind == brief.Any {
 			r.equations += anyEquations
-			directions = append(directions, [3]float64{1}, [3]float64{0, 1}, [3]float64{0, 0, 1})
+			for _, name := range device.OperatorNames() {
+				directions = append(directions, along(name))
+			}
 			continue
 		}
 		r.equations += namedEquations
 		switch e.Kind {
 		case brief.Static:
-			m := e.Operator
-			directions = append(directions, [3]float64{real(m.At(0, 1)), -imag(m.At(0, 1)), real(m.At(0, 0))})
+			directions = append(directions, operatorVector(e.Operator))
 		case brief.Offset: // a constant along what the quadrature turns about
 			about := "X"
 			if e.Quadrature == "Q" {
@@ -115,7 +131,7 @@ func roomOf(b *brief.Brief, p *hardware.Profile, d *device.Device, channels []in
 					about = bias.Axis
 				}
 			}
-			directions = append(directions, map[string][3]float64{"X": {1, 0, 0}, "Y": {0, 1, 0}, "Z": {0, 0, 1}}[about])
+			directions = append(directions, along(about))
 		case brief.Amplitude:
 			scaled[fmt.Sprint(e.Channels)]++
 		default: // each parameter is its own
@@ -141,6 +157,12 @@ func roomOf(b *brief.Brief, p *hardware.Profile, d *device.Device, channels []in
 	return r, nil
 }
 
+// along gives X, Y or Z of a spin.
+func along(name string) vector {
+	o, _ := device.Operator(name)
+	return operatorVector(o)
+}
+
 func (r room) andRingOut() string {
 	if r.spare == 0 {
 		return ""
@@ -149,32 +171,18 @@ func (r room) andRingOut() string {
 }
 
 func (r room) String() string {
-	s := fmt.Sprintf("%d: %d of the gate", r.equations, gateEquations)
-	if r.equations > gateEquations {
-		s += fmt.Sprintf(" and %d of the errors", r.equations-gateEquations)
+	s := fmt.Sprintf("%d: %d of the gate", r.equations, r.gate)
+	if r.equations > r.gate {
+		s += fmt.Sprintf(" and %d of the errors", r.equations-r.gate)
 	}
-	if r.independent < r.equations {
+	switch {
+	case r.why != "":
+		s += fmt.Sprintf("; %d are independent, the others follow from %s", r.independent, r.why)
+	case r.independent < r.equations:
 		s += fmt.Sprintf(", of which %d repeat others", r.equations-r.independent)
+	}
+	if r.more != "" {
+		s += "; " + r.more
 	}
 	return s + fmt.Sprintf("; against them %d coefficients, %d per quadrature, family %s", r.together, r.perQuad, r.family)
 }
-
-// rank counts independent directions, by Gram and Schmidt.
-func rank(list [][3]float64) int {
-	var kept [][3]float64
-	for _, v := range list {
-		whole := dot(v, v)
-		for _, k := range kept {
-			f := dot(v, k) / dot(k, k)
-			for i := range v {
-				v[i] -= f * k[i]
-			}
-		}
-		if len(kept) < 3 && dot(v, v) > 1e-12*whole {
-			kept = append(kept, v)
-		}
-	}
-	return len(kept)
-}
-
-func dot(a, b [3]float64) float64 { return a[0]*b[0] + a[1]*b[1] + a[2]*b[2] }

@@ -10,6 +10,7 @@ import (
 	"holdfast/design"
 	"holdfast/design/brief"
 	"holdfast/design/datasheet"
+	"holdfast/design/device"
 	"holdfast/design/replay"
 	"holdfast/design/rival"
 	"holdfast/filter"
@@ -23,8 +24,20 @@ func newSheet(ctx context.Context, in design.Inputs, r *design.Record, folder *r
 	s := &datasheet.Sheet{
 		Name: r.Pulse.Name, Target: r.Pulse.Target, Span: m.Span(), Ends: m.Ends, Held: r.Pulse.Held,
 		Instrument: in.Profile.Name, SamplePeriod: m.SamplePeriod, Bits: m.Bits, WindowStart: m.WindowStart,
-		T1: folder.T1, T2: folder.T2, Detuning: detuningOf(m) / (2 * math.Pi) * 1e3, Required: folder.Require.Infidelity, Verdict: v,
+		T1: folder.T1, T2: folder.T2, Required: folder.Require.Infidelity, Verdict: v,
 		CoefficientsI: r.Basis.I,
+	}
+	several := len(in.Device.Sites) > 1
+	if several {
+		s.Sites = sheetSites(in.Device, r, folder)
+		for _, c := range r.Basis.More {
+			s.Further = append(s.Further, datasheet.Coefficients{Channel: c.Channel, I: c.I, Q: c.Q})
+		}
+	} else {
+		s.Detuning = detuningOf(m) / (2 * math.Pi) * 1e3
+	}
+	for _, t := range m.Dropped {
+		s.LeftOut = append(s.LeftOut, t.Frequency/(2*math.Pi)*1e3)
 	}
 	if r.Pulse.Status != string(design.Found) {
 		s.Status = r.Pulse.Status
@@ -72,15 +85,50 @@ func newSheet(ctx context.Context, in design.Inputs, r *design.Record, folder *r
 		{Name: "device", Value: r.Provenance.Device},
 		{Name: "site", Value: r.Provenance.Site},
 	}
-	for _, f := range playback(r) {
-		s.Provenance = append(s.Provenance, datasheet.Row(f))
+	if several {
+		s.Provenance[3] = datasheet.Row{Name: "sites", Value: siteNames(in.Device)}
+	}
+	for _, f := range playback(r, in.Device) {
+		if f.site == "" { // those of several sites have a table
+			s.Provenance = append(s.Provenance, datasheet.Row(f.fact))
+		}
 	}
 	for _, f := range r.Files {
 		s.Files = append(s.Files, datasheet.Row{Name: f.Name, Value: f.SHA256})
 	}
+	if several || m.Target == nil {
+		s.NoRivals = noRivals
+		return s, nil
+	}
 	var err error
 	s.Rivals, err = rivals(ctx, in, channels, folder, v)
 	return s, err
+}
+
+// noRivals says why no textbook pulses stand beside a pulse.
+const noRivals = "No textbook pulse stands beside this one: those that are known here make a gate on the one site that they drive."
+
+// sheetSites gathers what is told of each of several sites.
+func sheetSites(d *device.Device, r *design.Record, folder *replay.Folder) []datasheet.Site {
+	list := make([]datasheet.Site, len(d.Sites))
+	for i, site := range d.Sites {
+		list[i] = datasheet.Site{Name: site.Name}
+		for _, x := range folder.Decay {
+			if x.Site == site.Name {
+				alone := *folder
+				alone.Decay = []replay.Decay{x}
+				list[i].T1, list[i].T2, list[i].Loss = x.T1, x.T2, alone.Decoherence()
+			}
+		}
+	}
+	for _, t := range turns(r, d) {
+		at := &list[t.site].Before
+		if t.after {
+			at = &list[t.site].After
+		}
+		*at = t.words
+	}
+	return list
 }
 
 // sheetChannel gathers what one channel plays, and what arrives of it.

@@ -7,6 +7,7 @@ import (
 	"math"
 	"math/cmplx"
 	"slices"
+	"strings"
 
 	"holdfast/design/device"
 	"holdfast/design/replay"
@@ -78,18 +79,41 @@ type bench struct {
 	detuning float64 // between carrier and transition, GHz, cyclic, positive
 }
 
-// newBench finds the first drive that has a mixer.
-func newBench(p *hardware.Profile, d *device.Device) (*bench, error) {
+// newBench finds the drive of the named channel, or without a name that of a mixer: the first of one site, the only one of several.
+func newBench(p *hardware.Profile, d *device.Device, name string) (*bench, error) {
+	var mixers []*bench
+	var names []string
 	for i, drive := range d.Drives {
 		c, ok := p.Channel(drive.Channel)
 		if !ok {
 			return nil, fmt.Errorf("%s:%d: drive[%d].channel: found %q; allowed: a channel of %s", d.File, drive.Line, i, drive.Channel, p.File)
 		}
-		if p.Channels[c].Kind == hardware.Quadrature {
-			return &bench{profile: p, channel: c, device: d, drive: i}, nil
+		if p.Channels[c].Kind != hardware.Quadrature {
+			continue
 		}
+		b := &bench{profile: p, channel: c, device: d, drive: i}
+		if drive.Channel == name || name == "" && len(d.Sites) == 1 {
+			return b, b.isSpin()
+		}
+		mixers, names = append(mixers, b), append(names, fmt.Sprintf("%q", drive.Channel))
 	}
-	return nil, fmt.Errorf("%s: found no drive through a channel of kind %q; allowed: one, for only a mixer has signs to tell", d.File, hardware.Quadrature)
+	switch {
+	case len(mixers) == 0:
+		return nil, fmt.Errorf("%s: found no drive through a channel of kind %q; allowed: one, for only a mixer has signs to tell", d.File, hardware.Quadrature)
+	case name != "":
+		return nil, fmt.Errorf("-channel: found %q; allowed: a drive of %s through a mixer, %s", name, d.File, strings.Join(names, ", "))
+	case len(mixers) > 1:
+		return nil, fmt.Errorf("%s: found %d drives, %s; allowed: a card for one of them, as in -channel %s", d.File, len(mixers), strings.Join(names, ", "), names[0])
+	}
+	return mixers[0], mixers[0].isSpin()
+}
+
+// isSpin complains of a driven site that the card's plain pulses would lead out of two levels.
+func (b *bench) isSpin() error {
+	if s := b.site(); s.Levels != 2 {
+		return fmt.Errorf("%s: channel %q: found a site of %d levels, %q; allowed: a card for a site of two, as plain pulses lead out of them", b.device.File, b.profile.Channels[b.channel].Name, s.Levels, s.Name)
+	}
+	return nil
 }
 
 // site is the one that is driven.

@@ -15,47 +15,67 @@ import (
 //go:embed starter/*.toml
 var starter embed.FS
 
-// start writes the starter files into a new folder.
+// An example is some of the starter files, in the order in which they are told.
+type example []struct{ name, says string }
+
+// oneSpin and twoSpins are the examples; the last file of each is the brief.
+var (
+	oneSpin = example{
+		{"rack-b.toml", "what the instrument and its line can do"},
+		{"skerry.toml", "what is driven"},
+		{"x90.toml", "which gate, in what time, held against what"},
+	}
+	twoSpins = example{
+		{"rack-b-pair.toml", "what the instrument and its lines can do"},
+		{"skerry-pair.toml", "what is driven, and what couples it"},
+		{"sqrt-iswap.toml", "which gate of the two, in what time"},
+	}
+)
+
+// start writes an example into a new folder.
 func start(c *call) (int, error) {
-	operands, err := c.parse(c.flags(), 1, 1)
+	f := c.flags()
+	pair := f.Bool("pair", false, "an example of two spins")
+	operands, err := c.parse(f, 1, 1)
 	if err != nil {
 		return exitBadInput, err
 	}
-	dir := operands[0]
+	dir, files := operands[0], oneSpin
+	if *pair {
+		files = twoSpins
+	}
 	stage, err := hardware.NewStaging(dir, false)
 	if err != nil {
 		return exitBadInput, err
 	}
 	defer stage.Discard()
-	entries, err := starter.ReadDir("starter")
-	if err != nil {
-		return exitBadInput, err
-	}
-	for _, e := range entries {
-		data, err := starter.ReadFile("starter/" + e.Name())
+	form := startForm{Format: jsonFormat, Folder: dir}
+	for _, e := range files {
+		data, err := starter.ReadFile("starter/" + e.name)
 		if err != nil {
 			return exitBadInput, err
 		}
-		if err := os.WriteFile(filepath.Join(stage.Dir(), e.Name()), data, 0o666); err != nil {
+		if err := os.WriteFile(filepath.Join(stage.Dir(), e.name), data, 0o666); err != nil {
 			return exitBadInput, err
 		}
+		form.Files = append(form.Files, e.name)
 	}
 	if err := stage.Commit(); err != nil {
 		return exitBadInput, err
 	}
 	if c.json {
-		form := startForm{Format: jsonFormat, Folder: dir}
-		for _, e := range entries {
-			form.Files = append(form.Files, e.Name())
-		}
 		return exitMet, c.emit(form)
 	}
 	fmt.Fprintf(c.stdout, "%s holds an invented example to change into yours:\n", dir)
-	fmt.Fprintf(c.stdout, "  rack-b.toml   what the instrument and its line can do\n")
-	fmt.Fprintf(c.stdout, "  skerry.toml   what is driven\n")
-	fmt.Fprintf(c.stdout, "  x90.toml      which gate, in what time, held against what\n")
+	wide := 0
+	for _, e := range files {
+		wide = max(wide, len(e.name))
+	}
+	for _, e := range files {
+		fmt.Fprintf(c.stdout, "  %-*s   %s\n", wide, e.name, e.says)
+	}
 	fmt.Fprintf(c.stdout, "Next: holdfast check %s, then holdfast design %s\n",
-		filepath.Join(dir, "*.toml"), filepath.Join(dir, "x90.toml"))
+		filepath.Join(dir, "*.toml"), filepath.Join(dir, files[len(files)-1].name))
 	return exitMet, nil
 }
 

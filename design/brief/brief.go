@@ -1,13 +1,16 @@
 package brief
 
 import (
-	"fmt"
+	"bytes"
 	"math"
+	"os"
 	"path/filepath"
-	"slices"
 	"strings"
 
+	"github.com/BurntSushi/toml"
+
 	"holdfast/design/device"
+	"holdfast/design/noise"
 	"holdfast/hardware/quantity"
 )
 
@@ -37,7 +40,10 @@ type Brief struct {
 }
 
 // lines says where keys stand that LoadAll may have to complain of.
-type lines struct{ span, site, coefficients, hold, profile, device int }
+type lines struct {
+	span, site, from, to, upTo, coefficients, hold, profile, device int   // site: of the key that names the sites
+	margins                                                         []int // of each margin's error
+}
 
 // Who turns a gate's axis about Z, as frames and phases of a sequence ask.
 const (
@@ -51,14 +57,26 @@ const (
 	Window  = "window"
 )
 
-// Target is the gate that is wanted, exp(-i Angle/2 (Axis.sigma)) on one site.
+// Target is what is wanted: a gate on one site, exp(-i Angle/2 (Axis.sigma)), a gate on several, or states that become others. Sites of the device that
+// it does not name are to be left alone.
 type Target struct {
-	Site   string
-	Label  string // for people: the name of the gate, the rotation in words, or "matrix"
-	Matrix device.Matrix
-	Angle  float64    // rad
-	Axis   [3]float64 // of length 1
-	FreeZ  string     // NoFreeZ, Before, After or Both: where rotations about Z cost nothing
+	Site   string        // of a gate on one site; else empty
+	Sites  []string      // on which the gate acts, the first slowest in Matrix; nil for states
+	Label  string        // for people: the name of the gate, the rotation in words, "matrix", "00 to 11", ...
+	Matrix device.Matrix // of the gate, on the code levels of Sites, 2^n by 2^n; N = 0 for states
+	Angle  float64       // rad; of a gate on one site
+	Axis   [3]float64    // of length 1; of a gate on one site
+	FreeZ  string        // NoFreeZ, Before, After or Both: where rotations about Z of every site cost nothing
+	Local  bool          // any rotations of single sites before and after cost nothing
+	// Whole is Matrix with the identity on all other sites, on the code space of the device: device.CodeSpace has its order. Complete fills
+	// it in; N = 0 for states.
+	Whole device.Matrix
+	// From and To are as many orthonormal vectors on the code space of the device each: what is in the span of From at the start is to be To at the
+	// end, vector for vector up to one phase in common. Complete fills them in; nil for a gate.
+	From, To [][]complex128
+
+	named    string // the key that names the sites: site, sites or gates
+	from, to state
 }
 
 // Where rotations about Z are free, because phases are tracked in software: the design may choose them.
@@ -88,25 +106,64 @@ const (
 
 // Error is an error, or a class of them, against which the pulse is held.
 type Error struct {
-	Name     string
-	Kind     string        // Static, Amplitude, Any, Line, Skew or Offset
-	Operator device.Matrix // of kind Static: traceless and Hermitian; H += lambda Operator, lambda in rad/ns
-	// Channels are those of kind Amplitude (in a defaulted brief Complete fills them in), and the one of kind Line, Skew or Offset.
+	Name string
+	Kind string // Static, Amplitude, Any, Line, Skew, Offset or Crosstalk
+	// Members are the operators of kinds Static (one) and Any (all of the class). Complete fills them in.
+	Members []Member
+	// Operator of kind Static is what is meant on two levels of one site, 2 by 2, traceless and Hermitian; N = 0 where that is not all that is meant.
+	Operator device.Matrix
+	Scope    string // of kind Any: All, OneBody, TwoBody, "on q1, q2", Leakage, Learned, or Some of them where the brief leaves some out
+	Leak     bool   // of kind Any: the operators couple the code space to the levels outside it, and to be cancelled is that coupling
+	// Channels are those of kind Amplitude (in a defaulted brief Complete fills them in), and the one of kind Line, Skew, Offset or Crosstalk.
 	Channels   []string
-	Parameter  string // of kind Line: a name of hardware.Parameter
-	Quadrature string // of kind Amplitude, "I", "Q", or empty for both; of kind Offset, "I" or "Q" ("I" for a baseband channel)
+	Site       string          // of kind Crosstalk: that the channel reaches
+	Reach      []device.Matrix // of kind Crosstalk: H += lambda (Re u Reach[0] + Im u Reach[1]), of a baseband channel lambda u Reach[0]. Complete fills them in
+	Rates      string          // of kind Any: the file of the learned rates as written, beside the brief; else empty
+	RatesPath  string          // the same from the working folder
+	Parameter  string          // of kind Line: a name of hardware.Parameter
+	Quadrature string          // of kind Amplitude, "I", "Q", or empty for both; of kind Offset, "I" or "Q" ("I" for a baseband channel)
 	// Size is in rad/ns of kinds Static and Any (defaults 3 MHz and 1 MHz, for slow drives less: Complete), a share of kinds Amplitude (3 %),
-	// Line (what the profile says, else 5 %) and Offset (0.1 % of full scale), rad of kind Skew (1 deg).
+	// Line (what the profile says, else 5 %), Offset (0.1 % of full scale) and Crosstalk (1 %), rad of kind Skew (1 deg).
 	Size   float64
 	Weight float64 // relative to the gate itself, default 1
+	Order  int     // 1 or 2: to which power of the error the gate is to be left alone; 0 means 1
+	// Spread asks for a small exact infidelity over sizes of the error in the place of an order: Average, over a normal distribution of which Size is the
+	// standard deviation, or over Values; or Corners, the worst of them, which are -Size, 0 and Size unless the brief has Values. Empty: none.
+	Spread string
+	Values []float64 // as Size, either sign
 
+	// Noise lets a static or an amplitude error fluctuate: Operator or the channels' amplitude times lambda(t) of that spectrum, in rad/ns or without unit.
+	Noise *noise.Spectrum
+
+	lineOrder                     int    // of the key
 	key, on                       string // which key made it, and the site or channel that key names; for Complete
 	index                         int    // in the file; -1: not in it
 	line                          int    // of the key
 	lineParameter, lineQuadrature int    // of these keys
 	unsized                       bool   // the default size may give way to what the profile makes of it
 	expanded                      bool   // one of the two that stand for both quadratures
+
+	site    string        // that the key of that name names; empty: the target's
+	siteAt  place         // of that key
+	matrix  device.Matrix // as written, of 2 levels or of all
+	product product       // of on
+	scope   string        // of any, as written
+	within  []string      // the sites of any = "on ..."
+	except  []product
+	ratesAt place
 }
+
+// A Member is one operator of an error.
+type Member struct {
+	Name string // of Any: a letter a site, "ZX" or "1Z", where all sites have two levels, else as "q1 Re 0-1, q2 X"; of Static the error's name
+	// Operator is Hermitian, of the whole device: H += lambda Operator, lambda in rad/ns. It is traceless but for what X, Y or Z of a ladder may have, an
+	// energy common to all levels. Of Any each has the Frobenius norm sqrt(d)/2, as half a product of Pauli matrices has.
+	Operator device.Matrix
+	Weight   float64 // above 0; root mean square 1 over the members, and 1 each unless learned rates say otherwise
+}
+
+// place is where a key stands.
+type place struct{ line int }
 
 // The kinds of Error.
 const (
@@ -116,6 +173,23 @@ const (
 	Line      = "line"      // one parameter of a channel's line, off by a share of itself
 	Skew      = "skew"      // quadratures that are not at right angles: u_I += -lambda u_Q, lambda in rad
 	Offset    = "offset"    // a constant at the converter, a share of full scale
+	Crosstalk = "crosstalk" // a share of a channel that reaches another site
+)
+
+// The ways of Error.Spread.
+const (
+	Average = "average"
+	Corners = "worst"
+)
+
+// The scopes of kind Any. "on q1, q2" is every operator of these sites.
+const (
+	All     = "all"      // every traceless operator
+	OneBody = "one-body" // of a single site
+	TwoBody = "two-body" // products over two sites
+	Leakage = "leakage"  // between the code space and the other levels
+	Learned = "rates"    // those with a rate above 0 in the file, of the class that the brief names
+	Some    = "some"     // what except leaves of All
 )
 
 // Require says what the finished pulse must reach.
@@ -137,6 +211,8 @@ const (
 	smallestSize, largestSize = 1e-9, 1   // of errors, GHz: 1 Hz to 1 GHz
 	smallestShare, mostShare  = 1e-6, 0.5 // of amplitude errors
 	mostErrors, mostMargins   = 16, 16
+	mostSites                 = 6
+	mostDim                   = 64
 	mostStarts                = 100_000
 	mostCoefficients          = 65536
 	largestEntry              = 100   // of an error's matrix
@@ -149,6 +225,9 @@ const (
 	defaultParameter          = 0.05          // of a line's parameter
 	defaultSkew               = math.Pi / 180 // rad
 	defaultOffset             = 1e-3          // of full scale
+	defaultCrosstalk          = 0.01
+	mostValues                = 32 // of a spread
+	mostSecond                = 16 // operators of a class of which the second order is followed: the pairs count too
 	smallestSkew, largestSkew = 1e-6, math.Pi / 6
 	mostPhases                = 64
 	samePhase                 = 1e-9 // rad
@@ -172,35 +251,59 @@ func rate(f float64) float64 { return 2 * math.Pi * f }
 //	starts = 60                      #                                  | 60
 //	refine = true                    #                                  | true
 //	[target]
-//	site = "q1"
-//	gate = "X90"                     # or axis = [1, 0, 0] and angle = "90 deg"; or matrix, unitary
-//	free_z = "none"                  # or "before", "after", "both"     | "none"
+//	site = "q1"                      # or sites = ["q1", "q2"], in the order of the gate; other sites are to be left alone
+//	gate = "X90"                     # of two sites one of device.Gate2Names; of any number "identity"
+//	                                 # or axis = [1, 0, 0] and angle = "90 deg", of one site
+//	                                 # or matrix, unitary, on the code levels of the sites
+//	                                 # or gates = { q1 = "X90", q2 = "identity" }, which names the sites
+//	                                 # or controlled = "X90", on the last of the sites when all others are |1>: of X90, Z180, ... the rotation
+//	                                 #    exp(-i angle/2 n.sigma) with its phase, of H, S = diag(1, i) and T the matrices of these names
+//	                                 # or from = "00" and to = "11", states of all sites of the device: a label, 2^n numbers, a list of labels, "GHZ" or "W"
+//	free_z = "none"                  # or "before", "after", "both"; of every site; not beside from | "none"
+//	up_to = "local rotations"        # any rotations of single sites before and after are free; of a gate, two sites or more | absent
 //	[basis]
 //	family = "slepian"               # "fourier", "tapered", "b-spline", "samples", "best" | "slepian"
 //	coefficients = 20                #                                  | from band and span
 //	degree = 3                       # of "b-spline", 1 to 5            | 3
-//	[[error]]                        # none and no hold: detuning, amplitude and any static error
-//	detuning = "q1"                  # or amplitude = "q1 drive", operator = "X", matrix, any = "all",
-//	                                 # line = "q1 drive" with parameter, quadrature_angle = "q1 drive", offset = "q1 drive"
+//	[[error]]                        # none and no hold: detuning, amplitude and any static error; of several sites amplitude and any one-body error
+//	detuning = "q1"                  # or amplitude = "q1 drive", operator = "X", matrix (of all levels; of one ladder also 2 by 2),
+//	                                 # on = { q1 = "Z", q2 = "X" } (half the product), collective = "Z" (the sum of the halves),
+//	                                 # any = "all", "one-body", "two-body", "leakage" or "on q1, q2",
+//	                                 # line = "q1 drive" with parameter, quadrature_angle = "q1 drive", offset = "q1 drive",
+//	                                 # crosstalk = "q1 drive" with site
+//	site = "q2"                      # of operator                      | the target's, or the device's, only one
+//	except = [{ q1 = "Z" }]          # of any: half products that it leaves out | none
+//	rates = "rates.csv"              # of any: learned Pauli rates, beside the brief; columns pauli and rate, a letter I, X, Y or Z a site | all alike
 //	parameter = "lowpass[0].corner"  # of the line, as hardware.Parameter names it
 //	quadrature = "I"                 # or "Q", with amplitude or offset | both; offsets as two errors, "... I" and "... Q"
-//	name = "..."                     #                                  | "detuning", "amplitude", "X", "matrix", "any static error",
-//	                                 #                                    "amplitude I", "q1 drive lowpass[0].corner", "quadrature angle", "offset I"
+//	name = "..."                     #                                  | "detuning", "amplitude", "X", "X on q2", "matrix", "ZX on q1, q2", "collective Z",
+//	                                 #                                    "any static error", "any one-body error", "any error on q1, q2", "any leakage",
+//	                                 #                                    "any learned error", "amplitude I", "q1 drive lowpass[0].corner",
+//	                                 #                                    "quadrature angle", "offset I", "q1 drive on q2"
 //	size = "3 MHz"                   # "3 %", "1 deg" by kind           | 3 MHz or 7.5 % of the fastest drive's full scale, whichever is less, 3 %,
-//	                                 #                                    1 MHz or 2.5 % for any, known_to or 5 % of a line, 1 deg, 0.1 % of an offset
+//	                                 #                                    1 MHz or 2.5 % for any, known_to or 5 % of a line, 1 deg, 0.1 % of an offset,
+//	                                 #                                    1 % of crosstalk
 //	weight = 1                       #                                  | 1
+//	order = 1                        # or 2: cancel the error's square too; not with more than 16 operators | 1
+//	spread = "average"               # or "worst": lower the exact infidelity over sizes of the error instead; not with any | absent
+//	noise = { form = "lorentzian", sigma = "50 kHz", correlation_time = "2 us" } # the error fluctuates: see noise.Read; beside an amplitude or one operator | absent
+//	values = ["-1 MHz", "1 MHz"]     # of the spread, up to 32; else a normal distribution of standard deviation size, or -size, 0, size
 //	[require]
 //	infidelity = 1e-4                #                                  | 1e-4
 //	susceptibility = 1e-3            #                                  | 1e-3
 //	[[require.margin]]
-//	error = "detuning"
+//	error = "detuning"               # an error above that is not any; of one spin also detuning, amplitude, X, Y and Z
 //	size = "1 MHz"
 func Load(path string) (*Brief, error) {
 	doc, err := quantity.ReadFile(path)
 	if err != nil {
 		return nil, err
 	}
-	b, err := read(doc)
+	data, err := os.ReadFile(path)
+	if err != nil {
+		return nil, &quantity.Error{File: path, Found: "a file that cannot be read twice: " + err.Error(), Allowed: "a brief"}
+	}
+	b, err := read(doc, valuesOf(data))
 	if err != nil && !doc.Root().Has("target") {
 		if other, wrong := mistaken(path, BriefFile); wrong {
 			return nil, &quantity.Error{File: path, Found: "what looks like a " + string(other), Allowed: "a brief, which has a [target] and names a profile and a device"}
@@ -209,8 +312,41 @@ func Load(path string) (*Brief, error) {
 	return b, err
 }
 
-// read makes the brief of a document.
-func read(doc *quantity.Document) (*Brief, error) {
+// valuesOf gives what stands in a brief as plain values: the tables whose keys are names of sites, and the values that may be of
+// several types, are looked at there before the document is asked. A text that is no TOML gives none, and the document says why.
+func valuesOf(data []byte) map[string]any {
+	var values map[string]any
+	if _, err := toml.Decode(string(bytes.TrimPrefix(data, []byte("\xef\xbb\xbf"))), &values); err != nil {
+		return nil
+	}
+	return values
+}
+
+// tableOf gives a plain value as a table; nil when it is none.
+func tableOf(v any) map[string]any {
+	m, _ := v.(map[string]any)
+	return m
+}
+
+// tablesOf gives a plain value as a list of tables, as quantity.Table.Tables does.
+func tablesOf(v any) []map[string]any {
+	switch v := v.(type) {
+	case map[string]any:
+		return []map[string]any{v}
+	case []map[string]any:
+		return v
+	case []any:
+		list := make([]map[string]any, len(v))
+		for i := range v {
+			list[i] = tableOf(v[i])
+		}
+		return list
+	}
+	return nil
+}
+
+// read makes the brief of a document; values are what stands in it.
+func read(doc *quantity.Document, values map[string]any) (*Brief, error) {
 	root := doc.Root()
 	root.Int("format", 1, 1)
 	b := &Brief{
@@ -226,7 +362,7 @@ func read(doc *quantity.Document) (*Brief, error) {
 		PhaseBy: ByInstrument,
 	}
 	b.ProfilePath, b.DevicePath = b.beside(b.Profile), b.beside(b.Device)
-	b.Target = readTarget(root.Table("target"))
+	b.Target = readTarget(root.Table("target"), tableOf(values["target"]))
 	b.readPhases(root)
 	basis := root.Table("basis")
 	b.Basis = Basis{
@@ -237,8 +373,12 @@ func read(doc *quantity.Document) (*Brief, error) {
 	if b.Basis.Family == Samples && b.Basis.Coefficients > 0 {
 		basis.Fail("coefficients", `found %d with family = "samples"; allowed: no number here, as there is one coefficient for each sample`, b.Basis.Coefficients)
 	}
-	b.lines = lines{root.Line("span"), root.Table("target").Line("site"), basis.Line("coefficients"), root.Line("hold"), root.Line("profile"), root.Line("device")}
-	b.readErrors(root)
+	target := root.Table("target")
+	b.lines = lines{
+		span: root.Line("span"), site: target.Line(b.Target.named), from: target.Line("from"), to: target.Line("to"),
+		upTo: target.Line("up_to"), coefficients: basis.Line("coefficients"), hold: root.Line("hold"), profile: root.Line("profile"), device: root.Line("device"),
+	}
+	b.readErrors(root, tablesOf(values["error"]))
 	b.readRequire(root.Table("require"))
 	if err := doc.Err(); err != nil {
 		return nil, err
@@ -301,224 +441,12 @@ func oneOf(t *quantity.Table, keys ...string) string {
 	return ""
 }
 
-func readTarget(t *quantity.Table) Target {
-	target := Target{Site: t.Text("site"), FreeZ: t.Choice("free_z", []string{NoFreeZ, Before, After, Both}, NoFreeZ)}
-	if t.Has("angle") && !t.Has("axis") {
-		t.Fail("angle", "found an angle without an axis; allowed: both, as in axis = [1, 0, 0] and angle = \"90 deg\"")
-		return target
-	}
-	switch oneOf(t, "gate", "axis", "matrix") {
-	case "gate":
-		target.Label = t.Choice("gate", device.GateNames())
-		target.Axis, target.Angle, _ = device.Gate(target.Label)
-		if t.Has("angle") {
-			t.Fail("angle", "found an angle beside a named gate; allowed: the name alone, or axis and angle")
-		}
-	case "axis":
-		axis := t.Numbers("axis", 3, -1e6, 1e6)
-		target.Angle = t.Quantity("angle", quantity.Angle, -4*math.Pi, 4*math.Pi)
-		if len(axis) != 3 {
-			t.Fail("axis", "found %d numbers; allowed: the 3 components of the axis, as in [1, 0, 0]", len(axis))
-			break
-		}
-		norm := math.Hypot(math.Hypot(axis[0], axis[1]), axis[2])
-		if !(norm >= 1e-6) {
-			t.Fail("axis", "found an axis of no length; allowed: 3 components that are not all 0, as in [1, 0, 0]")
-			break
-		}
-		for i, v := range axis {
-			target.Axis[i] = v/norm + 0 // 0 and not -0
-		}
-		target.Label = target.Turn()
-	case "matrix":
-		rows := t.Matrix("matrix", 2)
-		if rows == nil {
-			break
-		}
-		m := device.FromRows(rows)
-		axis, angle, defect, ok := device.AxisAngle(m)
-		switch {
-		case m.N != 2:
-			t.Fail("matrix", "found %d row; allowed: 2 rows, for a spin", m.N)
-		case !ok:
-			t.Fail("matrix", "found a matrix M with |M'M - 1| = %.2g; allowed: a unitary one, to within %.0e (write the entries with 8 digits or more, or give axis and angle)",
-				defect, device.UnitaryTolerance)
-		}
-		target.Axis, target.Angle, target.Label = axis, angle, "matrix"
-	}
-	target.Matrix = device.Rotation(target.Axis, target.Angle)
-	return target
-}
-
-// Turn says the rotation in words, "no turn" where there is none.
-func (t Target) Turn() string {
-	if t.Angle == 0 {
-		return "no turn"
-	}
-	return fmt.Sprintf("%s about (%.4g, %.4g, %.4g)", quantity.Format(t.Angle, quantity.Angle), t.Axis[0], t.Axis[1], t.Axis[2])
-}
-
-func (b *Brief) readErrors(root *quantity.Table) {
-	tables := root.Tables("error", mostErrors)
-	if root.Has("hold") {
-		hold := root.Choice("hold", []string{"nothing", "profile"})
-		b.HoldNothing, b.HoldProfile = hold == "nothing", hold == "profile"
-		if b.HoldNothing && len(tables) > 0 {
-			tables[0].Fail("", `found an [[error]] beside hold = "nothing"; allowed: one of the two`)
-		}
-	}
-	if len(tables) == 0 && !b.HoldNothing && !b.HoldProfile {
-		b.Defaulted = true
-		z, _ := device.Operator("Z")
-		b.Errors = []Error{
-			{Name: "detuning", Kind: Static, Operator: z.Scale(0.5), Size: rate(defaultStatic), Weight: 1, unsized: true},
-			{Name: "amplitude", Kind: Amplitude, Size: defaultShare, Weight: 1},
-			{Name: "any static error", Kind: Any, Size: rate(defaultAny), Weight: 1, unsized: true},
-		}
-		return
-	}
-	for i, t := range tables {
-		for _, e := range readError(t) {
-			e.index = i
-			if slices.ContainsFunc(b.Errors, func(other Error) bool { return other.Name == e.Name }) {
-				t.Fail("name", "found a second error called %q; allowed: a name of its own for each error", e.Name)
-			}
-			b.Errors = append(b.Errors, e)
-		}
-	}
-}
-
-// readError gives the error of one table; two, for I and Q, of an offset without a quadrature.
-func readError(t *quantity.Table) []Error {
-	e := Error{key: oneOf(t, "detuning", "amplitude", "operator", "matrix", "any", "line", "quadrature_angle", "offset")}
-	e.line = t.Line(e.key)
-	size := func(f float64) float64 {
-		e.unsized = !t.Has("size")
-		return rate(t.Quantity("size", quantity.Frequency, smallestSize, largestSize, f))
-	}
-	share := func(s float64) float64 { return t.Quantity("size", quantity.Ratio, smallestShare, mostShare, s) }
-	if t.Has("quadrature") {
-		e.lineQuadrature = t.Line("quadrature")
-		if e.key == "amplitude" || e.key == "offset" {
-			e.Quadrature = t.Choice("quadrature", []string{"I", "Q"})
-		} else if e.key != "" {
-			t.Fail("quadrature", "found a quadrature beside %s; allowed: only beside amplitude or offset", e.key)
-		}
-	}
-	if t.Has("parameter") && e.key != "line" && e.key != "" {
-		t.Fail("parameter", "found a parameter beside %s; allowed: only beside line", e.key)
-	}
-	natural := ""
-	switch e.key {
-	case "detuning":
-		z, _ := device.Operator("Z")
-		e.Kind, natural, e.on, e.Operator, e.Size = Static, "detuning", t.Text("detuning"), z.Scale(0.5), size(defaultStatic)
-	case "amplitude":
-		e.Kind, natural, e.on = Amplitude, strings.TrimSpace("amplitude "+e.Quadrature), t.Text("amplitude")
-		e.Channels, e.Size = []string{e.on}, share(defaultShare)
-	case "operator":
-		natural = t.Choice("operator", device.OperatorNames())
-		m, _ := device.Operator(natural)
-		e.Kind, e.Operator, e.Size = Static, m.Scale(0.5), size(defaultStatic)
-	case "matrix":
-		e.Kind, natural, e.Operator, e.Size = Static, "matrix", readOperator(t), size(defaultStatic)
-	case "any":
-		t.Choice("any", []string{"all"})
-		e.Kind, natural, e.Size = Any, "any static error", size(defaultAny)
-	case "line":
-		e.Kind, e.on, e.Parameter = Line, t.Text("line"), t.Text("parameter")
-		e.lineParameter = t.Line("parameter")
-		natural = lineName(e.on, e.Parameter)
-		e.Channels, e.Size, e.unsized = []string{e.on}, share(defaultParameter), !t.Has("size")
-	case "quadrature_angle":
-		e.Kind, natural, e.on = Skew, "quadrature angle", t.Text("quadrature_angle")
-		e.Channels, e.Size = []string{e.on}, t.Quantity("size", quantity.Angle, smallestSkew, largestSkew, defaultSkew)
-	case "offset":
-		e.Kind, natural, e.on = Offset, strings.TrimSpace("offset "+e.Quadrature), t.Text("offset")
-		e.Channels, e.Size = []string{e.on}, share(defaultOffset)
-	default: // complained of already; the rest is asked for so that its keys are known
-		t.Has("size")
-	}
-	e.Name = t.Text("name", natural)
-	if _, reserved := standard(e.Name); reserved && e.Name != natural {
-		t.Fail("name", "found %q for another error; allowed: any name but detuning, amplitude, X, Y and Z, which stand for the errors of these kinds", e.Name)
-	}
-	e.Weight = t.Number("weight", 1e-6, 1e6, 1)
-	if e.Kind != Offset || e.Quadrature != "" {
-		return []Error{e}
-	}
-	i, q := e, e
-	i.Name, i.Quadrature, i.expanded = e.Name+" I", "I", true
-	q.Name, q.Quadrature, q.expanded = e.Name+" Q", "Q", true
-	return []Error{i, q}
-}
-
-// lineName is the name of an error of a line's parameter, unless the brief gives another.
-func lineName(channel, parameter string) string { return channel + " " + parameter }
-
-// standard reports whether name is that of an error of which replay finds the margin whether declared or not, and its kind.
-func standard(name string) (kind string, ok bool) {
-	switch name {
-	case "detuning", "X", "Y", "Z":
-		return Static, true
-	case "amplitude":
-		return Amplitude, true
-	}
-	return "", false
-}
-
-// readOperator gives the matrix of an error, freed of what typing left: Hermitian and traceless to the last digit.
-func readOperator(t *quantity.Table) device.Matrix {
-	rows := t.Matrix("matrix", 2)
-	if rows == nil {
-		return device.Zero(2)
-	}
-	m := device.FromRows(rows)
-	if m.N != 2 {
-		t.Fail("matrix", "found %d row; allowed: 2 rows, for a spin", m.N)
-		return device.Zero(2)
-	}
-	largest := 0.0
-	for _, v := range m.Data {
-		largest = max(largest, math.Abs(real(v)), math.Abs(imag(v)))
-	}
-	const words = "allowed: a traceless Hermitian matrix, as in [[0, [0, -0.5]], [[0, 0.5], 0]]"
-	trace := m.Trace()
-	switch {
-	case largest == 0:
-		t.Fail("matrix", "found nothing but zeros; %s", words)
-	case largest > largestEntry:
-		t.Fail("matrix", "found an entry of %.6g; allowed: entries up to %d (the size of the error is another key)", largest, largestEntry)
-	case !(m.Add(-1, m.Adjoint()).Norm() <= matrixTolerance*largest):
-		for i := range m.N {
-			for j := i; j < m.N; j++ {
-				if a, b := m.At(i, j), m.At(j, i); math.Hypot(real(a)-real(b), imag(a)+imag(b)) > matrixTolerance*largest/2 {
-					t.Fail("matrix", "found %s in row %d, column %d and %s in row %d, column %d, which are not conjugate; %s", entry(a), i, j, entry(b), j, i, words)
-					return device.Zero(2)
-				}
-			}
-		}
-	case math.Abs(real(trace)) > matrixTolerance*largest:
-		t.Fail("matrix", "found the trace %.6g; %s (subtract %.6g from the diagonal: an energy common to all levels changes nothing)", real(trace), words, real(trace)/2)
-	}
-	m = m.Add(1, m.Adjoint()).Scale(0.5)
-	return m.Add(-m.Trace()/2, device.Identity(2))
-}
-
-// entry prints a matrix entry as it is written in the file.
-func entry(v complex128) string {
-	if imag(v) == 0 {
-		return fmt.Sprintf("%.6g", real(v))
-	}
-	return fmt.Sprintf("[%.6g, %.6g]", real(v), imag(v))
-}
-
 func (b *Brief) readRequire(t *quantity.Table) {
 	b.Require = Require{
 		Infidelity:     t.Number("infidelity", 1e-12, 1, 1e-4),
 		Susceptibility: t.Number("susceptibility", 1e-9, 1, 1e-3),
 	}
-	// What a margin may be of: the five that replay always looks at, and the brief's own of one parameter.
+	// What a margin may be of: the five that replay always looks at where there is one spin (Complete sees to that), and the brief's own of one parameter.
 	names := []string{"detuning", "amplitude", "X", "Y", "Z"}
 	kinds := map[string]string{}
 	for _, name := range names {
@@ -534,7 +462,7 @@ func (b *Brief) readRequire(t *quantity.Table) {
 	for _, m := range t.Tables("margin", mostMargins) {
 		margin := Margin{Error: m.Choice("error", names)}
 		switch kinds[margin.Error] {
-		case Amplitude, Line, Offset:
+		case Amplitude, Line, Offset, Crosstalk:
 			margin.Size = m.Quantity("size", quantity.Ratio, smallestShare, mostShare)
 		case Skew:
 			margin.Size = m.Quantity("size", quantity.Angle, smallestSkew, largestSkew)
@@ -545,6 +473,7 @@ func (b *Brief) readRequire(t *quantity.Table) {
 			m.Fail("error", "found a second margin of %q; allowed: one for each error", margin.Error)
 		}
 		seen[margin.Error] = true
+		b.lines.margins = append(b.lines.margins, m.Line("error"))
 		b.Require.Margins = append(b.Require.Margins, margin)
 	}
 }

@@ -70,7 +70,7 @@ func parse(t *testing.T, text string) (*Brief, error) {
 	if err != nil {
 		return nil, err
 	}
-	return read(doc)
+	return read(doc, valuesOf([]byte(text)))
 }
 
 func near(got, want float64) bool { return math.Abs(got-want) <= 1e-15*math.Abs(want) }
@@ -292,10 +292,10 @@ func TestRefuses(t *testing.T) {
 		// The target.
 		{"[target]", "[tarket]", `11: tarket: found an unknown key; allowed: format, name, profile, device, span, ends, seed, starts, refine, target, phases, phase_by, basis, error, hold, require (did you mean target?)`},
 		{"gate = \"X90\"", "gate = \"x90\"", `13: target.gate: found "x90"; allowed: "X90", "-X90", "X180", "Y90", "-Y90", "Y180", "Z90", "Z180", "H", "S", "T" or "identity" (did you mean "X90"?)`},
-		{"gate = \"X90\"", "", `11: target: found none of gate, axis or matrix; allowed: exactly one of them`},
-		{"gate = \"X90\"", "Gate = \"X90\"", `13: target.Gate: found an unknown key; allowed: site, free_z, angle, gate, axis, matrix (keys are case-sensitive: write gate)`},
-		{"gate = \"X90\"", "gate = \"X90\"\nmatrix = [[1, 0], [0, 1]]", `14: target.matrix: found matrix beside gate; allowed: exactly one of gate, axis or matrix`},
-		{"gate = \"X90\"", "gate = \"X90\"\naxis = [0, 0, 1]\nangle = \"90 deg\"", `14: target.axis: found axis beside gate; allowed: exactly one of gate, axis or matrix`},
+		{"gate = \"X90\"", "", `11: target: found none of gate, gates, controlled, axis, matrix or from; allowed: exactly one of them`},
+		{"gate = \"X90\"", "Gate = \"X90\"", `13: target.Gate: found an unknown key; allowed: site, sites, gates, from, to, free_z, up_to, gate, controlled, axis, matrix, angle (keys are case-sensitive: write gate)`},
+		{"gate = \"X90\"", "gate = \"X90\"\nmatrix = [[1, 0], [0, 1]]", `14: target.matrix: found matrix beside gate; allowed: exactly one of gate, gates, controlled, axis, matrix or from`},
+		{"gate = \"X90\"", "gate = \"X90\"\naxis = [0, 0, 1]\nangle = \"90 deg\"", `14: target.axis: found axis beside gate; allowed: exactly one of gate, gates, controlled, axis, matrix or from`},
 		{"gate = \"X90\"", "gate = \"X90\"\nangle = \"90 deg\"", `14: target.angle: found an angle without an axis; allowed: both, as in axis = [1, 0, 0] and angle = "90 deg"`},
 		{"gate = \"X90\"", "axis = [0, 0, 1]", `11: target.angle: found nothing; allowed: an angle such as "90 deg", -720 deg to 720 deg`},
 		{"gate = \"X90\"", "axis = [0, 0, 1]\nangle = 90", `14: target.angle: found 90; allowed: an angle such as "90 deg", -720 deg to 720 deg (a bare number has no unit: write a quantity in quotes)`},
@@ -313,9 +313,9 @@ func TestRefuses(t *testing.T) {
 		{"\"slepian\"", "\"bspline\"", `16: basis.family: found "bspline"; allowed: "slepian", "fourier", "tapered", "b-spline", "samples" or "best" (did you mean "b-spline"?)`},
 		{"\"slepian\"", "\"samples\"", `17: basis.coefficients: found 20 with family = "samples"; allowed: no number here, as there is one coefficient for each sample`},
 		// Errors.
-		{"detuning = \"q1\"\n", "", `19: error[0]: found none of detuning, amplitude, operator, matrix, any, line, quadrature_angle or offset; allowed: exactly one of them`},
-		{"detuning = \"q1\"\n", "detunning = \"q1\"\n", `20: error[0].detunning: found an unknown key; allowed: detuning, amplitude, operator, matrix, any, line, quadrature_angle, offset, quadrature, parameter, size, name, weight (did you mean detuning?)`},
-		{"detuning = \"q1\"\n", "detuning = \"q1\"\nany = \"all\"\n", `21: error[0].any: found any beside detuning; allowed: exactly one of detuning, amplitude, operator, matrix, any, line, quadrature_angle or offset`},
+		{"detuning = \"q1\"\n", "", `19: error[0]: found none of detuning, amplitude, operator, matrix, any, line, quadrature_angle, offset, on, collective or crosstalk; allowed: exactly one of them`},
+		{"detuning = \"q1\"\n", "detunning = \"q1\"\n", `20: error[0].detunning: found an unknown key; allowed: detuning, amplitude, operator, matrix, any, line, quadrature_angle, offset, on, collective, crosstalk, quadrature, parameter, site, except, rates, size, noise, name, weight, order, spread, values (did you mean detuning?)`},
+		{"detuning = \"q1\"\n", "detuning = \"q1\"\nany = \"all\"\n", `21: error[0].any: found any beside detuning; allowed: exactly one of detuning, amplitude, operator, matrix, any, line, quadrature_angle, offset, on, collective or crosstalk`},
 		{"size = \"1 MHz\"", "size = \"1 %\"", `21: error[0].size: found "1 %"; allowed: a frequency such as "40 MHz", 1 Hz to 1 GHz ("%" is a unit of share)`},
 		{"size = \"1 MHz\"", "size = \"0 MHz\"", `21: error[0].size: found "0 MHz"; allowed: a frequency such as "40 MHz", 1 Hz to 1 GHz`},
 		{"weight = 2", "weight = 0", `22: error[0].weight: found 0; allowed: a number, 1e-06 to 1e+06`},
@@ -330,9 +330,9 @@ func TestRefuses(t *testing.T) {
 		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "[[0, 0], [0, 1]]", `33: error[3].matrix: found the trace 1; allowed: a traceless Hermitian matrix, as in [[0, [0, -0.5]], [[0, 0.5], 0]] (subtract 0.5 from the diagonal: an energy common to all levels changes nothing)`},
 		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "[[0, 0], [0, 0]]", `33: error[3].matrix: found nothing but zeros; allowed: a traceless Hermitian matrix, as in [[0, [0, -0.5]], [[0, 0.5], 0]]`},
 		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "[[0, 101], [101, 0]]", `33: error[3].matrix: found an entry of 101; allowed: entries up to 100 (the size of the error is another key)`},
-		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "[[0]]", `33: error[3].matrix: found 1 row; allowed: 2 rows, for a spin`},
-		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "\"X\"", `33: error[3].matrix: found "X"; allowed: a square matrix of at most 2 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
-		{"any = \"all\"", "any = \"one-body\"", `36: error[4].any: found "one-body"; allowed: "all"`},
+		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "[[0]]", `33: error[3].matrix: found 1 row; allowed: 2 rows or more, as many as the device has levels`},
+		{"[[0.5, [0, -0.5]], [[0, 0.5], -0.5]]", "\"X\"", `33: error[3].matrix: found "X"; allowed: a square matrix of at most 64 rows, each entry a number or [re, im], each part from -1e+30 to 1e+30`},
+		{"any = \"all\"", "any = \"three-body\"", `36: error[4].any: found "three-body"; allowed: "all", "one-body", "two-body", "leakage" or sites, as in "on q1, q2"`},
 		{"any = \"all\"", "any = \"all\"" + strings.Repeat("\n[[error]]\nany = \"all\"", 16), `19: error: found 21 tables; allowed: at most 16`},
 		{"any = \"all\"", "line = \"q1 drive\"", `35: error[4].parameter: found nothing; allowed: a text in quotes`},
 		{"any = \"all\"", "line = \"q1 drive\"\nparameter = 1", `37: error[4].parameter: found 1; allowed: a text in quotes`},
@@ -375,17 +375,51 @@ func TestRefuses(t *testing.T) {
 	}
 }
 
-// Whatever the text, a brief is read or refused in one line.
+// Whatever the text, a brief is read or refused in one line, and a gate is unitary.
 func FuzzRead(f *testing.F) {
 	f.Add(whole)
 	f.Add(bare + "axis = [0, 0, 1]\nangle = '90 deg'\n[[error]]\nmatrix = [[1]]")
+	for _, c := range []string{
+		"sites = ['a', 'b']\ngate = 'CNOT'\nup_to = 'local rotations'", "gates = { a = 'X90', b = 'H' }", "sites = ['a', 'b', 'c']\ncontrolled = 'T'", "from = ['00', '01']\nto = ['11', '10']",
+		"from = [1, 0, [0, 0], 0]\nto = 'W'", "sites = ['a', 'b']\nmatrix = [[1,0,0,0],[0,1,0,0],[0,0,1,0],[0,0,0,1]]",
+	} {
+		f.Add(strings.Replace(bare, "site = 'q1'\n", "", 1) + c + "\n[[error]]\non = { a = 'Z' }\n[[error]]\nany = 'on a, b'\nexcept = [{ a = 'X' }]\nrates = 'r.csv'\n[[error]]\ncrosstalk = 'c'\nsite = 'b'\n")
+	}
 	f.Fuzz(func(t *testing.T, text string) {
 		b, err := parse(t, text)
-		switch {
-		case err != nil && strings.Contains(err.Error(), "\n"):
-			t.Fatal(err)
-		case err == nil && (b.Target.Matrix.N != 2 || !(math.Abs(b.Target.Matrix.Norm()-math.Sqrt2) <= 1e-12) || !(b.Span > 0)):
+		if err != nil {
+			if strings.Contains(err.Error(), "\n") {
+				t.Fatal(err)
+			}
+			return
+		}
+		m, n := b.Target.Matrix, 1<<len(b.Target.Sites)
+		if b.Target.Sites == nil {
+			n = 0
+		}
+		if m.N != n || !(math.Abs(m.Norm()-math.Sqrt(float64(n))) <= 1e-12) || !(b.Span > 0) {
 			t.Fatalf("%+v", b)
+		}
+	})
+}
+
+// Whatever the text, rates are read or refused in one line.
+func FuzzRates(f *testing.F) {
+	for _, text := range []string{"pauli,rate\nXI,1e-3\nZZ,0\n", "\ufeffpauli, rate\r\n\"IX\",1\r\n", "pauli,rate\n\"X\nX\",1"} {
+		f.Add(text)
+	}
+	f.Fuzz(func(t *testing.T, text string) {
+		rates, err := parseRates("r.csv", text, 2)
+		switch {
+		case err != nil && (strings.Contains(err.Error(), "\n") || err.Line < 1):
+			t.Fatal(err)
+		case err != nil:
+			return
+		}
+		for name, r := range rates {
+			if len(name) != 2 || strings.Trim(name, "IXYZ") != "" || !(r >= 0 && r <= largestRate) {
+				t.Fatalf("%q: %v", name, r)
+			}
 		}
 	})
 }

@@ -38,9 +38,10 @@ func LoadAll(path string) (*Brief, *hardware.Profile, *device.Device, error) {
 	return b, p, d, nil
 }
 
-// Complete checks the brief and the device against what they refer to, as LoadAll does, and fills in what only the profile knows: the
-// channels of a defaulted amplitude error, the size of an error of a line's parameter, the errors of hold = "profile",
-// and that a baseband channel has an offset of one kind only. A static error for which the brief gives no size is no larger than 7.5 % of the full scale of
+// Complete checks the brief and the device against what they refer to, as LoadAll does, and fills in what only the two others know: the target on
+// the whole of the device, the members of static errors, with learned rates read from their file, the channels of a defaulted amplitude error, the size of an error of a
+// line's parameter, the errors of hold = "profile", and that a baseband channel has an offset of one kind only. The errors of a brief that names none
+// become amplitude and any one-body error where there are several sites. A static error for which the brief gives no size is no larger than 7.5 % of the full scale of
 // the fastest drive (any static error: 2.5 %), so that slow drives are not held against errors faster than they are. Errors are
 // an *quantity.Error. A second call changes nothing.
 func (b *Brief) Complete(p *hardware.Profile, d *device.Device) error {
@@ -51,12 +52,9 @@ func (b *Brief) Complete(p *hardware.Profile, d *device.Device) error {
 }
 
 func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
-	var channels, sites, driven []string
+	var channels, driven []string
 	for _, c := range p.Channels {
 		channels = append(channels, c.Name)
-	}
-	for _, s := range d.Sites {
-		sites = append(sites, s.Name)
 	}
 	uses := func(key, channel string, line int, kind string) *quantity.Error {
 		e := known(channel, channels, "a channel of "+p.File)
@@ -80,20 +78,33 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 			return e
 		}
 	}
-	if e := known(b.Target.Site, sites, "a site of "+d.File); e != nil {
-		e.File, e.Line, e.Key = b.File, b.lines.site, "target.site"
+	if e := b.completeTarget(d); e != nil {
 		return e
+	}
+	if len(d.Sites) > 1 {
+		b.defaultSeveral()
 	}
 	b.scaleDefaults(p, d)
 	for i := range b.Errors {
 		e := &b.Errors[i]
-		if fault := b.errorOn(e, p, d, sites, driven); fault != nil {
+		if fault := b.errorOn(e, p, d, driven); fault != nil {
+			if fault.File != "" { // of another file that the error names
+				return fault
+			}
 			fault.File = b.File
 			if fault.Key == "" {
 				fault.Line, fault.Key = e.line, e.key
 			}
 			fault.Key = fmt.Sprintf("error[%d].%s", e.index, fault.Key)
 			return fault
+		}
+		if e.Order == 2 && (len(e.Members) > mostSecond || e.Leak) {
+			found := fmt.Sprintf("2 of %d operators", len(e.Members))
+			if e.Leak {
+				found = "2 of leakage"
+			}
+			return &quantity.Error{File: b.File, Line: e.lineOrder, Key: fmt.Sprintf("error[%d].order", e.index), Found: found,
+				Allowed: fmt.Sprintf("1, or 2 of at most %d operators of the code space, as of any static error of two spins", mostSecond)}
 		}
 	}
 	// Of an offset of both quadratures a baseband channel has one.
@@ -104,7 +115,47 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 	if fault := b.holdProfile(p, driven); fault != nil {
 		return fault
 	}
+	if fault := b.marginsOn(d); fault != nil {
+		return fault
+	}
 	return b.spanOn(p, driven)
+}
+
+// defaultSeveral turns the errors of a brief that names none into those of a device of several sites: amplitude and any one-body error.
+func (b *Brief) defaultSeveral() {
+	if !b.Defaulted {
+		return
+	}
+	b.Errors = slices.DeleteFunc(b.Errors, func(e Error) bool { return e.Kind == Static })
+	for i := range b.Errors {
+		if e := &b.Errors[i]; e.Kind == Any {
+			e.Name, e.Scope, e.scope = anyNames[OneBody], OneBody, OneBody
+		}
+	}
+}
+
+// marginsOn complains of a margin of an error that is judged undeclared on one spin only.
+func (b *Brief) marginsOn(d *device.Device) *quantity.Error {
+	if d.Dim() == 2 {
+		return nil
+	}
+	var names []string
+	for _, e := range b.Errors {
+		if e.Kind != Any {
+			names = append(names, e.Name)
+		}
+	}
+	for i, m := range b.Require.Margins {
+		if e := known(m.Error, names, "an error of the brief that is not of any"); e != nil {
+			if len(names) == 0 {
+				e.Allowed = "no margin, as the brief has no error that is not of any"
+			}
+			e.File, e.Line, e.Key = b.File, b.lines.margins[i], fmt.Sprintf("require.margin[%d].error", i)
+			e.Hint = "what is judged undeclared on one spin is not on this device"
+			return e
+		}
+	}
+	return nil
 }
 
 // scaleDefaults lowers the default sizes of static errors where the drives are slow; where there are only biases, where they are.
@@ -142,10 +193,12 @@ func (b *Brief) scaleDefaults(p *hardware.Profile, d *device.Device) {
 }
 
 // errorOn checks one error against profile and device, and completes it. A complaint without a key is about the key that made the error.
-func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, sites, driven []string) *quantity.Error {
+func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, driven []string) *quantity.Error {
 	switch {
-	case e.key == "detuning":
-		return known(e.on, sites, "a site of "+d.File)
+	case e.Kind == Static:
+		return b.staticOn(e, d)
+	case e.Kind == Any:
+		return e.fill(d)
 	case e.Kind == Amplitude && e.key == "": // the default: whatever drives the device
 		e.Channels = driven
 		return nil
@@ -167,6 +220,8 @@ func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, sites, 
 		}
 	}
 	switch e.Kind {
+	case Crosstalk:
+		return crosstalkOn(e, string(c.Mixing), d)
 	case Offset:
 		if c.Line.DC() == 0 {
 			return &quantity.Error{Found: fmt.Sprintf("%q, of which the line passes nothing steady", e.on), Allowed: "a channel whose line passes an offset"}
@@ -194,6 +249,102 @@ func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, sites, 
 		}
 		e.unsized = false
 	}
+	return nil
+}
+
+// staticOn completes an error of one operator.
+func (b *Brief) staticOn(e *Error, d *device.Device) *quantity.Error {
+	at := func(site string, line int, key string) (int, *quantity.Error) {
+		fault := known(site, siteNames(d), "a site of "+d.File)
+		if fault != nil {
+			fault.Line, fault.Key = line, key
+		}
+		i, _ := d.Site(site)
+		return i, fault
+	}
+	one := func(site int) device.Matrix { return d.Embed(map[int]device.Matrix{site: d.LiftAt(site, e.Operator)}) }
+	var m device.Matrix
+	switch e.key {
+	case "detuning":
+		site, fault := at(e.on, e.line, "detuning")
+		if fault != nil {
+			return fault
+		}
+		m = one(site)
+	case "operator":
+		name, line, key := e.site, e.siteAt.line, "site"
+		switch {
+		case name != "":
+		case len(b.Target.Sites) == 1:
+			name, line, key = b.Target.Sites[0], e.line, "operator"
+		case len(d.Sites) == 1:
+			name = d.Sites[0].Name
+		default:
+			return &quantity.Error{Found: "no site beside it", Allowed: fmt.Sprintf("a site, as in site = %q (the target is not of one site)", d.Sites[0].Name)}
+		}
+		site, fault := at(name, line, key)
+		if fault != nil {
+			return fault
+		}
+		m = one(site)
+	case "on":
+		ops := map[int]device.Matrix{}
+		for i, name := range e.product.sites {
+			site, fault := at(name, e.product.line, "on")
+			if fault != nil {
+				return fault
+			}
+			ops[site] = d.Local(site, e.product.axes[i])
+		}
+		m = d.Embed(ops).Scale(0.5)
+	case "collective":
+		m = device.Zero(d.Dim())
+		for site := range d.Sites {
+			m = m.Add(0.5, d.Embed(map[int]device.Matrix{site: d.Local(site, e.product.axes[0])}))
+		}
+	case "matrix":
+		switch {
+		case e.matrix.N == d.Dim():
+			m = e.matrix
+		case e.matrix.N == 2 && len(d.Sites) == 1: // what it means on a ladder or a spin of more levels
+			m = one(0)
+		default:
+			return &quantity.Error{Found: fmt.Sprintf("%d rows", e.matrix.N), Allowed: fmt.Sprintf("%d rows, the levels of %s", d.Dim(), d.File)}
+		}
+	default: // the detuning of a defaulted brief
+		m = one(0)
+	}
+	e.Members = []Member{{Name: e.Name, Operator: m, Weight: 1}}
+	if e.Operator.N == 0 && m.N == 2 {
+		e.Operator = m
+	}
+	return nil
+}
+
+// crosstalkOn completes an error of a channel that reaches another site.
+func crosstalkOn(e *Error, mixing string, d *device.Device) *quantity.Error {
+	fault := known(e.Site, siteNames(d), "a site of "+d.File)
+	if fault != nil {
+		fault.Line, fault.Key = e.siteAt.line, "site"
+		return fault
+	}
+	fail := func(found, allowed string) *quantity.Error {
+		return &quantity.Error{Line: e.siteAt.line, Key: "site", Found: found, Allowed: allowed}
+	}
+	site, _ := d.Site(e.Site)
+	own, drive := d.Aim(e.on)
+	if own == site {
+		return fail(fmt.Sprintf("%q, the site that %q is meant for", e.Site, e.on), "another site (amplitude is what scales a channel on its own)")
+	}
+	if from, to := &d.Sites[own], &d.Sites[site]; drive && (from.Frequency > 0) != (to.Frequency > 0) {
+		return fail(fmt.Sprintf("a frequency for one of %q and %q only", from.Name, to.Name), "a frequency for both in "+d.File+", or for neither (the field then turns with both)")
+	}
+	path := d.Reach(e.on, site, mixing)
+	if path.Frequency != 0 {
+		f := math.Abs(path.Frequency) / (2 * math.Pi)
+		return fail(fmt.Sprintf("%q, whose frame turns by %s away from that of %q", e.Site, quantity.Format(f, quantity.Frequency), e.on), "a site whose frame turns as fast")
+	}
+	e.Reach = path.Operators
 	return nil
 }
 

@@ -183,7 +183,7 @@ func TestLoadAllRefuses(t *testing.T) {
 		{"brief.toml", "112 ns", "999 ns", "brief.toml", `:5: span: found 999 ns, which is 999 samples; allowed: ` + spans + ` (nearest: 992 ns and 1000 ns)`},
 		{"brief.toml", "112 ns", "1000.3 ns", "brief.toml", `:5: span: found 1.0003 us, which is 1000.3 samples; allowed: ` + spans + ` (nearest: 1000 ns)`},
 		{"brief.toml", "112 ns", "1 ms", "brief.toml", `:5: span: found 1 ms; allowed: ` + spans + ` (nearest: 1000 ns)`},
-		{"brief.toml", "gate =", "gat =", "brief.toml", `:8: target.gat: found an unknown key; allowed: site, free_z, angle, gate, axis, matrix (did you mean gate?)`},
+		{"brief.toml", "gate =", "gat =", "brief.toml", `:8: target.gat: found an unknown key; allowed: site, sites, gates, from, to, free_z, up_to, gate, controlled, axis, matrix, angle (did you mean gate?)`},
 		{"brief.toml", "site = \"q1\"", "site = \"q2\"", "brief.toml", `:7: target.site: found "q2"; allowed: a site of DIR/device.toml, "q1"`},
 		{"brief.toml", "detuning = \"q1\"", "detuning = \"Q1\"", "brief.toml", `:12: error[0].detuning: found "Q1"; allowed: a site of DIR/device.toml, "q1"`},
 		{"brief.toml", "amplitude = \"q1 drive\"", "amplitude = \"q2 drive\"", "brief.toml", `:14: error[1].amplitude: found "q2 drive"; allowed: a channel that drives a site of DIR/device.toml, "q1 drive"`},

@@ -6,6 +6,8 @@ import (
 	"math"
 	"math/cmplx"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"holdfast/design/replay"
 )
@@ -90,6 +92,8 @@ type drawn struct {
 }
 
 func (s *Sheet) drawings(v *view) {
+	size := 0
+	var undrawn []string
 	for n := range s.Channels {
 		c := drawn{Channel: &s.Channels[n], sheet: s, height: fullHeight}
 		var f channelView
@@ -107,10 +111,31 @@ func (s *Sheet) drawings(v *view) {
 		if sp := NewSpectrum(c.entering(), s.SamplePeriod, c.Band, c.Line); sp != nil {
 			f.Spectrum = c.spectrumFigure(sp)
 		}
-		if f.Played.Wide != "" || f.Arriving.Wide != "" {
-			v.Channels = append(v.Channels, f)
+		size += f.size()
+		if f.Played.Wide == "" && f.Arriving.Wide == "" {
+			continue
 		}
+		if n > 0 && size > drawingsLimit {
+			undrawn = append(undrawn, f.Name)
+			continue
+		}
+		v.Channels = append(v.Channels, f)
 	}
+	if len(undrawn) > 0 {
+		v.Undrawn = "The drawings of " + list(undrawn) + " are left out, for the page would be too large; the files hold what they play and what arrives."
+	}
+}
+
+// drawingsLimit is how large the drawings of channels after the first may make a page, in bytes: the rest needs what is left of SizeLimit.
+const drawingsLimit = 1_200_000
+
+// size is that of the drawings, in bytes.
+func (f *channelView) size() int {
+	n := 0
+	for _, d := range []figureView{f.Played, f.Arriving, f.Spectrum, f.After} {
+		n += len(d.Wide) + len(d.Narrow)
+	}
+	return n
 }
 
 func (s drawn) playedFigure() figureView {
@@ -330,7 +355,7 @@ func (s *Sheet) errors(v *view) {
 	}
 	y := s.infidelityAxis()
 	for n, e := range verdict.Errors {
-		row := errorRow{Name: clean(e.Name), Kind: clean(e.Kind), Held: e.Held,
+		row := errorRow{Name: clean(e.Name), Kind: clean(e.Kind), Held: e.Held, Leak: leaks(e), Of: operators(e),
 			Cells: []errorCell{{typographic(figure(e.Susceptibility)), typographic(s.margin(e))}}}
 		for _, r := range s.Rivals {
 			cell := errorCell{"–", "–"}
@@ -340,6 +365,10 @@ func (s *Sheet) errors(v *view) {
 			row.Cells = append(row.Cells, cell)
 		}
 		v.Errors = append(v.Errors, row)
+		v.Leaks = v.Leaks || row.Leak != ""
+		if w := membersText(e); w != "" {
+			v.Members = append(v.Members, typographic(w))
+		}
 		if f := s.marginFigure(n, e, y); f.Wide != "" {
 			v.Margins = append(v.Margins, f)
 		}
@@ -366,6 +395,53 @@ func (s *Sheet) key() string {
 		}
 	}
 	return list(words) + "."
+}
+
+// leaks says what an error leads out of the code space, empty where there is nothing outside.
+func leaks(e replay.Error) string {
+	if e.LeakSusceptibility == nil {
+		return ""
+	}
+	return typographic(figure(*e.LeakSusceptibility))
+}
+
+// operators counts those of a class, empty where it is not one of many.
+func operators(e replay.Error) string {
+	switch n := len(e.Members); n {
+	case 0:
+		return ""
+	case 1:
+		return "1 operator"
+	default:
+		return fmt.Sprintf("%d operators", n)
+	}
+}
+
+// membersText names the operators of a class and says what was looked at for its margin.
+func membersText(e replay.Error) string {
+	if len(e.Members) == 0 {
+		return ""
+	}
+	names := cleanAll(e.Members)
+	if n := len(names); n > mostMembers {
+		names = append(names[:mostMembers-1:mostMembers-1], fmt.Sprintf("%d more", n-mostMembers+1))
+	}
+	text := fmt.Sprintf("%s: %s.", capital(clean(e.Name)), list(names))
+	if e.Leak {
+		text += " These couple the code space to other levels, and its susceptibility is the share of that which survives."
+	}
+	if e.Sampled != "" {
+		text += fmt.Sprintf(" What it withstands was looked for along %s.", clean(e.Sampled))
+	}
+	return text
+}
+
+// capital makes the first letter of a sentence one.
+func capital(s string) string {
+	for i, r := range s {
+		return string(unicode.ToUpper(r)) + s[i+utf8.RuneLen(r):]
+	}
+	return s
 }
 
 func find(errors []replay.Error, e replay.Error) (replay.Error, bool) {
@@ -434,6 +510,9 @@ func (s *Sheet) infidelityAxis() axis {
 		}
 	}
 	a := axis{log: true, label: "average gate infidelity (ratio)"}
+	if m := s.measured(); m != "" {
+		a.label = "infidelity " + m + " (ratio)"
+	}
 	a.lo = math.Pow10(int(math.Floor(math.Log10(math.Max(low, tiny)) + 1e-9)))
 	a.hi = math.Pow10(int(math.Ceil(math.Log10(math.Min(math.Max(high, 10*a.lo), 1)) - 1e-9)))
 	return a
@@ -529,6 +608,7 @@ func curve(e replay.Error) []point {
 
 // rivals fills the table of the textbook pulses and their shapes.
 func (s *Sheet) rivals(v *view) {
+	v.NoRivals = typographic(clean(s.NoRivals))
 	if len(s.Rivals) == 0 {
 		return
 	}

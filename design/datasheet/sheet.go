@@ -12,7 +12,7 @@
 // the Sheet carries it.
 //
 // Conventions of the page: infidelity without adjective is the average gate
-// infidelity; a figure under 1e-9 is printed as "< 1e-9 in this model";
+// infidelity, of a target of states the share of them that is lost, which the plate says; a figure under 1e-9 is printed as "< 1e-9 in this model";
 // frequencies are cyclic. To the bench the page says MHz, ns and per cent.
 package datasheet
 
@@ -46,19 +46,39 @@ type Sheet struct {
 	WindowStart  float64   // ns from the leading edge of sample 0
 	Channels     []Channel // that play; the first one's shape is the sign of the sheet
 
-	T1, T2   float64 // ns, of the device; 0 = not stated
+	Sites    []Site  // of a device of several sites; empty for one
+	T1, T2   float64 // ns, of a device of one site; 0 = not stated
 	Detuning float64 // MHz, of the device itself: what it adds is 2 pi Detuning Z/2, and errors come on top
 	Required float64 // infidelity that the brief requires; 0 takes the verdict's requirement of that name
 	Verdict  *replay.Verdict
 	Rivals   []Rival // textbook pulses for the same target through the same line
+	NoRivals string  // why there are none, a sentence; empty where that is not worth one
+	// LeftOut are the frequencies, MHz, of what turns by itself and is left out of the model.
+	LeftOut []float64
 
 	Basis         []Row     // family, coefficients per quadrature, ...
 	CoefficientsI []float64 // of the first channel
 	CoefficientsQ []float64
-	Search        []Row // seed, starts, stopping reason, ...
-	Provenance    []Row // version, inputs, ...
-	Files         []Row // file names and their SHA-256
+	Further       []Coefficients // of further channels, of a device of several sites
+	Search        []Row          // seed, starts, stopping reason, ...
+	Provenance    []Row          // version, inputs, ...
+	Files         []Row          // file names and their SHA-256
 	Cautions      []string
+}
+
+// A Site is one of several sites of a device.
+type Site struct {
+	Name   string
+	T1, T2 float64 // ns; 0 = not stated
+	Loss   float64 // its share of what decoherence adds
+	// Before and After are the rotations of the site that the playback has to add to the samples, in words; empty where none is free.
+	Before, After string
+}
+
+// Coefficients are those of one channel; a baseband one has no Q.
+type Coefficients struct {
+	Channel string
+	I, Q    []float64
 }
 
 // A Channel is one output of the instrument, with what it plays and what its line makes of that.
@@ -92,6 +112,25 @@ func (s *Sheet) first() *Channel {
 
 // several reports whether channels need to be told apart.
 func (s *Sheet) several() bool { return len(s.Channels) > 1 }
+
+// register reports whether the sheet is of more than a gate on one site.
+func (s *Sheet) register() bool { return len(s.Sites) > 1 || s.ofStates() }
+
+// ofStates reports whether states are to become others.
+func (s *Sheet) ofStates() bool {
+	return s.Verdict.Measure == "state" || s.Verdict.Measure == "subspace"
+}
+
+// measured says what infidelity is of, empty for a gate's average.
+func (s *Sheet) measured() string {
+	switch s.Verdict.Measure {
+	case "state":
+		return "of the state"
+	case "subspace":
+		return "of the subspace"
+	}
+	return ""
+}
 
 // entering is what enters the line.
 func (c *Channel) entering() []complex128 {

@@ -4,8 +4,11 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 	"unicode/utf8"
+
+	"holdfast/design/replay"
 )
 
 // Text writes a short summary for a terminal, about 25 lines, in the words and
@@ -44,17 +47,33 @@ func Text(w io.Writer, s *Sheet) error {
 	}
 
 	if len(v.Errors) > 0 {
+		out := slices.ContainsFunc(v.Errors, func(e replay.Error) bool { return e.LeakSusceptibility != nil })
 		head := []string{"error", "susceptibility", "withstands"}
+		if out {
+			head = append(head, "leads out")
+		}
 		for _, r := range s.Rivals {
 			head = append(head, clean(r.Name))
 		}
 		rows := [][]string{head}
 		for _, e := range v.Errors {
 			name := clean(e.Name)
-			if e.Held {
+			switch of := operators(e); {
+			case e.Held && of != "":
+				name += " (held, " + of + ")"
+			case e.Held:
 				name += " (held)"
+			case of != "":
+				name += " (" + of + ")"
 			}
 			row := []string{name, figure(e.Susceptibility), s.margin(e)}
+			if out {
+				leak := "-"
+				if e.LeakSusceptibility != nil {
+					leak = figure(*e.LeakSusceptibility)
+				}
+				row = append(row, leak)
+			}
 			for _, r := range s.Rivals {
 				cell := "-"
 				if re, ok := find(r.Errors, e); ok {
@@ -74,12 +93,26 @@ func Text(w io.Writer, s *Sheet) error {
 	}
 
 	b.WriteByte('\n')
-	line("infidelity %s settled, %s in the window", figure(v.Settled.Infidelity), figure(v.Window.Infidelity))
+	of := s.measured()
+	if of != "" {
+		of += " "
+	}
+	line("infidelity %s%s settled, %s in the window", of, figure(v.Settled.Infidelity), figure(v.Window.Infidelity))
+	if l := v.Required().Leakage; s.register() && l != 0 {
+		line("leakage %s, the share that ends outside the code space", figure(l))
+	}
+	if v.Dropped != nil {
+		line("with the rotating terms put back that the model leaves out: infidelity %s", figure(v.Dropped.Infidelity))
+	}
 	tail := figure(v.TailAngle)
 	if finite(v.TailAngle) && math.Abs(v.TailAngle) >= tiny {
 		tail += " rad"
 	}
-	line("ring-out turns %s after the window; two without a gap lose %s", tail, figure(v.Pair.Infidelity))
+	if s.judgesPair() {
+		line("ring-out turns %s after the window; two without a gap lose %s", tail, figure(v.Pair.Infidelity))
+	} else {
+		line("ring-out turns %s after the window", tail)
+	}
 	if v.Decoherence > 0 {
 		line("decoherence adds %s, whatever the pulse", figure(v.Decoherence))
 	}
@@ -95,6 +128,9 @@ func Text(w io.Writer, s *Sheet) error {
 		if w := s.weaker(e); w != "" {
 			line("%s", w)
 		}
+	}
+	if s.NoRivals != "" {
+		line("%s", clean(s.NoRivals))
 	}
 	for _, warning := range v.Warnings {
 		line("warning: %s", clean(warning))

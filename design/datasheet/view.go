@@ -37,6 +37,14 @@ type view struct {
 	RivalShapes              figureView
 	Between                  []Row
 	BetweenNote              string
+	NoRivals                 string
+	Playback                 []Row3
+	PlaybackNote             string
+	Decay                    []decayRow
+	LeftOut                  []string
+	Undrawn                  string
+	Leaks                    bool // the table of errors says what they lead out of the code space
+	Members                  []string
 	Limits                   []limitRow
 	BringUp                  []bringUp
 	BringUpNote              string
@@ -44,6 +52,8 @@ type view struct {
 	Facts                    []facts
 	CoefficientsI            string
 	CoefficientsQ            string
+	CoefficientsOf           string // the channel, where there are further ones
+	Further                  []Row  // coefficients of further channels
 	Cautions                 []string
 	Decoherence, FullScaleMV string
 }
@@ -73,9 +83,16 @@ type figureView struct {
 	Wide, Narrow template.HTML
 }
 
+// A Row3 is a line of three columns.
+type Row3 struct{ Name, Before, After string }
+
+type decayRow struct{ Site, T1, T2, Adds string }
+
 type errorRow struct {
 	Name, Kind string
 	Held       bool
+	Leak       string      // what it leads out of the code space; empty without other levels
+	Of         string      // how many operators; empty for one
 	Cells      []errorCell // this pulse first, then the rivals
 }
 
@@ -128,7 +145,7 @@ func newView(s *Sheet) *view {
 		found, allowed := s.requirementText(r)
 		view.Requirements = append(view.Requirements, requirement{clean(r.Name), typographic(found), typographic(allowed), r.Met})
 	}
-	view.Agreement = agreement(v)
+	view.Agreement = s.agreement()
 	for _, d := range v.Inputs {
 		view.Differences = append(view.Differences, replay.Difference{Key: clean(d.Key), Recorded: clean(d.Recorded), Rebuilt: clean(d.Rebuilt)})
 	}
@@ -155,6 +172,7 @@ func newView(s *Sheet) *view {
 	}
 	view.FullScaleMV = typographic(list(levels))
 	s.drawings(view)
+	s.sites(view)
 	s.errors(view)
 	s.rivals(view)
 	s.between(view)
@@ -303,6 +321,9 @@ func (s *Sheet) plate() []plate {
 		out = append(out, plate{name, typographic(value), typographic(note)})
 	}
 	note := "without any error"
+	if m := s.measured(); m != "" {
+		note = m + ", " + note
+	}
 	if r := s.required(); r > 0 {
 		note += ", required at most " + digits(r, 3)
 	}
@@ -336,7 +357,15 @@ func (s *Sheet) plate() []plate {
 	} else {
 		add("susceptibility", figure(held.Susceptibility), "share of "+clean(held.Name)+" that survives; 1 = all")
 	}
-	add("pair without a gap", figure(v.Pair.Infidelity), "infidelity of two in a row, worst of four phases")
+	if s.judgesPair() {
+		add("pair without a gap", figure(v.Pair.Infidelity), "infidelity of two in a row, worst of four phases")
+	}
+	if l := v.Required().Leakage; s.register() && l != 0 {
+		add("leakage", figure(l), "share that ends outside the code space")
+	}
+	if v.Dropped != nil {
+		add("with what is left out", figure(v.Dropped.Infidelity), "infidelity with the rotating terms put back")
+	}
 	if v.Decoherence > 0 {
 		add("decoherence adds", figure(v.Decoherence), "whatever the pulse, for this span")
 	}
@@ -345,6 +374,9 @@ func (s *Sheet) plate() []plate {
 	}
 	return out
 }
+
+// judgesPair reports whether two pulses in a row are worth a word: of more than one site they often cannot be judged.
+func (s *Sheet) judgesPair() bool { return !s.register() || finite(s.Verdict.Pair.Infidelity) }
 
 func tightest(limits []replay.Limit) (replay.Limit, bool) {
 	best := -1
@@ -362,13 +394,17 @@ func tightest(limits []replay.Limit) (replay.Limit, bool) {
 	return limits[best], true
 }
 
-func agreement(v *replay.Verdict) []string {
-	a := v.Agreement
+func (s *Sheet) agreement() []string {
+	a := s.Verdict.Agreement
 	if !a.OK {
 		return []string{typographic(fmt.Sprintf("Replay does not agree with the record%s. At most, infidelity differs by %s, susceptibility by %s, tail angle by %s rad. Do not play this pulse before that is explained.",
 			worst(a.Worst), figure(a.Infidelity), figure(a.Susceptibility), figure(a.TailAngle)))}
 	}
-	return []string{"Every figure here was computed by replay from the integer codes in the folder, by other means than the design's. It agrees with the record within 1e-9 in infidelity, 1e-5 in susceptibility and 1e-4 rad in tail angle."}
+	text := "Every figure here was computed by replay from the integer codes in the folder, by other means than the design's. It agrees with the record within 1e-9 in infidelity, 1e-5 in susceptibility and 1e-4 rad in tail angle."
+	if s.register() { // of which the record claims no angle
+		text = strings.Replace(text, ", 1e-5 in susceptibility and 1e-4 rad in tail angle", " and 1e-5 in susceptibility", 1)
+	}
+	return []string{text}
 }
 
 func (s *Sheet) decoherenceSentence() string {
@@ -384,7 +420,11 @@ func (s *Sheet) decoherenceSentence() string {
 	if len(of) > 0 {
 		text += " (" + list(of) + ")"
 	}
-	text += " to every coherent infidelity here, T/6 (1/T1 + 2/T2) whatever the pulse: " + figure(v.Required().Infidelity+v.Decoherence) + " in all without any other error."
+	how := "T/6 (1/T1 + 2/T2)"
+	if len(s.Sites) > 1 {
+		how = "the sum over the sites of d/(d+1) T/4 (1/T1 + 2/T2), d = " + fmt.Sprint(1<<len(s.Sites)) + " code states,"
+	}
+	text += " to every coherent infidelity here, " + how + " whatever the pulse: " + figure(v.Required().Infidelity+v.Decoherence) + " in all without any other error."
 	if r := s.required(); r > 0 && v.Decoherence > r {
 		text += " That alone is more than the " + digits(r, 3) + " required, which is judged on the coherent figure."
 	}
@@ -433,6 +473,10 @@ func (s *Sheet) between(view *view) {
 		angle += " rad (" + digits(v.TailAngle*180/math.Pi, 3) + " deg)"
 	}
 	add("angle that the ring-out still turns", angle)
+	if !s.judgesPair() {
+		view.BetweenNote = "Two of these pulses without a gap are not judged; a warning above says why."
+		return
+	}
 	pair := figure(v.Pair.Infidelity)
 	if finite(v.Pair.Phase) {
 		pair += " (second pulse at " + digits(v.Pair.Phase, 3) + " deg)"
@@ -526,7 +570,78 @@ func (s *Sheet) provenance(view *view) {
 	add("Files", true, s.Files)
 	view.CoefficientsI = coefficients(s.CoefficientsI)
 	view.CoefficientsQ = coefficients(s.CoefficientsQ)
+	if len(s.Further) > 0 {
+		view.CoefficientsOf = ", " + clean(s.first().Name)
+	}
+	for _, c := range s.Further {
+		name := clean(c.Channel)
+		if len(c.Q) == 0 {
+			view.Further = append(view.Further, Row{"Coefficients of " + name, coefficients(c.I)})
+			continue
+		}
+		view.Further = append(view.Further, Row{"Coefficients of I, " + name, coefficients(c.I)}, Row{"Coefficients of Q, " + name, coefficients(c.Q)})
+	}
 }
+
+// sites says what is told of each of several sites: what playback has to add, and what waiting costs; and what of them the model leaves out.
+func (s *Sheet) sites(view *view) {
+	v := s.Verdict
+	free, decays := false, false
+	for _, x := range s.Sites {
+		free = free || x.Before != "" || x.After != ""
+		decays = decays || positive(x.Loss)
+	}
+	or := func(text string) string {
+		if text == "" {
+			return "–"
+		}
+		return typographic(clean(text))
+	}
+	stated := func(ns float64) string {
+		if !positive(ns) {
+			return "not stated"
+		}
+		return typographic(duration(ns))
+	}
+	for _, x := range s.Sites {
+		if free {
+			view.Playback = append(view.Playback, Row3{clean(x.Name), or(x.Before), or(x.After)})
+		}
+		if decays {
+			view.Decay = append(view.Decay, decayRow{clean(x.Name), stated(x.T1), stated(x.T2), typographic(figure(x.Loss))})
+		}
+	}
+	if free {
+		view.PlaybackNote = "These rotations of single sites belong to the gate and are not in the samples: they cost nothing where the phases of later pulses are turned instead. A turn is exp(-i angle n·(X, Y, Z)/2), |0⟩ the +1 state of Z; every figure on this page counts them in."
+	}
+	if len(s.LeftOut) > 0 {
+		var words []string
+		for i, f := range s.LeftOut {
+			if i == mostFrequencies {
+				words = append(words, fmt.Sprintf("%d more", len(s.LeftOut)-i))
+				break
+			}
+			words = append(words, digits(f, 5)+" MHz")
+		}
+		text := "The model leaves out what turns at " + list(words) + " in the frames of the sites, as the device file asks."
+		if v.Dropped != nil {
+			text += fmt.Sprintf(" Put back, it makes the infidelity %s in the place of %s", figure(v.Dropped.Infidelity), figure(v.Required().Infidelity))
+			if l := v.Dropped.Leakage; l != 0 {
+				text += ", of which the leakage is " + figure(l)
+			}
+			text += ". The other figures of this page are without it."
+		} else {
+			text += " What that costs is not judged."
+		}
+		view.LeftOut = append(view.LeftOut, typographic(text))
+	}
+}
+
+// mostFrequencies are named of what is left out, mostMembers of the operators of a class.
+const (
+	mostFrequencies = 6
+	mostMembers     = 24
+)
 
 // coefficients prints numbers to six digits; the record has them whole.
 func coefficients(c []float64) string {

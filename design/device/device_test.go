@@ -6,6 +6,7 @@ import (
 	"math/cmplx"
 	"os"
 	"path/filepath"
+	"reflect"
 	"strings"
 	"testing"
 
@@ -51,13 +52,13 @@ func TestLoad(t *testing.T) {
 	if d.File != path || d.Name != "Skerry" || d.Dim() != 2 || len(d.Sites) != 1 || len(d.Drives) != 1 {
 		t.Errorf("device %+v", d)
 	}
-	if got, want := d.Sites[0], (Site{"q1", 2, Upper, 5.1, 40_000, 80_000, 2 * math.Pi * -0.00025, 0}); got != want {
+	if got, want := d.Sites[0], (Site{Name: "q1", Kind: Spin, Levels: 2, Code: [2]int{0, 1}, Zero: Upper, Frequency: 5.1, T1: 40_000, T2: 80_000, Detuning: 2 * math.Pi * -0.00025}); !reflect.DeepEqual(got, want) {
 		t.Errorf("site %+v, want %+v", got, want)
 	}
 	if got, want := d.Drives[0], (Drive{"q1", "q1 drive", 15}); got != want {
 		t.Errorf("drive %+v, want %+v", got, want)
 	}
-	if len(d.Biases) != 2 || d.Biases[0] != (Bias{"q1", "q1 flux", "Z", 19}) || d.Biases[1] != (Bias{"q1", "q1 side", "X", 23}) {
+	if want := []Bias{{Site: "q1", Channel: "q1 flux", Axis: "Z", Line: 19}, {Site: "q1", Channel: "q1 side", Axis: "X", Line: 23}}; !reflect.DeepEqual(d.Biases, want) {
 		t.Errorf("biases %+v", d.Biases)
 	}
 	if z, x := (Matrix{2, []complex128{0.5, 0, 0, -0.5}}), (Matrix{2, []complex128{0, 0.5, 0.5, 0}}); !near(d.BiasOperator(0), z, 0) || !near(d.BiasOperator(1), x, 0) || !near(d.ShiftOperator(), z, 0) {
@@ -97,7 +98,7 @@ func TestDetuningSign(t *testing.T) {
 
 func TestDefaults(t *testing.T) {
 	d := mustRead(t, "format = 1\nname = 'd'\n[[site]]\nname = 'q1'\n[[drive]]\nsite = 'q1'\nchannel = 'c'\n")
-	if got, want := d.Sites[0], (Site{Name: "q1", Levels: 2, Zero: Lower}); got != want {
+	if got, want := d.Sites[0], (Site{Name: "q1", Kind: Spin, Levels: 2, Code: [2]int{0, 1}, Zero: Lower}); !reflect.DeepEqual(got, want) {
 		t.Errorf("site %+v, want %+v", got, want)
 	}
 	if d.Static().Norm() != 0 {
@@ -131,38 +132,37 @@ func TestRefuses(t *testing.T) {
 	for _, c := range []struct{ old, new, want string }{
 		{"format = 1", "format = 2", "d.toml:1: format: found 2; allowed: 1, and nothing else"},
 		{"format = 1", "", "d.toml:1: format: found nothing; allowed: 1, and nothing else"},
-		{`name = "Skerry"`, `Name = "Skerry"`, `d.toml:2: Name: found an unknown key; allowed: format, name, site, drive, bias (keys are case-sensitive: write name)`},
+		{`name = "Skerry"`, `Name = "Skerry"`, `d.toml:2: Name: found an unknown key; allowed: format, name, site, drive, bias, coupling, crosstalk (keys are case-sensitive: write name)`},
 		{`name = "Skerry"`, `name = 7`, `d.toml:2: name: found 7; allowed: a text in quotes`},
 		{"levels = 2", "levels = 3", `d.toml:4: site[0].anharmonicity: found nothing; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz`},
 		{"levels = 2", "levels = 3\nanharmonicity = \"-220 MHz\"", `d.toml:8: site[0].zero: found "upper"; allowed: "lower" for more than two levels, the ladder stands on |0>`},
 		{"levels = 2", "levels = 2\nanharmonicity = \"-220\"", `d.toml:7: site[0].anharmonicity: found "-220"; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz (the unit is missing)`},
-		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 8"},
-		{"levels = 2", "level = 2", "d.toml:6: site[0].level: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, anharmonicity (did you mean levels?)"},
+		{"levels = 2", "levels = 1000000000000", "d.toml:6: site[0].levels: found 1000000000000; allowed: a whole number, 2 to 16"},
+		{"levels = 2", "level = 2", "d.toml:6: site[0].level: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, kind, anharmonicity, quadratic, higher, code (did you mean levels?)"},
 		{`zero = "upper"`, `zero = "ground"`, `d.toml:7: site[0].zero: found "ground"; allowed: "lower" or "upper"`},
 		{"5.1 GHz", "5.1 ns", `d.toml:8: site[0].frequency: found "5.1 ns"; allowed: a frequency such as "40 MHz", 1 Hz to 10000 GHz ("ns" is a unit of time)`},
 		{`"-250 kHz"`, "-0.25", `d.toml:9: site[0].detuning: found -0.25; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz (a bare number has no unit: write a quantity in quotes)`},
 		{`"-250 kHz"`, "nan", `d.toml:9: site[0].detuning: found NaN; allowed: a frequency such as "40 MHz", -1 GHz to 1 GHz`},
 		{`T1 = "40 us"`, `T1 = "0 us"`, `d.toml:10: site[0].T1: found "0 us"; allowed: a time such as "112 ns", 1 ns to 1e+06 s`},
 		{`T1 = "40 us"`, `T1 = "inf us"`, `d.toml:10: site[0].T1: found "inf us"; allowed: a time such as "112 ns", 1 ns to 1e+06 s (not a finite number)`},
-		{`T1 = "40 us"`, `t1 = "40 us"`, `d.toml:10: site[0].t1: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, anharmonicity (keys are case-sensitive: write T1)`},
+		{`T1 = "40 us"`, `t1 = "40 us"`, `d.toml:10: site[0].t1: found an unknown key; allowed: name, levels, zero, frequency, T1, T2, detuning, kind, anharmonicity, quadratic, higher, code (keys are case-sensitive: write T1)`},
 		{`T2 = "80 us"`, `T2 = "80.1 us"`, "d.toml:11: site[0].T2: found 80.1 us; allowed: at most twice T1, 80 us"},
 		{`T2 = "80 us"`, "T2 = \"80 us\"\nT2 = \"80 us\"", "d.toml:12: site[0].T2: found this key a second time, after line 11; allowed: each key once"},
-		{"[[site]]", "[other]\nx = 1\n[[site]]", "d.toml:4: other: found an unknown key; allowed: format, name, site, drive, bias"},
-		{"[[drive]]", "[[site]]\nname = \"q2\"\n[[drive]]", "d.toml:13: site[1]: found a second site; allowed: one [[site]] (this version plays one site)"},
-		{"[[drive]]", "[[drive]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n[[drive]]", "d.toml:16: drive[1]: found a second drive; allowed: one [[drive]] (this version plays one site)"},
+		{"[[site]]", "[other]\nx = 1\n[[site]]", "d.toml:4: other: found an unknown key; allowed: format, name, site, drive, bias, coupling, crosstalk"},
+		{"[[drive]]", "[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n[[drive]]", "d.toml:18: drive[1].channel: found \"q1 drive\" in a second [[drive]]; allowed: a channel of its own"},
 		{"[[drive]]\nsite = \"q1\"\nchannel = \"q1 drive\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n\n[[bias]]\nsite = \"q1\"\nchannel = \"q1 side\"\naxis = \"X\"\n", "",
-			"d.toml:1: drive: found none, and no bias; allowed: one [[drive]], which names the site and the channel that drives it, or a [[bias]] (this version plays one site)"},
+			"d.toml:1: drive: found none, and no bias; allowed: a [[drive]], which names the site and the channel that drives it, or a [[bias]]"},
 		{`"q1 flux"`, `"q1 drive"`, `d.toml:19: bias[0].channel: found "q1 drive", which a [[drive]] has; allowed: a channel of its own`},
 		{`"q1 side"`, `"q1 flux"`, `d.toml:23: bias[1].channel: found "q1 flux" in a second [[bias]]; allowed: a channel of its own`},
 		{`axis = "X"`, `axis = "x"`, `d.toml:24: bias[1].axis: found "x"; allowed: "X", "Y" or "Z" (did you mean "X"?)`},
-		{`axis = "X"`, `axes = "X"`, `d.toml:24: bias[1].axes: found an unknown key; allowed: site, channel, axis (did you mean axis?)`},
+		{`axis = "X"`, `axes = "X"`, `d.toml:24: bias[1].axes: found an unknown key; allowed: site, channel, axis, polynomial, loop (did you mean axis?)`},
 		{"[[bias]]\nsite = \"q1\"", "[[bias]]\nsite = \"q3\"", `d.toml:18: bias[0].site: found "q3"; allowed: a site of this device, "q1"`},
 		{`channel = "q1 flux"`, ``, `d.toml:17: bias[0].channel: found nothing; allowed: a text in quotes`},
-		{"[[bias]]\nsite = \"q1\"", strings.Repeat("[[bias]]\n", 8), `d.toml:17: bias: found 9 tables; allowed: at most 8`},
-		{"[[drive]]\nsite", "[[drives]]\nsite", "d.toml:13: drives: found an unknown key; allowed: format, name, site, drive, bias (did you mean drive?)"},
+		{"[[bias]]\nsite = \"q1\"", strings.Repeat("[[bias]]\n", 16), `d.toml:17: bias: found 17 tables; allowed: at most 16`},
+		{"[[drive]]\nsite", "[[drives]]\nsite", "d.toml:13: drives: found an unknown key; allowed: format, name, site, drive, bias, coupling, crosstalk (did you mean drive?)"},
 		{`site = "q1"`, `site = "q2"`, `d.toml:14: drive[0].site: found "q2"; allowed: a site of this device, "q1"`},
 		{`channel = "q1 drive"`, ``, `d.toml:13: drive[0].channel: found nothing; allowed: a text in quotes`},
-		{`channel = "q1 drive"`, "channel = \"q1 drive\"\n[[coupling]]\n", `d.toml:16: coupling: found an unknown key; allowed: format, name, site, drive, bias`},
+		{`channel = "q1 drive"`, "channel = \"q1 drive\"\n[[couplings]]\n", `d.toml:16: couplings: found an unknown key; allowed: format, name, site, drive, bias, coupling, crosstalk (did you mean coupling?)`},
 		{`"q1 drive"`, `q1 drive`, `d.toml:15: drive[0].channel: found q1 drive without quotes; allowed: text and quantities in quotes (write "q1 drive")`},
 	} {
 		if !strings.Contains(whole, c.old) {
@@ -180,7 +180,7 @@ func TestRefuses(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if _, err := read(doc); err == nil || err.Error() != "d.toml:1: site: found none; allowed: one [[site]] (this version plays one site)" {
+	if _, err := read(doc); err == nil || err.Error() != "d.toml:1: site: found none; allowed: 1 to 6 [[site]], each with its name" {
 		t.Errorf("no site: %v", err)
 	}
 }

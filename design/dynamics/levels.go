@@ -465,3 +465,7 @@ func (l *Levels) borne(u, w []float64, j int) {
 		}
 	}
 }
+
+// ByFrames tells whether Run and Pull follow the static errors through the Gram matrix
+// of the frames; Reset decides it.
+func (l *Levels) ByFrames() bool { return l.gram != nil }

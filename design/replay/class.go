@@ -1,6 +1,7 @@
 package replay
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -56,7 +57,7 @@ func (e *engine) end(unit float64) float64 {
 // unitOf gives the unit of an error's sizes, and the lambda of one of it.
 func unitOf(kind string) (name string, lambda float64) {
 	switch kind {
-	case "amplitude", "line":
+	case "amplitude", "line", "crosstalk":
 		return "%", perPercent
 	case "skew":
 		return "deg", perDegree
@@ -68,19 +69,33 @@ func unitOf(kind string) (name string, lambda float64) {
 type study struct {
 	class Class
 	one   *probed   // all kinds but any
-	all   []*probed // any: along an orthogonal basis of the traceless operators
-	sides []*probed // any: the fixed directions besides the basis
+	all   []*probed // any: along every operator of the class, or along an orthogonal basis of the traceless ones
+	names []string  // of all
+	sides []*probed // any: the fixed directions besides
+	few   []course  // any: of all these the ones that the curve follows; nil for both ways along every one
+}
+
+// many says whether a class is judged as one of many operators: all of kind any are but that of one spin without a list.
+func (s *study) many(dim int) bool {
+	return s.class.Kind == "any" && (dim > 2 || s.class.Operators != nil)
 }
 
 // A probed is a probe with what was found along it. Classes that mean the same error share one.
 type probed struct {
 	*probe
-	unit      float64 // lambda for 1 MHz, 1 % or 1 degree
-	strength  float64 // sqrt(T int |V|^2 dt) of the whole V: how far lambda = 1 turns at most
-	onCode    float64 // the same of V cut to the code space and made traceless there
-	left      []complex128
-	low, high float64
-	curve     []Point
+	unit     float64 // lambda for 1 MHz, 1 % or 1 degree
+	strength float64 // sqrt(T int |V|^2 dt) of the whole V: how far lambda = 1 turns at most
+	turn     float64 // of a static V of more than two levels: another bound of the angle by which it turns, rad
+	onCode   float64 // the same of what a gate feels of it: V cut to the code space and made traceless there; of a target of states a share of the whole
+	leaking  float64 // the same of what of a static V leads out of the code space
+
+	left   []complex128 // what the gate leaves of onCode to first order, and
+	leak   []complex128 // what it leads out of the code space, a row for each level there
+	harm   float64      // the infidelity of an error that turns a little
+	margin bool         // is to be searched for its own sake
+	low    float64
+	high   float64
+	curve  []Point
 }
 
 // classes gives the model's error classes and, for one spin, those that are always judged where the record has none of
@@ -180,7 +195,6 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 		return o
 	}
 	var studies []study
-	ops, names := [][]complex128(nil), []string(nil)
 	classes := e.m.classes()
 	for i := range classes {
 		c := classes[i]
@@ -192,16 +206,25 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 			s.one = find(e.newAmplitude(c.Channels, c.Quadrature), c.Kind)
 		case "skew":
 			s.one = find(e.newSkew(c.Channels), c.Kind)
+		case "crosstalk":
+			s.one = find(e.newCrosstalk(&classes[i]), c.Kind)
 		case "line":
 			s.one = find(e.newLineError(&classes[i]), c.Kind)
 		case "any":
+			ops, names := c.Operators, c.Names
 			if ops == nil {
 				ops, names = basis(e.dim)
 			}
-			for _, op := range ops {
-				s.all = append(s.all, find(newStatic(op, e.dim), c.Kind))
+			s.names = names
+			for k, op := range ops {
+				if c.Weights != nil {
+					op = scaled(op, c.Weights[k])
+				}
+				o := find(newStatic(op, e.dim), c.Kind)
+				o.margin = o.margin || !s.many(e.dim)
+				s.all = append(s.all, o)
 			}
-			if e.dim == 2 {
+			if !s.many(e.dim) {
 				// With the axes these are the fourteen directions from a cube's middle to its faces and corners, up to sign.
 				for i := range 4 {
 					y, z := float64(1-2*(i&1)), float64(1-i&2)
@@ -215,6 +238,9 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 				}
 			}
 		}
+		if s.one != nil {
+			s.one.margin = true
+		}
 		studies = append(studies, s)
 	}
 	// Errors of lines bring plans of their own: one after another below, so that memory does not grow with their number.
@@ -226,15 +252,17 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 	if err != nil {
 		return nil, err
 	}
+	shared = slices.DeleteFunc(shared, func(o *probed) bool { return !o.margin })
 	if err := e.search(ctx, shared, nominal, threshold, searchEnd); err != nil {
 		return nil, err
 	}
 	var list []Error
-	for _, s := range studies {
+	for i := range studies {
+		s := &studies[i]
 		r := Error{Name: s.class.Name, Kind: s.class.Kind, Held: s.class.Held}
 		r.Unit, _ = unitOf(r.Kind)
 		if s.one != nil && s.one.slope != nil {
-			p, err := e.plan(ctx, s.one.probe, 0)
+			p, err := e.plan(ctx, s.one.probe, 0, e.dim > 2)
 			if err != nil {
 				return nil, err
 			}
@@ -247,11 +275,18 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 				return nil, err
 			}
 		}
-		if s.one != nil {
+		e.leaks(&r, s)
+		switch {
+		case s.one != nil:
 			r.Susceptibility = s.one.share()
 			r.Low, r.High = s.one.low, s.one.high
-		} else {
-			e.rms(&r, s.all, names)
+		case s.many(e.dim):
+			e.rms(&r, s)
+			if err := e.weakest(ctx, &r, s, nominal, threshold, like); err != nil {
+				return nil, err
+			}
+		default:
+			e.rms(&r, s)
 			end := e.farthest
 			for _, o := range s.all {
 				end = math.Min(end, math.Min(-o.low, o.high))
@@ -273,13 +308,11 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 		if r.Low == 0 {
 			r.Low = 0 // not -0
 		}
-		_, unit := unitOf(r.Kind)
-		values := curveValues(&r, e.end(unit), like)
-		if r.Curve, err = e.curve(ctx, &s, values); err != nil {
+		if r.Curve, err = e.curve(ctx, s, e.curveValues(&r, like)); err != nil {
 			return nil, err
 		}
 		if s.one != nil {
-			s.one.plans = plans{}
+			s.one.plans, s.one.rough = plans{}, plans{}
 		}
 		list = append(list, r)
 	}
@@ -295,11 +328,19 @@ func (e *engine) nominal(ctx context.Context) (float64, error) {
 // weigh fills the strengths of a probe; p is a plan of it, and is not needed for a static one.
 func (e *engine) weigh(o *probed, p *plan) {
 	n, d := e.dim, len(e.m.CodeSpace)
+	if e.states > 0 {
+		// Of all the ways in which V moves states, those that are felt are a share: k of d states are asked about.
+		defer func() { o.onCode = o.strength * math.Sqrt(float64(e.states)/float64(n)) }()
+	}
 	block := make([]complex128, d*d)
 	if o.static != nil {
 		o.strength = e.span * frobenius(o.static)
+		if n > 2 {
+			o.turn = 2 * e.span * o.norm
+		}
 		cut(block, o.static, n, e.m.CodeSpace)
 		o.onCode = e.span * frobenius(block)
+		o.leaking = e.span * frobenius(e.m.leaking(o.static))
 		return
 	}
 	// sqrt(T int |sum f_k V_k|^2 dt) with V_k what first order changes of each operator: the integral of the product of two Taylor
@@ -355,14 +396,20 @@ const (
 	// leave about as much.
 	differenceAngle = 0.1
 	differences     = 3
+	// Of more than two levels, whose gates are costly and rougher, two at a smaller angle leave under (1/4) angle^4/5!, 2e-9; what is wrong with
+	// rough gates changes little with the error and goes with the difference.
+	roughAngle       = 0.03
+	roughDifferences = 2
 )
 
-// differentiate finds what first order leaves of every probe: i U(0)' dU/dlambda for the required ends, cut to the code
-// space and traceless there.
+// differentiate finds what first order leaves of every probe: A = i U(0)' dU/dlambda for the required ends, see read.
 func (e *engine) differentiate(ctx context.Context, list []*probed) error {
-	n, d := e.dim, len(e.m.CodeSpace)
-	const each = 2 * differences
-	size := n * n
+	n, differences := e.dim, differences
+	if n > 2 {
+		differences = roughDifferences
+	}
+	each := 2 * differences
+	size := n * e.columns
 	// Groups keep the memory of many levels in bounds.
 	group := max(1, 8_000_000/(each*size))
 	var origin []complex128
@@ -381,14 +428,19 @@ func (e *engine) differentiate(ctx context.Context, list []*probed) error {
 				gates = append(gates, gate{o.probe, lambda}, gate{o.probe, -lambda})
 			}
 		}
-		if err := e.run(ctx, gates, func(l *labour, i int, u []complex128) {
-			copy(results[i*size:(i+1)*size], e.ended(l, u))
+		harm := make([]float64, len(gates))
+		if err := e.carry(ctx, gates, func(l *labour, i int, w []complex128) {
+			copy(results[i*size:(i+1)*size], w)
+			if i%each < 2 {
+				harm[i] = e.figures(l, w).Infidelity
+			}
 		}); err != nil {
 			return err
 		}
 		slope, left := make([]complex128, size), make([]complex128, size)
 		for i, o := range part {
-			var table [differences][]complex128
+			o.harm = math.Max(harm[i*each], harm[i*each+1])
+			table := make([][]complex128, differences)
 			for r := range differences {
 				at := (i*each + 2*r) * size
 				up, down := results[at:at+size], results[at+size:at+2*size]
@@ -408,41 +460,94 @@ func (e *engine) differentiate(ctx context.Context, list []*probed) error {
 				}
 			}
 			copy(slope, table[differences-1])
-			mulAdjointLeft(left, origin, slope, n)
+			multiplyAdjoint(left, origin, slope, n, n, e.columns)
 			for k := range left {
 				left[k] *= 1i
 			}
-			o.left = make([]complex128, d*d)
-			cut(o.left, left, n, e.m.CodeSpace)
+			e.read(o, left)
 		}
 	}
 	return nil
 }
 
+// read keeps what counts of A, given as what becomes of the first states, Dim x columns: of a gate its block on the code space P, without the trace
+// there, of a target of states what leads out of the span Q of the first ones,
+//
+//	P A P   or   (1 - Q) A Q
+//
+// and for either what leads out of the code space, (1 - P) A P.
+func (e *engine) read(o *probed, a []complex128) {
+	d, c := len(e.m.CodeSpace), e.columns
+	o.leak = nil
+	for _, i := range e.outside {
+		o.leak = append(o.leak, a[i*c:(i+1)*c]...)
+	}
+	if e.states == 0 {
+		o.left = make([]complex128, d*d)
+		for i, b := range e.m.CodeSpace {
+			copy(o.left[i*d:(i+1)*d], a[b*c:(b+1)*c])
+		}
+		dropTrace(o.left, d)
+		return
+	}
+	k := e.states
+	o.left = append([]complex128(nil), e.fromStates(e.labours[0], a)...)
+	inside, along, back := make([]complex128, d*k), make([]complex128, k*k), make([]complex128, d*k)
+	for i, b := range e.m.CodeSpace {
+		copy(inside[i*k:(i+1)*k], o.left[b*k:(b+1)*k])
+	}
+	multiplyAdjoint(along, e.from, inside, k, d, k)
+	multiply(back, e.from, along, d, k, k)
+	for i, b := range e.m.CodeSpace {
+		for j := range k {
+			o.left[b*k+j] -= back[i*k+j]
+		}
+	}
+}
+
 // smallest gives the lambda of the widest difference along a probe.
 func (e *engine) smallest(o *probed) float64 {
-	if o.strength == 0 {
-		return differenceAngle
+	angle := differenceAngle
+	if e.dim > 2 {
+		angle = roughAngle
 	}
-	return differenceAngle / o.strength
+	if o.strength == 0 {
+		return angle
+	}
+	return angle / o.strength
 }
 
 // rms fills the susceptibility of a whole class and the direction that survives most.
-func (e *engine) rms(r *Error, all []*probed, names []string) {
-	sum, d := 0.0, len(e.m.CodeSpace)
-	for _, o := range all {
-		f := frobenius(o.left)
-		sum += f * f
+func (e *engine) rms(r *Error, s *study) {
+	// What is left of each operator, and what would be of one of root mean square strength if nothing were cancelled.
+	left := func(o *probed) []complex128 { return o.left }
+	whole := func(o *probed) float64 { return o.onCode }
+	if s.class.Leak && e.states == 0 {
+		left, whole = func(o *probed) []complex128 { return o.leak }, func(o *probed) float64 { return o.leaking }
 	}
-	// The cut, traceless parts of the basis make up every operator of the code space, d^2-1 in number, each
-	// as strong as one of the basis.
-	one := all[0].strength
-	r.Susceptibility = math.Sqrt(sum/float64(d*d-1)) / one
-	// What is left of error sum v_i B_i is sum v_i left_i: the columns, real and imaginary parts one above the other.
-	rows := 2 * d * d
-	a := mat.NewDense(max(rows, len(all)), len(all), nil)
-	for j, o := range all {
-		for i, z := range o.left {
+	sum, of := 0.0, 0.0
+	for _, o := range s.all {
+		f, w := frobenius(left(o)), whole(o)
+		sum += f * f
+		of += w * w
+	}
+	if of == 0 { // nothing of the class is felt
+		return
+	}
+	number := float64(len(s.all))
+	one := math.Sqrt(of / number)
+	if s.class.Operators == nil && e.states == 0 {
+		// The cut, traceless parts of the basis make up every operator of the code space, d^2-1 in number, each
+		// as strong as one of the basis.
+		d := len(e.m.CodeSpace)
+		number, one = float64(d*d-1), s.all[0].strength
+	}
+	r.Susceptibility = math.Sqrt(sum/number) / one
+	// What is left of error sum v_i V_i is sum v_i left_i: the columns, real and imaginary parts one above the other.
+	rows := 2 * len(left(s.all[0]))
+	a := mat.NewDense(max(rows, len(s.all)), len(s.all), nil)
+	for j, o := range s.all {
+		for i, z := range left(o) {
 			a.Set(2*i, j, real(z)/one)
 			a.Set(2*i+1, j, imag(z)/one)
 		}
@@ -454,15 +559,43 @@ func (e *engine) rms(r *Error, all []*probed, names []string) {
 	var v mat.Dense
 	svd.VTo(&v)
 	r.WorstSusceptibility = svd.Values(nil)[0]
-	r.Direction = make([]float64, len(all))
-	for j := range all {
+	r.Direction = make([]float64, len(s.all))
+	for j := range s.all {
 		r.Direction[j] = v.At(j, 0)
 	}
-	r.WorstDirection = words(r.Direction, names)
+	r.WorstDirection = words(r.Direction, s.names)
+	if s.many(e.dim) {
+		r.Members = s.names
+	}
 }
 
-// words says a direction as "0.83 X + 0.41 Y", the first of its largest components positive; r is turned to that sign.
+// leaks fills what a class of errors leads out of the code space, as a share of the whole, root mean square over it, where levels lie outside.
+func (e *engine) leaks(r *Error, s *study) {
+	r.Leak = s.class.Leak
+	if len(e.outside) == 0 {
+		return
+	}
+	list := s.all
+	if s.one != nil {
+		list = []*probed{s.one}
+	}
+	sum, of := 0.0, 0.0
+	for _, o := range list {
+		f := frobenius(o.leak)
+		sum += f * f
+		of += o.strength * o.strength
+	}
+	share := 0.0
+	if of > 0 {
+		share = math.Sqrt(sum / of)
+	}
+	r.LeakSusceptibility = &share
+}
+
+// words says a direction as "0.83 X + 0.41 Y", the first of its largest components positive, and no more than the six largest; r is turned to
+// that sign.
 func words(r []float64, names []string) string {
+	const mostSaid = 6
 	most := 0.0
 	for _, v := range r {
 		most = math.Max(most, math.Abs(v))
@@ -474,17 +607,20 @@ func words(r []float64, names []string) string {
 			break
 		}
 	}
-	var b strings.Builder
-	said := 0
+	order := make([]int, len(r))
 	for i := range r {
 		r[i] *= sign
-		if math.Abs(r[i]) < 0.005 {
-			continue
-		}
-		if said++; said > 6 {
-			b.WriteString(" + ...")
-			break
-		}
+		order[i] = i
+	}
+	slices.SortStableFunc(order, func(i, j int) int { return cmp.Compare(math.Abs(r[j]), math.Abs(r[i])) })
+	order = slices.DeleteFunc(order, func(i int) bool { return math.Abs(r[i]) < 0.005 })
+	more := len(order) > mostSaid
+	if more {
+		order = order[:mostSaid]
+	}
+	slices.Sort(order)
+	var b strings.Builder
+	for _, i := range order {
 		switch {
 		case b.Len() == 0 && r[i] < 0:
 			b.WriteString("-")
@@ -495,6 +631,9 @@ func words(r []float64, names []string) string {
 		}
 		fmt.Fprintf(&b, "%.2f %s", math.Abs(r[i]), names[i])
 	}
+	if more {
+		b.WriteString(" + ...")
+	}
 	return b.String()
 }
 
@@ -504,6 +643,9 @@ func (o *probed) searchGrid(end float64) []float64 {
 	eighth := math.Inf(1)
 	if s := o.strength * o.unit; s > 0 {
 		eighth = math.Pi / 4 / (math.Sqrt2 * s)
+		if o.turn > 0 {
+			eighth = math.Max(eighth, math.Pi/4/(o.turn*o.unit))
+		}
 	}
 	x := math.Min(0.1, eighth/4)
 	var grid []float64
@@ -521,8 +663,7 @@ func (o *probed) searchGrid(end float64) []float64 {
 // A crossing looks along one probe in one direction for the first size at which the infidelity exceeds the
 // threshold.
 type crossing struct {
-	o         *probed
-	sign      float64
+	course
 	threshold float64
 	grid      []float64
 	at        int // next of the grid
@@ -534,6 +675,12 @@ type crossing struct {
 	ask       float64 // the size that is to be tried next
 	done      bool
 	found     float64
+}
+
+func newCrossing(way course, nominal, threshold float64, grid []float64) crossing {
+	c := crossing{course: way, threshold: threshold, grid: grid, ask: grid[0]}
+	c.flo = c.level(nominal)
+	return c
 }
 
 func (c *crossing) level(f float64) float64 {
@@ -615,11 +762,20 @@ func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold,
 	for _, o := range list {
 		grid := o.searchGrid(math.Min(end, e.end(o.unit)))
 		for _, sign := range []float64{-1, 1} {
-			c := crossing{o: o, sign: sign, threshold: threshold, grid: grid, ask: grid[0]}
-			c.flo = c.level(nominal)
-			sides = append(sides, c)
+			sides = append(sides, newCrossing(course{o, sign}, nominal, threshold, grid))
 		}
 	}
+	if err := e.cross(ctx, sides); err != nil {
+		return err
+	}
+	for i, o := range list {
+		o.low, o.high = -sides[2*i].found, sides[2*i+1].found
+	}
+	return nil
+}
+
+// cross finds every crossing, all of them one step at a time.
+func (e *engine) cross(ctx context.Context, sides []crossing) error {
 	gates, open, found := make([]gate, 0, len(sides)), make([]int, 0, len(sides)), make([]float64, len(sides))
 	for {
 		gates, open = gates[:0], open[:0]
@@ -639,15 +795,14 @@ func (e *engine) search(ctx context.Context, list []*probed, nominal, threshold,
 			sides[i].learn(found[k])
 		}
 	}
-	for i, o := range list {
-		o.low, o.high = -sides[2*i].found, sides[2*i+1].found
-	}
 	return nil
 }
 
-// curveValues chooses where the curve of an error is drawn: 61 values both ways, or 21 sizes for a class without a sign,
+// curveValues chooses where the curve of an error is drawn: 61 values both ways, 21 where gates are costly, or 21 sizes for a class without a sign,
 // to the round number that lies half as far again as the margin, and no farther than margins are searched.
-func curveValues(r *Error, farthest float64, like []Error) []float64 {
+func (e *engine) curveValues(r *Error, like []Error) []float64 {
+	_, unit := unitOf(r.Kind)
+	farthest := e.end(unit)
 	for _, o := range like {
 		if o.Name == r.Name {
 			values := make([]float64, len(o.Curve))
@@ -671,8 +826,11 @@ func curveValues(r *Error, farthest float64, like []Error) []float64 {
 		}
 	}
 	lowest, highest := -30, 30
-	if r.Kind == "any" { // each of them takes as many gates as there are directions
+	switch {
+	case r.Kind == "any": // each of them takes as many gates as there are directions
 		lowest, highest = 0, 20
+	case e.affordable() < 2*(highest-lowest):
+		lowest, highest = -10, 10
 	}
 	var values []float64
 	for i := lowest; i <= highest; i++ {
@@ -681,28 +839,44 @@ func curveValues(r *Error, farthest float64, like []Error) []float64 {
 	return values
 }
 
+// A course is a way along a probe.
+type course struct {
+	o    *probed
+	sign float64
+}
+
+// courses lists both ways along every direction of a class.
+func (s *study) courses() []course {
+	var list []course
+	for _, part := range [][]*probed{s.all, s.sides} {
+		for _, o := range part {
+			list = append(list, course{o, 1}, course{o, -1})
+		}
+	}
+	return list
+}
+
 // curve gives the infidelity at the values; for kind any the worst over the fixed directions.
 func (e *engine) curve(ctx context.Context, s *study, values []float64) ([]Point, error) {
 	same := func(p Point, v float64) bool { return p.Value == v }
 	if s.one != nil && slices.EqualFunc(s.one.curve, values, same) {
 		return slices.Clone(s.one.curve), nil // another class has drawn it
 	}
-	var gates []gate
-	if s.one != nil {
-		for _, v := range values {
-			gates = append(gates, gate{s.one.probe, v * s.one.unit})
+	list := []course{{s.one, 1}}
+	if s.one == nil {
+		if list = s.few; list == nil {
+			list = s.courses()
 		}
-	} else {
-		for _, v := range values {
-			for _, list := range [][]*probed{s.all, s.sides} {
-				for _, o := range list {
-					gates = append(gates, gate{o.probe, v * o.unit})
-					if v != 0 {
-						gates = append(gates, gate{o.probe, -v * o.unit})
-					}
-				}
+	}
+	var gates []gate
+	ends := make([]int, len(values)) // of each value's gates
+	for i, v := range values {
+		for k, c := range list {
+			if v != 0 || k == 0 {
+				gates = append(gates, gate{c.o.probe, c.sign * v * c.o.unit})
 			}
 		}
+		ends[i] = len(gates)
 	}
 	found := make([]float64, len(gates))
 	if err := e.infidelities(ctx, gates, found); err != nil {
@@ -711,15 +885,8 @@ func (e *engine) curve(ctx context.Context, s *study, values []float64) ([]Point
 	points := make([]Point, len(values))
 	at := 0
 	for i, v := range values {
-		n := 1
-		if s.one == nil {
-			n = len(s.all) + len(s.sides)
-			if v != 0 {
-				n *= 2
-			}
-		}
-		points[i] = Point{Value: v, Infidelity: slices.Max(found[at : at+n])}
-		at += n
+		points[i] = Point{Value: v, Infidelity: slices.Max(found[at:ends[i]])}
+		at = ends[i]
 	}
 	if s.one != nil {
 		s.one.curve = points

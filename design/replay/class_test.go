@@ -331,6 +331,10 @@ func TestWords(t *testing.T) {
 			t.Errorf("%q, want %q", got, c.want)
 		}
 	}
+	// The six largest, in the order of the class.
+	if got, want := words([]float64{.1, -.5, .2, .004, .3, .4, .35, .6}, strings.Split("abcdefgh", "")), "-0.50 b + 0.20 c + 0.30 e + 0.40 f + 0.35 g + 0.60 h + ..."; got != want {
+		t.Errorf("%q, want %q", got, want)
+	}
 	if got := words([]float64{.4, .4, .4, .4, .4, .4, .4}, strings.Split("abcdefg", "")); !strings.HasSuffix(got, " + ...") {
 		t.Errorf("a long direction reads %q", got)
 	}
@@ -489,7 +493,7 @@ func TestLineError(t *testing.T) {
 	}
 	e := newTestEngine(t, m)
 	infidelity := func(size float64) float64 {
-		return e.figures(e.labours[0], slowlyWrong(m, wrong{line: class, lambda: size / 100})).Infidelity
+		return e.figuresOf(e.labours[0], slowlyWrong(m, wrong{line: class, lambda: size / 100})).Infidelity
 	}
 	for i := 0; i < len(got.Curve); i += 10 {
 		if p := got.Curve[i]; !(math.Abs(p.Infidelity-infidelity(p.Value)) <= 1e-9) {

@@ -106,13 +106,11 @@ func TestGeneralKernelErrors(t *testing.T) {
 	for range 6 {
 		m := wideModel(r)
 		e := newTestEngine(t, m)
-		general := &labour{e: e, sums: make([]complex128, 4), op: make([]complex128, 4)}
-		for range maxOrder + 1 {
-			general.series = append(general.series, make([]complex128, 4))
-		}
+		general := &labour{e: e}
+		general.levels(2)
 		a, b := make([]complex128, 4), make([]complex128, 4)
 		for i, p := range []*probe{nil, e.newAmplitude(nil, "I"), e.newAmplitude(nil, ""), e.newSkew(nil), e.newLineError(&m.Errors[0]), e.newLineError(&m.Errors[1]), newStatic(halfY, 2)} {
-			plan, err := e.plan(context.Background(), p, 0.1)
+			plan, err := e.plan(context.Background(), p, 0.1, false)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -152,7 +150,7 @@ func TestErrorControlWide(t *testing.T) {
 				if angle > 5000 {
 					continue
 				}
-				coarse, err := e.plan(ctx, p, lambda)
+				coarse, err := e.plan(ctx, p, lambda, false)
 				if err != nil {
 					t.Fatal(err)
 				}

@@ -216,13 +216,35 @@ func recordText(m *Model, v *Verdict) string {
 			p("[[require.margin]]\nerror = \"offset Q\"\nsize_rad_per_ns = %s", number(2*math.Pi*0.04*0.002))
 		}
 	}
-	p("[decoherence]\nt1_ns = 60000.0\nt2_ns = 40000.0")
-	p("[claim]\ninfidelity = %s\ninfidelity_other_ends = %s\nleakage = 0.0\ntail_angle_rad = %s",
-		number(v.Settled.Infidelity), number(v.Window.Infidelity), number(v.TailAngle))
+	p("[[decoherence]]\nsite = \"q1\"\nt1_ns = 60000.0\nt2_ns = 40000.0")
+	if len(m.Sites) > 0 {
+		p("[[decoherence]]\nsite = \"q2\"\nt1_ns = 90000.0")
+	}
+	p("[claim]\ninfidelity = %s\ninfidelity_other_ends = %s\nleakage = %s\ntail_angle_rad = %s",
+		number(v.Settled.Infidelity), number(v.Window.Infidelity), number(v.Settled.Leakage), number(v.TailAngle))
 	p("[model]\nsample_period_ns = %s\nsamples = %d\nbits = %d\nends = %q\nwindow_start_ns = %s\ndim = %d",
 		number(m.SamplePeriod), m.Samples, m.Bits, m.Ends, number(m.WindowStart), m.Dim)
-	p("code_space = %s\nstatic_rad_per_ns = %s\ntarget = %s\nfree_z_before = %s\nfree_z_after = %s",
-		listText(m.CodeSpace, strconv.Itoa), matrixText(m.Static), matrixText(m.Target), listText(m.FreeZBefore, number), listText(m.FreeZAfter, number))
+	p("code_space = %s\nstatic_rad_per_ns = %s\nfree_z_before = %s\nfree_z_after = %s",
+		listText(m.CodeSpace, strconv.Itoa), matrixText(m.Static), listText(m.FreeZBefore, number), listText(m.FreeZAfter, number))
+	if m.Target != nil {
+		p("target = %s", matrixText(m.Target))
+	}
+	vector := func(v []complex128) string { return listText(v, pairText) }
+	if m.From != nil {
+		p("from = %s\nto = %s", listText(m.From, vector), listText(m.To, vector))
+	}
+	if m.Sites != nil {
+		p("sites = %s", listText(m.Sites, strconv.Itoa))
+	}
+	if m.LocalBefore != nil {
+		p("local_before = %s\nlocal_after = %s", listText(m.LocalBefore, matrixText), listText(m.LocalAfter, matrixText))
+	}
+	for _, r := range m.Rotating {
+		p("[[model.rotating]]\nfrequency_rad_per_ns = %s\ncosine = %s\nsine = %s", number(r.Frequency), matrixText(r.Cosine), matrixText(r.Sine))
+	}
+	for _, r := range m.Dropped {
+		p("[[model.dropped]]\nfrequency_rad_per_ns = %s\ncosine = %s\nsine = %s", number(r.Frequency), matrixText(r.Cosine), matrixText(r.Sine))
+	}
 	for i, c := range m.Channels {
 		p("[[model.channel]]\nname = %q\nkind = %q\ncodes = \"channel-%d.npy\"\nsamples_before_rounding = \"exact-channel-%d.npy\"", c.Name, c.Kind, i, i)
 		p("full_scale_rad_per_ns = %s\ndelay_ns = %s\ndirect = %s", number(c.FullScale), number(c.Delay), pairText(c.Direct))
@@ -261,6 +283,9 @@ func recordText(m *Model, v *Verdict) string {
 		if c.ShiftOperator != nil {
 			p("shift_operator = %s", matrixText(c.ShiftOperator))
 		}
+		for _, r := range c.Paths {
+			p("[[model.channel.path]]\nfrequency_rad_per_ns = %s\noperators = %s", number(r.Frequency), listText(r.Operators, matrixText))
+		}
 	}
 	for _, c := range m.Errors {
 		p("[[model.error]]\nname = %q\nheld = %v\nkind = %q", c.Name, c.Held, c.Kind)
@@ -270,15 +295,29 @@ func recordText(m *Model, v *Verdict) string {
 		if c.Kind == "line" {
 			p("channel = %q\ndirect = %s\npoles_per_ns = %s\npowers = %s\nresidues = %s", c.Channels[0], pairText(c.Direct),
 				listText(c.Poles, pairText), listText(c.Powers, strconv.Itoa), listText(c.Residues, pairText))
+		} else if c.Kind == "crosstalk" {
+			p("channel = %q", c.Channels[0])
 		} else if c.Channels != nil {
 			p("channels = %s", listText(c.Channels, strconv.Quote))
 		}
 		if c.Quadrature != "" {
 			p("quadrature = %q", c.Quadrature)
 		}
+		if c.Operators != nil {
+			p("operators = %s", listText(c.Operators, matrixText))
+		}
+		if c.Names != nil {
+			p("names = %s\nweights = %s", listText(c.Names, strconv.Quote), listText(c.Weights, number))
+		}
+		if c.Leak {
+			p("leak = true")
+		}
 		for _, e := range v.Errors {
 			if e.Name == c.Name {
 				p("susceptibility = %s", number(e.Susceptibility))
+				if e.LeakSusceptibility != nil {
+					p("leak_susceptibility = %s", number(*e.LeakSusceptibility))
+				}
 			}
 		}
 	}

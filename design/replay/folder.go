@@ -7,7 +7,10 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
+
+	"github.com/BurntSushi/toml"
 
 	"holdfast/hardware"
 	"holdfast/hardware/quantity"
@@ -19,9 +22,18 @@ type Folder struct {
 	Name   string // of the pulse
 	Model  *Model
 	Claim  Claim
-	T1, T2 float64 // ns; 0 when the record states none
+	Decay  []Decay // of the sites that state times
+	T1, T2 float64 // ns, of a model of one site; 0 when the record states none
 
 	Require Require
+
+	files hardware.Manifest // with a hash
+}
+
+// A Decay is what the record says of how long one site stays as it is.
+type Decay struct {
+	Site   string
+	T1, T2 float64 // ns; 0 when the record states none
 }
 
 // A Claim is what the record says of its rounded codes. What the record leaves out is NaN.
@@ -49,9 +61,10 @@ type Margin struct {
 
 // The names of the three files that a pulse was designed from, below inputs/.
 const (
-	profileFile = "inputs/profile.toml"
-	deviceFile  = "inputs/device.toml"
-	briefFile   = "inputs/brief.toml"
+	inputsDir   = "inputs/"
+	profileFile = inputsDir + "profile.toml"
+	deviceFile  = inputsDir + "device.toml"
+	briefFile   = inputsDir + "brief.toml"
 )
 
 // Open reads a pulse folder: the record strictly, every listed file against its hash, the codes, and everything against
@@ -91,11 +104,7 @@ func Open(dir string) (*Folder, error) {
 		list = append(list, hardware.FileHash{Name: t.Text("name"), SHA256: t.Text("sha256")})
 	}
 	f.readRequire(root.Table("require"))
-	if root.Has("decoherence") {
-		t := root.Table("decoherence")
-		f.T1 = t.Number("t1_ns", 1e-3, 1e18, 0)
-		f.T2 = t.Number("t2_ns", 1e-3, 1e18, 0)
-	}
+	f.readDecay(root)
 	claim := root.Table("claim")
 	nan := math.NaN()
 	f.Claim = Claim{
@@ -104,10 +113,19 @@ func Open(dir string) (*Folder, error) {
 		Leakage:             claim.Number("leakage", 0, 1, nan),
 		TailAngle:           claim.Number("tail_angle_rad", 0, 1e6, nan),
 	}
-	m, codes, exact := readModel(root.Table("model"))
+	m, codes, exact := readModel(root.Table("model"), path)
 	f.Model = m
 	if err := doc.Err(); err != nil {
 		return nil, err
+	}
+	for i, d := range f.Decay {
+		switch {
+		case len(m.Sites) == 0 && i == 0:
+			f.T1, f.T2 = d.T1, d.T2
+		case d.Site == "" || i >= max(1, len(m.Sites)):
+			return nil, &quantity.Error{File: path, Line: root.Line("decoherence"), Key: "decoherence", Found: fmt.Sprintf("%d tables, number %d of site %q", len(f.Decay), i, d.Site),
+				Allowed: "one for each site, with its name"}
+		}
 	}
 	if len(list) == 0 {
 		return nil, &quantity.Error{File: path, Key: "file", Found: "nothing", Allowed: "[[file]] with name and sha256 for every other file of the folder"}
@@ -115,6 +133,7 @@ func Open(dir string) (*Folder, error) {
 	if err := list.Verify(dir); err != nil {
 		return nil, err
 	}
+	f.files = list
 	needed := []string{profileFile, deviceFile, briefFile}
 	for c := range m.Channels {
 		needed = append(needed, codes[c])
@@ -174,6 +193,20 @@ func (f *Folder) readRequire(t *quantity.Table) {
 	}
 }
 
+// readDecay reads [[decoherence]], one for each site that states times. A record of one site need not name it.
+func (f *Folder) readDecay(root *quantity.Table) {
+	if !root.Has("decoherence") {
+		return
+	}
+	for _, t := range root.Tables("decoherence", maxSites) {
+		d := Decay{Site: t.Text("site", ""), T1: t.Number("t1_ns", 1e-3, 1e18, 0), T2: t.Number("t2_ns", 1e-3, 1e18, 0)}
+		if slices.ContainsFunc(f.Decay, func(o Decay) bool { return o.Site == d.Site }) {
+			t.Fail("site", "found %q again; allowed: one [[decoherence]] for each site", d.Site)
+		}
+		f.Decay = append(f.Decay, d)
+	}
+}
+
 // whole reads a whole number of an array of numbers.
 func wholes(t *quantity.Table, key string, most int, lo, hi float64) []int {
 	numbers := t.Numbers(key, most, lo, hi)
@@ -196,9 +229,18 @@ func flat(rows [][]complex128) []complex128 {
 	return m
 }
 
-// readModel reads [model] and gives the names of the waveform files of each channel, before rounding "" where there is none.
+// readModel reads [model] of the record at path and gives the names of the waveform files of each channel, before rounding "" where there is none.
 // Whatever makes no sense is recorded as a mistake with its line.
-func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
+func readModel(t *quantity.Table, path string) (m *Model, codes, exact []string) {
+	// Every table below [model] under what its keys begin with in a fault.
+	below := map[string]*quantity.Table{}
+	tables := func(up *quantity.Table, prefix, key string, most int) []*quantity.Table {
+		list := up.Tables(key, most)
+		for i, t := range list {
+			below[fmt.Sprintf("%s%s[%d].", prefix, key, i)] = t
+		}
+		return list
+	}
 	m = &Model{
 		SamplePeriod: t.Number("sample_period_ns", 1e-6, 1e6),
 		Samples:      t.Int("samples", 1, maxSamples),
@@ -208,8 +250,33 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 		Dim:          t.Int("dim", 2, maxDim),
 	}
 	m.CodeSpace = wholes(t, "code_space", maxDim, 0, maxDim-1)
+	if t.Has("sites") {
+		m.Sites = wholes(t, "sites", maxSites, 2, maxLevels)
+	}
 	m.Static = flat(t.Matrix("static_rad_per_ns", maxDim))
-	m.Target = flat(t.Matrix("target", maxDim))
+	if from, to := t.Has("from"), t.Has("to"); !from && !to {
+		m.Target = flat(t.Matrix("target", maxDim))
+	} else {
+		m.From, m.To = readStates(t, path)
+		if t.Has("target") {
+			m.Target = flat(t.Matrix("target", maxDim))
+		}
+	}
+	for _, r := range []struct {
+		key string
+		dst *[]Rotating
+	}{{"rotating", &m.Rotating}, {"dropped", &m.Dropped}} {
+		for _, rt := range tables(t, "", r.key, maxRotating) {
+			*r.dst = append(*r.dst, Rotating{
+				Frequency: rt.Number("frequency_rad_per_ns", -maxTurn, maxTurn),
+				Cosine:    flat(rt.Matrix("cosine", maxDim)),
+				Sine:      flat(rt.Matrix("sine", maxDim)),
+			})
+		}
+	}
+	if before, after := t.Has("local_before"), t.Has("local_after"); before || after {
+		m.LocalBefore, m.LocalAfter = matrices(t, "local_before", maxSites, 2), matrices(t, "local_after", maxSites, 2)
+	}
 	for _, z := range []struct {
 		key string
 		dst *[]float64
@@ -219,8 +286,7 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 		}
 	}
 	inf := math.Inf(1)
-	channels := t.Tables("channel", maxChannels)
-	for _, ct := range channels {
+	for i, ct := range tables(t, "", "channel", maxChannels) {
 		c := Channel{
 			Name:       ct.Text("name"),
 			Kind:       ct.Choice("kind", []string{"quadrature", "baseband"}),
@@ -260,22 +326,28 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 			c.ShiftOperator = flat(ct.Matrix("shift_operator", maxDim))
 		}
 		c.Direct, c.Poles, c.Powers, c.Residues = readLine(ct)
-		for _, op := range ct.Matrices("operators", 2, maxDim) {
-			c.Operators = append(c.Operators, flat(op))
+		c.Operators = matrices(ct, "operators", 2, maxDim)
+		for _, pt := range tables(ct, fmt.Sprintf("channel[%d].", i), "path", maxPaths) {
+			c.Paths = append(c.Paths, Path{
+				Frequency: pt.Number("frequency_rad_per_ns", -maxTurn, maxTurn),
+				Operators: matrices(pt, "operators", 2, maxDim),
+			})
 		}
 		codes = append(codes, ct.Text("codes"))
 		exact = append(exact, ct.Text("samples_before_rounding", ""))
 		m.Channels = append(m.Channels, c)
 	}
-	classes := t.Tables("error", maxErrors)
-	for _, et := range classes {
+	for _, et := range tables(t, "", "error", maxErrors) {
 		c := Class{
 			Name: et.Text("name"),
 			Held: et.Bool("held", false),
-			Kind: et.Choice("kind", []string{"static", "amplitude", "any", "skew", "line"}, ""), // validate misses it; nothing else is then asked for
+			Kind: et.Choice("kind", []string{"static", "amplitude", "any", "skew", "line", "crosstalk"}, ""), // validate misses it; nothing else is then asked for
 		}
 		if c.claimed = et.Has("susceptibility"); c.claimed {
 			c.Susceptibility = et.Number("susceptibility", 0, 1e6)
+		}
+		if c.claimedLeak = et.Has("leak_susceptibility"); c.claimedLeak {
+			c.LeakSusceptibility = et.Number("leak_susceptibility", 0, 1e6)
 		}
 		if c.Kind == "static" {
 			c.Operator = flat(et.Matrix("operator", maxDim))
@@ -290,25 +362,105 @@ func readModel(t *quantity.Table) (m *Model, codes, exact []string) {
 			c.Channels = []string{et.Text("channel")}
 			c.Direct, c.Poles, c.Powers, c.Residues = readLine(et)
 		}
+		if c.Kind == "crosstalk" {
+			c.Channels = []string{et.Text("channel")}
+			c.Operators = matrices(et, "operators", 2, maxDim)
+		}
+		if c.Kind == "any" {
+			c.Leak = et.Bool("leak", false)
+			if ops, names, weights := et.Has("operators"), et.Has("names"), et.Has("weights"); ops || names || weights {
+				c.Operators = matrices(et, "operators", maxMembers, maxDim)
+				c.Names = et.Texts("names", maxMembers)
+				c.Weights = et.Numbers("weights", maxMembers, 0, 1e6)
+			}
+		}
 		m.Errors = append(m.Errors, c)
 	}
 	if fault := m.validate(); fault != nil {
 		// Where the key stands; element numbers are not keys.
-		at, key := t, fault.key
-		for prefix, list := range map[string][]*quantity.Table{"channel[": channels, "error[": classes} {
-			if rest, ok := strings.CutPrefix(key, prefix); ok {
-				number, name, _ := strings.Cut(rest, "].")
-				for i := range list {
-					if number == fmt.Sprint(i) {
-						at, key = list[i], name
-					}
-				}
+		at, key, longest := t, fault.key, ""
+		for prefix, table := range below {
+			if rest, ok := strings.CutPrefix(fault.key, prefix); ok && len(prefix) > len(longest) {
+				at, key, longest = table, rest, prefix
 			}
 		}
 		key, _, _ = strings.Cut(key, "[")
 		at.Fail(key, "found %s; allowed: %s", fault.found, fault.allowed)
 	}
 	return m, codes, exact
+}
+
+// matrices reads so many square matrices at most.
+func matrices(t *quantity.Table, key string, count, most int) [][]complex128 {
+	var list [][]complex128
+	for _, m := range t.Matrices(key, count, most) {
+		list = append(list, flat(m))
+	}
+	return list
+}
+
+// readStates reads from and to, lists of vectors, from the file itself: the strict tables have lists of square matrices and of numbers only. What it cannot
+// read is recorded as a mistake.
+func readStates(t *quantity.Table, path string) (from, to [][]complex128) {
+	var record struct {
+		Model struct{ From, To any }
+	}
+	if _, err := toml.DecodeFile(path, &record); err != nil {
+		t.Fail("from", "found what cannot be read again: %v", err)
+		return nil, nil
+	}
+	read := func(key string, v any) [][]complex128 {
+		const allowed = "a list of vectors, each a list of numbers or [re, im]"
+		list, ok := v.([]any)
+		if !ok || len(list) > maxDim {
+			t.Fail(key, "found something else; allowed: %s, at most %d", allowed, maxDim)
+			return nil
+		}
+		vectors := make([][]complex128, len(list))
+		for i, v := range list {
+			entries, ok := v.([]any)
+			if !ok || len(entries) > maxDim {
+				t.Fail(key, "found something else as vector %d; allowed: %s, at most %d", i, allowed, maxDim)
+				return nil
+			}
+			for k, v := range entries {
+				z, ok := complexNumber(v)
+				if !ok {
+					t.Fail(key, "found something else as entry %d of vector %d; allowed: %s", k, i, allowed)
+					return nil
+				}
+				vectors[i] = append(vectors[i], z)
+			}
+		}
+		return vectors
+	}
+	return read("from", record.Model.From), read("to", record.Model.To)
+}
+
+// complexNumber gives a number or a pair [re, im] of at most 1e6.
+func complexNumber(v any) (complex128, bool) {
+	pair, ok := v.([]any)
+	if !ok {
+		pair = []any{v, 0.0}
+	}
+	if len(pair) != 2 {
+		return 0, false
+	}
+	var parts [2]float64
+	for i, v := range pair {
+		switch v := v.(type) {
+		case float64:
+			parts[i] = v
+		case int64:
+			parts[i] = float64(v)
+		default:
+			return 0, false
+		}
+		if !(math.Abs(parts[i]) <= 1e6) {
+			return 0, false
+		}
+	}
+	return complex(parts[0], parts[1]), true
 }
 
 // readLine reads the keys of a line, or of a line's slope. One without poles may leave out all three lists.

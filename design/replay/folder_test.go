@@ -311,7 +311,7 @@ func TestSwappedInputs(t *testing.T) {
 		{profileFile, `"I cos - Q sin"`, `"I cos + Q sin"`, testProfile, "channel[0].operators[1][0][1]"},
 		{profileFile, `block = 8`, `block = 24`, testProfile, "samples"},
 		{profileFile, `name = "q1 drive"`, `name = "q2 drive"`, testProfile, "channel[0].name"},
-		{deviceFile, `T2 = "40 us"`, `T2 = "50 us"`, testDevice, "decoherence.t2_ns"},
+		{deviceFile, `T2 = "40 us"`, `T2 = "50 us"`, testDevice, "decoherence[0].t2_ns"},
 		{briefFile, `gate = "X90"`, `gate = "X180"`, testBrief, "target[0][0]"},
 		{briefFile, `span = "32 ns"`, `span = "40 ns"`, testBrief, "samples"},
 		{briefFile, `size = "0.1 MHz"`, `size = "0.2 MHz"`, testBrief, "require.margin[0].size"},

@@ -101,15 +101,20 @@ func (f *Folder) differences() ([]Difference, error) {
 	c.number("bits", float64(m.Bits), float64(p.Bits))
 	c.text("ends", m.Ends, b.Ends)
 	c.number("dim", float64(m.Dim), float64(d.Dim()))
-	code := make([]int, len(m.CodeSpace))
-	for i := range code {
-		code[i] = i
+	var levels []int
+	if len(d.Sites) > 1 {
+		levels = d.Levels()
 	}
-	if !slices.Equal(m.CodeSpace, code) {
+	if !slices.Equal(m.Sites, levels) {
+		c.differ("sites", m.Sites, levels)
+	}
+	if code := d.CodeSpace(); !slices.Equal(m.CodeSpace, code) {
 		c.differ("code_space", m.CodeSpace, code)
 	}
 	c.matrix("static_rad_per_ns", m.Static, d.Static().Data)
-	c.matrix("target", m.Target, b.Target.Matrix.Data)
+	c.rotating("rotating", m.Rotating, d.Rotating())
+	c.rotating("dropped", m.Dropped, d.Dropped())
+	c.target(m, &b.Target)
 	for _, z := range []struct {
 		key    string
 		angles []float64
@@ -123,13 +128,24 @@ func (f *Folder) differences() ([]Difference, error) {
 			c.differ(z.key, z.angles, "[]")
 		}
 	}
-	if n := len(d.Drives) + len(d.Biases); len(m.Channels) != n {
+	for _, l := range []struct {
+		key  string
+		list [][]complex128
+	}{{"local_before", m.LocalBefore}, {"local_after", m.LocalAfter}} {
+		for i, u := range l.list {
+			// A rotation that turns nothing but a phase does no harm.
+			if phase := nearestUnitary(u, 2, 2)[0]; !b.Target.Local && cmplx.Abs(u[1])+cmplx.Abs(u[3]-phase) > inputsTolerance {
+				c.differ(fmt.Sprintf("%s[%d]", l.key, i), "a rotation", "none that is free")
+			}
+		}
+	}
+	if n := len(d.Channels()); len(m.Channels) != n {
 		c.differ("channel", fmt.Sprintf("%d channels", len(m.Channels)), fmt.Sprintf("%d drives and biases", n))
 	}
 	start := math.Inf(-1)
 	for i := range m.Channels {
 		ch, key := &m.Channels[i], fmt.Sprintf("channel[%d].", i)
-		kind, ops, known := operators(d, p, ch.Name)
+		kind, paths, known := pathsOf(d, p, ch.Name)
 		k, ok := p.Channel(ch.Name)
 		switch {
 		case !known:
@@ -139,7 +155,7 @@ func (f *Folder) differences() ([]Difference, error) {
 		default:
 			start = math.Max(start, p.Start(k))
 			c.text(key+"kind", ch.Kind, kind)
-			c.channel(key, ch, p, k, ops, d.ShiftOperator().Data)
+			c.channel(key, ch, p, k, paths, d.ShiftOperatorOf(ch.Name).Data)
 		}
 	}
 	if !math.IsInf(start, 0) {
@@ -157,30 +173,93 @@ func (f *Folder) differences() ([]Difference, error) {
 			c.number(key+"size", r.Size, c.marginSize(b, p, b.Require.Margins[i]))
 		}
 	}
-	c.number("decoherence.t1_ns", f.T1, d.Sites[0].T1)
-	c.number("decoherence.t2_ns", f.T2, d.Sites[0].T2)
+	c.decay(f.Decay, d)
+	for _, e := range b.Errors {
+		if name := inputsDir + e.Rates; e.Rates != "" && !f.files.Has(name) {
+			c.differ("file", fmt.Sprintf("no hash of %.80q", name), "one of every file that the brief names")
+		}
+	}
 	return c.list, nil
 }
 
-// operators gives what the channel of this name multiplies: two operators of a drive, one of a bias.
-func operators(d *device.Device, p *hardware.Profile, name string) (kind string, ops [][]complex128, ok bool) {
-	for i, drive := range d.Drives {
-		if drive.Channel != name {
+// rotating compares terms that turn by themselves.
+func (c *comparison) rotating(key string, recorded []Rotating, rebuilt []device.Rotating) {
+	if len(recorded) != len(rebuilt) {
+		c.differ(key, fmt.Sprintf("%d terms", len(recorded)), fmt.Sprintf("%d terms", len(rebuilt)))
+		return
+	}
+	for i, r := range recorded {
+		at := func(name string) string { return fmt.Sprintf("%s[%d].%s", key, i, name) }
+		c.number(at("frequency_rad_per_ns"), r.Frequency, rebuilt[i].Frequency)
+		c.matrix(at("cosine"), r.Cosine, rebuilt[i].Cosine.Data)
+		c.matrix(at("sine"), r.Sine, rebuilt[i].Sine.Data)
+	}
+}
+
+// target compares what the pulse is to do.
+func (c *comparison) target(m *Model, t *brief.Target) {
+	if len(m.From) == 0 && len(t.From) == 0 {
+		c.matrix("target", m.Target, t.Whole.Data)
+		return
+	}
+	for _, v := range []struct {
+		key               string
+		recorded, rebuilt [][]complex128
+	}{{"from", m.From, t.From}, {"to", m.To, t.To}} {
+		if len(v.recorded) != len(v.rebuilt) {
+			c.differ(v.key, fmt.Sprintf("%d vectors", len(v.recorded)), fmt.Sprintf("%d vectors", len(v.rebuilt)))
 			continue
 		}
-		mixing := hardware.Mixing("")
-		if k, ok := p.Channel(name); ok {
-			mixing = p.Channels[k].Mixing
+		for i, list := range v.recorded {
+			if len(list) != len(v.rebuilt[i]) {
+				c.differ(fmt.Sprintf("%s[%d]", v.key, i), fmt.Sprintf("%d entries", len(list)), fmt.Sprintf("%d entries", len(v.rebuilt[i])))
+				continue
+			}
+			for k, z := range list {
+				if !(cmplx.Abs(z-v.rebuilt[i][k]) <= inputsTolerance) {
+					c.differ(fmt.Sprintf("%s[%d][%d]", v.key, i, k), complexText(z), complexText(v.rebuilt[i][k]))
+				}
+			}
 		}
-		two := d.Operators(i, string(mixing))
-		return hardware.Quadrature, [][]complex128{two[0].Data, two[1].Data}, true
 	}
-	for i, bias := range d.Biases {
-		if bias.Channel == name {
-			return hardware.Baseband, [][]complex128{d.BiasOperator(i).Data}, true
+}
+
+// decay compares the times of the sites that state any.
+func (c *comparison) decay(recorded []Decay, d *device.Device) {
+	var rebuilt []Decay
+	for _, s := range d.Sites {
+		if s.T1 > 0 || s.T2 > 0 {
+			rebuilt = append(rebuilt, Decay{s.Name, s.T1, s.T2})
 		}
 	}
-	return "", nil, false
+	if len(recorded) != len(rebuilt) {
+		c.differ("decoherence", fmt.Sprintf("%d sites", len(recorded)), fmt.Sprintf("%d sites", len(rebuilt)))
+		return
+	}
+	for i, r := range recorded {
+		at := func(name string) string { return fmt.Sprintf("decoherence[%d].%s", i, name) }
+		if r.Site != "" {
+			c.text(at("site"), r.Site, rebuilt[i].Site)
+		}
+		c.number(at("t1_ns"), r.T1, rebuilt[i].T1)
+		c.number(at("t2_ns"), r.T2, rebuilt[i].T2)
+	}
+}
+
+// pathsOf gives what the channel of this name does to the device: the first path is what its operators are, the others turn.
+func pathsOf(d *device.Device, p *hardware.Profile, name string) (kind string, paths []device.Path, ok bool) {
+	if !slices.Contains(d.Channels(), name) {
+		return "", nil, false
+	}
+	mixing := hardware.Mixing("")
+	if k, ok := p.Channel(name); ok {
+		mixing = p.Channels[k].Mixing
+	}
+	kind = hardware.Baseband
+	if _, drives := d.Aim(name); drives {
+		kind = hardware.Quadrature
+	}
+	return kind, d.Paths(name, string(mixing)), true
 }
 
 // marginSize gives the size of a brief's margin as the record has it: an offset is a static error there.
@@ -205,14 +284,19 @@ func steady(l filter.Line) complex128 {
 	return g
 }
 
-func (c *comparison) channel(key string, ch *Channel, p *hardware.Profile, k int, ops [][]complex128, shift []complex128) {
+func (c *comparison) channel(key string, ch *Channel, p *hardware.Profile, k int, paths []device.Path, shift []complex128) {
 	q := &p.Channels[k]
 	c.number(key+"full_scale_rad_per_ns", ch.FullScale, q.FullScale)
 	c.number(key+"delay_ns", ch.Delay, p.Start(k))
 	c.line(key, recordedLine{ch.Direct, ch.Poles, ch.Powers, ch.Residues}, q.Line)
-	for i, op := range ops {
-		if i < len(ch.Operators) {
-			c.matrix(fmt.Sprintf("%soperators[%d]", key, i), ch.Operators[i], op)
+	c.operators(key+"operators", ch.Operators, paths[0].Operators)
+	if len(ch.Paths) != len(paths)-1 {
+		c.differ(key+"path", fmt.Sprintf("%d paths", len(ch.Paths)), fmt.Sprintf("%d paths", len(paths)-1))
+	} else {
+		for i, r := range ch.Paths {
+			at := fmt.Sprintf("%spath[%d].", key, i)
+			c.number(at+"frequency_rad_per_ns", r.Frequency, paths[i+1].Frequency)
+			c.operators(at+"operators", r.Operators, paths[i+1].Operators)
 		}
 	}
 	// In [model] zero says that there is no limit; in words it is none.
@@ -273,6 +357,13 @@ func (c *comparison) channel(key string, ch *Channel, p *hardware.Profile, k int
 	c.number(key+"shift_rad_per_ns", ch.Shift, q.Shift)
 	if ch.Shift != 0 && q.Shift != 0 {
 		c.matrix(key+"shift_operator", ch.ShiftOperator, shift)
+	}
+}
+
+// operators compares as many matrices as both lists have; how many a model has to have its kinds say.
+func (c *comparison) operators(key string, recorded [][]complex128, rebuilt []device.Matrix) {
+	for i := range min(len(recorded), len(rebuilt)) {
+		c.matrix(fmt.Sprintf("%s[%d]", key, i), recorded[i], rebuilt[i].Data)
 	}
 }
 
@@ -340,7 +431,9 @@ func (c *comparison) complex(key string, recorded, rebuilt complex128) {
 // A wanted is an error class as inputs/ have it.
 type wanted struct {
 	Class
-	slope filter.Line // of kind line
+	slope     filter.Line // of kind line
+	operators []device.Matrix
+	all       bool // of kind any: they span all traceless operators, each as strong as the others
 }
 
 // wantedOf gives what the record should make of one error of the brief.
@@ -348,7 +441,17 @@ func (c *comparison) wantedOf(e brief.Error, p *hardware.Profile, d *device.Devi
 	w := wanted{Class: Class{Name: e.Name, Kind: e.Kind, Held: true, Channels: e.Channels, Quadrature: e.Quadrature}}
 	switch e.Kind {
 	case brief.Static:
-		w.Operator = d.Lift(e.Operator).Data
+		if len(e.Members) > 0 { // none where the three files do not go together
+			w.Operator = e.Members[0].Operator.Data
+		}
+	case brief.Any:
+		w.Leak, w.all = e.Leak, !e.Leak && len(e.Members) == d.Dim()*d.Dim()-1
+		for _, m := range e.Members {
+			w.operators, w.Names, w.Weights = append(w.operators, m.Operator), append(w.Names, m.Name), append(w.Weights, m.Weight)
+			w.all = w.all && m.Weight == 1
+		}
+	case brief.Crosstalk:
+		w.operators = e.Reach
 	case brief.Line:
 		if k, ok := p.Channel(e.Channels[0]); ok {
 			if q, ok := p.Channels[k].Parameter(e.Parameter); ok {
@@ -359,20 +462,21 @@ func (c *comparison) wantedOf(e brief.Error, p *hardware.Profile, d *device.Devi
 		// A constant at the converter of one quadrature is a static error along what the line's steady gain makes of it.
 		w.Kind, w.Channels, w.Quadrature = brief.Static, nil, ""
 		k, ok := p.Channel(e.Channels[0])
-		_, ops, known := operators(d, p, e.Channels[0])
+		_, paths, known := pathsOf(d, p, e.Channels[0])
 		if !ok || !known {
 			break
 		}
+		ops := paths[0].Operators
 		g := steady(p.Channels[k].Line)
 		if e.Quadrature == "Q" {
 			g *= 1i
 		}
 		g /= complex(cmplx.Abs(g), 0)
-		w.Operator = make([]complex128, len(ops[0]))
+		w.Operator = make([]complex128, len(ops[0].Data))
 		for i := range w.Operator {
-			w.Operator[i] = complex(real(g), 0) * ops[0][i]
+			w.Operator[i] = complex(real(g), 0) * ops[0].Data[i]
 			if len(ops) > 1 {
-				w.Operator[i] += complex(imag(g), 0) * ops[1][i]
+				w.Operator[i] += complex(imag(g), 0) * ops[1].Data[i]
 			}
 		}
 	}
@@ -381,13 +485,7 @@ func (c *comparison) wantedOf(e brief.Error, p *hardware.Profile, d *device.Devi
 
 // classes compares what the pulse is held against, and that every other error of the record is what its name says.
 func (c *comparison) classes(m *Model, b *brief.Brief, p *hardware.Profile, d *device.Device) {
-	var driven []string
-	for _, drive := range d.Drives {
-		driven = append(driven, drive.Channel)
-	}
-	for _, bias := range d.Biases {
-		driven = append(driven, bias.Channel)
-	}
+	driven := d.Channels()
 	list := map[string]wanted{}
 	for _, e := range b.Errors {
 		w := c.wantedOf(e, p, d)
@@ -426,6 +524,11 @@ func (c *comparison) classes(m *Model, b *brief.Brief, p *hardware.Profile, d *d
 		switch r.Kind {
 		case "static":
 			c.matrix(key+"operator", r.Operator, w.Operator)
+		case "any":
+			c.members(key, &r, &w)
+		case "crosstalk":
+			c.text(key+"channel", r.Channels[0], w.Channels[0])
+			c.operators(key+"operators", r.Operators, w.operators)
 		case "line":
 			c.text(key+"channel", r.Channels[0], w.Channels[0])
 			c.line(key, recordedLine{r.Direct, r.Poles, r.Powers, r.Residues}, w.slope)
@@ -435,6 +538,28 @@ func (c *comparison) classes(m *Model, b *brief.Brief, p *hardware.Profile, d *d
 			c.text(key+"channels", m.named(r.Channels, both), m.named(w.Channels, both))
 		}
 	}
+}
+
+// members compares the operators of a class. A record without a list means all traceless ones, and so may a brief.
+func (c *comparison) members(key string, r *Class, w *wanted) {
+	if r.Leak != w.Leak {
+		c.differ(key+"leak", r.Leak, w.Leak)
+	}
+	if r.Operators == nil {
+		if !w.all {
+			c.differ(key+"operators", "all traceless ones", fmt.Sprintf("%d of them", len(w.operators)))
+		}
+		return
+	}
+	if len(r.Operators) != len(w.operators) {
+		c.differ(key+"operators", fmt.Sprintf("%d matrices", len(r.Operators)), fmt.Sprintf("%d matrices", len(w.operators)))
+		return
+	}
+	for i, name := range r.Names {
+		c.text(fmt.Sprintf("%snames[%d]", key, i), name, w.Names[i])
+		c.number(fmt.Sprintf("%sweights[%d]", key, i), r.Weights[i], w.Weights[i])
+	}
+	c.operators(key+"operators", r.Operators, w.operators)
 }
 
 // named lists channels in order; none means all, or all with two quadratures.

@@ -15,13 +15,17 @@ const verdictFormat = 1
 //	format          1
 //	name, ends      of the pulse; "settled" or "window"
 //	met             whether every requirement, every limit and the agreement with the record hold
+//	measure         what infidelity means, where it is not the average gate infidelity: "state" or "subspace"
 //	settled, window { infidelity, leakage }
+//	dropped         { infidelity, leakage } for the required ends with the rotating terms that the model leaves out; absent when there are none
 //	tail_angle_rad  that the ring-out still turns after the window
 //	pair            { infidelity, phase_deg }: twice without a gap, the second turned by the worst of four phases; infidelity null where not judged
 //	decoherence     to be added to every infidelity
 //	limits          [{ channel, limit, unit, found, allowed, headroom, ok }]
 //	errors          [{ name, kind, held, unit ("MHz", "%" or "deg"), susceptibility, low, high, curve [{ value, infidelity }],
-//	                and of kind "any" worst_direction, worst_susceptibility, direction }]
+//	                where levels lie outside the code space leak_susceptibility, and leak (true) of a class of leakage,
+//	                and of kind "any" worst_direction, worst_susceptibility, direction, of a class of many operators members (their names, in
+//	                the order of direction) and sampled (what low, high and curve were looked for along) }]
 //	bring_up        populations of |1>: { amplitude [{ scale, one }], detuning [{ mhz, one }], repeats [{ pulses, one }] }
 //	agreement       with the record's claim, largest differences: { infidelity, susceptibility, tail_angle_rad, ok,
 //	                worst { figure, found, recorded, allowed } }: the figure that differs most for what is allowed, "" when nothing is claimed
@@ -40,13 +44,25 @@ func (v *Verdict) MarshalJSON() ([]byte, error) {
 		Agreement: agreementJSON{figure(v.Agreement.Infidelity), figure(v.Agreement.Susceptibility), figure(v.Agreement.TailAngle), v.Agreement.OK,
 			disagreementJSON{v.Agreement.Worst.Figure, figure(v.Agreement.Worst.Found), figure(v.Agreement.Worst.Recorded), figure(v.Agreement.Worst.Allowed)}},
 	}
+	if v.Measure != "gate" {
+		j.Measure = v.Measure
+	}
+	if v.Dropped != nil {
+		f := figures(*v.Dropped)
+		j.Dropped = &f
+	}
 	for _, l := range v.Limits {
 		j.Limits = append(j.Limits, limitJSON{l.Channel, string(l.Limit), l.Unit, figure(l.Found), figure(l.Allowed), figure(l.Headroom), l.OK})
 	}
 	for _, e := range v.Errors {
 		o := errorJSON{
 			Name: e.Name, Kind: e.Kind, Held: e.Held, Unit: e.Unit, Susceptibility: figure(e.Susceptibility), Low: figure(e.Low), High: figure(e.High),
+			Leak: e.Leak, Members: e.Members, Sampled: e.Sampled,
 			Curve: []pointJSON{},
+		}
+		if e.LeakSusceptibility != nil {
+			leak := figure(*e.LeakSusceptibility)
+			o.LeakSusceptibility = &leak
 		}
 		for _, p := range e.Curve {
 			o.Curve = append(o.Curve, pointJSON{figure(p.Value), figure(p.Infidelity)})
@@ -94,8 +110,10 @@ type verdictJSON struct {
 	Name         string            `json:"name"`
 	Ends         string            `json:"ends"`
 	Met          bool              `json:"met"`
+	Measure      string            `json:"measure,omitempty"`
 	Settled      figuresJSON       `json:"settled"`
 	Window       figuresJSON       `json:"window"`
+	Dropped      *figuresJSON      `json:"dropped,omitempty"`
 	TailAngle    figure            `json:"tail_angle_rad"`
 	Pair         pairJSON          `json:"pair"`
 	Decoherence  figure            `json:"decoherence"`
@@ -134,11 +152,15 @@ type errorJSON struct {
 	Held                bool        `json:"held"`
 	Unit                string      `json:"unit"`
 	Susceptibility      figure      `json:"susceptibility"`
+	LeakSusceptibility  *figure     `json:"leak_susceptibility,omitempty"`
+	Leak                bool        `json:"leak,omitempty"`
 	Low                 figure      `json:"low"`
 	High                figure      `json:"high"`
 	WorstDirection      string      `json:"worst_direction,omitempty"`
 	WorstSusceptibility *figure     `json:"worst_susceptibility,omitempty"`
 	Direction           []figure    `json:"direction,omitempty"`
+	Members             []string    `json:"members,omitempty"`
+	Sampled             string      `json:"sampled,omitempty"`
 	Curve               []pointJSON `json:"curve"`
 }
 

@@ -33,7 +33,7 @@ func keys(v any, path string) []string {
 func TestVerdictJSON(t *testing.T) {
 	third := 1. / 3
 	v := &Verdict{
-		Name: "a <pulse>", Ends: "window", Settled: Figures{third * 1e-9, 0}, Window: Figures{math.Nextafter(1e-9, 1), 5e-324}, TailAngle: 0.006,
+		Name: "a <pulse>", Ends: "window", Measure: "gate", Settled: Figures{third * 1e-9, 0}, Window: Figures{math.Nextafter(1e-9, 1), 5e-324}, TailAngle: 0.006,
 		Pair: Pair{math.NaN(), math.NaN()}, Decoherence: 1e-3,
 		Errors: []Error{
 			{Name: "any", Kind: "any", Held: true, Unit: "MHz", Susceptibility: third, Low: math.Inf(-1), High: math.Inf(1), WorstDirection: "1.00 X", WorstSusceptibility: 0, Direction: []float64{1, 0, -third}, Curve: []Point{{0.5, 1e21}}},
@@ -91,6 +91,35 @@ func TestVerdictJSON(t *testing.T) {
 		{at("errors", 1, "low"), -2.0}, {at("errors", 1, "high"), 3.0}, {at("requirements", 0, "found"), nil}, {at("requirements", 0, "allowed"), 0.1},
 		{at("limits", 0, "found"), third}, {at("limits", 0, "limit"), "rms"}, {at("inputs", 0, "recorded"), "14"}, {at("warnings", 0), "W."},
 		{at("bring_up", "amplitude", 0, "scale"), 0.9}, {at("bring_up", "detuning", 0, "mhz"), -5.0}, {at("bring_up", "repeats", 0, "pulses"), 1.0},
+	} {
+		if c.got != c.want {
+			t.Errorf("%v, want %v", c.got, c.want)
+		}
+	}
+	// What only some verdicts have.
+	leak := third
+	wide, err := json.Marshal(&Verdict{Measure: "state", Dropped: &Figures{third, 1e-20}, Errors: []Error{
+		{Kind: "any", LeakSusceptibility: &leak, Leak: true, Members: []string{"ZX"}, Sampled: "one"}, {Kind: "static", LeakSusceptibility: new(float64)}, {Kind: "static"}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	had := keys(got, "")
+	if err := json.Unmarshal(wide, &got); err != nil {
+		t.Fatal(err)
+	}
+	var more []string
+	for _, k := range keys(got, "") {
+		if !slices.Contains(had, k) && !strings.HasSuffix(k, "[]") {
+			more = append(more, k)
+		}
+	}
+	if want := strings.Fields("dropped.infidelity dropped.leakage errors[].leak errors[].leak_susceptibility errors[].sampled measure"); !reflect.DeepEqual(more, want) {
+		t.Errorf("more keys %q, want %q", more, want)
+	}
+	for _, c := range []struct{ got, want any }{
+		{at("measure"), "state"}, {at("dropped", "infidelity"), third}, {at("dropped", "leakage"), 1e-20}, {at("errors", 0, "leak"), true},
+		{at("errors", 0, "leak_susceptibility"), third}, {at("errors", 0, "members", 0), "ZX"}, {at("errors", 0, "sampled"), "one"},
+		{at("errors", 1, "leak_susceptibility"), 0.0}, {at("errors", 1, "leak"), nil}, {at("errors", 2, "leak_susceptibility"), nil}, {at("errors", 1, "members"), nil},
 	} {
 		if c.got != c.want {
 			t.Errorf("%v, want %v", c.got, c.want)

@@ -1,9 +1,11 @@
 package replay
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // How far a verdict may lie from the record's claim, both on the rounded codes.
@@ -25,15 +27,15 @@ func (m *Model) Figures(ctx context.Context) (settled, window Figures, tail floa
 
 func (e *engine) both(ctx context.Context) (settled, window Figures, tail float64, err error) {
 	err = e.run(ctx, []gate{{}}, func(l *labour, _ int, u []complex128) {
-		window = e.figures(l, u)
-		settled = e.figures(l, e.settle(l, u))
+		window = e.figuresOf(l, u)
+		settled = e.figuresOf(l, e.settle(l, u))
 	})
 	return settled, window, angle(e.post, e.dim), err
 }
 
 // Pair plays the pulse twice without a gap, always settled at the end. Where no rotation of the frame turns the drive's phase (a
-// static part along X, say) only one phase is judged, and Judge says so in a warning; where free Z angles are no such rotation there is
-// an error.
+// static part along X, say) only one phase is judged, and Judge says so in a warning. Where free Z angles are no such rotation, where local
+// rotations are free, for a target of states and where the Hamiltonian turns by itself there is an error.
 func (m *Model) Pair(ctx context.Context) (Pair, error) {
 	e, err := newEngine(ctx, m)
 	if err != nil {
@@ -44,6 +46,11 @@ func (m *Model) Pair(ctx context.Context) (Pair, error) {
 		err = nil
 	}
 	return p, err
+}
+
+// notJudged says whether an error of pair is one for which there is no pair, and not a failure.
+func notJudged(err error) bool {
+	return err == errNoFrame || err == errNoSquare || err == errNoFollow || err == errTurning
 }
 
 // Curves judges the model's error classes as Judge does, margins against the given infidelity, and draws the curve of each over
@@ -65,7 +72,7 @@ func Judge(ctx context.Context, f *Folder) (*Verdict, error) {
 		return nil, err
 	}
 	v.Name = f.Name
-	v.Decoherence = Decoherence(f.Model.Span(), f.T1, f.T2)
+	v.Decoherence = f.Decoherence()
 	v.agree(f)
 	if v.Inputs, err = f.differences(); err != nil {
 		return nil, err
@@ -86,19 +93,22 @@ func (m *Model) judge(ctx context.Context, infidelity float64, required []Margin
 		return nil, err
 	}
 	e.farthest = m.farthest(required)
-	v := &Verdict{Ends: m.Ends}
+	v := &Verdict{Ends: m.Ends, Measure: m.measure()}
 	if v.Settled, v.Window, v.TailAngle, err = e.both(ctx); err != nil {
 		return nil, err
 	}
 	if e.left > settledAngle {
 		v.Warnings = append(v.Warnings, fmt.Sprintf("The lines had not settled when the integration was ended: up to %.2g rad were still to come.", e.left))
 	}
-	if v.Pair, err = e.pair(ctx); err == errNoTurn || err == errNoFrame {
+	if v.Pair, err = e.pair(ctx); err == errNoTurn || notJudged(err) {
 		v.Warnings = append(v.Warnings, sentence(err))
-		if err == errNoFrame {
+		if err != errNoTurn {
 			v.Pair = Pair{math.NaN(), math.NaN()}
 		}
 	} else if err != nil {
+		return nil, err
+	}
+	if err := v.putBack(ctx, m, infidelity); err != nil {
 		return nil, err
 	}
 	if v.Limits, err = m.Limits(ctx); err != nil {
@@ -118,6 +128,53 @@ func (m *Model) judge(ctx context.Context, infidelity float64, required []Margin
 		v.Warnings = append(v.Warnings, fmt.Sprintf("The integration has lost unitarity by %.2g.", worst))
 	}
 	return v, nil
+}
+
+// measure says what the infidelity of a model means.
+func (m *Model) measure() string {
+	switch len(m.From) {
+	case 0:
+		return "gate"
+	case 1:
+		return "state"
+	}
+	return "subspace"
+}
+
+// putBack judges the model with the terms that it leaves out.
+func (v *Verdict) putBack(ctx context.Context, m *Model, infidelity float64) error {
+	if len(m.Dropped) == 0 {
+		return nil
+	}
+	// These turn fast, and what they cost is compared with nothing that has many digits.
+	var settled, window Figures
+	e, err := newEngineTo(ctx, m.WithDropped(), roughTolerance, nearlyAngle)
+	if err == nil {
+		settled, window, _, err = e.both(ctx)
+	}
+	if err == errTooFast || err == errTooLong {
+		v.Warnings = append(v.Warnings, "The rotating terms that the model leaves out turn too fast to be put back: what they cost is not judged.")
+		return nil
+	}
+	if err != nil {
+		return err
+	}
+	v.Dropped = &settled
+	if m.Ends == "window" {
+		v.Dropped = &window
+	}
+	if !(v.Dropped.Infidelity <= infidelity) && v.Required().Infidelity <= infidelity {
+		v.Warnings = append(v.Warnings, fmt.Sprintf("With the rotating terms that the model leaves out put back the infidelity is %.3g, more than what is required.", v.Dropped.Infidelity))
+	}
+	return nil
+}
+
+// WithDropped gives the model with the rotating terms that it leaves out put back.
+func (m *Model) WithDropped() *Model {
+	other := *m
+	other.Rotating, other.Dropped = slices.Concat(m.Rotating, m.Dropped), nil
+	slices.SortStableFunc(other.Rotating, func(a, b Rotating) int { return cmp.Compare(a.Frequency, b.Frequency) })
+	return &other
 }
 
 // sentence makes a warning of an error.
@@ -141,6 +198,21 @@ func Decoherence(span, t1, t2 float64) float64 {
 		sum += 2 / t2
 	}
 	return span / 6 * sum
+}
+
+// Decoherence is what relaxation of the sites adds to every coherent infidelity to first order, for a code space of d states
+//
+//	d/(d+1) sum over sites ( T/(2 T1) + T/(2 T_phi) ),   1/T_phi = 1/T2 - 1/(2 T1)
+//
+// (from the average over states of what idle spins lose, each by itself): of one spin it is the function of that name, whose conventions about
+// times that are not stated hold for every site.
+func (f *Folder) Decoherence() float64 {
+	sum := 0.0
+	for _, s := range f.Decay {
+		sum += Decoherence(f.Model.Span(), s.T1, s.T2)
+	}
+	d := float64(len(f.Model.CodeSpace))
+	return 1.5 * d / (d + 1) * sum
 }
 
 // agree compares the verdict with the record's claim.
@@ -173,6 +245,9 @@ func (v *Verdict) agree(f *Folder) {
 		for _, e := range v.Errors {
 			if c.claimed && e.Name == c.Name {
 				apart(&a.Susceptibility, "susceptibility to "+e.Name, e.Susceptibility, c.Susceptibility, susceptibilityAgreement)
+			}
+			if c.claimedLeak && e.Name == c.Name && e.LeakSusceptibility != nil {
+				apart(&a.Susceptibility, "leak susceptibility to "+e.Name, *e.LeakSusceptibility, c.LeakSusceptibility, susceptibilityAgreement)
 			}
 		}
 	}

@@ -7,145 +7,215 @@ type labour struct {
 	e *engine
 
 	window, half, whole []complex128 // Dim x Dim
+	first, last         []complex128 // Dim x columns: what a gate makes of the first states, in the window and for the required ends
+	states              []complex128 // Dim x k, of a target of states
 	block, gram         []complex128 // on the code space
 
-	spin   *spinLabour // two levels
-	series [][]complex128
-	sums   []complex128
-	lambda complex128
-	extra  sparse
-	ops    []sparse // of every control with this gate's error
-	op     []complex128
-	own    []sparse // memory of those that the error changes
+	spin *spinLabour // two levels
+
+	// More levels. A step's series is kept twice: its last term, and all of them, the real and imaginary parts of one element one after another in time
+	// order backwards, the term of order m at series[(2 element + part) width + maxOrder - m], so that H_j and U_(n-j) run the same way.
+	series     []float64
+	term, next []complex128
+	sums       []complex128
+	still      sparse   // what is constant in time, this gate's error included
+	ops        []sparse // of every control with this gate's error
+	active     []int    // the controls that have any
+	own        []sparse // memory of those that the error changes
+	op         []complex128
 }
 
+const width = maxOrder + 1 // of one element's series
+
 func newLabour(e *engine) *labour {
-	n, d := e.dim, len(e.m.CodeSpace)
+	n, c, d := e.dim, e.columns, len(e.m.CodeSpace)
 	l := &labour{
 		e: e, window: make([]complex128, n*n), half: make([]complex128, n*n), whole: make([]complex128, n*n),
+		first: make([]complex128, n*c), last: make([]complex128, n*c), states: make([]complex128, n*e.states),
 		block: make([]complex128, d*d), gram: make([]complex128, d*d),
 	}
 	if n == 2 {
 		l.spin = newSpinLabour(e)
 		return l
 	}
-	l.series = make([][]complex128, maxOrder+1)
-	for i := range l.series {
-		l.series[i] = make([]complex128, n*n)
-	}
-	l.sums, l.op = make([]complex128, n*n), make([]complex128, n*n)
+	l.levels(n)
 	return l
 }
 
-// integrate sets u to the evolution along p with error lambda times pr; pr may be nil.
+// levels makes the scratch for any number of levels.
+func (l *labour) levels(n int) {
+	size := n * (n + n&1) // room for an even number of columns
+	l.series = make([]float64, 2*size*width)
+	l.term, l.next, l.sums, l.op = make([]complex128, size), make([]complex128, size), make([]complex128, size), make([]complex128, n*n)
+}
+
+// integrate sets u, Dim x Dim, to the evolution along p with error lambda times pr; pr may be nil.
 func (l *labour) integrate(p *plan, pr *probe, lambda float64, u []complex128) {
 	if l.spin != nil {
 		l.spin.choose(p, pr, lambda)
 		l.spin.integrate(p, u)
 		return
 	}
-	l.extra, l.lambda = nil, complex(lambda, 0)
-	if pr != nil && pr.static != nil {
-		l.extra = sparsely(pr.static, l.e.dim)
-	}
-	l.choose(p, pr, lambda)
 	setIdentity(u, l.e.dim)
+	l.carry(p, pr, lambda, u, l.e.dim)
+}
+
+// carry does the same to so many columns u, Dim x columns, of more than two levels.
+func (l *labour) carry(p *plan, pr *probe, lambda float64, u []complex128, columns int) {
+	l.choose(p, pr, lambda)
 	for i := range p.steps {
-		l.step(p, &p.steps[i], u)
+		l.step(p, &p.steps[i], u, columns)
 	}
 }
 
 // choose makes the operators of every control of p with error lambda times pr.
 func (l *labour) choose(p *plan, pr *probe, lambda float64) {
-	for len(l.ops) < p.controls {
-		l.ops, l.own = append(l.ops, nil), append(l.own, nil)
+	n := l.e.dim
+	l.room(p)
+	l.still = l.e.elements
+	if pr != nil && pr.static != nil {
+		copy(l.op, l.e.static)
+		for i, v := range pr.static {
+			l.op[i] += complex(lambda, 0) * v
+		}
+		l.still = sparsely(l.op, n)
 	}
 	for k := range p.controls {
-		l.ops[k] = nil
 		if k < len(l.e.controls) {
 			l.ops[k] = l.e.controls[k].elements
 		}
-		if pr == nil || pr.first == nil || pr.first[k] == nil && pr.second[k] == nil {
-			continue
+		if pr != nil && pr.first != nil && (pr.first[k] != nil || pr.second[k] != nil) {
+			clear(l.op)
+			if k < len(l.e.controls) {
+				copy(l.op, l.e.controls[k].op)
+			}
+			for i, v := range pr.first[k] {
+				l.op[i] += complex(lambda, 0) * v
+			}
+			for i, v := range pr.second[k] {
+				l.op[i] += complex(lambda*lambda, 0) * v
+			}
+			l.own[k] = appendSparse(sparse{elements: l.own[k].elements[:0], rows: l.own[k].rows[:0]}, l.op, n)
+			l.ops[k] = l.own[k]
 		}
-		clear(l.op)
-		if k < len(l.e.controls) {
-			copy(l.op, l.e.controls[k].op)
+		if len(l.ops[k].elements) > 0 {
+			l.active = append(l.active, k)
 		}
-		for i, v := range pr.first[k] {
-			l.op[i] += complex(lambda, 0) * v
-		}
-		for i, v := range pr.second[k] {
-			l.op[i] += complex(lambda*lambda, 0) * v
-		}
-		l.own[k] = appendSparse(l.own[k][:0], l.op, l.e.dim)
-		l.ops[k] = l.own[k]
 	}
 }
 
-// undriven sets u to the static evolution over the length of p.
+// room makes the lists of p's controls, with no operators.
+func (l *labour) room(p *plan) {
+	for len(l.ops) < p.controls {
+		l.ops, l.own = append(l.ops, sparse{}), append(l.own, sparse{})
+	}
+	clear(l.ops)
+	l.active = l.active[:0]
+}
+
+// undriven sets u to the evolution over the length of p without drive: the static part and what turns by itself.
 func (l *labour) undriven(p *plan, u []complex128) {
 	if l.spin != nil {
 		l.spin.still(p)
 		l.spin.integrate(p, u)
 		return
 	}
-	l.extra, l.ops, l.own = nil, make([]sparse, p.controls), make([]sparse, p.controls)
+	l.room(p)
+	l.still = l.e.elements
+	for k := range l.e.controls {
+		if c := &l.e.controls[k]; c.channel < 0 && len(c.elements.elements) > 0 {
+			l.ops[k] = c.elements
+			l.active = append(l.active, k)
+		}
+	}
 	setIdentity(u, l.e.dim)
 	for i := range p.steps {
-		l.step(p, &p.steps[i], u)
+		l.step(p, &p.steps[i], u, l.e.dim)
 	}
 }
 
 // step multiplies the evolution of one step into u, for any number of levels: the recurrence of plan.go with one product by a
 // (usually sparse) operator for each control and order.
-func (l *labour) step(p *plan, st *timeStep, u []complex128) {
-	n, e := l.e.dim, l.e
-	copy(l.series[0], u)
+func (l *labour) step(p *plan, st *timeStep, u []complex128, columns int) {
+	n := l.e.dim
+	even := columns + columns&1
+	size := n * even
+	term, next, sums := l.term[:size], l.next[:size], l.sums[:size]
+	for i := range n {
+		copy(term[i*even:], u[i*columns:(i+1)*columns])
+		clear(term[i*even+columns : (i+1)*even])
+	}
+	series := l.series[:2*size*width]
+	keep(series, term, 0)
 	for o := range st.order {
-		next := l.series[o+1]
 		clear(next)
-		f := complex(0, -1/float64(o+1)) // -i/(n+1)
-		fs := f * complex(st.s, 0)
-		apply(next, e.elements, l.series[o], fs, n)
-		if l.extra != nil {
-			apply(next, l.extra, l.series[o], fs*l.lambda, n)
-		}
-		for k := range p.controls {
-			if len(l.ops[k]) == 0 {
+		f := complex(0, -st.s/float64(o+1)) // -i s/(n+1)
+		apply(next, l.still, term, f, even)
+		for _, k := range l.active {
+			h := p.numbers[st.at+k*st.order : st.at+k*st.order+o+1]
+			// What is too small to matter at the end is left out.
+			for len(h) > 0 && math.Abs(h[len(h)-1])*st.s < p.least {
+				h = h[:len(h)-1]
+			}
+			if len(h) == 0 {
 				continue
 			}
-			h := p.numbers[st.at+k*st.order : st.at+(k+1)*st.order]
-			clear(l.sums)
-			some := false
-			for j := 0; j <= o; j++ {
-				if h[j] == 0 {
-					continue
-				}
-				some = true
-				v := h[j]
-				for i, z := range l.series[o-j] {
-					l.sums[i] += complex(v*real(z), v*imag(z))
+			for _, row := range l.ops[k].rows {
+				for i := row * even; i < (row+1)*even; i += 2 {
+					sums[i], sums[i+1] = products(series[2*i*width+maxOrder-o:], h)
 				}
 			}
-			if some {
-				apply(next, l.ops[k], l.sums, fs, n)
-			}
+			apply(next, l.ops[k], sums, f, even)
 		}
+		term, next = next, term
+		keep(series, term, o+1)
 	}
-	clear(u)
-	for o := st.order; o >= 0; o-- { // the smallest first
-		for i, z := range l.series[o] {
-			u[i] += z
+	for i := range n {
+		for j := range columns {
+			at := 2 * (i*even + j) * width
+			u[i*columns+j] = complex(total(series[at:at+width], st.order), total(series[at+width:at+2*width], st.order))
 		}
 	}
 }
 
-// apply adds f a b to dst.
-func apply(dst []complex128, a sparse, b []complex128, f complex128, n int) {
-	for _, el := range a {
+// keep writes the term of order m where step looks for it.
+func keep(series []float64, term []complex128, m int) {
+	at := maxOrder - m
+	for _, z := range term {
+		series[at], series[at+width] = real(z), imag(z)
+		at += 2 * width
+	}
+}
+
+// products gives the sums of h_j U_(n-j) of two elements whose series follow one another, from that of order n on.
+func products(s, h []float64) (x, y complex128) {
+	a, b := s[:len(h)], s[width:width+len(h)]
+	c, d := s[2*width:2*width+len(h)], s[3*width:3*width+len(h)]
+	var p, q, r, t float64
+	for j, v := range h {
+		p += v * a[j]
+		q += v * b[j]
+		r += v * c[j]
+		t += v * d[j]
+	}
+	return complex(p, q), complex(r, t)
+}
+
+// total adds the terms of a series, the smallest first.
+func total(s []float64, order int) float64 {
+	sum := 0.0
+	for _, v := range s[maxOrder-order:] {
+		sum += v
+	}
+	return sum
+}
+
+// apply adds f a b to dst, b of so many columns.
+func apply(dst []complex128, a sparse, b []complex128, f complex128, columns int) {
+	for _, el := range a.elements {
 		v := f * el.v
-		row, out := b[el.j*n:(el.j+1)*n], dst[el.i*n:(el.i+1)*n]
+		row, out := b[el.j*columns:(el.j+1)*columns], dst[el.i*columns:(el.i+1)*columns]
+		out = out[:len(row)]
 		for k, z := range row {
 			out[k] += v * z
 		}
@@ -200,7 +270,7 @@ func (s *spinLabour) choose(p *plan, pr *probe, lambda float64) {
 	}
 }
 
-// still lets nothing drive the device.
+// still lets nothing drive the device but what turns by itself.
 func (s *spinLabour) still(p *plan) {
 	s.rest, s.flat = axisOf(s.e.static), true
 	for len(s.op) < p.controls {
@@ -208,6 +278,12 @@ func (s *spinLabour) still(p *plan) {
 	}
 	s.op = s.op[:p.controls]
 	clear(s.op)
+	for k := range s.e.controls {
+		if s.e.controls[k].channel < 0 {
+			s.op[k] = s.e.axes[k]
+			s.flat = s.flat && s.op[k].z == 0
+		}
+	}
 }
 
 func (a *axis) add(f float64, b axis) {

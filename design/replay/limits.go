@@ -157,13 +157,13 @@ func (m *Model) ringing(ctx context.Context, c int) (fast, tail float64, err err
 	one := *m
 	one.Channels = []Channel{m.Channels[c]}
 	ch := &one.Channels[0]
-	ch.FullScale, ch.Delay, ch.Shift, ch.Operators = 1, 0, 0, make([][]complex128, len(ch.Operators))
+	ch.FullScale, ch.Delay, ch.Shift, ch.Paths, ch.Operators = 1, 0, 0, nil, make([][]complex128, len(ch.Operators))
 	for q := range ch.Operators {
 		ch.Operators[q] = [][]complex128{{0, 1, 1, 0}, {0, -1i, 1i, 0}}[q]
 	}
-	one.WindowStart, one.Dim = 0, 2
-	e := &engine{m: &one, dim: 2}
-	e.takeDrives()
+	one.WindowStart, one.Dim, one.Rotating, one.Errors = 0, 2, nil, nil
+	e := &engine{m: &one, dim: 2, tolerance: stepTolerance}
+	e.takeControls()
 	w := e.newWalker(nil, 1)
 	// What has been stored when the last sample ends, without keeping the steps.
 	for k := range m.Samples {

@@ -108,42 +108,93 @@ func cut(dst, m []complex128, n int, code []int) {
 	dropTrace(dst, d)
 }
 
-// nearestUnitary takes away what rounding on paper has done to a recorded unitary matrix: two Newton steps for the
-// polar factor, W -> W (3 - W'W)/2.
-func nearestUnitary(w []complex128, n int) []complex128 {
+// multiply sets dst = a b, of m x n and n x p elements.
+func multiply(dst, a, b []complex128, m, n, p int) {
+	clear(dst[:m*p])
+	for i := range m {
+		out := dst[i*p : (i+1)*p]
+		for k, f := range a[i*n : (i+1)*n] {
+			if f == 0 {
+				continue
+			}
+			for j, v := range b[k*p : (k+1)*p] {
+				out[j] += f * v
+			}
+		}
+	}
+}
+
+// multiplyAdjoint sets dst = a' b, of n x m and n x p elements.
+func multiplyAdjoint(dst, a, b []complex128, m, n, p int) {
+	clear(dst[:m*p])
+	for k := range n {
+		for i, f := range a[k*m : (k+1)*m] {
+			f = cmplx.Conj(f)
+			out := dst[i*p : (i+1)*p]
+			for j, v := range b[k*p : (k+1)*p] {
+				out[j] += f * v
+			}
+		}
+	}
+}
+
+// kron gives the product of matrices 2 x 2, the first slowest.
+func kron(list [][]complex128) []complex128 {
+	m, n := []complex128{1}, 1
+	for _, u := range list {
+		next := make([]complex128, 4*n*n)
+		for i := range 2 * n {
+			for j := range 2 * n {
+				next[i*2*n+j] = m[i/2*n+j/2] * u[i%2*2+j%2]
+			}
+		}
+		m, n = next, 2*n
+	}
+	return m
+}
+
+// nearestUnitary takes away what rounding on paper has done to k recorded columns of n elements that are orthonormal, a unitary matrix where
+// k is n: two Newton steps for the polar factor, W -> W (3 - W'W)/2.
+func nearestUnitary(w []complex128, n, k int) []complex128 {
 	u := append([]complex128(nil), w...)
-	g, next := make([]complex128, n*n), make([]complex128, n*n)
+	g, next := make([]complex128, k*k), make([]complex128, n*k)
 	for range 2 {
-		mulAdjointLeft(g, u, u, n)
+		multiplyAdjoint(g, u, u, k, n, k)
 		for i := range g {
 			g[i] *= -0.5
 		}
-		for i := range n {
-			g[i*n+i] += 1.5
+		for i := range k {
+			g[i*k+i] += 1.5
 		}
-		mul(next, u, g, n)
+		multiply(next, u, g, n, k, k)
 		copy(u, next)
 	}
 	return u
 }
 
 // sparse is a matrix as the list of its elements that are not zero.
-type sparse []struct {
+type sparse struct {
+	elements []element
+	rows     []int // of a factor to its right that count
+}
+
+type element struct {
 	i, j int
 	v    complex128
 }
 
-func sparsely(m []complex128, n int) sparse { return appendSparse(nil, m, n) }
+func sparsely(m []complex128, n int) sparse { return appendSparse(sparse{}, m, n) }
 
 func appendSparse(s sparse, m []complex128, n int) sparse {
-	for i := range n {
-		for j := range n {
+	for j := range n {
+		some := false
+		for i := range n {
 			if v := m[i*n+j]; v != 0 {
-				s = append(s, struct {
-					i, j int
-					v    complex128
-				}{i, j, v})
+				s.elements, some = append(s.elements, element{i, j, v}), true
 			}
+		}
+		if some {
+			s.rows = append(s.rows, j)
 		}
 	}
 	return s

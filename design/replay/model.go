@@ -15,8 +15,15 @@ const (
 	maxPoles    = 256 // entries of one line
 	maxPower    = 32  // as in package filter, slopes included
 	maxErrors   = 64
-	maxKnees    = 256 // points of a compression table
-	maxAnyDim   = 16  // levels of which all d^2-1 static errors are judged
+	maxKnees    = 256     // points of a compression table
+	maxAnyDim   = 16      // levels of which all d^2-1 static errors are judged
+	maxSites    = 6       // each of
+	maxLevels   = 16      // levels at most
+	maxRotating = 64      // terms
+	maxPaths    = 16      // of one channel
+	maxMembers  = 4096    // operators of one error
+	maxEntries  = 4 << 20 // of the operators of all errors: 64 MiB
+	maxTurn     = 1e5     // rad/ns, of a rotating term or path
 )
 
 // A Model is [model] of pulse.toml with the samples loaded: all that is needed to recompute the gate. Matrices are
@@ -28,14 +35,40 @@ type Model struct {
 	Ends         string  // "settled" or "window"
 	WindowStart  float64 // ns
 
-	Dim                     int
-	CodeSpace               []int        // basis states
-	Static                  []complex128 // Dim x Dim, rad/ns, Hermitian
-	Target                  []complex128 // unitary on the code space
-	FreeZBefore, FreeZAfter []float64    // rad, one for each site; empty when not free
+	Dim       int
+	Sites     []int        // levels of each site, the first slowest in the basis; nil for one site
+	CodeSpace []int        // basis states
+	Static    []complex128 // Dim x Dim, rad/ns, Hermitian
+	Rotating  []Rotating   // what turns by itself beside it; frequencies ascending
+	Dropped   []Rotating   // what the model leaves out, as fast enough to average out; Judge says what that costs
+
+	// The target is a unitary on the code space, or, where Target is nil, the span of From taken to that of To: as many orthonormal vectors on
+	// the code space each.
+	Target   []complex128
+	From, To [][]complex128
+
+	FreeZBefore, FreeZAfter []float64 // rad, one for each site; empty when not free
+	// LocalBefore and LocalAfter are the rotations of each site, 2 x 2, that a gate up to local rotations is given: M -> (x)after M (x)before.
+	// Nil when not free.
+	LocalBefore, LocalAfter [][]complex128
 
 	Channels []Channel
 	Errors   []Class
+}
+
+// A Rotating is a part of the Hamiltonian that turns by itself, t in ns from the window's start whatever the time:
+//
+//	H += cos(Frequency (t - WindowStart)) Cosine + sin(Frequency (t - WindowStart)) Sine
+type Rotating struct {
+	Frequency    float64      // rad/ns, above 0
+	Cosine, Sine []complex128 // Dim x Dim, rad/ns, Hermitian
+}
+
+// A Path is what a channel drives where it is seen to turn, as a site of another frequency sees it: u e^(-i Frequency (t - WindowStart)),
+// u in rad/ns as of Channel, drives Operators by its real and its imaginary part.
+type Path struct {
+	Frequency float64        // rad/ns, either sign
+	Operators [][]complex128 // two; of a baseband channel one or two; Hermitian
 }
 
 // A Channel is one [[model.channel]] with its samples.
@@ -52,6 +85,7 @@ type Channel struct {
 	Residues []complex128
 
 	Operators [][]complex128 // of u_I and u_Q, or of u alone; Hermitian
+	Paths     []Path         // crosstalk that turns, beside them
 
 	// Compression says what share of the full-scale rate the converter's share reaches, before the line; nil where they are the
 	// same. See Compressed.
@@ -104,23 +138,32 @@ func (c *Channel) Compressed(x complex128) complex128 {
 }
 
 // A Class is one [[model.error]]: what may go wrong, and what the record says of it. Its size lambda is in rad/ns for kind static and
-// any, in rad for kind skew, and a share for kind amplitude and line.
+// any, in rad for kind skew, and a share for the others.
 type Class struct {
 	Name string
 	// Kind is one of
 	//
 	//	"static"     H += lambda Operator
-	//	"any"        the same for every traceless operator
+	//	"any"        H += lambda sum v_i Weights[i] Operators[i], |v| = 1; without a list the same of every traceless operator
 	//	"amplitude"  u of the channels times 1 + lambda, or u_I or u_Q alone where Quadrature says so
 	//	"skew"       u_I += -lambda u_Q of the channels: the angle between the quadratures
 	//	"line"       u += lambda FullScale times what arrives through the line below: lambda relative change of a parameter
+	//	"crosstalk"  H += lambda (u_I Operators[0] + u_Q Operators[1]) of the channel: a share of it reaches something else
 	//
-	// All act in the window only. A drive-induced shift follows the u that the error leaves.
+	// All act in the window only. A drive-induced shift follows the u that the error leaves, and so does what a channel drives by its paths.
 	Kind       string
 	Held       bool         // the pulse was designed to be held against it
 	Operator   []complex128 // kind static: Dim x Dim
-	Channels   []string     // kinds amplitude and skew, where empty means all that have what is asked for; kind line: one
+	Channels   []string     // kinds amplitude and skew, where empty means all that have what is asked for; kinds line and crosstalk: one
 	Quadrature string       // kind amplitude: "I", "Q" or "" for both
+
+	// Of kind any the operators of the class, Dim x Dim, Hermitian, rad/ns for lambda in rad/ns, each with a name and with a weight above 0 of
+	// root mean square 1; all nil for all traceless ones. Of kind crosstalk what the channel's quadratures drive, without names or weights.
+	Operators [][]complex128
+	Names     []string
+	Weights   []float64
+	// Leak is of kind any: the class is of what couples the code space to the other levels, and that is what must not survive.
+	Leak bool
 
 	// Kind line: the line's slope, with the channel's delay.
 	Direct   complex128
@@ -128,8 +171,10 @@ type Class struct {
 	Powers   []int
 	Residues []complex128
 
-	Susceptibility float64 // that the record claims; 0 to 1
-	claimed        bool
+	// What the record claims.
+	Susceptibility       float64
+	LeakSusceptibility   float64
+	claimed, claimedLeak bool
 }
 
 // WithSamples gives a model of another pulse on the same lines, operators, limits and errors: one slice for each
@@ -243,25 +288,34 @@ func (m *Model) validate() *fault {
 		}
 		seen[s] = true
 	}
+	if len(m.Sites) > 0 {
+		product := 1
+		for _, levels := range m.Sites {
+			if levels < 2 || levels > maxLevels {
+				return bad("sites", fmt.Sprintf("a site of %d levels", levels), fmt.Sprintf("2 to %d levels a site", maxLevels))
+			}
+			product *= levels
+		}
+		if n := len(m.Sites); n < 2 || n > maxSites {
+			return bad("sites", fmt.Sprintf("%d sites", n), fmt.Sprintf("2 to %d, and no list for one", maxSites))
+		}
+		if product != m.Dim {
+			return bad("sites", fmt.Sprintf("%d basis states in all", product), fmt.Sprintf("%d, the dimension", m.Dim))
+		}
+	}
 	if what := notHermitian(m.Static, m.Dim); what != "" {
 		return bad("static_rad_per_ns", what, fmt.Sprintf("a Hermitian %d x %d matrix", m.Dim, m.Dim))
 	}
-	d := len(m.CodeSpace)
-	if what := notUnitary(m.Target, d); what != "" {
-		return bad("target", what, fmt.Sprintf("a unitary %d x %d matrix on the code space", d, d))
+	for _, r := range []struct {
+		key   string
+		terms []Rotating
+	}{{"rotating", m.Rotating}, {"dropped", m.Dropped}} {
+		if f := validRotating(r.key, r.terms, m.Dim); f != nil {
+			return f
+		}
 	}
-	for _, z := range []struct {
-		key    string
-		angles []float64
-	}{{"free_z_before", m.FreeZBefore}, {"free_z_after", m.FreeZAfter}} {
-		if n := len(z.angles); n > 0 && (n > 6 || 1<<n != d) {
-			return bad(z.key, fmt.Sprintf("%d angles", n), fmt.Sprintf("none, or one for each two-level site of a code space of %d", d))
-		}
-		for _, a := range z.angles {
-			if !in(a, -1e6, 1e6) {
-				return bad(z.key, a, "angles in rad")
-			}
-		}
+	if f := m.validTarget(); f != nil {
+		return f
 	}
 	if n := len(m.Channels); n < 1 || n > maxChannels {
 		return bad("channel", fmt.Sprintf("%d channels", n), fmt.Sprintf("1 to %d", maxChannels))
@@ -280,52 +334,21 @@ func (m *Model) validate() *fault {
 	if n := len(m.Errors); n > maxErrors {
 		return bad("error", fmt.Sprintf("%d errors", n), fmt.Sprintf("up to %d", maxErrors))
 	}
-	classes := map[string]bool{}
+	classes, entries := map[string]bool{}, 0
 	for i := range m.Errors {
 		e, key := &m.Errors[i], fmt.Sprintf("error[%d].", i)
 		if classes[e.Name] {
 			return bad(key+"name", fmt.Sprintf("%q again", e.Name), "a name of its own")
 		}
 		classes[e.Name] = true
-		switch e.Kind {
-		case "static":
-			if what := notHermitian(e.Operator, m.Dim); what != "" {
-				return bad(key+"operator", what, fmt.Sprintf("a Hermitian %d x %d matrix", m.Dim, m.Dim))
-			}
-			op := append([]complex128(nil), e.Operator...)
-			dropTrace(op, m.Dim)
-			if !(frobenius(op) > 1e-6) {
-				return bad(key+"operator", "a multiple of the identity", "a Hermitian matrix of which something is left without its trace")
-			}
-		case "amplitude", "skew":
-			if q := e.Quadrature; q != "" && (e.Kind != "amplitude" || q != "I" && q != "Q") {
-				return bad(key+"quadrature", fmt.Sprintf("%q", q), `"I" or "Q", of kind "amplitude"`)
-			}
-			both := e.Kind == "skew" || e.Quadrature != "" // of channels that have two quadratures
-			for _, c := range e.Channels {
-				if !names[c] {
-					return bad(key+"channels", fmt.Sprintf("%q", c), "names of [[model.channel]]")
-				}
-				if both && m.channel(c).Kind != "quadrature" {
-					return bad(key+"channels", fmt.Sprintf("%q, which has one quadrature", c), `channels of kind "quadrature"`)
-				}
-			}
-			if both && !slices.ContainsFunc(m.Channels, func(c Channel) bool { return c.Kind == "quadrature" }) {
-				return bad(key+"kind", fmt.Sprintf("%q of channels with one quadrature", e.Kind), `a model with a channel of kind "quadrature"`)
-			}
-		case "line":
-			if len(e.Channels) != 1 || !names[e.Channels[0]] {
-				return bad(key+"channel", fmt.Sprintf("%q", e.Channels), "the name of a [[model.channel]]")
-			}
-			if f := validLine(key, e.Direct, e.Poles, e.Powers, e.Residues); f != nil {
-				return f
-			}
-		case "any":
-			if m.Dim > maxAnyDim {
-				return bad(key+"kind", fmt.Sprintf("%q with %d levels", e.Kind, m.Dim), fmt.Sprintf("up to %d levels", maxAnyDim))
-			}
-		default:
-			return bad(key+"kind", fmt.Sprintf("%q", e.Kind), `"static", "amplitude", "any", "skew" or "line"`)
+		if f := m.validClass(e, key, names); f != nil {
+			return f
+		}
+		for _, op := range e.Operators {
+			entries += len(op)
+		}
+		if entries > maxEntries {
+			return bad(key+"operators", fmt.Sprintf("%d matrix elements up to here", entries), fmt.Sprintf("up to %d in the operators of all errors", maxEntries))
 		}
 	}
 	return nil
@@ -358,6 +381,23 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 	for i, op := range c.Operators {
 		if what := notHermitian(op, dim); what != "" {
 			return bad(fmt.Sprintf("operators[%d]", i), what, fmt.Sprintf("a Hermitian %d x %d matrix", dim, dim))
+		}
+	}
+	if n := len(c.Paths); n > maxPaths {
+		return bad("path", fmt.Sprintf("%d paths", n), fmt.Sprintf("up to %d", maxPaths))
+	}
+	for i, p := range c.Paths {
+		at := func(k string) string { return fmt.Sprintf("path[%d].%s", i, k) }
+		if w := math.Abs(p.Frequency); !(w > 0 && w <= maxTurn) {
+			return bad(at("frequency_rad_per_ns"), p.Frequency, fmt.Sprintf("-%g to %g and not 0, of which the channel's own operators are", maxTurn, maxTurn))
+		}
+		if n := len(p.Operators); n != 2 && (n != 1 || quadratures != 1) {
+			return bad(at("operators"), fmt.Sprintf("%d matrices", n), "2, or 1 of a channel with one quadrature")
+		}
+		for j, op := range p.Operators {
+			if what := notHermitian(op, dim); what != "" {
+				return bad(fmt.Sprintf("path[%d].operators[%d]", i, j), what, fmt.Sprintf("a Hermitian %d x %d matrix", dim, dim))
+			}
 		}
 	}
 	for _, l := range []struct {
@@ -426,6 +466,223 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 	return nil
 }
 
+// validRotating judges the terms that turn by themselves.
+func validRotating(key string, terms []Rotating, dim int) *fault {
+	if n := len(terms); n > maxRotating {
+		return &fault{key, fmt.Sprintf("%d terms", n), fmt.Sprintf("up to %d", maxRotating)}
+	}
+	last := 0.0
+	for i, r := range terms {
+		at := func(k string) string { return fmt.Sprintf("%s[%d].%s", key, i, k) }
+		if !(r.Frequency > last && r.Frequency <= maxTurn) {
+			return &fault{at("frequency_rad_per_ns"), fmt.Sprint(r.Frequency), fmt.Sprintf("above 0 and above that of the term before, to %g", maxTurn)}
+		}
+		last = r.Frequency
+		for _, m := range []struct {
+			key string
+			op  []complex128
+		}{{"cosine", r.Cosine}, {"sine", r.Sine}} {
+			if what := notHermitian(m.op, dim); what != "" {
+				return &fault{at(m.key), what, fmt.Sprintf("a Hermitian %d x %d matrix", dim, dim)}
+			}
+		}
+	}
+	return nil
+}
+
+// validTarget judges what the pulse is to do, and the frames that are free.
+func (m *Model) validTarget() *fault {
+	c := len(m.CodeSpace)
+	states := len(m.From) > 0 || len(m.To) > 0
+	switch {
+	case states && m.Target != nil:
+		return &fault{"target", "a matrix beside from and to", "a matrix, or vectors from and to"}
+	case states:
+		if n := len(m.From); n < 1 || n > c {
+			return &fault{"from", fmt.Sprintf("%d vectors", n), fmt.Sprintf("1 to %d", c)}
+		}
+		if n := len(m.To); n != len(m.From) {
+			return &fault{"to", fmt.Sprintf("%d vectors", n), fmt.Sprintf("as many as from has, %d", len(m.From))}
+		}
+		for _, v := range []struct {
+			key  string
+			list [][]complex128
+		}{{"from", m.From}, {"to", m.To}} {
+			if what := notOrthonormal(v.list, c); what != "" {
+				return &fault{v.key, what, fmt.Sprintf("orthonormal vectors on the code space, %d entries each", c)}
+			}
+		}
+	default:
+		if what := notUnitary(m.Target, c); what != "" {
+			return &fault{"target", what, fmt.Sprintf("a unitary %d x %d matrix on the code space", c, c)}
+		}
+	}
+	for _, z := range []struct {
+		key    string
+		angles []float64
+	}{{"free_z_before", m.FreeZBefore}, {"free_z_after", m.FreeZAfter}} {
+		n := len(z.angles)
+		if n > 0 && (n > maxSites || 1<<n != c) {
+			return &fault{z.key, fmt.Sprintf("%d angles", n), fmt.Sprintf("none, or one for each two-level site of a code space of %d", c)}
+		}
+		if n > 0 && states {
+			return &fault{z.key, fmt.Sprintf("%d angles", n), "none beside from and to"}
+		}
+		for _, a := range z.angles {
+			if !(math.Abs(a) <= 1e6) {
+				return &fault{z.key, fmt.Sprint(a), "angles in rad"}
+			}
+		}
+	}
+	before, after := len(m.LocalBefore), len(m.LocalAfter)
+	if before == 0 && after == 0 {
+		return nil
+	}
+	for _, l := range []struct {
+		key  string
+		list [][]complex128
+	}{{"local_before", m.LocalBefore}, {"local_after", m.LocalAfter}} {
+		n := len(l.list)
+		if n > maxSites || 1<<n != c {
+			return &fault{l.key, fmt.Sprintf("%d matrices", n), fmt.Sprintf("one for each two-level site of a code space of %d, before and after", c)}
+		}
+		if states || len(m.FreeZBefore) > 0 || len(m.FreeZAfter) > 0 {
+			return &fault{l.key, fmt.Sprintf("%d matrices", n), "none beside free_z_before and free_z_after, or from and to"}
+		}
+		for i, u := range l.list {
+			if what := notUnitary(u, 2); what != "" {
+				return &fault{fmt.Sprintf("%s[%d]", l.key, i), what, "unitary 2 x 2 matrices"}
+			}
+		}
+	}
+	return nil
+}
+
+// validClass judges one error; channels are the names of those that there are.
+func (m *Model) validClass(e *Class, key string, channels map[string]bool) *fault {
+	bad := func(k string, found any, allowed string) *fault {
+		return &fault{key + k, fmt.Sprint(found), allowed}
+	}
+	hermitian := func(k string, op []complex128) *fault {
+		if what := notHermitian(op, m.Dim); what != "" {
+			return bad(k, what, fmt.Sprintf("a Hermitian %d x %d matrix", m.Dim, m.Dim))
+		}
+		return nil
+	}
+	empty := func(op []complex128) bool {
+		op = append([]complex128(nil), op...)
+		dropTrace(op, m.Dim)
+		return !(frobenius(op) > 1e-6)
+	}
+	operator := func(k string, op []complex128) *fault {
+		f := hermitian(k, op)
+		if f == nil && empty(op) {
+			f = bad(k, "a multiple of the identity", "a Hermitian matrix of which something is left without its trace")
+		}
+		return f
+	}
+	levels := m.Dim > len(m.CodeSpace) // there are some outside the code space
+	if e.Leak && (e.Kind != "any" || e.Operators == nil || !levels) {
+		return bad("leak", true, `none but of kind "any" with operators, where levels lie outside the code space`)
+	}
+	if e.claimedLeak && !levels {
+		return bad("leak_susceptibility", e.LeakSusceptibility, "none without levels outside the code space")
+	}
+	if n := len(e.Operators); n > maxMembers {
+		return bad("operators", fmt.Sprintf("%d matrices", n), fmt.Sprintf("up to %d", maxMembers))
+	}
+	switch e.Kind {
+	case "static":
+		return operator("operator", e.Operator)
+	case "amplitude", "skew":
+		if q := e.Quadrature; q != "" && (e.Kind != "amplitude" || q != "I" && q != "Q") {
+			return bad("quadrature", fmt.Sprintf("%q", q), `"I" or "Q", of kind "amplitude"`)
+		}
+		both := e.Kind == "skew" || e.Quadrature != "" // of channels that have two quadratures
+		for _, c := range e.Channels {
+			if !channels[c] {
+				return bad("channels", fmt.Sprintf("%q", c), "names of [[model.channel]]")
+			}
+			if both && m.channel(c).Kind != "quadrature" {
+				return bad("channels", fmt.Sprintf("%q, which has one quadrature", c), `channels of kind "quadrature"`)
+			}
+		}
+		if both && !slices.ContainsFunc(m.Channels, func(c Channel) bool { return c.Kind == "quadrature" }) {
+			return bad("kind", fmt.Sprintf("%q of channels with one quadrature", e.Kind), `a model with a channel of kind "quadrature"`)
+		}
+	case "line", "crosstalk":
+		if len(e.Channels) != 1 || !channels[e.Channels[0]] {
+			return bad("channel", fmt.Sprintf("%q", e.Channels), "the name of a [[model.channel]]")
+		}
+		if e.Kind == "line" {
+			return validLine(key, e.Direct, e.Poles, e.Powers, e.Residues)
+		}
+		if n, want := len(e.Operators), len(m.channel(e.Channels[0]).Operators); n != want {
+			return bad("operators", fmt.Sprintf("%d matrices", n), fmt.Sprintf("%d, one for each quadrature of %q", want, e.Channels[0]))
+		}
+		for i, op := range e.Operators {
+			if f := hermitian(fmt.Sprintf("operators[%d]", i), op); f != nil {
+				return f
+			}
+		}
+		if !slices.ContainsFunc(e.Operators, func(op []complex128) bool { return !empty(op) }) {
+			return bad("operators", "multiples of the identity", "Hermitian matrices of which something is left without the trace")
+		}
+	case "any":
+		if e.Operators == nil && e.Names == nil && e.Weights == nil {
+			if m.Dim > maxAnyDim {
+				return bad("kind", fmt.Sprintf("%q with %d levels", e.Kind, m.Dim), fmt.Sprintf("up to %d levels, or a list of operators", maxAnyDim))
+			}
+			return nil
+		}
+		n := len(e.Operators)
+		if n == 0 || len(e.Names) != n || len(e.Weights) != n {
+			return bad("operators", fmt.Sprintf("%d matrices, %d names and %d weights", n, len(e.Names), len(e.Weights)), "as many of each, or none of them")
+		}
+		seen, sum := map[string]bool{}, 0.0
+		for i, op := range e.Operators {
+			if f := operator(fmt.Sprintf("operators[%d]", i), op); f != nil {
+				return f
+			}
+			if name := e.Names[i]; name == "" || seen[name] {
+				return bad("names", fmt.Sprintf("%q as name %d", name, i), "a name of its own for each operator")
+			}
+			seen[e.Names[i]] = true
+			if w := e.Weights[i]; !(w > 0 && w <= 1e6) {
+				return bad("weights", w, "numbers above 0")
+			}
+			sum += e.Weights[i] * e.Weights[i]
+		}
+		if rms := math.Sqrt(sum / float64(n)); !(math.Abs(rms-1) <= 1e-6) {
+			return bad("weights", fmt.Sprintf("a root mean square of %.9g", rms), "weights of root mean square 1")
+		}
+		if e.Leak {
+			for i, op := range e.Operators {
+				if !(frobenius(m.leaking(op)) > 1e-6) {
+					return bad(fmt.Sprintf("operators[%d]", i), "nothing between the code space and the other levels", "operators that couple them, of a class of leakage")
+				}
+			}
+		}
+	default:
+		return bad("kind", fmt.Sprintf("%q", e.Kind), `"static", "amplitude", "any", "skew", "line" or "crosstalk"`)
+	}
+	return nil
+}
+
+// leaking gives the part of an operator that leads from the code space out of it: a row for each level outside.
+func (m *Model) leaking(op []complex128) []complex128 {
+	var part []complex128
+	for a := range m.Dim {
+		if slices.Contains(m.CodeSpace, a) {
+			continue
+		}
+		for _, b := range m.CodeSpace {
+			part = append(part, op[a*m.Dim+b])
+		}
+	}
+	return part
+}
+
 // validLine judges the numbers of a line, or of a line's slope.
 func validLine(key string, direct complex128, poles []complex128, powers []int, residues []complex128) *fault {
 	bad := func(k string, found any, allowed string) *fault {
@@ -477,6 +734,34 @@ func notHermitian(m []complex128, n int) string {
 		for j := range n {
 			if !(cmplx.Abs(m[i*n+j]-cmplx.Conj(m[j*n+i])) <= matrixTolerance*scale) {
 				return fmt.Sprintf("elements (%d, %d) and (%d, %d) that are not conjugates", i, j, j, i)
+			}
+		}
+	}
+	return ""
+}
+
+// notOrthonormal says what keeps vectors of n entries from being orthonormal, or nothing.
+func notOrthonormal(list [][]complex128, n int) string {
+	for i, v := range list {
+		if len(v) != n {
+			return fmt.Sprintf("%d entries in vector %d", len(v), i)
+		}
+		for _, z := range v {
+			if !(cmplx.Abs(z) <= 2) {
+				return fmt.Sprintf("entry %v in vector %d", z, i)
+			}
+		}
+		for j := 0; j <= i; j++ {
+			var sum complex128
+			for k, z := range v {
+				sum += cmplx.Conj(list[j][k]) * z
+			}
+			want := complex128(0)
+			if i == j {
+				want = 1
+			}
+			if !(cmplx.Abs(sum-want) <= matrixTolerance) {
+				return fmt.Sprintf("vectors %d and %d whose product is %.6g", j, i, sum)
 			}
 		}
 	}

@@ -12,7 +12,7 @@ import (
 // With h_n a bound of the norm of H_n, the numbers m_0 = 1, m_(n+1) = 1/(n+1) sum h_j m_(n-j) bound the norms of U_n
 // (Cauchy's majorants: by induction, term by term), so that the series cut after order N is wrong by at most the sum of m_n for n > N.
 // That sum is taken over seriesLength terms and closed as a geometric series. The order is the least for which it is under
-// stepTolerance; a step that would need more than goodOrder is shortened. The bound holds for every error up to the plan's
+// the tolerance; a step that would need more than goodOrder is shortened. The bound holds for every error up to the plan's
 // reach, so the steps do not depend on which errors are simulated together.
 const (
 	seriesLength  = 42
@@ -21,11 +21,16 @@ const (
 	stepTolerance = 4e-16      // of the norm of U, per step: about 1e-13 over a gate of a hundred samples
 	maxNumbers    = 60_000_000 // coefficients of one plan, about half a gigabyte
 
+	// Errors of more than two levels are judged with less, at half the cost: about 1e-8 of the norm of U over a hundred samples at the worst, and so
+	// 1e-10 of an infidelity of 1e-4.
+	roughTolerance = 1e-10
+
 	// The steps of one walk, so that absurd models end soon; real lines take one to five a sample.
 	stridesBase      = 100_000
 	stridesPerSample = 200
 
 	settledAngle = 1e-12 // rad: what is still to come when a gate counts as settled
+	nearlyAngle  = 1e-7  // the same where few digits are asked for
 	settleBudget = stridesBase
 )
 
@@ -59,6 +64,7 @@ func (r reach) holds(need reach) bool {
 // coefficient j of control k of a step stands at numbers[at + k*order + j].
 type plan struct {
 	controls int
+	least    float64 // a coefficient that is less, times the step, can be left out
 	steps    []timeStep
 	numbers  []float64
 	length   float64 // ns
@@ -113,7 +119,7 @@ func (w *walker) order(s float64, r reach) int {
 	}
 	for n := end; n > 0; n-- {
 		rest += m[n]
-		if !(rest <= stepTolerance) {
+		if !(rest <= w.tolerance) {
 			return min(n, maxOrder+1)
 		}
 	}
@@ -128,11 +134,25 @@ func (w *walker) order(s float64, r reach) int {
 //
 // and a shift by |u|^2 K, whose coefficients are sums of products of those of u and so complete to the order of u, becomes at most
 // the shift for (1 + lambda)^2 as much of any of u_I^2, u_Q^2 and u_I u_Q. A line's error adds lambda N of v and the beat and square of v.
+// An error of crosstalk adds lambda times what the channel's u drives elsewhere. Of a path the four controls are added up, each with the larger of its
+// operators, which covers every error of u; what turns by itself, cos(wt) C + sin(wt) S, has coefficients of at most |(C, S)| (ws)^n/n!.
 func (w *walker) bound(h []float64, r reach, s float64) {
 	for c := range w.e.drives {
 		d := &w.e.drives[c]
 		i, q := d.ops[0], d.ops[1]
 		w.boundOf(h, s, r.amplitude, i, q, i, q)
+		if d.bent > 0 {
+			for _, k := range d.ops {
+				for n := range h {
+					if k >= 0 {
+						h[n] += s * r.amplitude * d.bent * math.Abs(w.coefficients(k)[n])
+					}
+				}
+			}
+		}
+		for _, p := range d.paths {
+			w.boundPath(h, s*(1+r.amplitude), p)
+		}
 		if d.shift == nil {
 			continue
 		}
@@ -150,6 +170,15 @@ func (w *walker) bound(h []float64, r reach, s float64) {
 			h[n] += g * math.Max(math.Abs(a[n])+math.Abs(b[n]), math.Abs(ab[n]))
 		}
 	}
+	for k := range w.e.controls {
+		if c := &w.e.controls[k]; c.part == cosTerm {
+			norm := math.Hypot(c.norm, w.e.controls[k+1].norm)
+			a, b := w.coefficients(k), w.coefficients(k+1)
+			for n := range h {
+				h[n] += s * norm * math.Hypot(a[n], b[n])
+			}
+		}
+	}
 	if w.probe == nil || w.probe.slope == nil {
 		return
 	}
@@ -160,12 +189,31 @@ func (w *walker) bound(h []float64, r reach, s float64) {
 		q = at + 1
 	}
 	w.boundOf(h, s*r.line, 0, at, q, d.ops[0], d.ops[1])
+	for _, p := range w.probe.paths {
+		w.boundPath(h, s*r.line, p)
+	}
 	if d.shift != nil {
-		end := len(w.controls)
-		twice, square := w.coefficients(end-2), w.coefficients(end-1)
+		at++
+		if q >= 0 {
+			at++
+		}
+		twice, square := w.coefficients(at), w.coefficients(at+1)
 		f := s * d.norm * r.line
 		for n := range h {
 			h[n] += f * (2*math.Abs(twice[n]) + r.line*math.Abs(square[n]))
+		}
+	}
+}
+
+// boundPath adds f times a bound of the four controls of a path.
+func (w *walker) boundPath(h []float64, f float64, path [4]int) {
+	for _, k := range path {
+		if k < 0 {
+			continue
+		}
+		norm := w.controls[k].norm
+		for n, v := range w.coefficients(k) {
+			h[n] += f * norm * math.Abs(v)
 		}
 	}
 }

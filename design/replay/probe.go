@@ -15,9 +15,10 @@ type probe struct {
 	firstAxes, secondAxes []axis // the same when there are two levels
 
 	// An error of a line: what arrives through its slope are controls of its own, and so are the plans.
-	slope *Class
-	extra []control
-	plans plans
+	slope        *Class
+	extra        []control
+	paths        [][4]int // of the slope's controls, those of each path of the channel, by their numbers in a plan
+	plans, rough plans
 }
 
 func newStatic(op []complex128, n int) *probe {
@@ -86,6 +87,13 @@ func (e *engine) newAmplitude(names []string, which string) *probe {
 			if s := d.squares[q]; s >= 0 {
 				p.first[s], p.second[s] = scaled(d.shift, 2), d.shift
 			}
+			for _, path := range d.paths {
+				for _, k := range path[2*q : 2*q+2] {
+					if k >= 0 {
+						p.first[k] = e.controls[k].op
+					}
+				}
+			}
 		}
 	}
 	return e.ready(p)
@@ -104,12 +112,33 @@ func (e *engine) newSkew(names []string) *probe {
 		if d.shift != nil {
 			p.first[d.squares[2]], p.second[d.squares[1]] = scaled(d.shift, -2), d.shift
 		}
+		for _, path := range d.paths {
+			// u_Q cos goes where u_I cos does, and u_Q sin where u_I sin does.
+			for i := range 2 {
+				p.first[path[2+i]] = scaled(e.controls[path[i]].op, -1)
+			}
+		}
+	}
+	return e.ready(p)
+}
+
+// newCrosstalk lets u of the class's channel drive lambda times the class's operators.
+func (e *engine) newCrosstalk(class *Class) *probe {
+	p := e.newProbe()
+	for c, yes := range e.chosen(class.Channels, false) {
+		for q, op := range class.Operators {
+			if yes {
+				op = append([]complex128(nil), op...)
+				dropTrace(op, e.dim)
+				p.first[e.drives[c].ops[q]] = op
+			}
+		}
 	}
 	return e.ready(p)
 }
 
 // newLineError adds lambda v to u of the class's channel, v what arrives through the slope of its line:
-// of a shift, |u + lambda v|^2 = |u|^2 + 2 lambda Re(conj(u) v) + lambda^2 |v|^2.
+// of a shift, |u + lambda v|^2 = |u|^2 + 2 lambda Re(conj(u) v) + lambda^2 |v|^2. By the channel's paths v drives what u does.
 func (e *engine) newLineError(class *Class) *probe {
 	c := 0
 	for i := range e.m.Channels {
@@ -134,7 +163,22 @@ func (e *engine) newLineError(class *Class) *probe {
 		add(beat, scaled(d.shift, 2), nil)
 		add(slopes, nil, d.shift)
 	}
+	var paths [][4]int
+	for _, path := range d.paths {
+		for i, k := range path {
+			if k < 0 {
+				continue
+			}
+			o := &e.controls[k]
+			path[i] = len(e.controls) + len(extra)
+			add(o.part, o.op, nil)
+			x := &extra[len(extra)-1]
+			x.frequency, x.slope, x.norm = o.frequency, true, o.norm
+		}
+		paths = append(paths, path)
+	}
 	p := e.newProbe(extra...)
+	p.paths = paths
 	copy(p.first[len(e.controls):], first)
 	copy(p.second[len(e.controls):], second)
 	p.slope = class

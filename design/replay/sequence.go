@@ -5,6 +5,7 @@ import (
 	"errors"
 	"math"
 	"math/cmplx"
+	"slices"
 )
 
 const (
@@ -22,10 +23,27 @@ type follow struct {
 	// (D_after D) (D' U D) U D_before, and D' U D is the pulse with its samples times e^(-i theta).
 }
 
-var errNoFrame = errors.New("the free Z angles are not those of one rotation of the frame: pulses back to back are not judged")
+// Why pulses back to back are not judged.
+var (
+	errNoFrame  = errors.New("the free Z angles are not those of one rotation of the frame: pulses back to back are not judged")
+	errNoFollow = errors.New("local rotations cannot be followed from one pulse to the next: pulses back to back are not judged")
+	errNoSquare = errors.New("a pulse that takes states to others has no square: pulses back to back are not judged")
+	errTurning  = errors.New("the Hamiltonian turns by itself, so that the same samples a span later are another gate: pulses back to back are not judged")
+)
+
+// turning says whether the Hamiltonian depends on time otherwise than by what the channels play.
+func (m *Model) turning() bool {
+	return len(m.Rotating) > 0 || slices.ContainsFunc(m.Channels, func(c Channel) bool { return len(c.Paths) > 0 })
+}
 
 func (e *engine) follow() (follow, error) {
 	f := follow{turn: 1}
+	switch {
+	case e.m.turning():
+		return f, errTurning
+	case len(e.m.LocalBefore) > 0:
+		return f, errNoFollow
+	}
 	g, err := e.turn()
 	if err == nil {
 		f.g = g
@@ -114,8 +132,11 @@ func (e *engine) finish(ctx context.Context, w *walker, total []complex128) ([]c
 // H0 the target is reached twice as the single one is, H0 included in each window; a turn needs H0 to commute with the frame's
 // rotation, and otherwise only the phase zero is judged.
 func (e *engine) pair(ctx context.Context) (Pair, error) {
+	if e.states > 0 {
+		return Pair{}, errNoSquare
+	}
 	f, err := e.follow()
-	if err == errNoFrame {
+	if notJudged(err) {
 		return Pair{}, err
 	}
 	settled := *e.m
@@ -151,7 +172,7 @@ func (e *engine) pair(ctx context.Context) (Pair, error) {
 		if err != nil {
 			return Pair{}, err
 		}
-		if got := e.against(e.labours[0], u, square, e.before, after).Infidelity; got > worst.Infidelity {
+		if got := e.against(e.labours[0], e.first(e.labours[0], u), square, e.before, after).Infidelity; got > worst.Infidelity {
 			worst = Pair{Infidelity: got, Phase: 90 * float64(quarter)}
 		}
 	}
@@ -199,7 +220,7 @@ func (e *engine) bringUp(ctx context.Context) (BringUp, error) {
 		b.Detuning[i].One = found[len(b.Amplitude)+i]
 	}
 	f, err := e.follow()
-	if err == errNoFrame {
+	if notJudged(err) {
 		return b, nil // said where the pair is judged
 	}
 	turns := make([]complex128, repeats)

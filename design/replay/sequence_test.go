@@ -206,3 +206,73 @@ func TestNoTurn(t *testing.T) {
 		t.Errorf("a ladder turns by %v, %v", g, err)
 	}
 }
+
+// Two spins, each turned by its own channel, alike in both windows: the pair is exact, with the same free angle on both sites too, whichever phase all drives
+// have. Where sites have unlike angles, where local rotations are free, where the Hamiltonian turns by itself and where states are the target it is not judged.
+func TestPairOfSites(t *testing.T) {
+	ctx := context.Background()
+	model := func() *Model {
+		m := idle(2, 10)
+		for c := range 2 {
+			for k := range m.Samples {
+				m.Channels[c].Samples[k] = cmplx.Rect(0.3+0.2*float64(c), 0.4*float64(c)+0.1*float64(k%3))
+			}
+		}
+		for i := range m.Static { // an exchange and a coupling of the Z parts, which turn of both together leaves alone
+			m.Static[i] = 0.02 * (pauli("XX")[i] + pauli("YY")[i] + 2*pauli("ZZ")[i])
+		}
+		return m
+	}
+	m := model()
+	u := evolve(t, newTestEngine(t, m), nil, 0)
+	z := kron([][]complex128{rotationZ(0.7), rotationZ(0.7)})
+	for i := range 4 {
+		for j := range 4 {
+			m.Target[i*4+j] = z[i*5] * u[i*4+j]
+		}
+	}
+	m.FreeZAfter = []float64{0.7, 0.7}
+	p, err := m.Pair(ctx)
+	if err != nil || !(p.Infidelity <= 1e-24) {
+		t.Errorf("the same angle on both: %v, %v", p, err)
+	}
+	if w := m.Target; distance(w, u) < 0.1 {
+		t.Error("the angle does nothing")
+	}
+	warned := func(m *Model, want error) {
+		t.Helper()
+		m.Errors = []Class{{Name: "amplitude", Kind: "amplitude"}}
+		if _, err := m.Pair(ctx); err != want {
+			t.Errorf("%v, want %v", err, want)
+		}
+		v, err := m.Judge(ctx, 1e-4)
+		if err != nil || len(v.Warnings) != 1 || v.Warnings[0] != sentence(want) || !math.IsNaN(v.Pair.Infidelity) {
+			t.Errorf("%v, warnings %q, pair %v; want %v", err, v.Warnings, v.Pair, want)
+		}
+	}
+	m.FreeZAfter[1] = 0.6
+	warned(m, errNoFrame)
+	m = model()
+	m.LocalBefore, m.LocalAfter = [][]complex128{unit(2), unit(2)}, [][]complex128{unit(2), unit(2)}
+	warned(m, errNoFollow)
+	m = model()
+	m.Rotating = []Rotating{{1, m.Static, m.Static}}
+	warned(m, errTurning)
+	m = model()
+	m.Channels[1].Paths = []Path{{1, m.Channels[0].Operators}}
+	warned(m, errTurning)
+	m = model()
+	m.Target, m.From, m.To = nil, [][]complex128{label(4, 0)}, [][]complex128{label(4, 0)}
+	warned(m, errNoSquare)
+	// A spin that turns by itself, or of which states are asked, has its tables still; repeats only where they can follow.
+	one := composite(plain)
+	one.Target, one.From, one.To = nil, [][]complex128{{1, 0}}, [][]complex128{{0, 1}}
+	v, err := one.Judge(ctx, 1e-4)
+	if err != nil || !(v.Settled.Infidelity <= 1e-26) || len(v.BringUp.Amplitude) != 21 || len(v.BringUp.Repeats) != repeats {
+		t.Errorf("%+v, %v", v.Settled, err)
+	}
+	one.Rotating = []Rotating{{0.5, halfX, halfY}}
+	if v, err = one.Judge(ctx, 1e-4); err != nil || len(v.BringUp.Amplitude) != 21 || len(v.BringUp.Repeats) != 0 {
+		t.Errorf("%d, %d rows, %v", len(v.BringUp.Amplitude), len(v.BringUp.Repeats), err)
+	}
+}

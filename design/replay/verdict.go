@@ -6,19 +6,28 @@ import "holdfast/hardware"
 // from the integer codes of the folder and the numbers of its [model], never
 // from the design path. Times are in ns, angles in rad, rates in rad/ns unless
 // a field says otherwise; infidelity is the average gate infidelity on the code
-// space.
+// space, or what Measure says.
 type Verdict struct {
 	Name string // of the pulse
 	Ends string // "settled" or "window": which ends the pulse was designed for and is required to meet
 
-	Settled Figures // integrated on until the angle still to come is under 1e-6 rad
+	// Measure says what infidelity means: "gate", "state" (one state to one) or "subspace" (the span of
+	// some states to that of as many others, the loss averaged over them).
+	Measure string
+
+	Settled Figures // integrated on until the angle still to come is under 1e-12 rad
 	Window  Figures // drive before the start and after the end of the window ignored
+
+	// Dropped are the figures for the required ends with the rotating terms that the
+	// model leaves out put back; nil when it leaves out none, or when they turn too fast to be integrated,
+	// which a warning says.
+	Dropped *Figures
 
 	TailAngle float64 // rad that the ring-out still turns after the window
 	Pair      Pair    // the same pulse twice, back to back
 
-	// Decoherence is T/6 (1/T1 + 2/T2), to be added to every coherent figure;
-	// zero when the device states neither time.
+	// Decoherence is to be added to every coherent infidelity: T/6 (1/T1 + 2/T2) of a spin, see Folder.Decoherence for
+	// several sites; zero when the device states no times.
 	Decoherence float64
 
 	Limits []Limit // of the instrument, recomputed from the codes
@@ -60,15 +69,15 @@ func (v *Verdict) Required() Figures {
 
 // Figures are those of one gate.
 type Figures struct {
-	Infidelity float64 // average gate infidelity
-	Leakage    float64
+	Infidelity float64 // see Verdict.Measure
+	Leakage    float64 // out of the code space, averaged over its states, or over the first ones of a target of states
 }
 
 // Pair is the gate played twice without a gap against the square of its
 // target: what one pulse's ring-out does to the next, beyond what the record
 // of a single gate can show. The second pulse is turned by each of four phases
-// (0, 90, 180, 270 degrees) and the worst is kept. Where free Z angles cannot be
-// followed from one pulse to the next it is NaN, and a warning says so.
+// (0, 90, 180, 270 degrees) and the worst is kept. Where free Z angles or local rotations cannot be
+// followed from one pulse to the next, for a target of states, and where the Hamiltonian turns by itself, it is NaN, and a warning says so.
 type Pair struct {
 	Infidelity float64
 	Phase      float64 // degrees, of the worst
@@ -84,32 +93,44 @@ type Limit struct {
 type Error struct {
 	Name string
 	Held bool
-	Kind string // "static", "amplitude", "any", "skew" or "line", as Class defines them
-	Unit string // of Low, High and Curve's Value: "MHz", "%" (amplitude and line) or "deg" (skew)
+	Kind string // "static", "amplitude", "any", "skew", "line" or "crosstalk", as Class defines them
+	Unit string // of Low, High and Curve's Value: "MHz", "%" (amplitude, line and crosstalk) or "deg" (skew)
 
 	// Susceptibility is the share of the error that survives the gate, rms over
-	// the class, 0 to 1, from Richardson-extrapolated differences of exact gates.
+	// the class, 0 to 1, from Richardson-extrapolated differences of exact gates. Of a class
+	// of leakage (Leak) it is the share of what leads out of the code space.
 	Susceptibility float64
+
+	// LeakSusceptibility is what the error leads out of the code space, as a share of the
+	// whole error, rms over the class; nil where no levels lie outside.
+	LeakSusceptibility *float64
+	Leak               bool // a class of leakage
 
 	// Low and High are the error sizes, negative and positive, at which the
 	// required infidelity is first broken, found by root search; -Inf and +Inf
 	// when it holds to the end of the searched range, 0 when it is broken
 	// without any error. The range is 50 MHz, 50 % or 50 degrees; of static errors
 	// no more than twice the largest full scale, or a margin that is required. For "any" the margin is over the direction found worst
-	// of a fixed set (for a spin the axes, both ways, and the eight directions
-	// between them) and Low = -High; a size f means f times a rotation of one turn
-	// a microsecond for 1 MHz about that direction.
+	// of those that were looked at (for a spin without a list of operators the axes, both ways, and the eight directions
+	// between them; for all others see Sampled) and Low = -High; a size f means 2 pi f times one operator with its weight, or times
+	// a combination of them of length 1: of spins' half products a rotation of one turn a microsecond for 1 MHz.
 	Low, High float64
 
+	// Sampled says what Low, High and Curve of a class of many operators were looked for along, such as
+	// "the 15 operators of the class, the combination that survives most, 16 fixed combinations, both ways; the curve along the 8 ways that are worst".
+	// Empty for one spin's "any" without a list, and for all other kinds.
+	Sampled string
+
 	// WorstDirection says which error of the class survives most, such as
-	// "0.83 X + 0.41 Y", and WorstSusceptibility how much of it. Kind "any" only.
+	// "0.83 X + 0.41 Y", and WorstSusceptibility how much of it, relative to the operator of root mean square strength.
+	// Kind "any" only. Of operators that are weighted it is the combination of the weighted ones.
 	WorstDirection      string
 	WorstSusceptibility float64
-	Direction           []float64 // the same direction as numbers, of length 1: along X, Y, Z for one spin
+	Direction           []float64 // the same direction as numbers, of length 1: along X, Y, Z for one spin, and along Members of a class of many operators
+	Members             []string  // names of the class's operators, of kind "any"; nil for one spin's without a list
 
 	// Curve is the infidelity for the required ends against the size of the
-	// error. For "any" sizes have no sign, and each point is the worst over the
-	// fixed set.
+	// error. For "any" sizes have no sign, and each point is the worst over what was looked at.
 	Curve []Point
 }
 

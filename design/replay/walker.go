@@ -169,16 +169,20 @@ type walker struct {
 	step     float64     // ns, that fitted last
 	count    int         // of steps so far
 
+	tolerance float64 // of the norm of U, per step
+
 	ctl        []float64 // Taylor coefficients of every control, seriesLength each
+	cos, sin   []float64 // those of what turns
 	cur, sum   []complex128
 	norms, maj []float64
 }
 
 func (e *engine) newWalker(pr *probe, turns ...complex128) *walker {
 	w := &walker{
-		e: e, probe: pr, controls: e.controls, turns: turns, t: e.start, step: e.m.SamplePeriod,
+		e: e, probe: pr, controls: e.controls, turns: turns, t: e.start, step: e.m.SamplePeriod, tolerance: e.tolerance,
 		cur: make([]complex128, maxPower), sum: make([]complex128, maxPower),
 		norms: make([]float64, seriesLength), maj: make([]float64, seriesLength),
+		cos: make([]float64, seriesLength), sin: make([]float64, seriesLength),
 	}
 	for c := range e.m.Channels {
 		ch := &e.m.Channels[c]
@@ -195,7 +199,9 @@ func (e *engine) newWalker(pr *probe, turns ...complex128) *walker {
 }
 
 // newPlan gives an empty plan for the walker's steps.
-func (w *walker) newPlan() *plan { return &plan{controls: len(w.controls)} }
+func (w *walker) newPlan() *plan {
+	return &plan{controls: len(w.controls), least: w.tolerance / 4000}
+}
 
 // fork gives an independent walker at the same instant, of which the sequence ends after the first n pulses.
 func (w *walker) fork(n int) *walker {
@@ -287,7 +293,7 @@ func (w *walker) to(ctx context.Context, t float64, r reach, p *plan) error {
 	return nil
 }
 
-// settle walks on until less than settledAngle is still to come, or the budget of steps is spent, and says how much is left, in rad.
+// settle walks on until no more than the engine's angle is still to come, or the budget of steps is spent, and says how much is left, in rad.
 func (w *walker) settle(ctx context.Context, p *plan) (left float64, err error) {
 	for {
 		w.take()
@@ -301,7 +307,7 @@ func (w *walker) settle(ctx context.Context, p *plan) (left float64, err error) 
 	}
 	for w.count = 0; ; {
 		left = w.left()
-		if left <= settledAngle || w.count >= settleBudget {
+		if left <= w.e.still || w.count >= settleBudget {
 			return left, nil
 		}
 		if err := ctx.Err(); err != nil {
@@ -330,6 +336,9 @@ func (w *walker) left() float64 {
 				norm = math.Max(norm, w.e.controls[k].norm)
 			}
 		}
+		for _, p := range d.paths {
+			norm += w.e.controls[p[0]].norm
+		}
 		a += 2*norm*u*d.fullScale + 2*d.norm*peak*u
 	}
 	return a
@@ -353,6 +362,15 @@ func (w *walker) series(s float64) {
 	slope := w.lines[len(w.lines)-1].buf // when there is one
 	for k := range w.controls {
 		c := &w.controls[k]
+		if c.channel < 0 {
+			w.turn(c.frequency, s)
+			if c.part == cosTerm {
+				copy(w.coefficients(k), w.cos)
+			} else {
+				copy(w.coefficients(k), w.sin)
+			}
+			continue
+		}
 		u, f, dst := w.lines[c.channel].buf, w.e.drives[c.channel].fullScale, w.coefficients(k)
 		switch c.part {
 		case inPhase, quadrature, slopeI, slopeQ:
@@ -365,6 +383,26 @@ func (w *walker) series(s float64) {
 				} else {
 					dst[n] = f * imag(v)
 				}
+			}
+		case cosI, sinI, cosQ, sinQ:
+			w.turn(c.frequency, s)
+			turned := w.cos
+			if c.part == sinI || c.part == sinQ {
+				turned = w.sin
+			}
+			if c.slope {
+				u = slope
+			}
+			for n := range dst {
+				sum := 0.0
+				for j := 0; j <= n; j++ {
+					v := real(u[j])
+					if c.part >= cosQ {
+						v = imag(u[j])
+					}
+					sum += v * turned[n-j]
+				}
+				dst[n] = f * sum
 			}
 		default: // products, in shares of full scale
 			for n := range dst {
@@ -387,6 +425,16 @@ func (w *walker) series(s float64) {
 				dst[n] = sum
 			}
 		}
+	}
+}
+
+// turn fills cos and sin with the Taylor coefficients of cos(w t) and sin(w t), t from the window's start, over a step of s ns from now:
+// real and imaginary part of e^(iwt) (iws)^n/n!.
+func (w *walker) turn(frequency, s float64) {
+	z := cmplx.Rect(1, frequency*(w.t-w.e.start))
+	for n := range w.cos {
+		w.cos[n], w.sin[n] = real(z), imag(z)
+		z *= complex(0, frequency*s/float64(n+1))
 	}
 }
 

@@ -3,9 +3,14 @@ package robust
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"holdfast/design/dynamics"
 )
+
+// A Node is a frequency, rad/ns, of a quadrature over the spectrum of a noise, and its
+// weight, in units of λ squared.
+type Node struct{ Frequency, Weight float64 }
 
 // Kind tells the sorts of errors apart.
 type Kind int
@@ -24,14 +29,31 @@ type Class struct {
 	Name   string
 	Kind   Kind
 	Vector dynamics.Vec // kind Static: V, any length but zero
-	// Operator is V of kind Static for more levels than two, where Vector is (0, 0, 1):
-	// its length and sign along Operator are all that is asked of it.
-	Operator []complex128
-	Mix      [][]float64 // kind Mixed: row by control that is moved, column by control that moves it
-	Weight   float64     // of its residuals; the gate itself has 1
-	// Size is the largest error that the refinement looks at: the length of the
-	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), or λ for errors of
-	// the controls. Zero keeps the class out of the refinement.
+	// Operators are, for more levels than a spin's, the V of kind Static, one, and of
+	// kind Any, each with its name; H += λ V. Factors are the sizes that they have beside each other,
+	// of root mean square 1; nil for ones.
+	Operators [][]complex128
+	Factors   []float64
+	Names     []string
+	// Leak asks of kind Any, for what couples the code space to the rest, that the first
+	// order move nothing out of it.
+	Leak   bool
+	Mix    [][]float64 // kind Mixed: row by control that is moved, column by control that moves it
+	Weight float64     // of its residuals; the gate itself has 1
+	// Order is how far the error is to be cancelled: 1, the zero value's meaning too, or
+	// 2, whereafter the infidelity begins with the sixth power of the error.
+	Order int
+	// Values are sizes of the error, as Size, over which the exact infidelity is to be low,
+	// in the place of any order; Shares are their weights, of sum 1.
+	Values, Shares []float64
+	// Worst says that it is the largest infidelity over Values that counts.
+	Worst bool
+	// Noise lets the error, of kind Static or Amplitude, fluctuate in the place of being held
+	// to an order: what it leaves of 1 - F_pro is the sum over nodes of Weight times the filter function at Frequency,
+	// || ∫ V_I e^{iwt} dt ||²/d (Green, Sastrawan, Uys, Biercuk 2013, New J. Phys. 15, 095004). Known to LevelsGate alone.
+	Noise []Node
+	// Size is the largest error that the refinement looks at: of a spin's static errors the length of the
+	// field it adds in rad/ns (a detuning of 1 MHz is 2π 1e-3), else λ. Zero keeps the class out of the refinement.
 	Size float64
 	// OneSided leaves the opposite directions of kind Any out of the ensemble: half
 	// the work while the second order, which is even in the error, rules.
@@ -41,6 +63,33 @@ type Class struct {
 // borne says whether an error of the kind rides on the controls.
 func (k Kind) borne() bool { return k == Amplitude || k == Mixed || k == Line }
 
+// heldWeight is the weight of what the first order leaves.
+func (c *Class) heldWeight() float64 {
+	if c.Values != nil || c.Noise != nil {
+		return 0
+	}
+	return c.Weight
+}
+
+// at is the error of a size, of a class of one error.
+func (c *Class) at(size float64) member {
+	switch c.Kind {
+	case Static:
+		return member{offset: scaled(unit(c.Vector), size), scale: 1}
+	case Amplitude:
+		return member{scale: 1 + size}
+	}
+	return member{scale: 1, lambda: size}
+}
+
+// spread lists the errors of Values, each with the root of its share as the weight of its residuals.
+func (c *Class) spread() (list []member, factors []float64) {
+	for i, x := range c.Values {
+		list, factors = append(list, c.at(x)), append(factors, c.Weight*math.Sqrt(c.Shares[i]))
+	}
+	return list, factors
+}
+
 // member is one finite error of an ensemble: a field that is added, and a scale
 // or, for the other errors that ride on the controls, a λ.
 type member struct {
@@ -49,10 +98,52 @@ type member struct {
 	lambda float64
 }
 
+// The second order in an error λV is what second differences of exact gates leave, the
+// third and higher orders extrapolated away: with x the angle that λ turns at most, and
+// D(x) = ( m(x) + m(-x) - 2 m(0) ) / 2x² of the residuals m, it is (4 D(x/2) - D(x))/3,
+// wrong by some x⁴/100 and by the rounding of m over x².
+const secondAngle = 0.1 // x, rad
+
+// secondPoints are the errors of the differences, in units of x.
+var secondPoints = [4]float64{1, -1, 0.5, -0.5}
+
+// secondDifference combines them, gates first to first+3, with the nominal gate.
+func secondDifference(first int, weight float64) blend {
+	const f = 1 / (secondAngle * secondAngle)
+	b := blend{gates: []int{0}, factors: []float64{-5 * f * weight}}
+	for i, c := range [4]float64{-1. / 6, -1. / 6, 8. / 3, 8. / 3} {
+		b.gates, b.factors = append(b.gates, first+i), append(b.factors, c*f*weight)
+	}
+	return b
+}
+
+// ways lists the directions of the second order of a spin's class, each a finite error
+// of x times its argument in a window of span ns with controls of rate full: of all
+// static errors also the pairs, as the order is quadratic in the error.
+func (c Class) ways(span, full float64) (list []func(f float64) member) {
+	x := secondAngle
+	switch c.Kind {
+	case Static, Any:
+		vectors := []dynamics.Vec{unit(c.Vector)}
+		if c.Kind == Any {
+			h := math.Sqrt2 / 2
+			vectors = []dynamics.Vec{{1, 0, 0}, {0, 1, 0}, {0, 0, 1}, {h, h, 0}, {h, 0, h}, {0, h, h}}
+		}
+		for _, v := range vectors {
+			list = append(list, func(f float64) member { return member{offset: scaled(v, f*x/span), scale: 1} })
+		}
+	case Amplitude:
+		list = append(list, func(f float64) member { return member{scale: 1 + f*x/(span*full)} })
+	default:
+		list = append(list, func(f float64) member { return member{scale: 1, lambda: f * x / (span * full)} })
+	}
+	return list
+}
+
 // ensemble returns the finite errors of a class: both signs of its size, or for
-// Any its size along the Directions.
+// Any its size along the Directions; none of a class that has Values of its own.
 func (c Class) ensemble() []member {
-	if c.Size == 0 {
+	if c.Size == 0 || c.Values != nil || c.Noise != nil {
 		return nil
 	}
 	switch c.Kind {
@@ -99,21 +190,22 @@ func scaled(v dynamics.Vec, f float64) dynamics.Vec {
 }
 
 // inWords writes a direction, which is as good as its opposite, such as
-// "0.83 X + 0.41 Y": the largest component is positive, those under 0.05 are
-// left out.
-func inWords(v dynamics.Vec) string {
+// "0.83 X + 0.41 Y": the largest component is positive, those under 0.05, and all but
+// the six largest, are left out.
+func inWords(v []float64, names []string) string {
+	sizes := make([]float64, len(v))
 	lead := 0
-	for i := range v {
-		if math.Abs(v[i]) > math.Abs(v[lead]) {
+	for i, x := range v {
+		if sizes[i] = math.Abs(x); sizes[i] > math.Abs(v[lead]) {
 			lead = i
 		}
 	}
-	if v[lead] < 0 {
-		v = scaled(v, -1)
-	}
+	sign := math.Copysign(1, v[lead])
+	slices.Sort(sizes)
+	least := math.Max(0.05, sizes[max(0, len(sizes)-6)])
 	text := ""
 	for i, x := range v {
-		if math.Abs(x) < 0.05 {
+		if x *= sign; math.Abs(x) < least {
 			continue
 		}
 		switch {
@@ -124,7 +216,7 @@ func inWords(v dynamics.Vec) string {
 		case text != "":
 			text += " + "
 		}
-		text += fmt.Sprintf("%.2f %c", math.Abs(x), "XYZ"[i])
+		text += fmt.Sprintf("%.2f %s", math.Abs(x), names[i])
 	}
 	return text
 }

@@ -2,6 +2,7 @@ package robust
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/mat"
 
@@ -14,9 +15,13 @@ type Figures struct {
 	Leakage    float64 // out of the code space; zero for one spin
 	// Before and After are these angles, rad; zero where not free.
 	Before, After float64
-	// Susceptibility of each held class of the Spin, in order.
+	Rotations     Rotations // of more levels, at which these figures are
+	// Susceptibility of each held class, in order, and of more levels what it moves out of the code space,
+	// relative to the whole error.
 	Susceptibility []float64
-	Worst          []Worst // of each held class; the zero value for classes of one error
+	Leak           []float64
+	Noise          []float64 // of each held class, the infidelity that its noise adds to first order in the spectrum
+	Worst          []Worst   // of each held class; the zero value for classes of one error
 }
 
 // Worst is the error of a class that survives most.
@@ -30,10 +35,9 @@ type Worst struct {
 func (g *Gate) Figures(u []float64, v [][]float64) Figures {
 	g.load(u, v)
 	g.nominal.Run(g.u, dynamics.Vec{})
-	f := Figures{Infidelity: g.infidelity(g.nominal.Gate)}
-	if g.spec.FreeBefore || g.spec.FreeAfter {
-		f.Before, f.After = g.angles(g.after.Mul(g.nominal.Gate).Mul(g.before))
-	}
+	var f Figures
+	f.Before, f.After = g.best(g.nominal.Gate)
+	f.Infidelity = g.infidelity(g.nominal.Gate, f.Before, f.After)
 	at := 0
 	// combine lists static classes before borne ones: walk them as NewGate did
 	share := make([]float64, len(g.spec.Held))
@@ -65,9 +69,9 @@ func (g *Gate) Figures(u []float64, v [][]float64) Figures {
 	return f
 }
 
-// infidelity returns the average gate infidelity of the grid's gate.
-func (g *Gate) infidelity(q dynamics.Quat) float64 {
-	m, _ := g.miss(q)
+// infidelity returns the average gate infidelity of the grid's gate at free angles.
+func (g *Gate) infidelity(q dynamics.Quat, before, after float64) float64 {
+	m := g.see(q, before, after).miss
 	return 2. / 3 * (m[0]*m[0] + m[1]*m[1] + m[2]*m[2])
 }
 
@@ -105,41 +109,72 @@ func universal(m [9]float64) (float64, Worst) {
 		var v mat.Dense
 		svd.VTo(&v)
 		w.Susceptibility = svd.Values(nil)[0]
-		w.Direction = inWords(dynamics.Vec{v.At(0, 0), v.At(1, 0), v.At(2, 0)})
+		w.Direction = inWords(mat.Col(nil, 0, &v), []string{"X", "Y", "Z"})
 	}
 	return math.Sqrt(sum / 3), w
 }
 
 // Infidelity returns the average gate infidelity of controls u with a static
-// error of field offset (rad/ns) and every control scaled, in the window only.
+// error of field offset (rad/ns) and every control scaled, in the window only, at the
+// free angles that are best without the error.
 func (g *Gate) Infidelity(u []float64, offset dynamics.Vec, scale float64) float64 {
-	copy(g.u, u)
-	return g.erring(member{offset: offset, scale: scale}, nil)
+	g.set(u)
+	before, after := g.playback()
+	return g.erring(member{offset: offset, scale: scale}, nil, before, after)
+}
+
+// playback returns the best free angles of the loaded controls.
+func (g *Gate) playback() (before, after float64) {
+	if g.free() {
+		g.finite.Run(g.u, dynamics.Vec{})
+		before, after = g.best(g.finite.Gate)
+	}
+	return before, after
 }
 
 // erring returns the infidelity of the loaded controls with a finite error.
-func (g *Gate) erring(e member, v []float64) float64 {
+func (g *Gate) erring(e member, v []float64, before, after float64) float64 {
 	g.err(e, v)
 	g.finite.Run(g.moved, e.offset)
-	return g.infidelity(g.finite.Gate)
+	return g.infidelity(g.finite.Gate, before, after)
 }
 
 // MeanInfidelity returns the mean average gate infidelity over the finite errors
-// of the numbered held class at its size, both signs of each; u and v as for
+// of the numbered held class at its size, both signs of each, or over its Values by their Shares, of which with Worst it is the largest; u and v as for
 // Figures.
 func (g *Gate) MeanInfidelity(u []float64, v [][]float64, class int) float64 {
 	g.load(u, v)
 	c := g.spec.Held[class]
 	c.OneSided = false
 	list := c.ensemble()
+	if c.Values != nil {
+		list, _ = c.spread()
+	}
 	if len(list) == 0 {
 		return 0
 	}
-	sum := 0.0
-	for _, e := range list {
-		sum += g.erring(e, g.v[class])
+	before, after := g.playback()
+	losses := make([]float64, len(list))
+	for i, e := range list {
+		losses[i] = g.erring(e, g.added(class), before, after)
 	}
-	return sum / float64(len(list))
+	return c.mean(losses)
+}
+
+// mean weighs losses by the class's shares.
+func (c *Class) mean(losses []float64) float64 {
+	if c.Worst {
+		return slices.Max(losses)
+	}
+	sum := 0.0
+	for i, x := range losses {
+		share := 1 / float64(len(losses))
+		if c.Shares != nil {
+			share = c.Shares[i]
+		}
+		sum += share * x
+	}
+	return sum
 }
 
 // InfidelityAt returns the average gate infidelity of controls u with rotations
@@ -153,6 +188,11 @@ func (g *Gate) InfidelityAt(u []float64, before, after float64) float64 {
 // Unitary returns the gate of controls u given at the grid's nodes, in the frame
 // of the undriven device, without free angles.
 func (g *Gate) Unitary(u []float64) dynamics.Quat {
+	if g.mapped != nil {
+		copy(g.moved, u)
+		g.mapMoved()
+		u = g.moved
+	}
 	g.finite.Run(u, dynamics.Vec{})
 	return g.after.Mul(g.finite.Gate).Mul(g.before)
 }

@@ -15,6 +15,9 @@ type Grid struct {
 	// the free evolution over them is taken out of the gate, whose frame is that of
 	// the undriven device.
 	Lead, Trail float64
+	// Times are the instants of the nodes, two a step, in ns from the start of the
+	// window; wanted where terms rotate.
+	Times []float64
 }
 
 // Window returns the length of the gate's window in ns.
@@ -32,6 +35,9 @@ type Spin struct {
 	Static dynamics.Vec   // H0 = Static·σ/2, rad/ns
 	Axes   []dynamics.Vec // of each control at full scale: H += share (Axes·σ)/2, rad/ns
 	Shifts []dynamics.Vec // what the square of each control's share adds, rad/ns; nil for none
+	// Maps of the controls from the first on, nil for a straight one: a map's value, of about 1 at most, stands
+	// in the place of the share with Axes and Shifts. Errors that ride on the controls act on the share.
+	Maps   []Map
 	Target dynamics.Quat
 	// FreeBefore and FreeAfter leave a rotation about Z on that side of the gate to
 	// the playback: the residuals are those at the best angles.
@@ -68,17 +74,19 @@ type Gate struct {
 	before dynamics.Quat
 	after  dynamics.Quat
 	full   float64 // full-scale rate that makes residuals of borne errors dimensionless, rad/ns
-	weight float64 // of the members' residuals
+	weight float64 // of the residuals of finite errors
 
 	nominal dynamics.Spin // with every toggled error
 	finite  dynamics.Spin // gate only
 	combine []triple
 	members []placed
+	blocks  []blend // of gates, each three residuals
 	rows    int
 
-	d      []float64 // derivatives by node: raw rows x controls x nodes; the slopes lie in it
-	raw    []float64 // by coefficient: raw rows x Dim
-	frames []frame   // of the nominal gate, then of each member
+	d      []float64    // derivatives by node: raw rows x controls x nodes; the slopes lie in it
+	raw    []float64    // by coefficient: raw rows x Dim
+	seen   []seen       // the nominal gate, then each member
+	turned [2][]float64 // derivatives of the free angles by the coefficients, before and after
 	slopes dynamics.Slopes
 	member []dynamics.Slopes
 }
@@ -102,15 +110,28 @@ type part struct {
 	factor float64
 }
 
-// frame takes the generator δ of dynamics to the derivative of a gate residual.
-type frame [9]float64
+// seen is the miss of a gate at given free angles, the frame that takes the generator δ
+// of dynamics to its derivative, and its derivatives by the angles, before and after.
+type seen struct {
+	miss   dynamics.Vec
+	frame  [9]float64
+	angles [2]dynamics.Vec
+}
+
+// A blend is a linear combination of the residuals of gates, by their number; the nominal gate is 0.
+type blend struct {
+	gates   []int
+	factors []float64
+}
 
 // NewGate prepares the residuals of the problem: the gate error (3), then for
 // every held class the time-averaged toggled error (3, or 9 for Any), static
-// classes before those that ride on the controls. With refine > 0, the gate errors
-// of the classes' ensembles (3 each) follow with that weight.
+// classes before those that ride on the controls; then for every class of order 2 what
+// the second order leaves in each of its directions (3). With refine > 0, the gate errors
+// of the classes' ensembles (3 each) follow with that weight. Gates with an error are
+// seen at the free angles of the one without, as playback has them.
 func NewGate(s Spin, r Response, refine float64) *Gate {
-	g := &Gate{drive: newDrive(r, s.Held, len(s.Axes), s.Grid), spec: s, weight: refine}
+	g := &Gate{drive: newDrive(r, s.Held, len(s.Axes), s.Grid, s.Maps), spec: s, weight: refine}
 	g.span = s.Grid.Window()
 	g.before = dynamics.Turn(scaled(s.Static, -s.Grid.Lead))
 	g.after = dynamics.Turn(scaled(s.Static, -s.Grid.Trail))
@@ -140,31 +161,52 @@ func NewGate(s Spin, r Response, refine float64) *Gate {
 		switch {
 		case c.Kind == Any:
 			for i := range 3 {
-				g.combine = append(g.combine, triple{c.Weight, []part{{i, 1 / g.span}}})
+				g.combine = append(g.combine, triple{c.heldWeight(), []part{{i, 1 / g.span}}})
 			}
 		case c.Kind == Static && all:
 			v := unit(c.Vector)
-			g.combine = append(g.combine, triple{c.Weight, []part{{0, v[0] / g.span}, {1, v[1] / g.span}, {2, v[2] / g.span}}})
+			g.combine = append(g.combine, triple{c.heldWeight(), []part{{0, v[0] / g.span}, {1, v[1] / g.span}, {2, v[2] / g.span}}})
 		case c.Kind == Static:
-			g.combine = append(g.combine, triple{c.Weight, []part{{len(g.nominal.Held), 1 / g.span}}})
+			g.combine = append(g.combine, triple{c.heldWeight(), []part{{len(g.nominal.Held), 1 / g.span}}})
 			g.nominal.Held = append(g.nominal.Held, unit(c.Vector))
 		}
 	}
 	for k, i := range g.borne {
-		g.combine = append(g.combine, triple{s.Held[i].Weight, []part{{len(g.nominal.Held) + k, 1 / (g.span * g.full)}}})
+		g.combine = append(g.combine, triple{s.Held[i].heldWeight(), []part{{len(g.nominal.Held) + k, 1 / (g.span * g.full)}}})
 		g.nominal.Borne = append(g.nominal.Borne, g.v[i])
+	}
+	for i, c := range s.Held {
+		list, factors := c.spread()
+		for k, m := range list {
+			g.members = append(g.members, placed{m, i})
+			g.blocks = append(g.blocks, blend{[]int{len(g.members)}, factors[k : k+1]})
+		}
+		if c.Order != 2 {
+			continue
+		}
+		for _, way := range c.ways(g.span, g.full) {
+			b := secondDifference(len(g.members)+1, c.Weight)
+			for _, f := range secondPoints {
+				g.members = append(g.members, placed{way(f), i})
+			}
+			g.blocks = append(g.blocks, b)
+		}
 	}
 	if refine > 0 {
 		for i, c := range s.Held {
 			for _, m := range c.ensemble() {
 				g.members = append(g.members, placed{m, i})
+				g.blocks = append(g.blocks, blend{[]int{len(g.members)}, []float64{refine}})
 			}
 		}
 	}
 	g.nominal.Reset()
 	g.finite.Reset()
-	g.rows = 3 + 3*len(g.combine) + 3*len(g.members)
-	g.frames = make([]frame, 1+len(g.members))
+	g.rows = 3 + 3*len(g.combine) + 3*len(g.blocks)
+	g.seen = make([]seen, 1+len(g.members))
+	for i := range g.turned {
+		g.turned[i] = make([]float64, r.Dim)
+	}
 
 	if r.Dim == 0 { // figures alone are wanted
 		return g
@@ -203,12 +245,11 @@ func (g *Gate) Rows() int { return g.rows }
 // Dim returns the number of coefficients.
 func (g *Gate) Dim() int { return g.response.Dim }
 
-// miss returns the vector part of the gate error, at the best free angles and
-// signed so that the scalar part is positive, and the frame of its derivative.
-func (g *Gate) miss(q dynamics.Quat) (m dynamics.Vec, k frame) {
+// see looks at a gate q at free angles: the vector part of the gate error, signed so
+// that the scalar part is positive, and its derivatives.
+func (g *Gate) see(q dynamics.Quat, before, after float64) (s seen) {
 	left, right := g.after.Mul(q), g.before
-	if g.spec.FreeBefore || g.spec.FreeAfter {
-		before, after := g.angles(left.Mul(right))
+	if g.free() {
 		left = dynamics.Turn(dynamics.Vec{0, 0, after}).Mul(left)
 		right = right.Mul(dynamics.Turn(dynamics.Vec{0, 0, before}))
 	}
@@ -222,24 +263,43 @@ func (g *Gate) miss(q dynamics.Quat) (m dynamics.Vec, k frame) {
 		var half dynamics.Quat
 		half[1+i] = sign / 2
 		d := left.Mul(half).Mul(right)
-		k[i], k[3+i], k[6+i] = d[1], d[2], d[3]
+		s.frame[i], s.frame[3+i], s.frame[6+i] = d[1], d[2], d[3]
 	}
-	m = dynamics.Vec{sign * e[1], sign * e[2], sign * e[3]}
-	if g.spec.FreeBefore || g.spec.FreeAfter {
-		g.project(&k, e, sign)
+	s.miss = dynamics.Vec{sign * e[1], sign * e[2], sign * e[3]}
+	z := dynamics.Quat{0, 0, 0, sign / 2}
+	if g.spec.FreeBefore {
+		d := e.Mul(g.spec.Target).Mul(z).Mul(g.spec.Target.Conj())
+		s.angles[0] = dynamics.Vec{d[1], d[2], d[3]}
 	}
-	return m, k
+	if g.spec.FreeAfter {
+		d := z.Mul(e)
+		s.angles[1] = dynamics.Vec{d[1], d[2], d[3]}
+	}
+	return s
+}
+
+func (g *Gate) free() bool { return g.spec.FreeBefore || g.spec.FreeAfter }
+
+// best returns the best free angles of a gate.
+func (g *Gate) best(q dynamics.Quat) (before, after float64) {
+	if !g.free() {
+		return 0, 0
+	}
+	return g.angles(g.after.Mul(q).Mul(g.before))
+}
+
+// overlaps returns the coefficients of the overlap of x with the target: with x = (w, x,
+// y, z), a turn by α after and β before rotates (w, z) by (α+β)/2 and (x, y) by (α-β)/2,
+// and the overlap is A cos s + B sin s + C cos d + D sin d, s = (α+β)/2, d = (α-β)/2.
+func (g *Gate) overlaps(x dynamics.Quat) (A, B, C, D float64) {
+	t := g.spec.Target
+	return x[0]*t[0] + x[3]*t[3], x[0]*t[3] - x[3]*t[0], x[1]*t[1] + x[2]*t[2], x[1]*t[2] - x[2]*t[1]
 }
 
 // angles returns the rotations about Z, before and after, that bring x closest
-// to the target. With x = (w, x, y, z), a turn by α after and β before rotates
-// (w, z) by (α+β)/2 and (x, y) by (α-β)/2, and the overlap with the target is the
-// sum of two cosines: closed forms for either side alone and for both.
+// to the target: closed forms for either side alone and for both.
 func (g *Gate) angles(x dynamics.Quat) (before, after float64) {
-	t := g.spec.Target
-	// overlap = A cos s + B sin s + C cos d + D sin d, s = (α+β)/2, d = (α-β)/2
-	A, B := x[0]*t[0]+x[3]*t[3], x[0]*t[3]-x[3]*t[0]
-	C, D := x[1]*t[1]+x[2]*t[2], x[1]*t[2]-x[2]*t[1]
+	A, B, C, D := g.overlaps(x)
 	switch {
 	case g.spec.FreeBefore && g.spec.FreeAfter:
 		s, d := math.Atan2(B, A), math.Atan2(D, C)
@@ -250,48 +310,41 @@ func (g *Gate) angles(x dynamics.Quat) (before, after float64) {
 	return 2 * math.Atan2(B-D, A+C), 0 // s = -d = β/2
 }
 
-// project takes from the derivative what the free angles follow: at the best
-// angles the residual is orthogonal to its derivatives by them, and the angles
-// move so that it stays so (variable projection, Golub and Pereyra 1973, SIAM J.
-// Numer. Anal. 10, 413, with Kaufman's simplification, exact at a zero).
-func (g *Gate) project(k *frame, e dynamics.Quat, sign float64) {
-	var list []dynamics.Vec
-	z := dynamics.Quat{0, 0, 0, sign / 2}
-	if g.spec.FreeAfter {
-		d := z.Mul(e)
-		list = append(list, dynamics.Vec{d[1], d[2], d[3]})
-	}
-	if g.spec.FreeBefore {
-		d := e.Mul(g.spec.Target).Mul(z).Mul(g.spec.Target.Conj())
-		list = append(list, dynamics.Vec{d[1], d[2], d[3]})
-	}
-	var basis []dynamics.Vec
-	for _, v := range list {
-		for _, b := range basis {
-			f := v[0]*b[0] + v[1]*b[1] + v[2]*b[2]
-			v = dynamics.Vec{v[0] - f*b[0], v[1] - f*b[1], v[2] - f*b[2]}
+// bends returns how the best angles of a gate q follow its generator δ: the whole of the
+// variable projection of Golub and Pereyra 1973, SIAM J. Numer. Anal. 10, 413.
+func (g *Gate) bends(q dynamics.Quat) (before, after dynamics.Vec) {
+	left, right := g.after.Mul(q), g.before
+	A, B, C, D := g.overlaps(left.Mul(right))
+	atan := func(y, x, dy, dx float64) float64 {
+		if r := x*x + y*y; r > 1e-24 {
+			return (x*dy - y*dx) / r
 		}
-		if norm(v) > 1e-6 { // else the second angle does what the first does
-			basis = append(basis, unit(v))
-		}
+		return 0 // the angle does nothing here
 	}
-	for _, b := range basis {
-		for col := range 3 {
-			f := b[0]*k[col] + b[1]*k[3+col] + b[2]*k[6+col]
-			for row := range 3 {
-				k[3*row+col] -= f * b[row]
-			}
+	for i := range 3 {
+		var half dynamics.Quat
+		half[1+i] = 0.5
+		a, b, c, d := g.overlaps(left.Mul(half).Mul(right))
+		switch {
+		case g.spec.FreeBefore && g.spec.FreeAfter:
+			s, t := atan(B, A, b, a), atan(D, C, d, c)
+			before[i], after[i] = s-t, s+t
+		case g.spec.FreeAfter:
+			after[i] = 2 * atan(B+D, A+C, b+d, a+c)
+		default:
+			before[i] = 2 * atan(B-D, A+C, b-d, a+c)
 		}
 	}
+	return before, after
 }
 
 // Residuals stores the residuals at c in r, as solve.Problem asks.
 func (g *Gate) Residuals(c, r []float64) {
 	g.controls(c)
 	g.nominal.Run(g.u, dynamics.Vec{})
-	var m dynamics.Vec
-	m, g.frames[0] = g.miss(g.nominal.Gate)
-	copy(r, m[:])
+	before, after := g.best(g.nominal.Gate)
+	g.seen[0] = g.see(g.nominal.Gate, before, after)
+	copy(r, g.seen[0].miss[:])
 	at := 3
 	for i := range g.combine {
 		e := scaled(g.averaged(i), g.combine[i].weight)
@@ -299,19 +352,27 @@ func (g *Gate) Residuals(c, r []float64) {
 		at += 3
 	}
 	for i, e := range g.members {
-		u := g.u
+		u, slope := g.u, g.slope
 		if e.scale != 1 || e.lambda != 0 {
-			g.err(e.member, g.v[e.class])
-			u = g.moved
+			g.err(e.member, g.added(e.class))
+			u, slope = g.moved, g.movedSlope
 		}
 		g.finite.Run(u, e.offset)
-		m, g.frames[1+i] = g.miss(g.finite.Gate)
-		for k := range 3 {
-			r[at+k] = g.weight * m[k]
-		}
-		at += 3
+		g.seen[1+i] = g.see(g.finite.Gate, before, after)
 		// the derivatives by node are cheap while the steps are at hand
 		g.finite.Derive(u, &g.member[i])
+		for _, d := range g.member[i].Gate {
+			g.multiply(slope, d)
+		}
+	}
+	for _, b := range g.blocks {
+		clear(r[at : at+3])
+		for i, gate := range b.gates {
+			for k := range 3 {
+				r[at+k] += b.factors[i] * g.seen[gate].miss[k]
+			}
+		}
+		at += 3
 	}
 }
 
@@ -337,6 +398,9 @@ func (g *Gate) Jacobian(jac []float64) {
 	first, last := g.first, g.last
 	clear(g.raw)
 	g.nominal.Derive(g.u, &g.slopes)
+	for i := range 3 + 3*nt {
+		g.multiply(g.slope, g.d[i*w:(i+1)*w])
+	}
 	// What an error that rides on the controls gains by itself, beside what the
 	// frame gives it: by the controls where it is made of them, else by its own line.
 	for i, class := range g.borne {
@@ -344,6 +408,9 @@ func (g *Gate) Jacobian(jac []float64) {
 		row := 3 + 3*(nh+i)
 		for k := range 3 {
 			direct, toggle := g.slopes.Direct[3*i+k], g.slopes.Toggle[3*(nh+i)+k]
+			if g.mapped != nil {
+				g.unmap(direct, toggle, g.w[class])
+			}
 			switch c.Kind {
 			case Amplitude:
 				for j, v := range direct {
@@ -382,7 +449,16 @@ func (g *Gate) Jacobian(jac []float64) {
 	}
 	g.contract(g.response.Blocks, 1, g.d, len(g.d)/w, 0, g.nodes, g.raw)
 
-	g.turnRows(jac, 0, 0, g.frames[0], 1)
+	if g.free() {
+		before, after := g.bends(g.nominal.Gate)
+		for side, v := range [2]dynamics.Vec{before, after} {
+			for i := range g.turned[side] {
+				g.turned[side][i] = v[0]*g.raw[i] + v[1]*g.raw[n+i] + v[2]*g.raw[2*n+i]
+			}
+		}
+	}
+	clear(jac[:3*n])
+	g.turnRows(jac, 0, 0, &g.seen[0], 1)
 	out := 3
 	for _, e := range g.combine {
 		dst := jac[out*n : (out+3)*n]
@@ -396,21 +472,35 @@ func (g *Gate) Jacobian(jac []float64) {
 		}
 		out += 3
 	}
-	for i := range g.members {
-		g.turnRows(jac, out, 3+3*nt+3*i, g.frames[1+i], g.weight)
+	for _, b := range g.blocks {
+		clear(jac[out*n : (out+3)*n])
+		for i, gate := range b.gates {
+			row := 0
+			if gate > 0 {
+				row = 3 + 3*nt + 3*(gate-1)
+			}
+			g.turnRows(jac, out, row, &g.seen[gate], b.factors[i])
+		}
 		out += 3
 	}
 }
 
-// turnRows stores f k times three raw rows in three rows of jac.
-func (g *Gate) turnRows(jac []float64, out, in int, k frame, f float64) {
-	w := g.response.Dim
+// turnRows adds f times the derivatives of a gate, of which the raw rows are given, to three rows of jac.
+func (g *Gate) turnRows(jac []float64, out, in int, s *seen, f float64) {
+	w, k := g.response.Dim, &s.frame
 	a, b, c := g.raw[in*w:(in+1)*w], g.raw[(in+1)*w:(in+2)*w], g.raw[(in+2)*w:(in+3)*w]
 	for r := range 3 {
 		dst := jac[(out+r)*w : (out+r+1)*w]
 		x, y, z := f*k[3*r], f*k[3*r+1], f*k[3*r+2]
 		for i := range dst {
-			dst[i] = x*a[i] + y*b[i] + z*c[i]
+			dst[i] += x*a[i] + y*b[i] + z*c[i]
+		}
+		for side, v := range s.angles {
+			if p := f * v[r]; p != 0 {
+				for i, t := range g.turned[side] {
+					dst[i] += p * t
+				}
+			}
 		}
 	}
 }

@@ -648,7 +648,7 @@ func TestInWords(t *testing.T) {
 		{dynamics.Vec{0.8, -0.6, 0.06}, "0.80 X - 0.60 Y + 0.06 Z"},
 		{dynamics.Vec{-0.1, 0, -0.995}, "0.10 X + 0.99 Z"},
 	} {
-		if got := inWords(c.v); got != c.want {
+		if got := inWords(c.v[:], []string{"X", "Y", "Z"}); got != c.want {
 			t.Errorf("%v is %q, want %q", c.v, got, c.want)
 		}
 	}

@@ -42,12 +42,12 @@ func levelsOn(d int, a axisKind, held []Class) Levels {
 	}
 	for k := range held {
 		if held[k].Kind == Static {
-			held[k].Operator = n
+			held[k].Operators = [][]complex128{n}
 		}
 	}
 	t := matrixOf(target)
 	return Levels{
-		Grid: a.grid, Dim: d, Code: 2, Static: static, Axes: [][]complex128{scaledMatrix(i, 0.25), scaledMatrix(q, 0.24)},
+		Grid: a.grid, Dim: d, Code: []int{0, 1}, Static: static, Axes: [][]complex128{scaledMatrix(i, 0.25), scaledMatrix(q, 0.24)},
 		Target: []complex128{t[0][0], t[0][1], t[1][0], t[1][1]}, Held: held,
 	}
 }

@@ -19,6 +19,10 @@ type Problem struct {
 	// Jacobian stores the Jacobian at the c of the last call of Residuals in jac,
 	// row by row (Rows x Dim).
 	Jacobian func(jac []float64)
+	// Gradient stores Jᵀr in grad, at the c of the last call of Residuals which gave r.
+	// It is asked for where Jacobian is nil: where residuals are many, J costs
+	// more than what it saves in iterations.
+	Gradient func(r, grad []float64)
 }
 
 // Status says why a solve ended.
@@ -40,11 +44,11 @@ func (s Status) String() string {
 type Options struct {
 	Kappa      float64 // bound on µ: κ|r|²/constraints; default 5
 	Tolerance  float64 // on |r|²; default 1e-13; negative: never converged, go on until it stalls
-	Iterations int     // default 400
+	Iterations int     // default 400, without Jacobian 4000
 	Stalls     int     // steps that gain under 1e-3, each of which lowers the barrier, before Stalled; default 15
 }
 
-func (o Options) filled() Options {
+func (o Options) filled(quasi bool) Options {
 	if o.Kappa == 0 {
 		o.Kappa = 5
 	}
@@ -52,7 +56,10 @@ func (o Options) filled() Options {
 		o.Tolerance = 1e-13
 	}
 	if o.Iterations == 0 {
-		o.Iterations = 400
+		o.Iterations = 400 // of Gauss-Newton
+		if quasi {
+			o.Iterations = 4000
+		}
 	}
 	if o.Stalls == 0 {
 		o.Stalls = 15
@@ -79,6 +86,8 @@ const (
 	landingGain   = 0.1   // of |r|², at most, or the landing is not taken
 	landingMetric = 1e-3  // weight of the barrier's metric in a landing, times |r|²/constraints
 	landingWait   = 3     // iterations after a failed landing before the next
+	quasiSpell    = 25    // quasi-Newton steps that are judged together, as one of them says little
+	quasiGain     = 0.02  // of |r|² in a spell, under which it counts towards a stall
 	tinyDiagonal  = 1e-14 // of the trace, added to the normal matrix: the barrier's condition reaches 1e17
 )
 
@@ -91,7 +100,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	if math.IsInf(s.barrier(c0), 1) {
 		panic("solve: start outside the set")
 	}
-	o = o.filled()
+	o = o.filled(p.Jacobian == nil)
 	n, m := p.Dim, p.Rows
 	var (
 		c     = append([]float64(nil), c0...)
@@ -100,7 +109,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		bent  = make([]float64, n)
 		r     = make([]float64, m)
 		rt    = make([]float64, m)
-		jac   = make([]float64, m*n)
+		jac   []float64
 		g     = make([]float64, n)
 		jr    = make([]float64, n)
 		gb    = make([]float64, n)
@@ -114,12 +123,21 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 	if math.IsInf(res.Miss, 1) {
 		return res
 	}
-	p.Jacobian(jac)
+	var quasi *update
+	if p.Jacobian != nil {
+		jac = make([]float64, m*n)
+		p.Jacobian(jac)
+	} else {
+		quasi = newUpdate(n)
+		p.Gradient(r, jr)
+		quasi.begin(jr, res.Miss, jj)
+	}
 	miss, best := res.Miss, append([]float64(nil), c...)
 	mu := o.Kappa * miss / ncon
 	lambda := 1e-2
 	phi := s.barrier(c)
 	stalls, wait := 0, 0
+	mark := math.Inf(1) // |r|² at the end of the last spell
 	status := Exhausted
 	fresh := true // r, jac belong to a new c: normal matrices must be formed
 	// look evaluates the trial point, unless it lies outside: the barrier sees what
@@ -142,8 +160,13 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			res.Miss = miss
 			copy(best, c)
 		}
-		p.Jacobian(jac)
-		fresh = true
+		if fresh = true; quasi == nil {
+			p.Jacobian(jac)
+			return
+		}
+		quasi.before(trial, c, jr)
+		p.Gradient(r, jr)
+		quasi.after(jr, jj)
 	}
 	for res.Iterations = 0; res.Iterations < o.Iterations; res.Iterations++ {
 		if miss < o.Tolerance {
@@ -156,15 +179,17 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		}
 		if fresh {
 			s.derivatives(c, gb, hb)
-			J := blas64.General{Rows: m, Cols: n, Stride: n, Data: jac}
-			blas64.Syrk(blas.Trans, 1, J, 0, blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: jj})
-			blas64.Gemv(blas.Trans, 1, J, blas64.Vector{N: m, Inc: 1, Data: r}, 0, blas64.Vector{N: n, Inc: 1, Data: jr})
+			if quasi == nil {
+				J := blas64.General{Rows: m, Cols: n, Stride: n, Data: jac}
+				blas64.Syrk(blas.Trans, 1, J, 0, blas64.Symmetric{Uplo: blas.Upper, N: n, Stride: n, Data: jj})
+				blas64.Gemv(blas.Trans, 1, J, blas64.Vector{N: m, Inc: 1, Data: r}, 0, blas64.Vector{N: n, Inc: 1, Data: jr})
+			}
 			fresh = false
 		}
 		// Landing: near a zero the shortest step to it, in the barrier's metric,
 		// converges quadratically where the centring below would keep the
 		// convergence linear. It is taken when it fits and gains.
-		if wait--; wait < 0 && o.Tolerance > 0 && miss < landingMiss && descend(step, jr, jj, hb, norm, landingMetric*miss/ncon, n) &&
+		if wait--; wait < 0 && quasi == nil && o.Tolerance > 0 && miss < landingMiss && descend(step, jr, jj, hb, norm, landingMetric*miss/ncon, n) &&
 			nearBoundary*s.reach(c, step) >= 1 {
 			for i := range trial {
 				trial[i] = c[i] + step[i]
@@ -209,7 +234,7 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 			}
 			// The full step failed because the residuals bend away from their
 			// tangent: follow the bend once before shortening the step.
-			if try == 0 && newMiss < bendLimit*miss {
+			if try == 0 && quasi == nil && newMiss < bendLimit*miss {
 				follow(bent, rt, r, jac, step, norm, t, m, n)
 				for i := range trial {
 					trial[i] += bent[i]
@@ -235,7 +260,14 @@ func GaussNewton(ctx context.Context, p Problem, s *Set, c0 []float64, o Options
 		} else if t < 0.3*t0 {
 			lambda *= 4
 		}
-		if gain < 1e-3 {
+		slow := gain < 1e-3
+		if quasi != nil {
+			if slow = false; (res.Iterations+1)%quasiSpell == 0 {
+				slow = miss > (1-quasiGain)*mark
+				mark = miss
+			}
+		}
+		if slow {
 			mu *= 0.2
 			if stalls++; stalls >= o.Stalls {
 				status = Stalled

@@ -258,6 +258,19 @@ func addMixed(h []float64, n int, p, q span, f float64) {
 	if f == 0 {
 		return
 	}
+	if p.lo > q.lo {
+		p, q = q, p
+	}
+	if p.lo+len(p.v) <= q.lo { // as of a line that keeps the quadratures apart: every entry lies above the diagonal
+		for i, v := range p.v {
+			row := h[(p.lo+i)*n+q.lo : (p.lo+i)*n+q.lo+len(q.v)]
+			w := f * v
+			for k, u := range q.v {
+				row[k] += w * u
+			}
+		}
+		return
+	}
 	for i, v := range p.v {
 		r := p.lo + i
 		for k, u := range q.v {

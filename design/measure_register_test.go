@@ -1,0 +1,190 @@
+//go:build measure
+
+package design
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"testing"
+	"time"
+
+	"holdfast/design/replay"
+)
+
+// TestMeasurePair finds the spans of two spins.
+func TestMeasurePair(t *testing.T) {
+	for _, c := range []struct {
+		gate string
+		ns   int
+		held string
+	}{
+		{"sqrt-iSWAP", 40, ""}, {"CNOT", 64, ""},
+		{"sqrt-iSWAP", 240, `any = "one-body"`}, {"sqrt-iSWAP", 272, `any = "one-body"`}, {"CNOT", 272, `any = "one-body"`},
+		{"sqrt-iSWAP", 560, `any = "all"`},
+	} {
+		if only := os.Getenv("ONLY"); only != "" && only != fmt.Sprintf("%s %d", c.gate, c.ns) {
+			continue
+		}
+		held := "hold = \"nothing\"\n"
+		if c.held != "" {
+			held = ""
+		}
+		text := fmt.Sprintf("span = \"%d ns\"\n%s\n%s\n[target]\nsites = [\"q1\", \"q2\"]\ngate = %q\nfree_z = \"both\"\n", c.ns, held, os.Getenv("EXTRA"), c.gate)
+		if c.held != "" {
+			text += "[[error]]\n" + c.held + "\n"
+		}
+		in := register(t, 2, exchanged, text)
+		begun := time.Now()
+		last := time.Now()
+		p, err := Run(context.Background(), in, func(p Progress) {
+			if time.Since(last) > 5*time.Second {
+				last = time.Now()
+				fmt.Printf("   %s %d of %d, %d won, best %.3g, expected %v; %v\n", p.Stage, p.Done, p.Of, p.Successes, p.Best, p.Expected, time.Since(begun))
+			}
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		m := &p.Record.Model
+		s := ""
+		for _, e := range m.Errors {
+			s += fmt.Sprintf(" %s %.2g", e.Name, e.Susceptibility)
+		}
+		t.Logf("%s %d ns: %s; infidelity %.2g before rounding, %.2g after,%s; %v", c.gate, c.ns, p.Summary(), p.Record.Search.Before, p.Record.Claim.Infidelity, s, time.Since(begun))
+	}
+}
+
+// TestMeasureSecond looks for the shortest X(pi) of second order.
+func TestMeasureSecond(t *testing.T) {
+	for _, time := range []float64{4.26, 4.275, 4.28, 4.285, 4.29, 4.3} {
+		_, p := minimalInputs(t, "", "[[error]]\ndetuning = \"q1\"\norder = 2", time, 24)
+		t.Logf("%.3f pi: %s", time, p.Summary())
+	}
+}
+
+// chain couples n spins to their neighbours by exchange.
+func chain(n int, strength string) (s string) {
+	for i := 1; i < n; i++ {
+		s += fmt.Sprintf("[[coupling]]\nkind = \"exchange\"\nbetween = [\"q%d\", \"q%d\"]\nstrength = %q\n", i, i+1, strength)
+	}
+	return s
+}
+
+// TestMeasureChain moves a state along four spins, and entangles them, held against one-body and,
+// apart, against two-body errors: one start each. The pulses are written below $CHAIN, where TestMeasureChainErrors finds them.
+func TestMeasureChain(t *testing.T) {
+	for _, c := range []struct{ name, target, held string }{
+		{"move-one", "from = \"1000\"\nto = \"0001\"", "one-body"},
+		{"move-two", "from = \"1000\"\nto = \"0001\"", "two-body"},
+		{"entangle-one", "from = \"0000\"\nto = \"GHZ\"", "one-body"},
+		{"entangle-two", "from = \"0000\"\nto = \"GHZ\"", "two-body"},
+	} {
+		if only := os.Getenv("ONLY"); only != "" && only != c.name {
+			continue
+		}
+		in := register(t, 4, chain(4, "5 MHz"), fmt.Sprintf("span = \"256 ns\"\nends = \"window\"\nstarts = 1\nrefine = false\n[target]\n%s\n[[error]]\nany = %q\n", c.target, c.held))
+		begun := time.Now()
+		p, err := Run(context.Background(), in, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		e := p.Record.Model.Errors[0]
+		t.Logf("%s, held against %s errors: %s; infidelity %.2g, susceptibility %.2g; %v", c.name, c.held, p.Summary(), p.Record.Claim.Infidelity, e.Susceptibility, time.Since(begun))
+		dir := filepath.Join(os.Getenv("CHAIN"), c.name)
+		src, err := ReadSources(in)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := os.MkdirAll(dir, 0o777); err != nil {
+			t.Fatal(err)
+		}
+		if err := p.Write(dir, src); err != nil {
+			t.Fatal(err)
+		}
+	}
+}
+
+// TestMeasureChainErrors has replay judge these pulses under 500 random errors of each class.
+func TestMeasureChainErrors(t *testing.T) {
+	for _, name := range []string{"move-one", "move-two", "entangle-one", "entangle-two"} {
+		f, err := replay.Open(filepath.Join(os.Getenv("CHAIN"), name))
+		if err != nil {
+			t.Fatal(err)
+		}
+		own, _, _, err := f.Model.Figures(context.Background())
+		if err != nil {
+			t.Fatal(err)
+		}
+		t.Logf("%s: infidelity without error %.2g", name, own.Infidelity)
+		for _, scope := range []string{"one-body", "two-body"} {
+			held := register(t, 4, "", "span = \"256 ns\"\n[target]\nfrom = \"0000\"\nto = \"W\"\n[[error]]\nany = \""+scope+"\"\n").Brief.Errors[0].Members
+			for _, size := range []struct {
+				mhz   float64
+				count int
+			}{{0.03, 50}, {0.1, 500}, {0.3, 50}, {1, 50}} {
+				rng := rand.New(rand.NewPCG(4, 4))
+				losses := make([]float64, size.count)
+				for i := range losses {
+					m := *f.Model
+					m.Ends = "window" // in which an error that goes on is one of the window
+					m.Static = slices.Clone(f.Model.Static)
+					v, norm := make([]float64, len(held)), 0.0
+					for k := range v {
+						v[k] = rng.NormFloat64()
+						norm += v[k] * v[k]
+					}
+					for k, h := range held {
+						g := complex(2*math.Pi*1e-3*size.mhz*v[k]/math.Sqrt(norm), 0)
+						for j, x := range h.Operator.Data {
+							m.Static[j] += g * x
+						}
+					}
+					_, window, _, err := m.Figures(context.Background())
+					if err != nil {
+						t.Fatal(err)
+					}
+					losses[i] = window.Infidelity
+				}
+				slices.Sort(losses)
+				mean := 0.0
+				for _, l := range losses {
+					mean += l / float64(len(losses))
+				}
+				t.Logf("%s, %d random %s errors of %g MHz: mean %.3g, 95 %% under %.3g", name, size.count, scope, size.mhz, mean, losses[len(losses)*95/100])
+			}
+		}
+	}
+}
+
+// TestMeasureRates compares a design that knows learned rates with one that takes all errors
+// for alike, at a span too short to hold off all of them: by what the learned errors leave.
+func TestMeasureRates(t *testing.T) {
+	for _, span := range []int{320, 400} {
+		var left [2]float64
+		for i, rates := range []string{"", "rates = \"rates.csv\"\n"} {
+			text := fmt.Sprintf("span = \"%d ns\"\nrefine = false\nstarts = 4\n[target]\nsites = [\"q1\", \"q2\"]\ngate = \"sqrt-iSWAP\"\nfree_z = \"both\"\n[[error]]\nany = \"all\"\n%s[require]\nsusceptibility = 1e-9\n", span, rates)
+			in := register(t, 2, exchanged, text)
+			begun := time.Now()
+			p, err := Run(context.Background(), in, nil)
+			if err != nil {
+				t.Fatal(err)
+			}
+			other := register(t, 2, exchanged, strings.Replace(text, "any = \"all\"\n", "any = \"all\"\nrates = \"rates.csv\"\n", 1-i))
+			q, err := newTask(other, "slepian")
+			if err != nil {
+				t.Fatal(err)
+			}
+			u, v := q.controls(&q.fine, [][]complex128{p.Channels[0].Exact, p.Channels[1].Exact})
+			f := q.gate(true).Figures(u, v)
+			left[i] = f.Susceptibility[0]
+			t.Logf("%d ns, %q: %s; infidelity %.2g; susceptibility to the learned errors %.3g, worst %v; %v", span, rates, p.Summary(), f.Infidelity, f.Susceptibility[0], f.Worst[0], time.Since(begun))
+		}
+		t.Logf("%d ns: expected infidelity lower by %.3g", span, left[0]*left[0]/(left[1]*left[1]))
+	}
+}
