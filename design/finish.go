@@ -61,7 +61,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		Basis: BasisFacts{Family: first.basis.Family, PerQuad: n, I: out.c[:n], Q: []float64{}},
 		Search: SearchFacts{
 			Seed: b.Seed, Starts: b.Starts, Tried: out.tried, Successes: out.successes, Winner: out.winner,
-			Evaluations: out.evaluations, Equations: q.gate(false).Rows(), Refined: out.refined, Miss: out.miss,
+			Evaluations: out.evaluations, Equations: q.gate(false).Rows(), Solver: q.solver(), Refined: out.refined, Miss: out.miss,
 		},
 		Require: RequireFacts{Infidelity: b.Require.Infidelity, Susceptibility: b.Require.Susceptibility},
 		Provenance: ProvenanceFacts{
@@ -128,6 +128,14 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 		return p, q.turn(p, in, d, exact)
 	}
 	return p, nil
+}
+
+// solver names the method of the search.
+func (q *problem) solver() string {
+	if q.residuals(q.gate(false)).Jacobian == nil {
+		return "quasi-Newton"
+	}
+	return "Gauss-Newton"
 }
 
 // sites names the sites of the target: of states all of the device.
@@ -322,6 +330,9 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			l := lineOf(q.slopes[i].feed.line)
 			r.LineModel = &l
 		}
+		if e.Order == 2 {
+			r.Order = 2
+		}
 		if e.Spread != "" {
 			r.Spread = e.Spread
 			r.SpreadValues, r.SpreadShares = spread(&e)
@@ -338,7 +349,7 @@ func (q *problem) model(in Inputs, d []driven) Model {
 		m.Errors = append(m.Errors, r)
 	}
 	for _, name := range []string{"detuning", "amplitude", "X", "Y", "Z"} {
-		if known[name] || in.Device.Dim() > 2 || q.levels != nil { // of one spin all of these are judged
+		if known[name] || in.Device.Dim() > 2 || q.levels != nil || name == "amplitude" && curves(d) != nil { // of one spin all of these are judged
 			continue
 		}
 		r := ModelError{Name: name, Kind: brief.Static}
@@ -476,7 +487,9 @@ func (q *problem) claim(r *Record, in Inputs, exact, rounded [][]complex128) err
 		}
 		if len(in.Device.CodeSpace()) < in.Device.Dim() {
 			for i := range r.Model.Errors {
-				r.Model.Errors[i].Leak = &f.Leak[i]
+				if !r.Model.Errors[i].Leaks { // of which it is the susceptibility itself
+					r.Model.Errors[i].Leak = &f.Leak[i]
+				}
 			}
 		}
 		// the free rotations are those of the stated ends, whatever the ends

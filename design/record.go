@@ -86,6 +86,7 @@ type SearchFacts struct {
 	Winner      int     `toml:"winning_start"`
 	Evaluations int     `toml:"evaluations"`
 	Equations   int     `toml:"equations"`
+	Solver      string  `toml:"solver"` // "Gauss-Newton", or "quasi-Newton" where residuals are many
 	Refined     bool    `toml:"refined"`
 	Miss        float64 `toml:"sum_of_squared_residuals"`
 	Before      float64 `toml:"infidelity_before_rounding"`
@@ -253,6 +254,7 @@ type ModelError struct {
 	Leaks     bool          `toml:"leak,omitempty"`
 	Leak      *float64      `toml:"leak_susceptibility,omitempty"` // where there are levels outside the code space
 
+	Order int `toml:"order,omitzero"` // 2 where the second order is cancelled too
 	// Of an error that is held over a spread of its sizes: these, their weights, and the mean
 	// infidelity over them, or the worst.
 	Spread           string    `toml:"spread,omitempty"`

@@ -126,6 +126,18 @@ func TestRegister(t *testing.T) {
 	}
 }
 
+// agreed has replay judge a folder: it must agree with the record and with inputs/.
+func agreed(t *testing.T, f *replay.Folder) {
+	t.Helper()
+	v, err := replay.Judge(context.Background(), f)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !v.Met() || len(v.Inputs) > 0 {
+		t.Errorf("replay does not agree, or a limit or a requirement is broken: %+v %v %+v", v.Agreement, v.Inputs, v.Requirements)
+	}
+}
+
 // TestSpreads: held over a spread of detunings, the mean and the worst infidelity are what they are said to be, and each is the
 // smaller of the two where it was asked for.
 func TestSpreads(t *testing.T) {
@@ -134,13 +146,11 @@ func TestSpreads(t *testing.T) {
 	}
 	values := "values = [\"-6 MHz\", \"-3 MHz\", \"0 MHz\", \"3 MHz\", \"6 MHz\"]"
 	losses := func(in Inputs) (mean, worst float64) {
-		p, err := Run(context.Background(), in, nil)
-		if err != nil {
-			t.Fatal(err)
-		}
+		p, folder, _ := folderOf(t, in)
 		if p.Status != Found {
 			t.Fatal(p.Summary())
 		}
+		agreed(t, folder)
 		q, err := newTask(in, brief.Slepian)
 		if err != nil {
 			t.Fatal(err)
@@ -192,18 +202,55 @@ func TestNoiseHeld(t *testing.T) {
 	}
 	left := func(weight string) float64 {
 		in := register(t, 1, "", "span = \"88 ns\"\nstarts = 1\n[target]\nsite = \"q1\"\ngate = \"X90\"\n"+noises(weight))
-		p, err := Run(context.Background(), in, nil)
-		if err != nil {
-			t.Fatal(err)
-		}
+		p, folder, _ := folderOf(t, in)
 		if p.Status != Found {
 			t.Fatal(p.Summary())
 		}
+		agreed(t, folder)
 		f := *p.Record.Model.Errors[0].NoiseInfidelity
 		t.Logf("%s: infidelity %.2g, noise adds %.3g", p.Summary(), p.Record.Claim.Infidelity, f)
 		return f
 	}
 	if held, plain := left(""), left("weight = 1e-6"); !(held <= plain/50) {
 		t.Errorf("noise leaves %.3g where it is held off, %.3g where it is not", held, plain)
+	}
+}
+
+// TestMappedBias: a gate by a drive and a bias that is no straight one, polynomial or loop, as replay sees it too.
+func TestMappedBias(t *testing.T) {
+	bias := `[[channel]]
+name = "q1 flux"
+kind = "baseband"
+full_scale = "20 MHz"
+slew_limit = "25 %/sample"
+band = "100 MHz"
+guard = { lead = 0, trail = 4 }
+ring_out = { limit = "0.1 %", fast = "8 ns" }
+[channel.line]
+delay = "2.4 ns"
+lowpass = { family = "single-pole", corner = "250 MHz" }
+tails = [ { amplitude = "-1 %", time = "40 ns" } ]
+`
+	for name, keys := range map[string]string{
+		"polynomial": "polynomial = [0.4, 1.3, -0.5]", "loop": "loop = { highest = \"5.2 GHz\", bias = 0.2, full_scale = 0.02, asymmetry = 0.1 }",
+	} {
+		s := scene{name: name, ns: 72, more: bias, device: "[[bias]]\nsite = \"q1\"\nchannel = \"q1 flux\"\n" + keys + "\n", head: "refine = false", errors: "[[error]]\ndetuning = \"q1\"\n[[error]]\namplitude = \"q1 drive\""}
+		p, f, _ := folderOf(t, s.inputs(t))
+		if p.Status != Found {
+			t.Fatalf("%s: %s", name, p.Summary())
+		}
+		largest := 0.0
+		for _, x := range p.Channels[1].Exact {
+			largest = math.Max(largest, math.Abs(real(x)))
+		}
+		if !(largest > 0.02) {
+			t.Errorf("%s: the bias plays at most %v: this tests nothing", name, largest)
+		}
+		agreed(t, f)
+		g, _, _, err := f.Model.BeforeRounding().Figures(context.Background())
+		if err != nil || !(g.Infidelity <= 1e-9) {
+			t.Errorf("%s: infidelity %.2g before rounding by replay, %v", name, g.Infidelity, err)
+		}
+		t.Logf("%s: %s, the bias up to %.2f, infidelity %.2g", name, p.Summary(), largest, g.Infidelity)
 	}
 }

@@ -71,8 +71,8 @@ type Target struct {
 	// Whole is Matrix with the identity on all other sites, on the code space of the device: device.CodeSpace has its order. Complete fills
 	// it in; N = 0 for states.
 	Whole device.Matrix
-	// From and To are as many orthonormal vectors on the code space of the device each: what is in the span of From at the start is to be To at the
-	// end, vector for vector up to one phase in common. Complete fills them in; nil for a gate.
+	// From and To are as many orthonormal vectors on the code space of the device each: what is in the span of From at the start is to be in that of To at
+	// the end, whichever of its vectors. Complete fills them in; nil for a gate.
 	From, To [][]complex128
 
 	named    string // the key that names the sites: site, sites or gates

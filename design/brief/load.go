@@ -85,6 +85,9 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 		b.defaultSeveral()
 	}
 	b.scaleDefaults(p, d)
+	if len(straight(driven, d)) == 0 {
+		b.Errors = slices.DeleteFunc(b.Errors, func(e Error) bool { return e.Kind == Amplitude && e.key == "" })
+	}
 	for i := range b.Errors {
 		e := &b.Errors[i]
 		if fault := b.errorOn(e, p, d, driven); fault != nil {
@@ -112,7 +115,7 @@ func (b *Brief) against(p *hardware.Profile, d *device.Device) *quantity.Error {
 		i, ok := p.Channel(e.on)
 		return e.expanded && e.Quadrature == "Q" && ok && p.Channels[i].Kind == hardware.Baseband
 	})
-	if fault := b.holdProfile(p, driven); fault != nil {
+	if fault := b.holdProfile(p, d, driven); fault != nil {
 		return fault
 	}
 	if fault := b.marginsOn(d); fault != nil {
@@ -192,6 +195,11 @@ func (b *Brief) scaleDefaults(p *hardware.Profile, d *device.Device) {
 	}
 }
 
+// straight leaves out the channels of biases with a map, of which no error is known that rides on what arrives.
+func straight(driven []string, d *device.Device) []string {
+	return slices.DeleteFunc(slices.Clone(driven), func(name string) bool { return d.Map(name) != nil })
+}
+
 // errorOn checks one error against profile and device, and completes it. A complaint without a key is about the key that made the error.
 func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, driven []string) *quantity.Error {
 	switch {
@@ -199,14 +207,17 @@ func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, driven 
 		return b.staticOn(e, d)
 	case e.Kind == Any:
 		return e.fill(d)
-	case e.Kind == Amplitude && e.key == "": // the default: whatever drives the device
-		e.Channels = driven
+	case e.Kind == Amplitude && e.key == "": // the default: whatever drives the device by a rate of its own
+		e.Channels = straight(driven, d)
 		return nil
 	case len(e.Channels) == 0 || e.key == "":
 		return nil
 	}
 	if fault := known(e.on, driven, "a channel that drives a site of "+d.File); fault != nil {
 		return fault
+	}
+	if d.Map(e.on) != nil && e.Kind != Offset {
+		return &quantity.Error{Found: fmt.Sprintf("%q, a bias with a polynomial or a loop", e.on), Allowed: "a channel that drives in proportion to what arrives, or an offset"}
 	}
 	i, _ := p.Channel(e.on)
 	c := &p.Channels[i]
@@ -349,7 +360,7 @@ func crosstalkOn(e *Error, mixing string, d *device.Device) *quantity.Error {
 }
 
 // holdProfile adds an error for each parameter of the driving lines that is known to a share, unless the brief has one of its own.
-func (b *Brief) holdProfile(p *hardware.Profile, driven []string) *quantity.Error {
+func (b *Brief) holdProfile(p *hardware.Profile, d *device.Device, driven []string) *quantity.Error {
 	if !b.HoldProfile {
 		return nil
 	}
@@ -358,7 +369,7 @@ func (b *Brief) holdProfile(p *hardware.Profile, driven []string) *quantity.Erro
 			Allowed: `"nothing", or "profile" with a known_to in the [channel.line] of a channel that drives the device`}
 	}
 	found := false
-	for _, name := range driven {
+	for _, name := range straight(driven, d) {
 		i, _ := p.Channel(name)
 		for _, q := range p.Channels[i].Parameters {
 			if !(q.KnownTo > 0) {

@@ -668,3 +668,41 @@ func TestRefusesSeveral(t *testing.T) {
 		}
 	}
 }
+
+// TestMapped: errors that ride on a bias with a map are refused by name and left out of defaults.
+func TestMapped(t *testing.T) {
+	d := "format = 1\nname = 'x'\n[[site]]\nname = 'q1'\n[[drive]]\nsite = 'q1'\nchannel = 'a'\n[[bias]]\nsite = 'q1'\nchannel = 'f'\npolynomial = [1, 0.2]\n"
+	profile := "format = 1\n[instrument]\nname = 'x'\nsample_rate = '1 GS/s'\nresolution = '14 bit'\nblock = 8\n[[channel]]\nname = 'a'\nkind = 'quadrature'\nmixing = 'I cos + Q sin'\nfull_scale = '40 MHz'\n" +
+		"[[channel]]\nname = 'f'\nkind = 'baseband'\nfull_scale = '20 MHz'\n[channel.line]\ntails = [ { amplitude = '-1 %', time = '30 ns', known_to = '20 %' } ]\n"
+	load := func(rest string) (*Brief, error) {
+		dir := t.TempDir()
+		for name, text := range map[string]string{"p.toml": profile, "d.toml": d, "b.toml": "format = 1\nname = 'x'\nprofile = 'p.toml'\ndevice = 'd.toml'\nspan = '64 ns'\n" + rest} {
+			if err := os.WriteFile(filepath.Join(dir, name), []byte(text), 0o666); err != nil {
+				t.Fatal(err)
+			}
+		}
+		b, _, _, err := LoadAll(filepath.Join(dir, "b.toml"))
+		return b, err
+	}
+	const target = "[target]\nsite = 'q1'\ngate = 'X90'\n"
+	b, err := load(target)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, e := range b.Errors {
+		if e.Kind == Amplitude && !slices.Equal(e.Channels, []string{"a"}) {
+			t.Errorf("amplitude of %v", e.Channels)
+		}
+	}
+	for _, key := range []string{"amplitude = 'f'", "line = 'f'\nparameter = 'delay'"} {
+		if _, err := load(target + "[[error]]\n" + key + "\n"); err == nil || !strings.Contains(err.Error(), "a bias with a polynomial or a loop") {
+			t.Errorf("%s: %v", key, err)
+		}
+	}
+	if _, err := load("hold = 'profile'\n" + target); err == nil || !strings.Contains(err.Error(), "no parameter of these lines") {
+		t.Errorf("hold: %v", err)
+	}
+	if _, err := load(target + "[[error]]\noffset = 'f'\n"); err != nil {
+		t.Error(err)
+	}
+}

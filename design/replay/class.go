@@ -311,6 +311,20 @@ func (e *engine) errors(ctx context.Context, threshold float64, like []Error) ([
 		if r.Curve, err = e.curve(ctx, s, e.curveValues(&r, like)); err != nil {
 			return nil, err
 		}
+		if s.one != nil && s.class.Spread.Way != "" {
+			loss, err := e.spread(ctx, &s.class, s.one.probe)
+			if err != nil {
+				return nil, err
+			}
+			r.Spread, r.SpreadInfidelity = s.class.Spread.Way, &loss
+		}
+		if s.one != nil && len(s.class.Noise.Frequencies) > 0 {
+			loss, err := e.noise(ctx, &s.class, s.one.strength)
+			if err != nil {
+				return nil, err
+			}
+			r.NoiseInfidelity = &loss
+		}
 		if s.one != nil {
 			s.one.plans, s.one.rough = plans{}, plans{}
 		}

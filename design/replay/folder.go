@@ -316,6 +316,12 @@ func readModel(t *quantity.Table, path string) (m *Model, codes, exact []string)
 				c.RingOutTail = c.RingOut
 			}
 		}
+		if ct.Has("map_polynomial") {
+			c.MapPolynomial = ct.Numbers("map_polynomial", maxPowers, -maxPower1, maxPower1)
+		}
+		if ct.Has("map_loop") {
+			c.MapLoop = ct.Numbers("map_loop", 4, -1e4, 1e4)
+		}
 		if ct.Has("compression") {
 			for _, z := range ct.Complexes("compression", maxKnees) { // pairs of numbers, like complex ones
 				c.Compression = append(c.Compression, Knee{real(z), imag(z)})
@@ -348,6 +354,19 @@ func readModel(t *quantity.Table, path string) (m *Model, codes, exact []string)
 		}
 		if c.claimedLeak = et.Has("leak_susceptibility"); c.claimedLeak {
 			c.LeakSusceptibility = et.Number("leak_susceptibility", 0, 1e6)
+		}
+		et.Int("order", 1, 2, 1) // for people
+		if et.Has("spread") {
+			c.Spread = Spread{et.Text("spread"), et.Numbers("spread_values", maxSpread, -1e4, 1e4), et.Numbers("spread_shares", maxSpread, 0, 1)}
+			if c.claimedSpread = et.Has("spread_infidelity"); c.claimedSpread {
+				c.SpreadInfidelity = et.Number("spread_infidelity", 0, 1)
+			}
+		}
+		if et.Has("noise_frequencies_rad_per_ns") {
+			c.Noise = Noise{et.Numbers("noise_frequencies_rad_per_ns", maxNodes, 0, maxTurn), et.Numbers("noise_weights", maxNodes, 0, 1e8)}
+			if c.claimedNoise = et.Has("noise_infidelity"); c.claimedNoise {
+				c.NoiseInfidelity = et.Number("noise_infidelity", 0, 1e6)
+			}
 		}
 		if c.Kind == "static" {
 			c.Operator = flat(et.Matrix("operator", maxDim))

@@ -156,6 +156,7 @@ func (f *Folder) differences() ([]Difference, error) {
 			start = math.Max(start, p.Start(k))
 			c.text(key+"kind", ch.Kind, kind)
 			c.channel(key, ch, p, k, paths, d.ShiftOperatorOf(ch.Name).Data)
+			c.curves(key, ch, d.Map(ch.Name))
 		}
 	}
 	if !math.IsInf(start, 0) {
@@ -520,6 +521,13 @@ func (c *comparison) classes(m *Model, b *brief.Brief, p *hardware.Profile, d *d
 		c.text(key+"kind", r.Kind, w.Kind)
 		if r.Kind != w.Kind {
 			continue
+		}
+		if k := slices.IndexFunc(b.Errors, func(e brief.Error) bool { return e.Name == r.Name }); k >= 0 {
+			e, scale := &b.Errors[k], 1.0
+			if e.Kind == brief.Offset {
+				scale = c.marginSize(b, p, brief.Margin{Error: e.Name, Size: 1})
+			}
+			c.fluctuations(key, &r, e, b.Span, scale)
 		}
 		switch r.Kind {
 		case "static":

@@ -64,6 +64,16 @@ func (v *Verdict) MarshalJSON() ([]byte, error) {
 			leak := figure(*e.LeakSusceptibility)
 			o.LeakSusceptibility = &leak
 		}
+		o.Spread = e.Spread
+		for _, x := range []struct {
+			from *float64
+			to   **figure
+		}{{e.SpreadInfidelity, &o.SpreadInfidelity}, {e.NoiseInfidelity, &o.NoiseInfidelity}} {
+			if x.from != nil {
+				f := figure(*x.from)
+				*x.to = &f
+			}
+		}
 		for _, p := range e.Curve {
 			o.Curve = append(o.Curve, pointJSON{figure(p.Value), figure(p.Infidelity)})
 		}
@@ -154,6 +164,9 @@ type errorJSON struct {
 	Susceptibility      figure      `json:"susceptibility"`
 	LeakSusceptibility  *figure     `json:"leak_susceptibility,omitempty"`
 	Leak                bool        `json:"leak,omitempty"`
+	Spread              string      `json:"spread,omitempty"`
+	SpreadInfidelity    *figure     `json:"spread_infidelity,omitempty"`
+	NoiseInfidelity     *figure     `json:"noise_infidelity,omitempty"`
 	Low                 figure      `json:"low"`
 	High                figure      `json:"high"`
 	WorstDirection      string      `json:"worst_direction,omitempty"`

@@ -11,6 +11,7 @@ import (
 // How far a verdict may lie from the record's claim, both on the rounded codes.
 const (
 	infidelityAgreement     = 1e-9
+	fluctuationAgreement    = 1e-4 // of the figure itself, beside
 	susceptibilityAgreement = 1e-5
 	tailAgreement           = 1e-4 // rad
 )
@@ -251,7 +252,26 @@ func (v *Verdict) agree(f *Folder) {
 			}
 		}
 	}
-	a.OK = a.Infidelity <= infidelityAgreement && a.Susceptibility <= susceptibilityAgreement && a.TailAngle <= tailAgreement
+	fluctuations := true
+	for _, c := range f.Model.Errors {
+		for _, e := range v.Errors {
+			for _, x := range []struct {
+				figure  string
+				found   *float64
+				claimed float64
+				is      bool
+			}{{"infidelity over the spread of ", e.SpreadInfidelity, c.SpreadInfidelity, c.claimedSpread}, {"infidelity by the noise of ", e.NoiseInfidelity, c.NoiseInfidelity, c.claimedNoise}} {
+				if e.Name != c.Name || !x.is || x.found == nil {
+					continue
+				}
+				// these are sums of figures that may be large: what is asked of infidelities, or of their digits
+				allowed, off := infidelityAgreement+fluctuationAgreement*x.claimed, 0.0
+				apart(&off, x.figure+e.Name, *x.found, x.claimed, allowed)
+				fluctuations = fluctuations && off <= allowed
+			}
+		}
+	}
+	a.OK = fluctuations && a.Infidelity <= infidelityAgreement && a.Susceptibility <= susceptibilityAgreement && a.TailAngle <= tailAgreement
 }
 
 // require judges the brief's requirements as the record has them.
@@ -261,7 +281,7 @@ func (v *Verdict) require(r Require) {
 	}
 	below("infidelity", v.Required().Infidelity, r.Infidelity)
 	for _, e := range v.Errors {
-		if e.Held {
+		if e.Held && e.Spread == "" && e.NoiseInfidelity == nil { // the others are held to no order
 			below("susceptibility to "+e.Name, e.Susceptibility, r.Susceptibility)
 		}
 	}

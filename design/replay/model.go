@@ -87,6 +87,14 @@ type Channel struct {
 	Operators [][]complex128 // of u_I and u_Q, or of u alone; Hermitian
 	Paths     []Path         // crosstalk that turns, beside them
 
+	// MapPolynomial and MapLoop, of a baseband channel, turn what arrives, s in shares of full scale, into the rate that Operators[0]
+	// multiplies: FullScale times the sum of MapPolynomial[k] s^(k+1), or what the flux does to the frequency of a loop of two junctions,
+	//
+	//	MapLoop[0] (g(MapLoop[1] + MapLoop[2] s) - g(MapLoop[1])),   g(f) = (cos²(pi f) + MapLoop[3]² sin²(pi f))^(1/4)
+	//
+	// of rad/ns, flux quanta, flux quanta and a share; both nil where the rate is FullScale s.
+	MapPolynomial, MapLoop []float64
+
 	// Compression says what share of the full-scale rate the converter's share reaches, before the line; nil where they are the
 	// same. See Compressed.
 	Compression []Knee
@@ -171,10 +179,17 @@ type Class struct {
 	Powers   []int
 	Residues []complex128
 
+	// Of kinds of one error (not any): sizes over which the infidelity is to be low, and, of kinds static and amplitude (of both quadratures), how it
+	// fluctuates; empty where it does not.
+	Spread Spread
+	Noise  Noise
+
 	// What the record claims.
-	Susceptibility       float64
-	LeakSusceptibility   float64
-	claimed, claimedLeak bool
+	Susceptibility                    float64
+	LeakSusceptibility                float64
+	SpreadInfidelity, NoiseInfidelity float64
+	claimed, claimedLeak              bool
+	claimedSpread, claimedNoise       bool
 }
 
 // WithSamples gives a model of another pulse on the same lines, operators, limits and errors: one slice for each
@@ -373,6 +388,9 @@ func (c *Channel) validate(dim, samples int, key string) *fault {
 		return bad("delay_ns", c.Delay, "-1e9 to 1e9")
 	}
 	if f := validLine(key, c.Direct, c.Poles, c.Powers, c.Residues); f != nil {
+		return f
+	}
+	if f := c.validCurve(key); f != nil {
 		return f
 	}
 	if len(c.Operators) != quadratures {
@@ -591,6 +609,9 @@ func (m *Model) validClass(e *Class, key string, channels map[string]bool) *faul
 	if n := len(e.Operators); n > maxMembers {
 		return bad("operators", fmt.Sprintf("%d matrices", n), fmt.Sprintf("up to %d", maxMembers))
 	}
+	if f := e.validFluctuations(key); f != nil {
+		return f
+	}
 	switch e.Kind {
 	case "static":
 		return operator("operator", e.Operator)
@@ -603,6 +624,9 @@ func (m *Model) validClass(e *Class, key string, channels map[string]bool) *faul
 			if !channels[c] {
 				return bad("channels", fmt.Sprintf("%q", c), "names of [[model.channel]]")
 			}
+			if m.channel(c).mapped() {
+				return bad("channels", fmt.Sprintf("%q, which has a map", c), "channels without a map")
+			}
 			if both && m.channel(c).Kind != "quadrature" {
 				return bad("channels", fmt.Sprintf("%q, which has one quadrature", c), `channels of kind "quadrature"`)
 			}
@@ -613,6 +637,9 @@ func (m *Model) validClass(e *Class, key string, channels map[string]bool) *faul
 	case "line", "crosstalk":
 		if len(e.Channels) != 1 || !channels[e.Channels[0]] {
 			return bad("channel", fmt.Sprintf("%q", e.Channels), "the name of a [[model.channel]]")
+		}
+		if m.channel(e.Channels[0]).mapped() {
+			return bad("channel", fmt.Sprintf("%q, which has a map", e.Channels[0]), "a channel without a map")
 		}
 		if e.Kind == "line" {
 			return validLine(key, e.Direct, e.Poles, e.Powers, e.Residues)

@@ -28,7 +28,8 @@ func newStatic(op []complex128, n int) *probe {
 	return p
 }
 
-// chosen says which channels a class is about; those that lack a second quadrature are left out where it is needed.
+// chosen says which channels a class is about; those that lack a second quadrature are left out where it is needed, and those with a map always:
+// their amplitude is no factor of what they drive.
 func (e *engine) chosen(names []string, both bool) []bool {
 	list := make([]bool, len(e.drives))
 	for c := range list {
@@ -36,7 +37,7 @@ func (e *engine) chosen(names []string, both bool) []bool {
 		for _, name := range names {
 			list[c] = list[c] || name == e.m.Channels[c].Name
 		}
-		list[c] = list[c] && !(both && e.drives[c].ops[1] < 0)
+		list[c] = list[c] && !(both && e.drives[c].ops[1] < 0) && !e.m.Channels[c].mapped()
 	}
 	return list
 }

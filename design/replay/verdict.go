@@ -106,6 +106,11 @@ type Error struct {
 	LeakSusceptibility *float64
 	Leak               bool // a class of leakage
 
+	// Spread is "average" or "worst" where the error is held over sizes of it, and SpreadInfidelity the mean infidelity over them, or
+	// the worst. NoiseInfidelity is what the error's noise adds to the infidelity, to first order in its spectrum; nil where it does not fluctuate.
+	Spread                            string
+	SpreadInfidelity, NoiseInfidelity *float64
+
 	// Low and High are the error sizes, negative and positive, at which the
 	// required infidelity is first broken, found by root search; -Inf and +Inf
 	// when it holds to the end of the searched range, 0 when it is broken

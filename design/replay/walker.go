@@ -175,6 +175,7 @@ type walker struct {
 	cos, sin   []float64 // those of what turns
 	cur, sum   []complex128
 	norms, maj []float64
+	bend       []float64 // scratch of a map
 }
 
 func (e *engine) newWalker(pr *probe, turns ...complex128) *walker {
@@ -182,7 +183,7 @@ func (e *engine) newWalker(pr *probe, turns ...complex128) *walker {
 		e: e, probe: pr, controls: e.controls, turns: turns, t: e.start, step: e.m.SamplePeriod, tolerance: e.tolerance,
 		cur: make([]complex128, maxPower), sum: make([]complex128, maxPower),
 		norms: make([]float64, seriesLength), maj: make([]float64, seriesLength),
-		cos: make([]float64, seriesLength), sin: make([]float64, seriesLength),
+		cos: make([]float64, seriesLength), sin: make([]float64, seriesLength), bend: make([]float64, 4*seriesLength),
 	}
 	for c := range e.m.Channels {
 		ch := &e.m.Channels[c]
@@ -339,7 +340,7 @@ func (w *walker) left() float64 {
 		for _, p := range d.paths {
 			norm += w.e.controls[p[0]].norm
 		}
-		a += 2*norm*u*d.fullScale + 2*d.norm*peak*u
+		a += 2*norm*u*d.fullScale*w.e.m.Channels[c].steepest() + 2*d.norm*peak*u
 	}
 	return a
 }
@@ -357,6 +358,9 @@ func (w *walker) series(s float64) {
 			for n, v := range l.buf {
 				l.buf[n] = complex(real(v), 0)
 			}
+		}
+		if ch := &w.e.m.Channels[l.channel]; ch.mapped() { // of which there are no errors of the line
+			ch.curve(l.buf, w.bend)
 		}
 	}
 	slope := w.lines[len(w.lines)-1].buf // when there is one
