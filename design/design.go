@@ -386,7 +386,7 @@ func classes(in Inputs, d []driven, plain bool) (held []robust.Class, slopes []*
 			}
 			c.Leak = e.Leak
 			for _, m := range e.Members {
-				c.Operators, c.Factors, c.Names = append(c.Operators, m.Operator.Data), append(c.Factors, m.Weight), append(c.Names, m.Name)
+				c.Operators, c.Factors = append(c.Operators, m.Operator.Data), append(c.Factors, m.Weight)
 			}
 		case brief.Amplitude:
 			if c.Kind = robust.Amplitude; e.Quadrature == "" && (len(e.Channels) == 0 || len(e.Channels) == len(d)) {
@@ -446,7 +446,7 @@ func classes(in Inputs, d []driven, plain bool) (held []robust.Class, slopes []*
 			}
 			c.Kind, c.Size = robust.Static, e.Size*math.Abs(rate)
 			if scaleAll(c.Values, rate); !plain {
-				c.Operators, c.Names = [][]complex128{op.Data}, []string{e.Name}
+				c.Operators = [][]complex128{op.Data}
 			}
 		case brief.Line:
 			ch := &in.Profile.Channels[d[lane].channel]
@@ -581,7 +581,7 @@ func (o outcome) better(p outcome) bool {
 	if (o.status == Found) != (p.status == Found) {
 		return o.status == Found
 	}
-	if o.loss != p.loss {
+	if o.status == Found && o.loss != p.loss { // without a success there is no loss
 		return o.loss < p.loss
 	}
 	return o.miss < p.miss
@@ -592,14 +592,14 @@ func (o outcome) better(p outcome) bool {
 func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progress)) outcome {
 	want, pool := 1, candidates
 	refine := b.Refine && slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Values == nil && c.Noise == nil })
-	if refine {
+	if refine || q.spread() {
 		pool = q.pool()
-		refine = pool > 0
+		refine = refine && pool > 0
 	}
 	if refine || q.spread() {
 		want = max(1, pool)
 	}
-	workers := runtime.GOMAXPROCS(0)
+	workers := q.workers()
 	progress(Progress{Stage: "search", Of: q.starts, Expected: q.expected() * time.Duration(q.starts) / time.Duration(workers)})
 	list := solve.Search(ctx, q.starts, want, workers, q.solve, func(done, won int, best float64) {
 		progress(Progress{Stage: "search", Done: done, Of: q.starts, Successes: won, Best: best})
@@ -631,7 +631,7 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 	best := refined[0]
 	for _, c := range refined {
 		out.evaluations += c.evaluations
-		if c.better(best) {
+		if c.c != nil && c.better(best) {
 			best = c
 		}
 	}
@@ -645,10 +645,28 @@ func (q *problem) find(ctx context.Context, b *brief.Brief, progress func(Progre
 	return out
 }
 
+// mostMemory bounds what all searches at once hold, bytes, roughly.
+const mostMemory = 4 << 30
+
+// workers is how many searches run at once; what they find does not depend on it.
+func (q *problem) workers() int {
+	n := runtime.GOMAXPROCS(0)
+	if l, ok := q.gate(false).(*robust.LevelsGate); ok {
+		n = min(n, max(1, int(mostMemory/l.Bytes())))
+	}
+	return n
+}
+
 // expected is a rough upper bound of the time of one start: that of its
 // evaluations, were they all used. It is shown, and nothing depends on it.
 func (q *problem) expected() time.Duration {
-	p := q.residuals(q.gate(false))
+	g := q.gate(false)
+	p := q.residuals(g)
+	if l, ok := g.(*robust.LevelsGate); ok {
+		if _, gradient := l.Work(); gradient > 1e9 { // too long for a trial; some multiplications a nanosecond
+			return time.Duration(4000 * gradient)
+		}
+	}
 	c := q.start(0).c
 	r := make([]float64, p.Rows)
 	begun := time.Now()
@@ -661,9 +679,8 @@ func (q *problem) expected() time.Duration {
 	return 300 * time.Since(begun)
 }
 
-// solve runs one start on the coarse grid. A start that ends at a small miss instead of a
-// zero is a success too where that meets what is required, and there is no zero, as of a
-// spread, or it would cost hours.
+// solve runs one start on the coarse grid. A start that ends at a small miss is a success like a zero where
+// that meets what is required and there is no zero to find, as of a spread, or to find it would take hours.
 func (q *problem) solve(ctx context.Context, number int) solve.Result {
 	st := q.start(number)
 	return q.descend(ctx, false, st.c, solve.Options{Kappa: st.kappa})
@@ -695,7 +712,8 @@ func (q *problem) descend(ctx context.Context, fine bool, c []float64, o solve.O
 		}
 	}
 	if r.Status == solve.Stalled || r.Status == solve.Exhausted {
-		if (q.spread() || p.Gradient != nil) && q.meets(fine, g, r.C) {
+		second := slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Order == 2 }) // of which nothing is required
+		if (q.spread() || p.Gradient != nil && !second) && q.meets(fine, g, r.C) {
 			r.Status = solve.Converged
 		}
 	}
@@ -732,7 +750,7 @@ func (q *problem) spread() bool {
 }
 
 // finishWork is how many multiplications the refinement of all candidates may take, roughly: some minutes.
-const finishWork = 3e11
+const finishWork = 4e10
 
 // pool is how many successes are refined: fewer of dear problems, and none where even one would take too long.
 func (q *problem) pool() int {
@@ -744,10 +762,10 @@ func (q *problem) pool() int {
 	for _, st := range rounds[0] {
 		iterations += st.iterations
 	}
-	jacobian, gradient := l.Work()
-	if l.Many() {
-		jacobian = gradient
+	if l.Many() { // whose iterations gain too little to refine by
+		return 0
 	}
+	jacobian, _ := l.Work()
 	return int(math.Min(candidates, finishWork/(jacobian*float64(iterations))))
 }
 
@@ -789,6 +807,9 @@ func (q *problem) refine(ctx context.Context, won []solve.Numbered, wanted bool,
 		var mu sync.Mutex
 		done := 0
 		each(len(left), func(i int) {
+			if ctx.Err() != nil && i > 0 { // one of them is enough to save
+				return
+			}
 			q.improve(ctx, &left[i], stages)
 			mu.Lock()
 			done++
@@ -815,19 +836,18 @@ func (q *problem) improve(ctx context.Context, c *candidate, stages []stage) {
 	if c.c == nil {
 		q.polish(ctx, c)
 	}
-	if slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Worst }) {
-		q.even(ctx, c)
-	}
-	if len(stages) == 0 {
-		return
-	}
 	for _, s := range stages {
 		r := solve.GaussNewton(ctx, q.residuals(q.finite(s)), q.set, c.wide,
 			solve.Options{Kappa: refineKappa, Tolerance: -1, Iterations: s.iterations, Stalls: refineStalls})
 		c.wide = r.C
 		c.evaluations += r.Evaluations
 	}
-	q.polish(ctx, c)
+	if len(stages) > 0 {
+		q.polish(ctx, c)
+	}
+	if slices.ContainsFunc(q.spin.Held, func(c robust.Class) bool { return c.Worst }) {
+		q.even(ctx, c)
+	}
 }
 
 // polish brings the first order back to zero on the fine grid. It is short, and
@@ -878,7 +898,7 @@ func (q *problem) even(ctx context.Context, c *candidate) {
 		x = r.C
 		next := candidate{zero: r.Status == solve.Converged, loss: q.loss(x)}
 		if next.better(*c) {
-			c.c, c.miss, c.loss = x, r.Miss, next.loss
+			c.c, c.miss, c.zero, c.loss = x, r.Miss, next.zero, next.loss
 		}
 	}
 }

@@ -54,7 +54,7 @@ func (q *problem) finish(in Inputs, out outcome) (*Pulse, error) {
 	record := Record{
 		Format: 1,
 		Pulse: PulseFacts{
-			Name: b.Name, Target: b.Target.Label + " on " + sites(in),
+			Name: b.Name, Target: target(in),
 			Span: quantity.Format(b.Span, quantity.Time), HeldByDefault: b.Defaulted, Status: string(out.status),
 			Held: []string{},
 		},
@@ -136,6 +136,15 @@ func (q *problem) solver() string {
 		return "quasi-Newton"
 	}
 	return "Gauss-Newton"
+}
+
+// target says in words what the pulse is to do.
+func target(in Inputs) string {
+	words := in.Brief.Target.Label + " on " + sites(in)
+	if in.Brief.Target.Local {
+		words += " up to local rotations"
+	}
+	return words
 }
 
 // sites names the sites of the target: of states all of the device.

@@ -9,12 +9,14 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"runtime"
 	"slices"
 	"strings"
 	"testing"
 	"time"
 
 	"holdfast/design/replay"
+	"holdfast/design/robust"
 )
 
 // TestMeasurePair finds the spans of two spins.
@@ -186,8 +188,32 @@ func TestMeasureRates(t *testing.T) {
 			u, v := q.controls(&q.fine, [][]complex128{p.Channels[0].Exact, p.Channels[1].Exact})
 			f := q.gate(true).Figures(u, v)
 			left[i] = f.Susceptibility[0]
-			t.Logf("%d ns, %q: %s; infidelity %.2g; susceptibility to the learned errors %.3g, worst %v; %v", span, rates, p.Summary(), f.Infidelity, f.Susceptibility[0], f.Worst[0], time.Since(begun))
+			t.Logf("%d ns, %q: %s; infidelity %.2g; susceptibility to the learned errors %.3g; %v", span, rates, p.Summary(), f.Infidelity, f.Susceptibility[0], time.Since(begun))
 		}
 		t.Logf("%d ns: expected infidelity lower by %.3g", span, left[0]*left[0]/(left[1]*left[1]))
 	}
+}
+
+// TestMeasureLarge evaluates a gate on six spins, 64 levels, held against every one-body error, once, and says what memory it takes.
+func TestMeasureLarge(t *testing.T) {
+	gates := ""
+	for i := range 6 {
+		gates += fmt.Sprintf(", q%d = \"X90\"", i+1)
+	}
+	in := register(t, 6, chain(6, "200 kHz"), "span = \"96 ns\"\n[target]\ngates = {"+gates[1:]+" }\n[[error]]\nany = \"one-body\"\n")
+	q, err := newTask(in, "slepian")
+	if err != nil {
+		t.Fatal(err)
+	}
+	g := q.gate(false).(*robust.LevelsGate)
+	_, work := g.Work()
+	r, grad := make([]float64, g.Rows()), make([]float64, g.Dim())
+	begun := time.Now()
+	g.Residuals(q.start(0).c, r)
+	residuals := time.Since(begun)
+	g.Gradient(r, grad)
+	var m runtime.MemStats
+	runtime.ReadMemStats(&m)
+	t.Logf("%d levels, %d steps, %d residuals, %d coefficients, quasi-Newton %v: residuals %v, gradient %v (%.2g multiplications), %.0f MB from the system", in.Device.Dim(), len(q.coarse.Steps), g.Rows(), g.Dim(), g.Many(),
+		residuals, time.Since(begun)-residuals, work, float64(m.Sys)/1e6)
 }

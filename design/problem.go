@@ -64,6 +64,9 @@ type slope struct {
 	feed feed
 }
 
+// mostWork bounds the multiplications of one evaluation, roughly: half a minute.
+const mostWork = 6e10
+
 // mostEntries bounds the response matrix of a problem, 64 MB: some 2000 samples
 // at the demonstration's band.
 const mostEntries = 8 << 20
@@ -102,7 +105,7 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 			return nil, err
 		}
 		l.first, l.control = q.dim, control
-		l.feed.curved = control < len(w.spin.Maps) && w.spin.Maps[control] != nil
+		l.feed.curved = p.Channels[c].Shift != 0 || control < len(w.spin.Maps) && w.spin.Maps[control] != nil
 		q.dim += l.quadratures * l.basis.Count
 		control += l.quadratures
 		if w.paths != nil {
@@ -128,8 +131,12 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 	if q.levels != nil { // before any search: does the ladder's kernel know all that is asked?
 		s := *q.levels
 		s.Grid, s.Held = q.coarse.Grid, q.spin.Held
-		if _, err := robust.NewLevelsGate(s, robust.Response{}, 0); err != nil {
+		g, err := robust.NewLevelsGate(s, robust.Response{}, 0)
+		if err != nil {
 			return nil, err
+		}
+		if _, gradient := g.Work(); gradient > mostWork {
+			return nil, fmt.Errorf("span: %d levels, %d steps and errors of %d residuals take minutes to look at once; allowed: fewer levels, a shorter span or a smaller class of errors", s.Dim, len(s.Grid.Steps), g.Rows())
 		}
 	}
 	return q, nil

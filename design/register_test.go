@@ -138,6 +138,34 @@ func agreed(t *testing.T, f *replay.Folder) {
 	}
 }
 
+// TestAgreement: where a search finds nothing, record and replay agree all the same: on what leads out of the code space, of gates, classes
+// of leakage and states, on the noise of an amplitude, and on a shift with a slow tail.
+func TestAgreement(t *testing.T) {
+	ladder := "levels = 3\nanharmonicity = \"-220 MHz\""
+	loose := "\n[require]\ninfidelity = 1\nsusceptibility = 1\n"
+	for name, in := range map[string]Inputs{
+		"leakage":                  register(t, 1, "", "span = \"48 ns\"\nstarts = 1\nrefine = false\n[target]\nsite = \"q1\"\ngate = \"X90\"\n[[error]]\nany = \"leakage\""+loose, ladder),
+		"leaking states":           register(t, 1, "", "span = \"32 ns\"\nstarts = 1\nrefine = false\n[target]\nfrom = \"0\"\nto = \"1\"\n[[error]]\ndetuning = \"q1\"\nspread = \"average\""+loose, ladder),
+		"noise of drives":          register(t, 1, "", "span = \"48 ns\"\nstarts = 1\n[target]\nsite = \"q1\"\ngate = \"X90\"\n[[error]]\namplitude = \"q1 drive\"\nnoise = { form = \"white\", sigma = \"0.5 %\", high = \"20 MHz\" }"+loose),
+		"a shift with a slow pole": scene{ns: 64, channel: "shift = \"2 MHz\"", line: "lowpass = { family = \"single-pole\", corner = \"40 MHz\" }\n", head: "starts = 1\nrefine = false", errors: "[[error]]\ndetuning = \"q1\""}.inputs(t),
+	} {
+		p, f, _ := folderOf(t, in)
+		v, err := replay.Judge(context.Background(), f)
+		if err != nil {
+			t.Fatalf("%s: %v", name, err)
+		}
+		t.Logf("%s: %s; %+v", name, p.Summary(), v.Agreement)
+		if !v.Agreement.OK || len(v.Inputs) > 0 {
+			t.Errorf("%s: %+v %v", name, v.Agreement, v.Inputs)
+		}
+		for i, e := range v.Errors {
+			if name == "leakage" && i == 0 && !(*e.LeakSusceptibility > 1e-4) || name == "leaking states" && i == 0 && !(*e.LeakSusceptibility > 1e-4) || name == "noise of drives" && i == 0 && !(*e.NoiseInfidelity > 1e-8) {
+				t.Errorf("%s: too little to test anything: %+v", name, e)
+			}
+		}
+	}
+}
+
 // TestSpreads: held over a spread of detunings, the mean and the worst infidelity are what they are said to be, and each is the
 // smaller of the two where it was asked for.
 func TestSpreads(t *testing.T) {
@@ -252,5 +280,13 @@ tails = [ { amplitude = "-1 %", time = "40 ns" } ]
 			t.Errorf("%s: infidelity %.2g before rounding by replay, %v", name, g.Infidelity, err)
 		}
 		t.Logf("%s: %s, the bias up to %.2f, infidelity %.2g", name, p.Summary(), largest, g.Infidelity)
+	}
+}
+
+// TestTooLarge: what would take minutes to look at once is refused before the search.
+func TestTooLarge(t *testing.T) {
+	in := register(t, 6, "", "span = \"480 ns\"\n[target]\nfrom = \"000000\"\nto = \"GHZ\"\n[[error]]\nany = \"two-body\"\n")
+	if _, err := newTask(in, brief.Slepian); err == nil || !strings.Contains(err.Error(), "take minutes") {
+		t.Errorf("%v", err)
 	}
 }

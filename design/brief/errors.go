@@ -161,7 +161,10 @@ func (b *Brief) readNoise(e *Error, t *quantity.Table) {
 	switch e.Kind {
 	case Static:
 	case Amplitude:
-		kind = noise.Relative
+		if kind = noise.Relative; e.Quadrature != "" {
+			t.Fail("noise", "found noise of one quadrature; allowed: noise of both")
+			return
+		}
 	default:
 		t.Fail("noise", "found noise beside %s; allowed: beside an amplitude or an error of one operator", e.key)
 		return

@@ -221,6 +221,9 @@ func (b *Brief) errorOn(e *Error, p *hardware.Profile, d *device.Device, driven 
 	}
 	i, _ := p.Channel(e.on)
 	c := &p.Channels[i]
+	if e.Noise != nil && c.Shift != 0 {
+		return &quantity.Error{Found: fmt.Sprintf("noise of %q, which shifts what it drives", e.on), Allowed: "noise of the amplitude of a channel without a shift"}
+	}
 	if c.Kind == hardware.Baseband {
 		if e.Kind == Skew {
 			return &quantity.Error{Found: fmt.Sprintf("%q, a baseband channel", e.on), Allowed: "a quadrature channel"}

@@ -375,6 +375,9 @@ func (s *Sheet) errors(v *view) {
 		if e.WorstDirection != "" {
 			v.Worst = append(v.Worst, typographic(fmt.Sprintf("Of %s, %s survives most: susceptibility %s.", clean(e.Name), clean(e.WorstDirection), figure(e.WorstSusceptibility))))
 		}
+		for _, w := range fluctuations(&e) {
+			v.Worst = append(v.Worst, typographic(strings.ToUpper(w[:1])+w[1:]+"."))
+		}
 		if w := s.weaker(e); w != "" {
 			v.Weaker = append(v.Weaker, typographic(w))
 		}

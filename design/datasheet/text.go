@@ -90,6 +90,9 @@ func Text(w io.Writer, s *Sheet) error {
 		if e.WorstDirection != "" {
 			line("  of %s, %s survives most: %s", clean(e.Name), clean(e.WorstDirection), figure(e.WorstSusceptibility))
 		}
+		for _, w := range fluctuations(&e) {
+			line("  %s", w)
+		}
 	}
 
 	b.WriteByte('\n')
@@ -114,7 +117,11 @@ func Text(w io.Writer, s *Sheet) error {
 		line("ring-out turns %s after the window", tail)
 	}
 	if v.Decoherence > 0 {
-		line("decoherence adds %s, whatever the pulse", figure(v.Decoherence))
+		if v.Measure == "state" || v.Measure == "subspace" {
+			line("decoherence adds some %s: its mean over all states of the sites", figure(v.Decoherence))
+		} else {
+			line("decoherence adds %s, whatever the pulse", figure(v.Decoherence))
+		}
 	}
 	if l, ok := tightest(v.Limits); ok {
 		line("tightest limit: %s, %s, %s free", clean(l.Channel), clean(string(l.Reading.Limit)), percent(l.Headroom))
@@ -164,4 +171,19 @@ func table(b *strings.Builder, rows [][]string) {
 		}
 		b.WriteString(strings.TrimRight(l.String(), " ") + "\n")
 	}
+}
+
+// fluctuations says what an error's noise adds, and the infidelity over its spread.
+func fluctuations(e *replay.Error) (list []string) {
+	if e.NoiseInfidelity != nil {
+		list = append(list, fmt.Sprintf("noise: %s adds %s to the infidelity, to first order in its spectrum", clean(e.Name), figure(*e.NoiseInfidelity)))
+	}
+	if e.SpreadInfidelity != nil {
+		what := "the mean infidelity over its spread is "
+		if e.Spread == "worst" {
+			what = "the largest infidelity over its spread is "
+		}
+		list = append(list, "spread: of "+clean(e.Name)+" "+what+figure(*e.SpreadInfidelity))
+	}
+	return list
 }

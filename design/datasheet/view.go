@@ -424,7 +424,11 @@ func (s *Sheet) decoherenceSentence() string {
 	if len(s.Sites) > 1 {
 		how = "the sum over the sites of d/(d+1) T/4 (1/T1 + 2/T2), d = " + fmt.Sprint(1<<len(s.Sites)) + " code states,"
 	}
-	text += " to every coherent infidelity here, " + how + " whatever the pulse: " + figure(v.Required().Infidelity+v.Decoherence) + " in all without any other error."
+	every := " whatever the pulse: "
+	if v.Measure == "state" || v.Measure == "subspace" { // of one state it depends on the way
+		every = " the mean over all states of the sites and so a scale for these: "
+	}
+	text += " to every coherent infidelity here, " + how + every + figure(v.Required().Infidelity+v.Decoherence) + " in all without any other error."
 	if r := s.required(); r > 0 && v.Decoherence > r {
 		text += " That alone is more than the " + digits(r, 3) + " required, which is judged on the coherent figure."
 	}

@@ -13,8 +13,8 @@ import (
 
 // What a record may hold of one error's spread and noise.
 const (
-	maxSpread = 64   // sizes
-	maxNodes  = 4096 // frequencies
+	maxSpread = 64 // sizes
+	maxNodes  = 64 // frequencies
 )
 
 // A Spread is some sizes of an error over which the infidelity itself is to be low, in the place of what first order leaves.
@@ -208,7 +208,7 @@ func (c *comparison) fluctuations(key string, r *Class, e *brief.Error, span, sc
 		}
 		return
 	}
-	rule := e.Noise.Nodes(span, noiseNodes)
+	rule := e.Noise.Nodes(span, maxNodes)
 	if len(rule.Frequency) != nodes {
 		c.differ(key+"noise_frequencies_rad_per_ns", fmt.Sprintf("%d frequencies", nodes), fmt.Sprintf("%d frequencies", len(rule.Frequency)))
 		return
@@ -218,9 +218,6 @@ func (c *comparison) fluctuations(key string, r *Class, e *brief.Error, span, sc
 		c.number(fmt.Sprintf("%snoise_weights[%d]", key, i), r.Noise.Weights[i], rule.Weight[i])
 	}
 }
-
-// noiseNodes is how many frequencies at most a record gives of a noise.
-const noiseNodes = 64
 
 // validFluctuations checks a class's spread and noise.
 func (c *Class) validFluctuations(key string) *fault {

@@ -86,7 +86,7 @@ func Open(dir string) (*Folder, error) {
 	if _, err := os.Stat(path); errors.Is(err, fs.ErrNotExist) {
 		return nil, fmt.Errorf("%s: found a folder without %s; allowed: %s", dir, hardware.RecordName, allowed)
 	}
-	doc, err := quantity.ReadFile(path)
+	doc, err := quantity.ReadRecord(path)
 	if err != nil {
 		return nil, err
 	}
@@ -159,7 +159,7 @@ func Open(dir string) (*Folder, error) {
 
 // pulseName reads what the record calls the pulse, without minding what else [pulse] holds.
 func pulseName(path string) (string, error) {
-	doc, err := quantity.ReadFile(path)
+	doc, err := quantity.ReadRecord(path)
 	if err != nil {
 		return "", err
 	}

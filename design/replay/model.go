@@ -612,6 +612,11 @@ func (m *Model) validClass(e *Class, key string, channels map[string]bool) *faul
 	if f := e.validFluctuations(key); f != nil {
 		return f
 	}
+	if e.Kind == "amplitude" && len(e.Noise.Frequencies) > 0 && slices.ContainsFunc(m.Channels, func(c Channel) bool {
+		return (c.Shift != 0 || c.mapped()) && (len(e.Channels) == 0 || slices.Contains(e.Channels, c.Name))
+	}) {
+		return bad("noise_frequencies_rad_per_ns", "noise of the amplitude of a channel with a shift or a map", "noise of channels without either")
+	}
 	switch e.Kind {
 	case "static":
 		return operator("operator", e.Operator)

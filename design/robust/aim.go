@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/cmplx"
 	"math/rand/v2"
+	"slices"
 
 	"gonum.org/v1/gonum/mat"
 )
@@ -14,6 +15,8 @@ import (
 type Rotations struct {
 	Before, After [][4]complex128
 }
+
+func (r Rotations) clone() Rotations { return Rotations{slices.Clone(r.Before), slices.Clone(r.After)} }
 
 // Angles returns the turns about Z of rotations about Z, rad: exp(-i angle Z/2).
 func Angles(list [][4]complex128) []float64 {

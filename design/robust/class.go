@@ -30,11 +30,10 @@ type Class struct {
 	Kind   Kind
 	Vector dynamics.Vec // kind Static: V, any length but zero
 	// Operators are, for more levels than a spin's, the V of kind Static, one, and of
-	// kind Any, each with its name; H += λ V. Factors are the sizes that they have beside each other,
+	// kind Any; H += λ V. Factors are the sizes that they have beside each other,
 	// of root mean square 1; nil for ones.
 	Operators [][]complex128
 	Factors   []float64
-	Names     []string
 	// Leak asks of kind Any, for what couples the code space to the rest, that the first
 	// order move nothing out of it.
 	Leak   bool

@@ -5,8 +5,6 @@ import (
 	"math"
 	"slices"
 
-	"gonum.org/v1/gonum/mat"
-
 	"holdfast/design/dynamics"
 )
 
@@ -57,11 +55,11 @@ type LevelsGate struct {
 	drive
 	spec    Levels
 	span    float64
-	weight  float64
 	aim     *aim
 	nominal dynamics.Levels
 	finite  dynamics.Levels
 	read    [2]reading // of classes, and of those with Leak
+	leaves  reading    // what leads out of the code space
 	toggles []toggledClass
 	waves   []wave
 	members []placedLevels
@@ -236,15 +234,20 @@ func NewLevelsGate(s Levels, r Response, refine float64) (*LevelsGate, error) {
 			}
 		}
 	}
-	g := &LevelsGate{drive: newDrive(r, s.Held, len(s.Axes), s.Grid, s.Maps), spec: s, weight: refine, span: s.Grid.Window(), aim: newAim(&s), coord: make([]float64, d*d)}
+	g := &LevelsGate{drive: newDrive(r, s.Held, len(s.Axes), s.Grid, s.Maps), spec: s, span: s.Grid.Window(), aim: newAim(&s), coord: make([]float64, d*d)}
 	if err := g.give(); err != nil {
 		return nil, err
 	}
-	if g.read[0] = readCode(d, s.Code); g.aim.target == nil {
-		g.read[0] = readStates(d, g.aim.k, g.aim.from)
-		g.read[1] = g.read[0]
-	} else {
-		g.read[1] = readLeak(d, s.Code, g.aim.outside)
+	var outside []int
+	for i := range d {
+		if !slices.Contains(s.Code, i) {
+			outside = append(outside, i)
+		}
+	}
+	g.leaves = readLeak(d, s.Code, outside)
+	if g.read = [2]reading{readCode(d, s.Code), g.leaves}; g.aim.target == nil {
+		states := readStates(d, g.aim.k, g.aim.from)
+		g.read = [2]reading{states, states}
 	}
 	full := 0.0
 	for _, a := range s.Axes[:len(s.Axes)-len(quiet)] {
@@ -270,6 +273,9 @@ func NewLevelsGate(s Levels, r Response, refine float64) (*LevelsGate, error) {
 			g.nominal.Held = append(g.nominal.Held, op)
 		}
 	}
+	if len(g.borne) > 0 && !(full > 0) {
+		return nil, fmt.Errorf("error %q: no channel does anything on the code space", s.Held[g.borne[0]].Name)
+	}
 	for k, i := range g.borne {
 		g.toggles = append(g.toggles, toggledClass{i, len(g.nominal.Held) + k, 1 / (g.span * full)})
 		g.nominal.Borne = append(g.nominal.Borne, g.v[i])
@@ -291,8 +297,9 @@ func NewLevelsGate(s Levels, r Response, refine float64) (*LevelsGate, error) {
 		if s.Held[i].Order != 2 {
 			continue
 		}
-		for _, way := range g.ways(i, full) {
-			b := secondDifference(len(g.members)+1, s.Held[i].Weight)
+		ways, sizes := g.ways(i, full)
+		for k, way := range ways {
+			b := secondDifference(len(g.members)+1, s.Held[i].Weight*sizes[k])
 			for _, f := range secondPoints {
 				g.members = append(g.members, way(f))
 			}
@@ -473,34 +480,35 @@ func (c *Class) members(class int) (list []placedLevels) {
 	return list
 }
 
-// ways is Class.ways for more levels.
-func (g *LevelsGate) ways(class int, full float64) (list []func(f float64) placedLevels) {
+// ways is Class.ways for more levels; sizes are what the second order of each counts, by the factors of its operators.
+func (g *LevelsGate) ways(class int, full float64) (list []func(f float64) placedLevels, sizes []float64) {
 	c := &g.held[class]
 	switch c.Kind {
 	case Static, Any:
 		d := float64(g.spec.Dim)
 		// V of norm √(d/4) turns by its size times the span, as Z/2 does
-		static := func(op []complex128) {
+		static := func(op []complex128, size float64) {
+			sizes = append(sizes, size)
 			x := secondAngle / (g.span * 2 * math.Sqrt(squared(op, g.spec.Dim)/d))
 			list = append(list, func(f float64) placedLevels { return placedLevels{member{scale: 1, lambda: f * x}, class, op} })
 		}
 		for k, op := range c.Operators {
-			static(op)
+			static(op, c.factor(k)*c.factor(k))
 			for j := range k {
 				pair := make([]complex128, len(op))
 				for i := range pair {
 					pair[i] = complex(c.factor(k), 0)*op[i] + complex(c.factor(j), 0)*c.Operators[j][i]
 				}
-				static(pair)
+				static(pair, c.factor(k)*c.factor(j))
 			}
 		}
 	default:
 		spin := Class{Kind: c.Kind}
 		for _, way := range spin.ways(g.span, full) {
-			list = append(list, func(f float64) placedLevels { return placedLevels{member: way(f), class: class} })
+			list, sizes = append(list, func(f float64) placedLevels { return placedLevels{member: way(f), class: class} }), append(sizes, 1)
 		}
 	}
-	return list
+	return list, sizes
 }
 
 func (g *LevelsGate) reading(class int) *reading {
@@ -991,8 +999,8 @@ func (g *LevelsGate) Figures(u []float64, v [][]float64) Figures {
 	g.aim.reset()
 	var f Figures
 	f.Infidelity, f.Leakage = g.aim.see(g.nominal.Gate, true).losses()
-	f.Rotations = g.aim.set
-	f.Susceptibility, f.Worst, f.Leak = make([]float64, len(g.held)), make([]Worst, len(g.held)), make([]float64, len(g.held))
+	f.Rotations = g.aim.set.clone()
+	f.Susceptibility, f.Leak = make([]float64, len(g.held)), make([]float64, len(g.held))
 	d := g.spec.Dim
 	f.Noise = make([]float64, len(g.held))
 	for _, w := range g.waves {
@@ -1006,7 +1014,7 @@ func (g *LevelsGate) Figures(u []float64, v [][]float64) Figures {
 	for class := range g.held {
 		c := &g.held[class]
 		r := g.reading(class)
-		var columns [][]float64
+		member := 0
 		sum, leak, size, whole := 0.0, 0.0, 0.0, 0.0
 		for _, t := range g.toggles {
 			if t.class != class {
@@ -1017,7 +1025,7 @@ func (g *LevelsGate) Figures(u []float64, v [][]float64) Figures {
 			w := 1.0
 			if c.Kind == Static || c.Kind == Any {
 				op := g.nominal.Held[t.toggle]
-				w = c.factor(len(columns))
+				w = c.factor(member)
 				x := g.size(op, c.Leak)
 				size += w * w * x * x
 				whole += w * w * squared(op, d)
@@ -1029,19 +1037,14 @@ func (g *LevelsGate) Figures(u []float64, v [][]float64) Figures {
 				col[i] *= w
 			}
 			sum += sumSquares(col)
-			if g.aim.target != nil && !c.Leak {
-				leak += w * w * sumSquares(g.read[1].of(a, d, g.coord))
-			}
-			columns = append(columns, col)
+			leak += w * w * sumSquares(g.leaves.of(a, d, g.coord))
+			member++
 		}
 		if size > 0 {
 			f.Susceptibility[class] = math.Sqrt(sum/size) / g.span
 		}
 		if whole > 0 {
 			f.Leak[class] = math.Sqrt(leak/whole) / g.span
-		}
-		if c.Kind == Any && len(columns) > 1 && size > 0 {
-			f.Worst[class] = worstOf(columns, c.Names, g.span*math.Sqrt(size/float64(len(columns))))
 		}
 	}
 	return f
@@ -1055,26 +1058,6 @@ func squared(v []complex128, d int) float64 {
 	}
 	trace := real(traceOf(v, d))
 	return math.Max(0, sum-trace*trace/float64(d))
-}
-
-// worstOf returns the combination of errors that survives most, one column for each.
-func worstOf(columns [][]float64, names []string, unit float64) Worst {
-	n, m := len(columns), len(columns[0])
-	a := mat.NewDense(max(n, m), n, nil)
-	for j, col := range columns {
-		for i, x := range col {
-			a.Set(i, j, x/unit)
-		}
-	}
-	var svd mat.SVD
-	w := Worst{}
-	if svd.Factorize(a, mat.SVDThin) {
-		var v mat.Dense
-		svd.VTo(&v)
-		w.Susceptibility = svd.Values(nil)[0]
-		w.Direction = inWords(mat.Col(nil, 0, &v), names)
-	}
-	return w
 }
 
 // power returns ∫ ||V||² dt over the window of the error that rides on the controls as
@@ -1111,7 +1094,7 @@ func (g *LevelsGate) power(v []float64) (size, whole float64) {
 func (g *LevelsGate) InfidelityAt(u []float64, r Rotations) float64 {
 	g.set(u)
 	g.nominal.Run(g.u, nil)
-	g.aim.set, g.aim.warm = r, true
+	g.aim.set, g.aim.warm = r.clone(), true
 	loss, _ := g.aim.see(g.nominal.Gate, false).losses()
 	return loss
 }
@@ -1164,15 +1147,22 @@ func (g *LevelsGate) Many() bool {
 const mostJacobian = 512 << 20
 
 // Fits tells whether Jacobian may be asked for: its working memory stays in bounds.
-func (g *LevelsGate) Fits() bool {
+func (g *LevelsGate) Fits() bool { return g.Bytes() <= mostJacobian }
+
+// Bytes is the working memory of Jacobian, roughly.
+func (g *LevelsGate) Bytes() float64 {
 	dd := float64(g.spec.Dim * g.spec.Dim)
-	rows := dd * float64(1+len(g.members))
+	rows, direct := dd*float64(1+len(g.members)), 0.0
 	for _, t := range g.toggles {
-		rows += float64(len(g.reading(t.class).needed))
+		n := float64(len(g.reading(t.class).needed))
+		if rows += n; t.toggle >= len(g.nominal.Held) {
+			direct += n
+		}
 	}
-	rows += float64(len(g.waves) * len(g.read[0].needed))
+	n := float64(len(g.waves) * len(g.read[0].needed))
+	rows, direct = rows+n, direct+n
 	dim := float64(g.response.Dim)
-	return 8*(rows*(float64(g.total*g.nodes)+dim)+float64(g.aim.rows())*dd+float64(g.rows)*dim) <= mostJacobian
+	return 8 * ((rows+direct)*float64(g.total*g.nodes) + rows*dim + float64(g.aim.rows())*dd + float64(g.rows)*dim)
 }
 
 // Work counts the multiplications of real numbers, roughly, that an evaluation of the residuals takes

@@ -40,9 +40,17 @@ const (
 
 // ReadFile reads a TOML file of at most 1 MiB strictly. Errors are an *Error with the file as path names it, and the line
 // where there is one.
-func ReadFile(path string) (*Document, error) {
+func ReadFile(path string) (*Document, error) { return read(path, 1) }
+
+// ReadRecord is ReadFile for what a program has written: of at most 16 MiB and sixteen times as many keys, as of the matrices of many levels.
+func ReadRecord(path string) (*Document, error) { return read(path, recordScale) }
+
+// recordScale is how many times larger a record may be than a file that people write.
+const recordScale = 16
+
+func read(path string, scale int) (*Document, error) {
 	whole := func(found string) error {
-		return &Error{File: path, Found: found, Allowed: "a TOML file of at most 1 MiB that can be read"}
+		return &Error{File: path, Found: found, Allowed: fmt.Sprintf("a TOML file of at most %d MiB that can be read", scale)}
 	}
 	info, err := os.Stat(path)
 	switch {
@@ -60,11 +68,11 @@ func ReadFile(path string) (*Document, error) {
 		return nil, whole(reason(err))
 	}
 	defer f.Close() // read only: nothing can be lost
-	data, err := io.ReadAll(io.LimitReader(f, sizeLimit+1))
+	data, err := io.ReadAll(io.LimitReader(f, int64(scale)*sizeLimit+1))
 	if err != nil {
 		return nil, whole(reason(err))
 	}
-	return ParseDocument(path, data)
+	return parseDocument(path, data, scale)
 }
 
 // reason gives the cause of a file error without the operation and the path.
@@ -77,9 +85,11 @@ func reason(err error) string {
 
 // ParseDocument reads the text of a TOML file strictly; file is its name in messages. Errors are an *Error with the line.
 // It refuses more than 1 MiB, more than 16 levels of tables and arrays, and more than 100 000 keys.
-func ParseDocument(file string, data []byte) (*Document, error) {
-	if len(data) > sizeLimit {
-		return nil, &Error{File: file, Found: "a larger file", Allowed: "at most 1 MiB"}
+func ParseDocument(file string, data []byte) (*Document, error) { return parseDocument(file, data, 1) }
+
+func parseDocument(file string, data []byte, scale int) (*Document, error) {
+	if len(data) > scale*sizeLimit {
+		return nil, &Error{File: file, Found: "a larger file", Allowed: fmt.Sprintf("at most %d MiB", scale)}
 	}
 	data = withoutMark(data)
 	if line, what := forbidden(data); what != "" {
@@ -87,7 +97,7 @@ func ParseDocument(file string, data []byte) (*Document, error) {
 	}
 	text := string(data)
 	// The scanner goes first: its limits protect the library, which recurses into arrays and tables without one.
-	ix, lost, complaint := scan(file, text)
+	ix, lost, complaint := scan(file, text, scale*keyLimit)
 	if complaint != nil {
 		return nil, complaint
 	}

@@ -228,3 +228,28 @@ func (d *Document) askAll(t *Table, values map[string]any) {
 		}
 	}
 }
+
+// TestReadRecord: a record may be larger than a file that people write, sixteen times.
+func TestReadRecord(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "record.toml")
+	write := func(size int) {
+		if err := os.WriteFile(path, []byte("text = \"here\"\n# "+strings.Repeat("x", size)+"\n"), 0o666); err != nil {
+			t.Fatal(err)
+		}
+	}
+	write(2 << 20)
+	if _, err := ReadFile(path); err == nil || !strings.Contains(err.Error(), "at most 1 MiB") {
+		t.Errorf("as a file: %v", err)
+	}
+	doc, err := ReadRecord(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got := doc.Root().Text("text"); got != "here" {
+		t.Errorf("text %q", got)
+	}
+	write(17 << 20)
+	if _, err := ReadRecord(path); err == nil || !strings.Contains(err.Error(), "at most 16 MiB") {
+		t.Errorf("a record too large: %v", err)
+	}
+}

@@ -51,6 +51,7 @@ type scanner struct {
 	text  string // without byte order mark
 	pos   int
 	line  int
+	most  int    // keys
 	table *node  // that the current header opened
 	err   *Error // a limit exceeded, a key named twice
 	lost  bool   // the text is no TOML as far as the scanner can tell
@@ -58,8 +59,8 @@ type scanner struct {
 
 // scan builds the index. It complains about limits and about keys that are named twice; lost says that the scanner found
 // the text malformed, so that the library must be able to say why.
-func scan(file, text string) (ix *index, lost bool, err *Error) {
-	s := &scanner{file: file, text: text, line: 1}
+func scan(file, text string, most int) (ix *index, lost bool, err *Error) {
+	s := &scanner{file: file, text: text, line: 1, most: most}
 	s.root = node{at: -1, line: 1, header: true}
 	s.table = &s.root
 	for s.blanks(true); s.pos < len(s.text) && !s.stopped(); s.blanks(true) {
@@ -100,8 +101,8 @@ func (s *scanner) fail(found, allowed string) {
 // add makes a node below parent.
 func (s *scanner) add(parent *node, name string, at int) *node {
 	s.count++
-	if s.count > keyLimit {
-		s.fail("more keys", fmt.Sprintf("at most %d keys in a file", keyLimit))
+	if s.count > s.most {
+		s.fail("more keys", fmt.Sprintf("at most %d keys in a file", s.most))
 	}
 	n := &node{parent: parent, name: name, at: at, line: s.line, order: s.count}
 	if at < 0 {
