@@ -5,17 +5,13 @@ package design
 import (
 	"context"
 	"fmt"
-	"math"
-	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"runtime"
-	"slices"
 	"strings"
 	"testing"
 	"time"
 
-	"holdfast/design/replay"
 	"holdfast/design/robust"
 )
 
@@ -79,7 +75,7 @@ func chain(n int, strength string) (s string) {
 }
 
 // TestMeasureChain moves a state along four spins, and entangles them, held against one-body and,
-// apart, against two-body errors: one start each. The pulses are written below $CHAIN, where TestMeasureChainErrors finds them.
+// apart, against two-body errors: one start each. The pulses are written below $CHAIN, where the measure of package replay finds them.
 func TestMeasureChain(t *testing.T) {
 	for _, c := range []struct {
 		name, target, held string
@@ -111,58 +107,6 @@ func TestMeasureChain(t *testing.T) {
 		}
 		if err := p.Write(dir, src); err != nil {
 			t.Fatal(err)
-		}
-	}
-}
-
-// TestMeasureChainErrors has replay judge these pulses under 500 random errors of each class.
-func TestMeasureChainErrors(t *testing.T) {
-	for _, name := range []string{"move-one", "move-two", "entangle-one", "entangle-two"} {
-		f, err := replay.Open(filepath.Join(os.Getenv("CHAIN"), name))
-		if err != nil {
-			t.Fatal(err)
-		}
-		own, _, _, err := f.Model.Figures(context.Background())
-		if err != nil {
-			t.Fatal(err)
-		}
-		t.Logf("%s: infidelity without error %.2g", name, own.Infidelity)
-		for _, scope := range []string{"one-body", "two-body"} {
-			held := register(t, 4, "", "span = \"256 ns\"\n[target]\nfrom = \"0000\"\nto = \"W\"\n[[error]]\nany = \""+scope+"\"\n").Brief.Errors[0].Members
-			for _, size := range []struct {
-				mhz   float64
-				count int
-			}{{0.03, 20}, {0.1, 500}, {0.3, 20}, {1, 20}} {
-				rng := rand.New(rand.NewPCG(4, 4))
-				losses := make([]float64, size.count)
-				for i := range losses {
-					m := *f.Model
-					m.Ends = "window" // in which an error that goes on is one of the window
-					m.Static = slices.Clone(f.Model.Static)
-					v, norm := make([]float64, len(held)), 0.0
-					for k := range v {
-						v[k] = rng.NormFloat64()
-						norm += v[k] * v[k]
-					}
-					for k, h := range held {
-						g := complex(2*math.Pi*1e-3*size.mhz*v[k]/math.Sqrt(norm), 0)
-						for j, x := range h.Operator.Data {
-							m.Static[j] += g * x
-						}
-					}
-					_, window, _, err := m.Figures(context.Background())
-					if err != nil {
-						t.Fatal(err)
-					}
-					losses[i] = window.Infidelity
-				}
-				slices.Sort(losses)
-				mean := 0.0
-				for _, l := range losses {
-					mean += l / float64(len(losses))
-				}
-				t.Logf("%s, %d random %s errors of %g MHz: mean %.3g, 95 %% under %.3g", name, size.count, scope, size.mhz, mean, losses[len(losses)*95/100])
-			}
 		}
 	}
 }

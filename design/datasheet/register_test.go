@@ -200,3 +200,18 @@ func TestManyChannels(t *testing.T) {
 		t.Errorf("two channels are too many")
 	}
 }
+
+// TestFluctuations: what a noise adds, and the infidelity over a spread, stand on the page and in the text.
+func TestFluctuations(t *testing.T) {
+	s := registerSheet()
+	noise, mean := 1.53e-7, 1.04e-5
+	s.Verdict.Errors[0].NoiseInfidelity = &noise
+	s.Verdict.Errors[1].Spread, s.Verdict.Errors[1].SpreadInfidelity = "worst", &mean
+	for name, text := range map[string]string{"page": wellFormed(t, page(t, s)), "text": summary(t, s)} {
+		for _, want := range []string{"any one-body error adds 1.53e-7 to the infidelity", "the largest infidelity over its spread is 1.04e-5"} {
+			if !strings.Contains(text, want) {
+				t.Errorf("the %s does not say %q", name, want)
+			}
+		}
+	}
+}

@@ -397,7 +397,7 @@ func tightest(limits []replay.Limit) (replay.Limit, bool) {
 func (s *Sheet) agreement() []string {
 	a := s.Verdict.Agreement
 	if !a.OK {
-		return []string{typographic(fmt.Sprintf("Replay does not agree with the record%s. At most, infidelity differs by %s, susceptibility by %s, tail angle by %s rad. Do not play this pulse before that is explained.",
+		return []string{typographic(fmt.Sprintf("Replay does not agree with the record%s. At most, infidelity differs by %s, susceptibility by %s, tail angle in rad by %s. Do not play this pulse before that is explained.",
 			worst(a.Worst), figure(a.Infidelity), figure(a.Susceptibility), figure(a.TailAngle)))}
 	}
 	text := "Every figure here was computed by replay from the integer codes in the folder, by other means than the design's. It agrees with the record within 1e-9 in infidelity, 1e-5 in susceptibility and 1e-4 rad in tail angle."
