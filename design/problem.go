@@ -33,8 +33,8 @@ type problem struct {
 
 	settled        bool
 	coarse, fine   axis
-	spin           robust.Spin    // without grid; of a ladder its two lowest levels
-	levels         *robust.Levels // of a ladder, without grid and errors; nil for a spin
+	spin           robust.Spin    // without grid; of other problems on one site its two lowest levels
+	levels         *robust.Levels // of ladders, registers, states and noise, without grid and errors; nil for a spin
 	slopes         []*slope       // by held class: the line of an error of a line; nil for the others
 	coarseR, fineR robust.Response
 	starts         int
@@ -128,7 +128,7 @@ func newProblem(p *hardware.Profile, w wish) (*problem, error) {
 	}
 	q.coarseR, q.fineR = q.response(&q.coarse), q.response(&q.fine)
 	q.constrain()
-	if q.levels != nil { // before any search: does the ladder's kernel know all that is asked?
+	if q.levels != nil { // before any search: is all that is asked known?
 		s := *q.levels
 		s.Grid, s.Held = q.coarse.Grid, q.spin.Held
 		g, err := robust.NewLevelsGate(s, robust.Response{}, 0)
@@ -512,7 +512,7 @@ func (q *problem) addArea(c []float64, want, angle float64) {
 }
 
 // An evaluator gives residuals and figures of one gate: robust.Gate of a spin, or
-// robust.LevelsGate of a ladder.
+// robust.LevelsGate of all else.
 type evaluator interface {
 	Rows() int
 	Dim() int

@@ -20,7 +20,7 @@ type Problem struct {
 	// row by row (Rows x Dim).
 	Jacobian func(jac []float64)
 	// Gradient stores Jᵀr in grad, at the c of the last call of Residuals which gave r.
-	// It is asked for where Jacobian is nil: where residuals are many, J costs
+	// It serves where Jacobian is nil: where residuals are many, J costs
 	// more than what it saves in iterations.
 	Gradient func(r, grad []float64)
 }
@@ -73,7 +73,7 @@ type Result struct {
 	Miss        float64 // |r|² there
 	Status      Status
 	Iterations  int
-	Evaluations int // of the residuals; the Jacobian is formed at accepted points only
+	Evaluations int // of the residuals; the Jacobian, or the gradient, is formed at accepted points only
 }
 
 const (
