@@ -259,7 +259,7 @@ func levels(in Inputs, d []driven, shifted bool, phantoms []device.Matrix) *robu
 	for _, x := range d {
 		ch := &in.Profile.Channels[x.channel]
 		full := complex(x.full, 0)
-		shift := in.Device.ShiftOperatorOf(ch.Name).Scale(complex(ch.Shift, 0))
+		shift := in.Device.ShiftOperator(ch.Name).Scale(complex(ch.Shift, 0))
 		for _, op := range x.operators {
 			l.Axes, l.Shifts = append(l.Axes, op.Scale(full).Data), append(l.Shifts, shift.Data)
 		}

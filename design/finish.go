@@ -283,7 +283,7 @@ func (q *problem) model(in Inputs, d []driven) Model {
 			mc.Compression = append(mc.Compression, [2]float64{pt.Converter, pt.Reached})
 		}
 		if ch.Shift != 0 {
-			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(in.Device.ShiftOperatorOf(ch.Name))
+			mc.Shift, mc.ShiftOperator = &ch.Shift, rowsOf(in.Device.ShiftOperator(ch.Name))
 		}
 		if b := in.Device.Map(ch.Name); b != nil {
 			mc.MapPolynomial = b.Polynomial

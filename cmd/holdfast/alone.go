@@ -68,7 +68,7 @@ func (b *bench) whole(codes []int16, terminated bool) (*replay.Model, error) {
 		}
 	}
 	if c.Shift != 0 {
-		c.ShiftOperator = d.ShiftOperatorOf(c.Name).Data
+		c.ShiftOperator = d.ShiftOperator(c.Name).Data
 	}
 	m.Channels, m.Target = []replay.Channel{c}, nil
 	return &m, nil

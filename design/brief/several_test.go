@@ -706,3 +706,51 @@ func TestMapped(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+// TestMoving: order, spread and noise as they are read, and what they do not go with.
+func TestMoving(t *testing.T) {
+	const d = "format = 1\nname = 'x'\n[[site]]\nname = 'q1'\n[[drive]]\nsite = 'q1'\nchannel = 'a'\n"
+	profile := func(shift string) string {
+		return "format = 1\n[instrument]\nname = 'x'\nsample_rate = '1 GS/s'\nresolution = '14 bit'\nblock = 8\n[[channel]]\nname = 'a'\nkind = 'quadrature'\nmixing = 'I cos + Q sin'\nfull_scale = '40 MHz'\n" + shift
+	}
+	load := func(shift, rest string) (*Brief, error) {
+		dir := t.TempDir()
+		for name, text := range map[string]string{"p.toml": profile(shift), "d.toml": d, "b.toml": "format = 1\nname = 'x'\nprofile = 'p.toml'\ndevice = 'd.toml'\nspan = '64 ns'\n[target]\nsite = 'q1'\ngate = 'X90'\n[[error]]\n" + rest} {
+			if err := os.WriteFile(filepath.Join(dir, name), []byte(text), 0o666); err != nil {
+				t.Fatal(err)
+			}
+		}
+		b, _, _, err := LoadAll(filepath.Join(dir, "b.toml"))
+		return b, err
+	}
+	const noise = "noise = { form = 'white', sigma = '1 %', high = '1 MHz' }\n"
+	b, err := load("", "detuning = 'q1'\nspread = 'worst'\nvalues = ['-2 MHz', '1 MHz']\n[[error]]\namplitude = 'a'\n"+noise+"[[error]]\noperator = 'X'\norder = 2\n")
+	if err != nil {
+		t.Fatal(err)
+	}
+	e := b.Errors
+	if e[0].Spread != Corners || len(e[0].Values) != 2 || !(math.Abs(e[0].Values[0]+2*math.Pi*2e-3) <= 1e-15) || !(math.Abs(e[0].Values[1]-2*math.Pi*1e-3) <= 1e-15) {
+		t.Errorf("spread %+v", e[0])
+	}
+	if e[1].Noise == nil || e[1].Name != "amplitude noise" || !(math.Abs(e[1].Noise.Variance()/1e-4-1) <= 1e-9) {
+		t.Errorf("noise %+v", e[1])
+	}
+	if e[0].Order != 1 || e[2].Order != 2 {
+		t.Errorf("orders %d, %d", e[0].Order, e[2].Order)
+	}
+	for _, c := range []struct{ shift, rest, want string }{
+		{"", "amplitude = 'a'\nquadrature = 'I'\n" + noise, "error[0].noise: found noise of one quadrature"},
+		{"shift = '200 kHz'\n", "amplitude = 'a'\n" + noise, "which shifts what it drives"},
+		{"", "any = 'all'\nnoise = { form = 'white', sigma = '1 kHz', high = '1 MHz' }\n", "error[0].noise: found noise beside any"},
+		{"", "detuning = 'q1'\nsize = '1 MHz'\nnoise = { form = 'white', sigma = '1 kHz', high = '1 MHz' }\n", "error[0].size: found a size beside noise"},
+		{"", "detuning = 'q1'\nnoise = { form = 'trace', file = '../n.csv' }\n", "allowed: the name of a .csv file that lies beside the brief"},
+		{"", "detuning = 'q1'\nvalues = ['1 MHz']\n", "error[0].values: found values without a spread"},
+		{"", "detuning = 'q1'\nspread = 'average'\nvalues = []\n", "error[0].values: found no value"},
+		{"", "detuning = 'q1'\nspread = 'average'\norder = 2\n", "error[0].order: found order = 2 beside a spread"},
+		{"", "any = 'all'\nspread = 'average'\n", "error[0].spread: found a spread beside any"},
+	} {
+		if _, err := load(c.shift, c.rest); err == nil || !strings.Contains(err.Error(), c.want) || strings.Contains(err.Error(), "\n") {
+			t.Errorf("%s\ngot  %v\nwant %s", c.rest, err, c.want)
+		}
+	}
+}

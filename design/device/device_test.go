@@ -61,8 +61,8 @@ func TestLoad(t *testing.T) {
 	if want := []Bias{{Site: "q1", Channel: "q1 flux", Axis: "Z", Line: 19}, {Site: "q1", Channel: "q1 side", Axis: "X", Line: 23}}; !reflect.DeepEqual(d.Biases, want) {
 		t.Errorf("biases %+v", d.Biases)
 	}
-	if z, x := (Matrix{2, []complex128{0.5, 0, 0, -0.5}}), (Matrix{2, []complex128{0, 0.5, 0.5, 0}}); !near(d.BiasOperator(0), z, 0) || !near(d.BiasOperator(1), x, 0) || !near(d.ShiftOperator(), z, 0) {
-		t.Errorf("operators %v, %v, %v", d.BiasOperator(0), d.BiasOperator(1), d.ShiftOperator())
+	if z, x := (Matrix{2, []complex128{0.5, 0, 0, -0.5}}), (Matrix{2, []complex128{0, 0.5, 0.5, 0}}); !near(d.BiasOperator(0), z, 0) || !near(d.BiasOperator(1), x, 0) || !near(d.ShiftOperator("q1 drive"), z, 0) {
+		t.Errorf("operators %v, %v, %v", d.BiasOperator(0), d.BiasOperator(1), d.ShiftOperator("q1 drive"))
 	}
 	// |0> is the upper state: H0 = 2 pi f Z/2.
 	want := Matrix{2, []complex128{complex(-math.Pi*0.00025, 0), 0, 0, complex(math.Pi*0.00025, 0)}}

@@ -79,9 +79,6 @@ func (d *Device) LiftAt(site int, m Matrix) Matrix {
 	return l
 }
 
-// Lift is LiftAt for the first site.
-func (d *Device) Lift(m Matrix) Matrix { return d.LiftAt(0, m) }
-
 // Local gives X, Y or Z of a site, in the site's own dimension; see LiftAt.
 func (d *Device) Local(site int, name string) Matrix {
 	o, _ := Operator(name)
@@ -174,12 +171,9 @@ func (d *Device) biased(b *Bias, site int) Matrix {
 	return o
 }
 
-// ShiftOperator is ShiftOperatorOf for a device of one site.
-func (d *Device) ShiftOperator() Matrix { return d.half(0, "Z") }
-
-// ShiftOperatorOf gives what a drive-induced shift of the site that a channel drives multiplies, Z/2 whichever energy |0> has, as a matrix of the
+// ShiftOperator gives what a drive-induced shift of the site that a channel drives multiplies, Z/2 whichever energy |0> has, as a matrix of the
 // whole device: H += kappa |u|^2 Z/2 with kappa in rad/ns, of the profile, and u in shares of full scale.
-func (d *Device) ShiftOperatorOf(channel string) Matrix {
+func (d *Device) ShiftOperator(channel string) Matrix {
 	site, _, _ := d.aim(channel)
 	return d.Embed(map[int]Matrix{site: d.half(site, "Z")})
 }

@@ -270,7 +270,7 @@ func TestOneSpinBits(t *testing.T) {
 		same("I", paths[0].Operators[0], x.Scale(0.5).Data)
 		same("Q", paths[0].Operators[1], y.Scale(sign*0.5).Data)
 		same("bias", d.Paths("b", "")[0].Operators[0], y.Scale(0.5).Data)
-		same("shift", d.ShiftOperatorOf("c"), z.Scale(0.5).Data)
+		same("shift", d.ShiftOperator("c"), z.Scale(0.5).Data)
 		same("static", d.Static(), z.Scale(-sign*0.05).Data)
 	}
 }
@@ -768,10 +768,10 @@ func TestPaths(t *testing.T) {
 	if d.Paths("other", mixing) != nil {
 		t.Error("a channel of another device has paths")
 	}
-	if got := d.ShiftOperatorOf("x"); !near(got, half(1, "Z"), 0) {
+	if got := d.ShiftOperator("x"); !near(got, half(1, "Z"), 0) {
 		t.Errorf("shift %v", got)
 	}
-	if got := d.ShiftOperatorOf("d"); !near(got, half(0, "Z"), 0) {
+	if got := d.ShiftOperator("d"); !near(got, half(0, "Z"), 0) {
 		t.Errorf("shift %v", got)
 	}
 	// What a channel would do to another site whole, and where it stands still.

@@ -226,6 +226,14 @@ func TestFluctuationsRefused(t *testing.T) {
 	if f := quadrature.validate(); f == nil || f.key != "channel[0].map_polynomial" {
 		t.Errorf("a map of a quadrature channel: %v", f)
 	}
+	shifted := swung(x, Class{Name: "e", Kind: "amplitude", Noise: Noise{[]float64{0.1}, []float64{1e-6}}})
+	if f := shifted.validate(); f != nil {
+		t.Errorf("noise of the amplitude: %v", f)
+	}
+	shifted.Channels[0].Shift, shifted.Channels[0].ShiftOperator = 0.01, turnZ()
+	if f := shifted.validate(); f == nil || f.key != "error[0].noise_frequencies_rad_per_ns" {
+		t.Errorf("noise of the amplitude of a channel with a shift: %v", f)
+	}
 	mapped := bias(func(c *Channel) { c.MapPolynomial = []float64{1, 0.1} })
 	mapped.Errors = []Class{{Name: "e", Kind: "amplitude", Channels: []string{"drive"}}}
 	if f := mapped.validate(); f == nil || f.key != "error[0].channels" {

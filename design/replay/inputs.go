@@ -155,7 +155,7 @@ func (f *Folder) differences() ([]Difference, error) {
 		default:
 			start = math.Max(start, p.Start(k))
 			c.text(key+"kind", ch.Kind, kind)
-			c.channel(key, ch, p, k, paths, d.ShiftOperatorOf(ch.Name).Data)
+			c.channel(key, ch, p, k, paths, d.ShiftOperator(ch.Name).Data)
 			c.curves(key, ch, d.Map(ch.Name))
 		}
 	}
