@@ -147,7 +147,7 @@ func TestAgreement(t *testing.T) {
 		"leakage":                  register(t, 1, "", "span = \"48 ns\"\nstarts = 1\nrefine = false\n[target]\nsite = \"q1\"\ngate = \"X90\"\n[[error]]\nany = \"leakage\""+loose, ladder),
 		"leaking states":           register(t, 1, "", "span = \"32 ns\"\nstarts = 1\nrefine = false\n[target]\nfrom = \"0\"\nto = \"1\"\n[[error]]\ndetuning = \"q1\"\nspread = \"average\""+loose, ladder),
 		"noise of drives":          register(t, 1, "", "span = \"48 ns\"\nstarts = 1\n[target]\nsite = \"q1\"\ngate = \"X90\"\n[[error]]\namplitude = \"q1 drive\"\nnoise = { form = \"white\", sigma = \"0.5 %\", high = \"20 MHz\" }"+loose),
-		"a shift with a slow pole": scene{ns: 64, channel: "shift = \"2 MHz\"", line: "lowpass = { family = \"single-pole\", corner = \"40 MHz\" }\n", head: "starts = 1\nrefine = false", errors: "[[error]]\ndetuning = \"q1\""}.inputs(t),
+		"a shift with a slow pole": scene{ns: 64, channel: "shift = \"2 MHz\"", line: "lowpass = { family = \"single-pole\", corner = \"10 MHz\" }\n", head: "starts = 1\nrefine = false", errors: "[[error]]\ndetuning = \"q1\""}.inputs(t),
 	} {
 		p, f, _ := folderOf(t, in)
 		v, err := replay.Judge(context.Background(), f)

@@ -229,3 +229,26 @@ func TestWideFigures(t *testing.T) {
 		}
 	}
 }
+
+// TestSecondOrderRows: the residuals of second order are half the second derivative of the gate's residuals by the angle that the error turns.
+func TestSecondOrderRows(t *testing.T) {
+	rng := rand.New(rand.NewPCG(9, 12))
+	s, resp := wide(rng, []Class{second(detuning)}, false, false, false)
+	g := NewGate(s, resp, 0)
+	c, r := make([]float64, g.Dim()), make([]float64, g.Rows())
+	for k := range c {
+		c[k] = 0.4 * rng.NormFloat64()
+	}
+	g.Residuals(c, r)
+	at := func(x float64) dynamics.Vec {
+		g.finite.Run(g.u, dynamics.Vec{0, 0, x / g.span})
+		return g.see(g.finite.Gate, 0, 0).miss
+	}
+	const h = 0.01
+	p, m, o := at(h), at(-h), at(0)
+	for k := range 3 {
+		if got, want := r[len(r)-3+k], (p[k]+m[k]-2*o[k])/(2*h*h); !(math.Abs(got-want) <= 1e-5) {
+			t.Errorf("row %d: %v, want %v", k, got, want)
+		}
+	}
+}
