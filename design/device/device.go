@@ -268,7 +268,7 @@ func readCode(t *quantity.Table, levels int) [2]int {
 		return code
 	}
 	if len(list) != 2 || list[0] != math.Trunc(list[0]) || list[1] != math.Trunc(list[1]) || list[0] == list[1] {
-		t.Fail("code", "found %v; allowed: two levels, whole numbers from 0 to %d, as in [0, 1]", list, levels-1)
+		t.Fail("code", "found [%s]; allowed: two levels, whole numbers from 0 to %d, as in [0, 1]", strings.Join(strings.Fields(strings.Trim(fmt.Sprint(list), "[]")), ", "), levels-1)
 		return code
 	}
 	if levels == 2 && list[0] != 0 {
@@ -310,9 +310,18 @@ func (d *Device) checkSite(t *quantity.Table, key, name string) (site int, ok bo
 func (d *Device) siteNames() string {
 	var names []string
 	for _, s := range d.Sites {
-		names = append(names, fmt.Sprintf("%q", s.Name))
+		names = append(names, s.Name)
 	}
-	return strings.Join(names, ", ")
+	return quoted(names)
+}
+
+// quoted lists names as a file does.
+func quoted(names []string) string {
+	list := make([]string, len(names))
+	for i, n := range names {
+		list[i] = fmt.Sprintf("%q", n)
+	}
+	return strings.Join(list, ", ")
 }
 
 func (d *Device) readCoupling(t *quantity.Table) Coupling {
@@ -344,7 +353,7 @@ func (d *Device) readCoupling(t *quantity.Table) Coupling {
 			return c
 		}
 		if len(c.Sites) != 2 || c.Sites[0] == c.Sites[1] {
-			t.Fail("between", "found %q; allowed: two sites of this device, as in [\"q1\", \"q2\"]", c.Sites)
+			t.Fail("between", "found [%s]; allowed: two sites of this device, as in [\"q1\", \"q2\"]", quoted(c.Sites))
 			return c
 		}
 		for _, name := range c.Sites {
